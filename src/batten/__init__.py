@@ -1,0 +1,3 @@
+"""batten: for regressions that bend."""
+
+__version__ = "0.1.0"

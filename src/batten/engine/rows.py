@@ -1,0 +1,66 @@
+"""The numbers of one analysis: what the engine gets from the frame."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+Array = npt.NDArray[np.float64]
+Ints = npt.NDArray[np.intp]
+
+__all__ = ["Array", "Ints", "Rows"]
+
+
+@dataclass(frozen=True, eq=False)
+class Rows:
+    """One analysis sample, complete in every column.
+
+    The design of a remedy with shape columns S (n, k) is [base | S * modifier[:, 0] | S * modifier[:, 1] | ...]:
+    the focal predictor stands in the formula alone (modifier column of ones) or in interactions (one modifier column
+    for each column it is multiplied with).
+
+    y: response (n,), units of y. x: focal predictor (n,), its own units.
+    base: columns of all terms without the focal predictor (n, q), the intercept among them when there is one.
+    modifier: columns that multiply the focal predictor (n, m).
+    intercept: position of the constant column in `base`, or None.
+    constant: whether a constant lies in the span of `base` (true for `C(g) - 1` too).
+    weights: (n,) or None; weights_kind "variance" (Var = s2 / w) or "frequency" (whole numbers).
+    cluster: codes 0..G-1 (n,) or None. offset: log exposure (n,) or None, for log links only.
+    """
+
+    y: Array
+    x: Array
+    base: Array
+    modifier: Array
+    intercept: int | None = 0
+    constant: bool = True
+    weights: Array | None = None
+    weights_kind: str | None = None
+    cluster: Ints | None = None
+    offset: Array | None = None
+
+    @property
+    def count(self) -> int:
+        """Stored rows (frequency weights not counted)."""
+        return len(self.y)
+
+    @property
+    def n(self) -> int:
+        """Rows the analysis stands for: the sum of frequency weights, else the stored rows."""
+        if self.weights is not None and self.weights_kind == "frequency":
+            return int(self.weights.sum())
+        return len(self.y)
+
+    def take(self, which: Ints | npt.NDArray[np.bool_]) -> Rows:
+        """The same analysis on a subset (or repeated selection) of its rows."""
+
+        def pick(a: npt.NDArray[np.generic] | None) -> npt.NDArray[np.generic] | None:
+            return None if a is None else a[which]
+
+        return Rows(
+            y=self.y[which], x=self.x[which], base=self.base[which], modifier=self.modifier[which],
+            intercept=self.intercept, constant=self.constant, weights=pick(self.weights),
+            weights_kind=self.weights_kind, cluster=pick(self.cluster), offset=pick(self.offset),
+        )  # fmt: skip
