@@ -1,0 +1,68 @@
+"""What the frame hands to everything else: numbers, names, and the rows that were left out."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import pandas as pd
+
+from batten.engine.rows import Array, Rows
+
+if TYPE_CHECKING:
+    from batten.frame.design import Design
+
+__all__ = ["NewRows", "Problem"]
+
+
+@dataclass(frozen=True, eq=False)
+class NewRows:
+    """Rows to predict, coded as the fitted ones were.
+
+    x (k,), base (k, q), modifier (k, m): NaN in every row that cannot be predicted. index: the frame's own.
+    notes: one text per row, "" when there is nothing to say (missing value, unseen level 'zinc' of alloy, outside the
+    data: mass_kg 80 is beyond 4.2 to 61.0).
+    """
+
+    x: Array
+    base: Array
+    modifier: Array
+    index: pd.Index
+    notes: tuple[str, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """One analysis: a response, a focal predictor, covariates, and the rows that are complete in all of them.
+
+    formula: as given, on one line, comments removed. response, focus: column names. covariates: the other columns used.
+    index: labels of the rows used, in the frame's order. left_out: one row per row left out (frame's index), column
+    "why". announcements: choices made that the user should know ("focal predictor: mass_kg; others it could be: ...").
+    units: unit of a column, "" where unknown. base_names, modifier_names: plain labels of the columns of `rows`; the
+    modifier that is a constant has label "". zero_is_arbitrary: the focal predictor is a date, a year or a temperature.
+    design: codes further frames the same way and knows the formula's terms (for emitted scripts).
+    """
+
+    formula: str
+    response: str
+    focus: str
+    covariates: tuple[str, ...]
+    rows: Rows
+    index: pd.Index
+    left_out: pd.DataFrame
+    announcements: tuple[str, ...]
+    units: Mapping[str, str]
+    base_names: tuple[str, ...]
+    modifier_names: tuple[str, ...]
+    zero_is_arbitrary: bool
+    design: Design
+    frame_name: str = "data"
+
+    def unit(self, column: str) -> str:
+        """Unit of a column, "" when none is known."""
+        return self.units.get(column, "")
+
+    def new_rows(self, frame: pd.DataFrame) -> NewRows:
+        """Code another frame with this problem's levels and learned centres."""
+        return self.design.new_rows(frame)
