@@ -1,1 +1,1 @@
-"""."""
+"""Numbers only: least squares, searches, folds, smearing. Knows numpy and scipy, nothing of names or frames."""

@@ -1,0 +1,104 @@
+"""Least squares of the displayed fit: one QR, refined coefficients, leverages.
+
+Coefficients are refined with residuals in extended precision (Bjorck 1967, Iterative refinement of linear least squares
+solutions), so that badly scaled polynomials keep the digits the data hold; elsewhere the refinement changes nothing.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.linalg import solve_triangular
+
+from batten.engine.rows import Array, Rows
+
+__all__ = ["Factored", "dependent_columns", "design", "factor", "solve"]
+
+#: a column is aliased when less than this share of its length is left after the columns before it
+ALIASED = 1e-11
+#: above this many numbers the extended-precision pass costs more than it can give
+REFINE_UP_TO = 4_000_000
+
+
+def design(rows: Rows, shape_columns: Array, *, own_level: bool = False) -> Array:
+    """Design matrix (n, p): base columns, then the shape's columns times each modifier (modifier-major).
+
+    own_level: the shape brings its own level, so the constant column of the base is left out.
+    """
+    base = rows.base
+    if own_level and rows.intercept is not None:
+        base = np.delete(base, rows.intercept, axis=1)
+    n, m = rows.modifier.shape
+    if m == 1 and (rows.modifier == 1).all():
+        return np.hstack([base, shape_columns])
+    focal = shape_columns[:, None, :] * rows.modifier[:, :, None]
+    return np.hstack([base, focal.reshape(n, m * shape_columns.shape[1])])
+
+
+@dataclass(frozen=True, eq=False)
+class Factored:
+    """Thin QR of a design with unit-length columns: X / length = q @ r. q (n, p), r (p, p), length (p,)."""
+
+    q: Array
+    r: Array
+    length: Array
+
+    @property
+    def leverage(self) -> Array:
+        """h_i (n,)."""
+        return np.asarray(np.einsum("ij,ij->i", self.q, self.q))
+
+    def back(self, u: Array) -> Array:
+        """Solve R b = u in raw units; u (p,) or (p, k)."""
+        b = solve_triangular(self.r, u, check_finite=False)
+        return np.asarray(b / (self.length if b.ndim == 1 else self.length[:, None]))
+
+    @property
+    def inverse_cross(self) -> Array:
+        """(X'X)^-1 in raw units (p, p)."""
+        root = self.back(np.eye(len(self.r)))
+        return np.asarray(root @ root.T)
+
+    def rows_of_inverse(self) -> Array:
+        """x_i' (X'X)^-1 for every row, (n, p): q R^-T in raw units."""
+        return np.asarray(self.back(self.q.T).T)
+
+
+def dependent_columns(x: Array) -> list[int]:
+    """Positions of columns that are (numerically) combinations of the columns before them."""
+    length = np.sqrt((x * x).sum(axis=0))
+    zero = length == 0
+    r = np.linalg.qr(x / np.where(zero, 1.0, length), mode="r")
+    left = np.abs(np.diagonal(r))
+    if len(left) < x.shape[1]:  # more columns than rows
+        left = np.append(left, np.zeros(x.shape[1] - len(left)))
+    return [int(j) for j in np.flatnonzero((left < ALIASED) | zero)]
+
+
+def factor(x: Array) -> Factored:
+    """QR with columns scaled to unit length; the caller has made sure that no column is aliased."""
+    length = np.sqrt((x * x).sum(axis=0))
+    length = np.where(length == 0, 1.0, length)
+    q, r = np.linalg.qr(x / length)
+    return Factored(q, r, length)
+
+
+def solve(factored: Factored, x: Array, z: Array) -> tuple[Array, Array]:
+    """Least-squares coefficients (p,) in raw units, refined, and the residuals (n,) of the refined solution."""
+    b = factored.back(factored.q.T @ z)
+    if x.size > REFINE_UP_TO or x.size == 0:
+        return b, z - x @ b
+    wide_x, wide_z, wide_b = x.astype(np.longdouble), z.astype(np.longdouble), b.astype(np.longdouble)
+    for _ in range(4):
+        residual = wide_z - wide_x @ wide_b
+        # the right-hand side of the semi-normal step is taken in extended precision, its solution need not be
+        push = (wide_x.T @ residual).astype(np.float64) / factored.length
+        step = factored.back(solve_triangular(factored.r, push, trans="T", check_finite=False))
+        wide_b = wide_b + step
+        if not np.abs(step).max() > 1e-17 * np.abs(b).max():
+            break
+    refined = wide_b.astype(np.float64)
+    if not np.isfinite(refined).all():
+        return b, z - x @ b
+    return refined, (wide_z - wide_x @ wide_b).astype(np.float64)

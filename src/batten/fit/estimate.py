@@ -1,0 +1,367 @@
+"""One remedy fitted to one analysis sample, or the reason why it cannot be."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+
+import numpy as np
+
+from batten.engine.irls import Mean, iterate
+from batten.engine.linear import Factored, dependent_columns, design, factor, solve
+from batten.engine.power import Power, best_power
+from batten.engine.rows import Array, Rows
+from batten.engine.search import Searched, search
+from batten.errors import Refusal
+from batten.families.base import Constants, Link, Scale, Shape
+from batten.families.remedy import Remedy
+from batten.fit.guard import domain_trouble, too_few
+
+__all__ = ["Estimate", "estimate", "searched_model"]
+
+
+@dataclass(frozen=True, eq=False)
+class Estimate:
+    """Frozen result of one fit; everything shown, predicted or emitted reads it.
+
+    state, theta: the shape's constants (fixed by x; searched). c: the scale's constants.
+    coef (p,): raw-unit coefficients of the design [base | focal columns]. z (n,): response on the fitting scale (y for
+    links). eta (n,): linear predictor. residual (n,): z - eta, for links y - mu. factored: QR of the effective design
+    (coefficients, then theta; weighted for links). leverage (n,). sigma: residual SD on the fitting scale.
+    log_likelihood: in units of y, None for a pseudo-likelihood. parameters: counted ones, sigma included.
+    """
+
+    remedy: Remedy
+    rows: Rows
+    state: Constants
+    theta: Constants
+    c: Constants
+    coef: Array
+    z: Array
+    eta: Array
+    residual: Array
+    factored: Factored
+    df_residual: int
+    sigma: float
+    log_likelihood: float | None
+    parameters: int
+    notes: tuple[str, ...] = field(default=())
+
+    @property
+    def link(self) -> Link | None:
+        return self.remedy.left if isinstance(self.remedy.left, Link) else None
+
+    @property
+    def scale(self) -> Scale:
+        """The response scale; asked only where there is no link."""
+        assert isinstance(self.remedy.left, Scale)
+        return self.remedy.left
+
+    @property
+    def shape(self) -> Shape:
+        return self.remedy.shape
+
+    @property
+    def n(self) -> int:
+        return len(self.z)
+
+    @property
+    def mu(self) -> Array:
+        """Fitted means of a link (n,)."""
+        assert self.link is not None
+        return self.link.mean(self.eta)
+
+    @cached_property
+    def leverage(self) -> Array:
+        """h_i of the effective design (n,)."""
+        return self.factored.leverage
+
+    @property
+    def aicc(self) -> float:
+        """AICc in units of y (Hurvich and Tsai 1989); NaN for pseudo-likelihoods and where n is too small for it."""
+        k, n = self.parameters, self.n
+        if self.log_likelihood is None or n - k - 1 <= 0:
+            return float("nan")
+        return -2 * self.log_likelihood + 2 * k + 2 * k * (k + 1) / (n - k - 1)
+
+    def design_at(self, x: Array, base: Array, modifier: Array) -> Array:
+        """Design rows (k, p) at focal values x (k,) with covariate columns base (k, q), modifier (k, m)."""
+        part = Rows(x, x, base, modifier, self.rows.intercept, self.rows.constant)
+        return design(part, self.shape.columns(x, self.state, self.theta), own_level=self.shape.own_level)
+
+    def jacobian_at(self, x: Array, base: Array, modifier: Array) -> Array:
+        """d eta / d (coef, theta, c) (k, P); the columns of c are zero, since eta does not hold them."""
+        exact = self.design_at(x, base, modifier)
+        parts = [exact]
+        if self.theta:
+            parts.append(self._theta_pull(self.shape.theta_slopes(x, self.state, self.theta), modifier))
+        searched = len(self.c) if self.remedy.left.searched else 0
+        if searched:
+            parts.append(np.zeros((len(x), searched)))
+        return np.hstack(parts)
+
+    def slopes_at(self, x: Array, modifier: Array) -> Array:
+        """d eta / dx (k,)."""
+        return self._focal(self.shape.slopes(x, self.state, self.theta), modifier)
+
+    def slope_jacobian_at(self, x: Array, modifier: Array) -> Array:
+        """d (d eta / dx) / d (coef, theta, c) (k, P); by central differences in x, which theta_slopes allow exactly."""
+        s = self.shape.slopes(x, self.state, self.theta)
+        p = len(self.coef)
+        out = np.zeros((len(x), p + len(self.theta) + (len(self.c) if self.remedy.left.searched else 0)))
+        out[:, p - s.shape[1] * modifier.shape[1] : p] = (s[:, None, :] * modifier[:, :, None]).reshape(len(x), -1)
+        if self.theta:
+            h = 1e-5 * (np.ptp(self.rows.x) or 1.0)
+            up, down = (
+                self._theta_pull(self.shape.theta_slopes(x + d, self.state, self.theta), modifier) for d in (h, -h)
+            )
+            out[:, p : p + len(self.theta)] = (up - down) / (2 * h)
+        return out
+
+    def _focal(self, columns: Array, modifier: Array) -> Array:
+        """Sum over shape columns and modifiers with the focal coefficients (k,)."""
+        b = self.coef[len(self.coef) - columns.shape[1] * modifier.shape[1] :].reshape(modifier.shape[1], -1)
+        return np.asarray(np.einsum("nk,nm,mk->n", columns, modifier, b))
+
+    def _theta_pull(self, theta_slopes: Array, modifier: Array) -> Array:
+        return np.column_stack([self._focal(t, modifier) for t in theta_slopes])
+
+    @cached_property
+    def residual_jacobian(self) -> Array:
+        """-d residual / d (coef, theta, c) (n, P): how the fitting-scale residuals move with the parameters."""
+        out = self.jacobian_at(self.rows.x, self.rows.base, self.rows.modifier)
+        if self.remedy.left.searched:
+            out[:, -1] = -self._scale_slope()
+        return out
+
+    def _scale_slope(self) -> Array:
+        """d z / d lambda (n,), by a central difference."""
+        h = 1e-5
+        up, down = (self.scale.forward(self.rows.y, (self.c[0] + d,)) for d in (h, -h))
+        return np.asarray((up - down) / (2 * h))
+
+    def moves(self, *, leave_out: bool = True) -> Array:
+        """Change of (coef, theta, c) when row i is left out, (n, P); exact for linear remedies, else one step.
+
+        leave_out=False gives the first-order influence (HC0-type) instead, with the same sign.
+        """
+        weight = 1.0 / (1.0 - self.leverage) if leave_out else np.ones(self.n)
+        if self.remedy.left.searched:
+            return -_likelihood_moves(self) * weight[:, None]
+        score = self.residual if self.link is None else self._link_score()
+        return -self.factored.rows_of_inverse() * (score * weight)[:, None]
+
+    def _link_score(self) -> Array:
+        """Score residual on the weighted scale: (y - mu) / sqrt V."""
+        assert self.link is not None
+        return np.asarray(self.residual / np.sqrt(self.link.variance(self.mu)))
+
+    def covariance(self, kind: str = "robust") -> Array:
+        """Covariance of (coef, theta, c) (P, P): "robust" is HC3 (MacKinnon and White 1985), "constant" s2 (J'J)^-1."""
+        if kind == "robust" or self.remedy.left.searched:
+            d = self.moves()
+            return np.asarray(d.T @ d)
+        return np.asarray(self.factored.inverse_cross * self.sigma**2)
+
+
+def _likelihood_moves(est: Estimate) -> Array:
+    """Influence of each row on (coef, theta, lambda) from the full likelihood with sigma, (n, P).
+
+    The scores of Box and Cox's likelihood: coef x e/s2; lambda -e z'/s2 + d log|T'|/d lambda; s2 (e2/s2 - 1)/(2 s2).
+    """
+    y, e, h = est.rows.y, est.residual, 1e-4
+    s2 = float(e @ e) / est.n
+    lam = est.c[0]
+    up, mid, down = (est.scale.forward(y, (lam + d,)) for d in (h, 0.0, -h))
+    z1, z2 = (up - down) / (2 * h), (up - 2 * mid + down) / h**2
+    j_up, j_mid, j_down = (est.scale.log_jacobian(y, (lam + d,)) for d in (h, 0.0, -h))
+    j1, j2 = (j_up - j_down) / (2 * h), (j_up - 2 * j_mid + j_down) / h**2
+    x = est.jacobian_at(est.rows.x, est.rows.base, est.rows.modifier)[:, :-1]
+    length = est.factored.length
+    unit = x / length  # scaled columns keep the information matrix well conditioned
+    score = np.column_stack([unit * (e / s2)[:, None], -e * z1 / s2 + j1, (e * e / s2 - 1) / (2 * s2)])
+    p = unit.shape[1]
+    information = np.zeros((p + 2, p + 2))
+    information[:p, :p] = unit.T @ unit / s2
+    information[:p, p] = information[p, :p] = -(unit.T @ z1) / s2
+    information[p, p] = (z1 @ z1 + e @ z2) / s2 - j2.sum()
+    information[p, p + 1] = information[p + 1, p] = -(e @ z1) / s2**2
+    information[p + 1, p + 1] = est.n / (2 * s2**2)
+    moved = np.linalg.solve(information, score.T).T
+    return np.asarray(np.column_stack([moved[:, :p] / length, moved[:, p]]))
+
+
+def estimate(
+    rows: Rows, remedy: Remedy, *, theta: Constants | None = None, c: Constants | None = None
+) -> Estimate | Refusal:
+    """Fit a remedy; a remedy that cannot be used on these rows comes back as a Refusal.
+
+    theta, c: constants set by hand (a profile, a dragged lambda); learned from the rows when None.
+    """
+    refusal = remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
+    if refusal:
+        return refusal
+    state = remedy.shape.learn(rows.x, constant=rows.constant)
+    if isinstance(remedy.left, Link):
+        return _fit_link(rows, remedy, state, theta)
+    return _fit_scale(rows, remedy, state, theta, c)
+
+
+def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
+    """The shape's search on these rows, for variable projection."""
+    none = np.empty((rows.count, 0))
+    lower, upper = shape.bounds(rows.x, state)
+
+    def columns(t: Array) -> Array:
+        return design(_bare(rows), shape.columns(rows.x, state, tuple(t)))
+
+    def slopes(t: Array) -> Array:
+        return np.stack([design(_bare(rows), s) for s in shape.theta_slopes(rows.x, state, tuple(t))])
+
+    return Searched(
+        fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
+        candidates=shape.candidates(rows.x, state), lower=lower, upper=upper, finite=getattr(shape, "finite", False),
+    )  # fmt: skip
+
+
+def _bare(rows: Rows) -> Rows:
+    """The rows with no base columns: only the focal block of the design."""
+    return Rows(rows.y, rows.x, np.empty((rows.count, 0)), rows.modifier, None, False)
+
+
+def _fit_scale(
+    rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None, c: Constants | None
+) -> Estimate | Refusal:
+    scale, shape = remedy.left, remedy.shape
+    assert isinstance(scale, Scale)
+    by_hand = (theta is not None and bool(shape.searched)) or (c is not None and bool(scale.searched))
+    constants = _constants(rows, remedy, state, theta, c)
+    if isinstance(constants, Refusal):
+        return constants
+    t, c = constants
+    columns = shape.columns(rows.x, state, t)
+    x = design(rows, columns, own_level=shape.own_level)
+    if not np.isfinite(x).all():
+        return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
+    aliased = dependent_columns(x)
+    if aliased:
+        return _aliased(remedy, len(aliased), x.shape[1])
+    z = scale.forward(rows.y, c)
+    linear = factor(x)
+    coef, residual = solve(linear, x, z)
+    eta = z - residual
+    trouble = domain_trouble(scale, c, eta, residual)
+    if trouble:
+        return trouble
+    df = rows.count - x.shape[1] - len(t)
+    rss = float(residual @ residual)
+    est = Estimate(
+        remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
+        factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
+        log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c)),
+        parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0), notes=("constant set by hand; not ranked",) if by_hand else (),
+    )  # fmt: skip
+    if not t or getattr(shape, "finite", False):
+        return est
+    full = est.jacobian_at(rows.x, rows.base, rows.modifier)
+    full = full[:, :-1] if scale.searched else full
+    if dependent_columns(full):
+        return _not_settled(shape)
+    return replace(est, factored=factor(full))
+
+
+def _constants(
+    rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None, c: Constants | None
+) -> tuple[Constants, Constants] | Refusal:
+    """The searched constants (theta, c); where both are searched, each in turn until neither moves."""
+    scale, shape = remedy.left, remedy.shape
+    assert isinstance(scale, Scale)
+    search_t, search_c = bool(shape.searched) and theta is None, bool(scale.searched) and c is None
+    t: Constants = theta or ()
+    if c is None:
+        c = (1.0,) if scale.searched else scale.learn(rows.y)
+    model = searched_model(rows, shape, state) if search_t else None
+    for turn in range(40 if search_t and search_c else 1):
+        before = (*t, *c)
+        if model is not None:
+            found = search(model, scale.forward(rows.y, c), start=np.array(t) if turn else None)
+            if not found.settled:
+                return _not_settled(shape)
+            t = tuple(float(v) for v in found.theta)
+        if search_c:
+            x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
+            lam, inside = best_power(_power(scale), rows.y, factor(x).q, start=c[0] if turn else None)
+            if not inside:
+                return _edge(scale, lam)
+            c = (lam,)
+        if turn and max(abs(new - old) for new, old in zip((*t, *c), before, strict=True)) < 1e-9:
+            break
+    return t, c
+
+
+def _power(scale: Scale) -> Power:
+    low, high = scale.search()
+    return Power(lambda y, v: scale.forward(y, (v,)), lambda y, v: scale.log_jacobian(y, (v,)), low, high)
+
+
+def _likelihood(rss: float, n: int, log_jacobian: Array) -> float | None:
+    """Gaussian log-likelihood on z plus the log-Jacobian: units of y (Box and Cox 1964). None for a perfect fit."""
+    if rss <= 0:
+        return None
+    return float(-0.5 * n * (np.log(2 * np.pi * rss / n) + 1) + log_jacobian.sum())
+
+
+def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None) -> Estimate | Refusal:
+    link, shape = remedy.left, remedy.shape
+    assert isinstance(link, Link)
+    t = theta or ()
+    if shape.searched and theta is None:
+        return Refusal(
+            "A link with a shape whose constant is searched is not offered.", f"{remedy.key}.",
+            "Use a spline under the link, or the same shape on log y.",
+        )  # fmt: skip
+    x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
+    aliased = dependent_columns(x)
+    if aliased:
+        return _aliased(remedy, len(aliased), x.shape[1])
+    model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
+    done = iterate(model, x, rows.y, eta=link.start(rows.y), offset=rows.offset)
+    if not done.settled or not np.isfinite(done.mu).all():
+        return Refusal(
+            "The fit of this mean model does not settle.",
+            "A coefficient runs away: some pattern of the predictors may hold only zeros, or fits perfectly.",
+            "A scale of y (log y, sqrt y) or fewer columns.",
+        )
+    df = rows.count - x.shape[1]
+    residual = rows.y - done.mu
+    pearson = float((residual**2 / link.variance(done.mu)).sum())
+    return Estimate(
+        remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef, z=rows.y, eta=done.eta,
+        residual=residual, factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
+        sigma=float(np.sqrt(pearson / df)), log_likelihood=link.log_likelihood(rows.y, done.mu),
+        parameters=x.shape[1] + 1,
+    )  # fmt: skip
+
+
+def _not_settled(shape: Shape) -> Refusal:
+    return Refusal(
+        wrong=f"These rows do not settle the constant of {shape.key}.",
+        seen=f"The best {' and '.join(shape.searched)} lies at the edge of what can be searched.",
+        instead="A spline (spline4 x) follows the same bend without that constant.",
+    )
+
+
+def _edge(scale: Scale, lam: float) -> Refusal:
+    return Refusal(
+        wrong="These rows do not settle the power of y.",
+        seen=f"The likelihood still rises at {lam:.3g}, the edge of the search.",
+        instead="A named scale: log y, sqrt y or 1/y.",
+    )
+
+
+def _aliased(remedy: Remedy, count: int, total: int) -> Refusal:
+    return Refusal(
+        wrong="Some columns of this remedy repeat others on these rows.",
+        seen=f"{count} of {total} columns of {remedy.key} are combinations of the rest.",
+        instead="A simpler shape, or covariates that do not repeat the predictor.",
+    )

@@ -1,0 +1,55 @@
+"""Domain guard: what a remedy cannot bring back, found before anybody reads a number."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from batten.engine.rows import Array, Rows
+from batten.errors import Refusal
+from batten.families.base import Constants, Scale
+from batten.families.remedy import Remedy
+
+__all__ = ["domain_trouble", "too_few"]
+
+
+def too_few(rows: Rows, remedy: Remedy) -> Refusal | None:
+    """A fit needs rows beyond its columns."""
+    state = remedy.shape.learn(rows.x, constant=rows.constant)
+    start = tuple(remedy.shape.candidates(rows.x, state)[0])
+    shape_columns = remedy.shape.columns(rows.x[:1], state, start).shape[1]
+    base = rows.base.shape[1] - (1 if remedy.shape.own_level and rows.intercept is not None else 0)
+    needed = base + shape_columns * rows.modifier.shape[1] + len(remedy.shape.searched) + len(remedy.left.searched)
+    if rows.count > needed + 1:
+        return None
+    return Refusal(
+        wrong="Too few rows for this remedy.",
+        seen=f"{rows.count} rows for {needed} constants and the error.",
+        instead="A shape with fewer constants.",
+    )
+
+
+def domain_trouble(scale: Scale, c: Constants, eta: Array, residual: Array) -> Refusal | None:
+    """Whether fitted values, or fitted values plus a residual, leave what the scale can undo.
+
+    A closed lower boundary (sqrt, Box-Cox with a positive power) takes residuals beyond it, at the boundary; an open
+    one (1/y, a negative power) does not: the mean would not exist (Poirier 1978 on Box-Cox).
+    """
+    low, high = scale.limits(c)
+    outside = int(((eta <= low) | (eta >= high)).sum())
+    if outside:
+        worst = eta.min() if np.isfinite(low) else eta.max()
+        return Refusal(
+            wrong=f"Fitted values leave what {scale.key} can undo.",
+            seen=f"{outside} of {len(eta)} fitted values cannot be brought back to y ({worst:.4g} on the fitted scale).",
+            instead="log y or a log link, whose fitted values can always be brought back.",
+        )
+    passed = [low] if eta.min() + residual.min() <= low else []
+    passed += [high] if eta.max() + residual.max() >= high else []
+    with np.errstate(all="ignore"):
+        if all(np.isfinite(scale.inverse(np.array([edge]), c)[0]) for edge in passed):
+            return None
+    return Refusal(
+        wrong=f"The mean cannot be brought back from {scale.key}.",
+        seen="A fitted value plus a residual seen in these rows has no finite value of y: only a median would exist.",
+        instead="log y or a log link, whose mean always exists.",
+    )

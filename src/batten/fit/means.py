@@ -1,0 +1,383 @@
+"""Means in units of y along the focal predictor, averaged over the rows' covariates, with their uncertainty.
+
+One routine serves curves, spans, slopes and totals of every remedy. A remedy's numbers are seen as a functional T of
+the rows: it depends on the parameters, on the residuals that are averaged over, and on the covariates that are averaged
+over. Leaving row i out changes all three (jackknife, up to 3,000 rows); to first order the change is row i's influence
+(beyond, and wherever many curves are compared).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.stats import t as student
+
+from batten.engine.rows import Array
+from batten.fit.estimate import Estimate
+from batten.fit.smear import mean_of, median_residual
+
+__all__ = ["Averaged", "Target", "average_slope", "averaged_means", "interval", "jackknifed", "means_at_rows"]
+
+#: up to this many rows intervals of retransformed means leave out each row in turn
+JACKKNIFE_ROWS = 3_000
+#: the same where the scale has no closed form for its mean
+JACKKNIFE_GENERAL = 1_000
+#: numbers held at once while replicates are averaged
+BLOCK = 3_000_000
+
+
+@dataclass(frozen=True, eq=False)
+class Averaged:
+    """Values (G,) and their uncertainty.
+
+    root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
+    spread under constant errors). left_out (n, G): the values without row i, or None beyond the jackknife's reach.
+    """
+
+    value: Array
+    root: Array
+    left_out: Array | None
+    df: int
+
+    def combine(self, weights: Array) -> Averaged:
+        """Linear combinations: weights (G, H)."""
+        left = None if self.left_out is None else self.left_out @ weights
+        return Averaged(self.value @ weights, self.root @ weights, left, self.df)
+
+    def log(self) -> Averaged:
+        """Logarithms of positive values (NaN elsewhere)."""
+        with np.errstate(invalid="ignore", divide="ignore"):
+            value = np.log(self.value)
+            if self.left_out is None:
+                return Averaged(value, self.root / self.value, None, self.df)
+            left = np.log(self.left_out)
+        return Averaged(value, _jackknife_root(left), left, self.df)
+
+    @property
+    def error(self) -> Array:
+        """Standard errors (G,)."""
+        return np.asarray(np.sqrt((self.root**2).sum(axis=0)))
+
+
+def _jackknife_root(left: Array) -> Array:
+    n = len(left)
+    return np.asarray(np.sqrt((n - 1) / n) * (left - left.mean(axis=0)))
+
+
+def interval(averaged: Averaged, level: float, *, positive: bool = False) -> tuple[Array, Array]:
+    """Lower and upper ends (G,) by the t quantile; on the log scale where the values are positive means."""
+    t = float(student.ppf(0.5 + level / 2, averaged.df))
+    if positive:
+        logs = averaged.log()
+        half = t * logs.error
+        return averaged.value * np.exp(-half), averaged.value * np.exp(half)
+    half = t * averaged.error
+    return averaged.value - half, averaged.value + half
+
+
+@dataclass(frozen=True, eq=False)
+class Target:
+    """What is averaged: for every value g, the design of its covariate rows.
+
+    eta (u, G), jacobian (G, u, P): linear predictor and its change with the parameters, for u covariate patterns.
+    count (u,): rows of each pattern. pattern (n,): each row's pattern, or None when the patterns are not the rows' own.
+    """
+
+    eta: Array
+    jacobian: Array
+    count: Array
+    pattern: Array | None
+
+
+def target(est: Estimate, xs: Array, *, base: Array | None = None, modifier: Array | None = None) -> Target:
+    """Covariate patterns at each x of xs (G,): the rows' own unless base (u, q) and modifier (u, m) are given."""
+    if base is None or modifier is None:
+        base, modifier, count, pattern = patterns(est)
+    else:
+        count, pattern = np.ones(len(base)), None
+    u = len(base)
+    eta, jacobian = np.empty((u, len(xs))), None
+    for g, x in enumerate(xs):
+        at = np.full(u, float(x))
+        j = est.jacobian_at(at, base, modifier)
+        jacobian = np.empty((len(xs), u, j.shape[1])) if jacobian is None else jacobian
+        jacobian[g] = j
+        eta[:, g] = j[:, : len(est.coef)] @ est.coef
+    assert jacobian is not None
+    return Target(eta, jacobian, count, pattern)
+
+
+def patterns(est: Estimate) -> tuple[Array, Array, Array, Array]:
+    """Distinct covariate rows: base (u, q), modifier (u, m), count (u,), pattern of each row (n,)."""
+    rows = est.rows
+    both = np.hstack([rows.base, rows.modifier])
+    if both.shape[1] == 2 and (both == both[0]).all():
+        return rows.base[:1], rows.modifier[:1], np.array([float(rows.count)]), np.zeros(rows.count, dtype=np.intp)
+    # equal rows give equal sums in a fixed order of additions, so one sort of numbers replaces a sort of rows
+    mark = np.zeros(rows.count)
+    for j, w in enumerate(np.random.default_rng(1).normal(size=both.shape[1])):
+        mark = mark + both[:, j] * w
+    _, first, pattern, count = np.unique(mark, return_index=True, return_inverse=True, return_counts=True)
+    return rows.base[first], rows.modifier[first], count.astype(float), pattern
+
+
+def averaged_means(
+    est: Estimate,
+    xs: Array,
+    *,
+    of: str = "mean",
+    base: Array | None = None,
+    modifier: Array | None = None,
+    errors: str = "robust",
+    jackknife: bool = True,
+    weights: Array | None = None,
+) -> Averaged:
+    """Mean (or "median") of y at each x of xs (G,), averaged over covariate rows.
+
+    base (u, q), modifier (u, m): covariate rows to average over instead of the rows' own, taken as fixed.
+    weights (u,): their weights, summing to one; equal when None.
+    """
+    tar = target(est, np.asarray(xs, dtype=float), base=base, modifier=modifier)
+    share = tar.count / tar.count.sum() if weights is None else weights
+    return _with_errors(est, tar, share, of, errors=errors, jackknife=jackknife)
+
+
+def means_at_rows(
+    est: Estimate,
+    x: Array,
+    base: Array,
+    modifier: Array,
+    *,
+    of: str = "mean",
+    errors: str = "robust",
+    root: bool = True,
+) -> Averaged:
+    """Mean (or "median") of y at each of k rows, x (k,), base (k, q), modifier (k, m), not averaged over anything.
+
+    root=False leaves the uncertainty out.
+    """
+    j = est.jacobian_at(x, base, modifier)
+    eta = (j[:, : len(est.coef)] @ est.coef)[None]
+    tar, share = Target(eta, j[:, None, :], np.ones(1), None), np.ones(1)
+    if not root:
+        value = _values(est, tar, share, of, np.zeros((1, j.shape[1])), None)[0]
+        return Averaged(value, np.empty((0, len(x))), None, est.df_residual)
+    return _with_errors(est, tar, share, of, errors=errors)
+
+
+def _with_errors(
+    est: Estimate,
+    tar: Target,
+    share: Array,
+    of: str,
+    *,
+    errors: str,
+    jackknife: bool = True,
+) -> Averaged:
+    parameters = tar.jacobian.shape[2]
+
+    def values(move: Array, keep: Array | None) -> Array:
+        return _values(est, tar, share, of, move, keep)
+
+    value = values(np.zeros((1, parameters)), None)[0]
+    if errors == "robust" and jackknife and jackknifed(est):
+        left = values(est.moves(), 1.0 - np.eye(est.n))
+        return Averaged(value, _jackknife_root(left), left, est.df_residual)
+    gradient = _gradient(est, values, parameters)
+    by_residual, by_covariate = _direct_parts(est, tar, share, of, value)
+    if errors == "constant":
+        root = np.linalg.cholesky(est.covariance("constant") + 0.0).T @ gradient
+        parts = [root] + [p / est.n for p in (by_residual, by_covariate) if p is not None]
+        return Averaged(value, np.vstack(parts), None, est.df_residual)
+    # moves are what leaving a row out does; its influence points the other way
+    root = -est.moves() @ gradient
+    for part in (by_residual, by_covariate):
+        if part is not None:
+            root = root + part / est.n
+    return Averaged(value, root, None, est.df_residual)
+
+
+def jackknifed(est: Estimate) -> bool:
+    """Whether intervals of this estimate leave out each row in turn."""
+    closed = est.link is not None or est.scale.closed != ""
+    return est.n <= (JACKKNIFE_ROWS if closed else JACKKNIFE_GENERAL)
+
+
+def _gradient(est: Estimate, values: Callable[[Array, Array | None], Array], parameters: int) -> Array:
+    """d values / d parameters (P, G), by central differences a small part of each parameter's own error wide."""
+    width = 1e-4 * np.sqrt(np.maximum(np.diagonal(est.covariance("robust")), 1e-300))
+    steps = np.diag(width[:parameters])
+    both = values(np.vstack([steps, -steps]), None)
+    return np.asarray((both[:parameters] - both[parameters:]) / (2 * width[:, None]))
+
+
+def _values(est: Estimate, tar: Target, share: Array, of: str, move: Array, keep: Array | None) -> Array:
+    """Averaged values (R, G) when the parameters have moved by move (R, P) and residual j counts keep (R, n) times."""
+    count, (u, points) = len(move), tar.eta.shape
+    out = np.empty((count, points))
+    block = max(1, BLOCK // max(est.n, u, 1))
+    for start in range(0, count, block):
+        some = slice(start, min(count, start + block))
+        m, k = move[some], None if keep is None else keep[some]
+        out[some] = _block_values(est, tar, share, of, m, k)
+    return out
+
+
+def _block_values(est: Estimate, tar: Target, share: Array, of: str, move: Array, keep: Array | None) -> Array:
+    weights = _pattern_weights(tar, share, keep)
+    points = tar.eta.shape[1]
+    bring = _bring_back(est, of, move, keep)
+    out = np.empty((len(move), points))
+    for g in range(points):
+        eta = tar.eta[:, g] + move @ tar.jacobian[g].T
+        back = bring(eta)
+        out[:, g] = back @ weights if weights.ndim == 1 else np.einsum("ru,ru->r", back, weights)
+    return out
+
+
+def _pattern_weights(tar: Target, share: Array, keep: Array | None) -> Array:
+    """Weights of the covariate patterns in each replicate: (u,) or (R, u), summing to one."""
+    if keep is None or tar.pattern is None or len(share) == 1:
+        return share
+    u = len(share)
+    counts = (
+        np.stack([np.bincount(tar.pattern, k, u) for k in keep])
+        if u < keep.shape[1]
+        else keep[:, np.argsort(tar.pattern)]
+    )
+    return np.asarray(counts / counts.sum(axis=1, keepdims=True))
+
+
+def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Callable[[Array], Array]:
+    """The map from linear predictors (R, u) to units of y under each replicate's residuals."""
+    if est.link is not None:
+        link = est.link
+        if of == "mean":
+            return link.mean
+        ratio = _replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move))
+        factor = median_residual(ratio, keep)
+        return lambda eta: link.mean(eta) * factor[:, None]
+    scale = est.scale
+    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
+    if of == "mean" and scale.closed == "identity":
+        return lambda eta: eta
+    residual = est.residual - move @ est.residual_jacobian.T
+    if of == "mean":
+        return lambda eta: mean_of(scale, c, eta, residual, keep)
+    shift = median_residual(residual, keep)[:, None]
+    if not scale.searched:
+        return lambda eta: scale.inverse(eta + shift, est.c)
+    return lambda eta: np.stack([scale.inverse(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+
+
+def _replicated(row: Array, count: int) -> Array:
+    return np.broadcast_to(row, (count, len(row)))
+
+
+def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Array | None, Array | None]:
+    """Row i's own share in the average over residuals and in the average over covariates, minus the value (n, G)."""
+    by_residual = None
+    if est.link is None and not (of == "mean" and est.scale.closed == "identity"):
+        by_residual = _residual_part(est, tar, share, of, value)
+    by_covariate = None
+    if tar.pattern is not None and len(share) > 1:
+        still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
+        back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1)
+        by_covariate = back[tar.pattern] - value
+    return by_residual, by_covariate
+
+
+def _residual_part(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> Array:
+    e = est.residual
+    if of == "median":
+        return _median_part(est, tar, share)
+    out = np.empty((est.n, tar.eta.shape[1]))
+    for g in range(tar.eta.shape[1]):
+        # the average over covariates of g(eta_c + e_i) is the smearing routine with the two swapped
+        eta = tar.eta[:, g]
+        if est.scale.closed == "exp":
+            out[:, g] = np.exp(e) * (np.exp(eta) @ share)
+        else:
+            out[:, g] = mean_of(est.scale, [est.c], e[None], eta[None], share[None])[0]
+    return out - value
+
+
+def _median_part(est: Estimate, tar: Target, share: Array) -> Array:
+    """Influence of the median residual: sign(e - med) / (2 f(med)), f by a normal-kernel density (Silverman 1986)."""
+    e = est.residual
+    middle = float(np.median(e))
+    spread = min(float(np.std(e)), float(np.subtract(*np.quantile(e, [0.75, 0.25]))) / 1.349) or float(np.std(e)) or 1.0
+    width = 0.9 * spread * est.n ** (-0.2)
+    density = float(np.exp(-0.5 * ((e - middle) / width) ** 2).mean() / (width * np.sqrt(2 * np.pi)))
+    shift = np.sign(e - middle) / (2 * density)
+    lean = np.array([est.scale.inverse_slope(tar.eta[:, g] + middle, est.c) @ share for g in range(tar.eta.shape[1])])
+    return np.asarray(shift[:, None] * lean)
+
+
+def average_slope(est: Estimate, *, of: str = "mean", errors: str = "robust") -> Averaged:
+    """Average over the rows of d mean / dx at each row's own x and covariates, (1,).
+
+    For log y with smearing this is S mean(eta' exp(eta)); undefined for groups.
+    """
+    rows = est.rows
+    eta_pull = est.jacobian_at(rows.x, rows.base, rows.modifier)
+    steep, steep_pull = est.slopes_at(rows.x, rows.modifier), est.slope_jacobian_at(rows.x, rows.modifier)
+
+    def values(move: Array, keep: Array | None) -> Array:
+        out = np.empty((len(move), 1))
+        block = max(1, BLOCK // est.n)
+        for start in range(0, len(move), block):
+            m = move[start : start + block]
+            k = None if keep is None else keep[start : start + block]
+            back = _slope_back(est, of, m, k)(est.eta + m @ eta_pull.T) * (steep + m @ steep_pull.T)
+            out[start : start + block, 0] = back.mean(axis=1) if k is None else (back * k).sum(axis=1) / k.sum(axis=1)
+        return out
+
+    no_move = np.zeros((1, eta_pull.shape[1]))
+    value = values(no_move, None)[0]
+    if errors == "robust" and jackknifed(est):
+        left = values(est.moves(), 1.0 - np.eye(est.n))
+        return Averaged(value, _jackknife_root(left), left, est.df_residual)
+    gradient = _gradient(est, values, eta_pull.shape[1])
+    own = (_slope_back(est, of, no_move, None)(est.eta[None])[0] * steep)[:, None] - value
+    parts = [own / est.n]
+    if est.link is None and est.scale.closed != "identity":
+        by_residual = _slope_residual_part(est, steep) - value
+        parts.append(by_residual / est.n)
+    if errors == "constant":
+        root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
+        return Averaged(value, np.vstack([root, *parts]), None, est.df_residual)
+    return Averaged(value, -est.moves() @ gradient + sum(parts), None, est.df_residual)
+
+
+def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Callable[[Array], Array]:
+    """d mean / d eta at linear predictors (R, u)."""
+    if est.link is not None:
+        link = est.link
+        if of == "mean":
+            return link.mean_slope
+        factor = median_residual(_replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move)), keep)
+        return lambda eta: link.mean_slope(eta) * factor[:, None]
+    scale = est.scale
+    if scale.closed == "identity":
+        return np.ones_like
+    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
+    residual = est.residual - move @ est.residual_jacobian.T
+    if of == "mean":
+        return lambda eta: mean_of(scale, c, eta, residual, keep, slope=True)
+    shift = median_residual(residual, keep)[:, None]
+    return lambda eta: np.stack([scale.inverse_slope(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+
+
+def _slope_residual_part(est: Estimate, steep: Array) -> Array:
+    """Average over rows c of eta'_c g'(eta_c + e_i), (n, 1): weights may be negative, so two averages are taken."""
+    total = np.zeros(est.n)
+    for sign in (1.0, -1.0):
+        part = np.maximum(sign * steep, 0.0)
+        if part.any():
+            share = part / part.sum()
+            mean = mean_of(est.scale, [est.c], est.residual[None], est.eta[None], share[None], slope=True)[0]
+            total = total + sign * part.sum() / est.n * mean
+    return total[:, None]

@@ -1,0 +1,130 @@
+"""Means and medians brought back from a transformed scale.
+
+The mean at a linear predictor eta is the average of g(eta + e_j) over the residuals (Duan 1983). It is taken in closed
+form for the scales that have one, exactly pair by pair while that is cheap, and otherwise through a Chebyshev
+interpolant in eta whose error is checked against exact averages.
+
+Replicates: every array has a leading axis R (one displayed fit, deletions of a row, training sets, resamples). `keep`
+(R, n) holds the weight of each residual in each replicate, or None where all count once.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import partial
+
+import numpy as np
+from numpy.polynomial import chebyshev
+
+from batten.engine.rows import Array
+from batten.families.base import Constants, Scale
+
+__all__ = ["keep_weights", "mean_factor", "mean_of", "median_residual", "row_means"]
+
+Undo = Callable[[Array], Array]
+
+#: pairs (eta, residual) evaluated exactly before interpolation takes over
+EXACT_PAIRS = 60_000
+#: residuals are pooled into this many narrow classes when there are more of them
+POOLED = 4096
+
+
+def keep_weights(keep: Array | None, count: int) -> Array | None:
+    """Weights of the residuals normalised to sum to one in each replicate (R, n), or None."""
+    return None if keep is None else keep / keep.sum(axis=1, keepdims=True)
+
+
+def _average(values: Array, weights: Array | None) -> Array:
+    """Average over the last axis, (R, n) -> (R,)."""
+    return values.mean(axis=-1) if weights is None else np.einsum("rn,rn->r", values, weights)
+
+
+def mean_factor(residual: Array, keep: Array | None = None) -> Array:
+    """Smearing factor of the log scale, mean(exp(e)), (R, n) -> (R,)."""
+    return _average(np.exp(residual), keep_weights(keep, residual.shape[-1]))
+
+
+def median_residual(residual: Array, keep: Array | None = None) -> Array:
+    """Median residual of each replicate (R,); keep must hold zeros and ones."""
+    if keep is None:
+        return np.asarray(np.median(residual, axis=-1))
+    return np.array([np.median(e[k > 0]) for e, k in zip(residual, keep, strict=True)])
+
+
+def mean_of(
+    scale: Scale,
+    c: list[Constants],
+    eta: Array,
+    residual: Array,
+    keep: Array | None = None,
+    *,
+    slope: bool = False,
+) -> Array:
+    """Mean response in units of y at each linear predictor.
+
+    eta (R, k), residual (R, n), c one tuple of constants per replicate -> (R, k). Identity needs no correction.
+    slope=True averages g' instead: the slope of the mean with respect to eta.
+    """
+    if scale.closed == "identity":
+        return np.ones_like(eta) if slope else eta
+    weights = keep_weights(keep, residual.shape[-1])
+    if scale.closed == "exp":
+        return np.asarray(np.exp(eta) * _average(np.exp(residual), weights)[:, None])
+    if scale.closed == "square" and eta.size and (eta.min(axis=1) + residual.min(axis=1)).min() >= 0:
+        first, second = _average(residual, weights), _average(residual**2, weights)
+        if slope:
+            return np.asarray(2 * (eta + first[:, None]))
+        return np.asarray(eta**2 + 2 * eta * first[:, None] + second[:, None])
+    out = np.empty_like(eta)
+    for r in range(len(eta)):
+        undo = partial(scale.inverse_slope if slope else scale.inverse, c=c[r])
+        out[r] = _general(undo, eta[r], residual[r], None if weights is None else weights[r])
+    return out
+
+
+def _general(undo: Undo, eta: Array, residual: Array, weights: Array | None) -> Array:
+    if weights is not None:
+        used = weights > 0
+        residual, weights = residual[used], weights[used]
+    if eta.size * residual.size <= EXACT_PAIRS:
+        return row_means(undo, eta, residual, weights)
+    if residual.size > 2 * POOLED:
+        residual, weights = _pool(residual, weights)
+    low, high = float(eta.min()), float(eta.max())
+    if not high > low:
+        return np.full_like(eta, row_means(undo, eta[:1], residual, weights)[0])
+    unit = (2 * eta - (low + high)) / (high - low)
+    probe = low + (high - low) * np.array([0.013, 0.29, 0.57, 0.93, 0.994])
+    exact = row_means(undo, probe, residual, weights)
+    for degree in (16, 32, 64, 128, 256):
+        nodes = np.cos(np.pi * (np.arange(degree + 1) + 0.5) / (degree + 1))
+        at_nodes = row_means(undo, low + (nodes + 1) * (high - low) / 2, residual, weights)
+        fitted = chebyshev.chebfit(nodes, at_nodes, degree)
+        error = np.abs(chebyshev.chebval((2 * probe - (low + high)) / (high - low), fitted) - exact)
+        if (error <= 1e-10 * np.abs(exact).max()).all():
+            break
+    return np.asarray(chebyshev.chebval(unit, fitted))
+
+
+def row_means(undo: Undo, eta: Array, residual: Array, weights: Array | None = None) -> Array:
+    """Exact averages of g(eta_i + e_j) over j for each i: (k,), (n,) -> (k,), blocked over i."""
+    out = np.empty_like(eta)
+    block = max(1, 2_000_000 // max(1, residual.size))
+    for start in range(0, eta.size, block):
+        g = undo(eta[start : start + block, None] + residual)
+        out[start : start + block] = g.mean(axis=1) if weights is None else g @ weights
+    return out
+
+
+def _pool(residual: Array, weights: Array | None) -> tuple[Array, Array]:
+    """Residuals pooled into narrow classes of equal width, each at its own mean; weights sum to one.
+
+    With 4096 classes over some ten SDs the second-order error is under 1e-7 of the curvature of g.
+    """
+    low, high = float(residual.min()), float(residual.max())
+    place = np.minimum(((residual - low) * (POOLED / (high - low))).astype(np.intp), POOLED - 1)
+    share = np.full(residual.size, 1.0 / residual.size) if weights is None else weights
+    total = np.bincount(place, share, POOLED)
+    full = total > 0
+    centre = np.bincount(place, share * residual, POOLED)[full] / total[full]
+    return centre, total[full]
