@@ -10,7 +10,7 @@ back on every later call.
 from __future__ import annotations
 
 from abc import ABC, abstractmethod
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import ClassVar, Literal
 
 import numpy as np
@@ -54,13 +54,22 @@ class Scale(ABC):
     closed: ClassVar[Literal["identity", "exp", "square", ""]] = ""
     #: False where a change of the units of y changes the answer (log1p, asinh, Yeo-Johnson)
     unit_free: ClassVar[bool] = True
-    #: place in the order from simple to elaborate (METHODS 4.5)
+    #: name for `only` where the shape does not decide it: "ladder", or "powers" where lambda is searched
+    group: ClassVar[str] = "ladder"
+    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
     rank: ClassVar[int] = 0
+    detail: ClassVar[int] = 0
+    #: whether a reader can be told in one sentence what the model says
+    readable: ClassVar[bool] = True
 
     @property
     @abstractmethod
     def key(self) -> str:
         """Left-hand side of the remedy's key, "log y"."""
+
+    def read(self, word: str, numbers: Constants | None) -> Scale | None:
+        """The member that is written `word(numbers) y`, or None when the word is another family's."""
+        return self if numbers is None and word == self.key.removesuffix(" y") else None
 
     @abstractmethod
     def words(self, y: str) -> str:
@@ -76,11 +85,12 @@ class Scale(ABC):
 
     @abstractmethod
     def inverse(self, z: Array, c: Constants) -> Array:
-        """g(z; c) in units of y; clipped to the boundary or NaN outside `limits`, as each member documents."""
+        """g(z; c) in units of y. Outside `limits`: the end of y's domain that lies there (0 for a square root below
+        zero, infinite for a reciprocal at or below zero), so that interval ends keep their meaning."""
 
     @abstractmethod
     def inverse_slope(self, z: Array, c: Constants) -> Array:
-        """g'(z; c)."""
+        """g'(z; c); outside `limits` 0 where the inverse is clipped and NaN where it is infinite."""
 
     @abstractmethod
     def log_jacobian(self, y: Array, c: Constants) -> Array:
@@ -91,7 +101,7 @@ class Scale(ABC):
         return -np.inf, np.inf
 
     def learn(self, y: Array) -> Constants:
-        """Constants that are fixed by y alone (not searched); () for most members."""
+        """Constants that are fixed by y alone (not searched): a given lambda, the sign of y; () for most members."""
         return ()
 
     def search(self) -> tuple[float, float]:
@@ -117,13 +127,28 @@ class Shape(ABC):
     needs_zero: ClassVar[bool] = False
     #: what the curve does beyond the data: "straight", "flat", "bends on", "levels off"
     tail: ClassVar[str] = "straight"
-    #: place in the order from simple to elaborate (METHODS 4.5)
+    #: True where `candidates` are all the values the searched constants can take (nothing to refine)
+    finite: ClassVar[bool] = False
+    #: name for `only`: "ladder", "powers", "polynomials", "groups", ...
+    group: ClassVar[str] = "ladder"
+    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
     rank: ClassVar[int] = 0
+    detail: ClassVar[int] = 0
+    #: whether a reader can be told in one sentence what the model says
+    readable: ClassVar[bool] = True
 
     @property
     @abstractmethod
     def key(self) -> str:
         """Right-hand side of the remedy's key, "spline4 x"."""
+
+    def read(self, word: str, numbers: Constants | None) -> Shape | None:
+        """The member that is written `word(numbers) x`, or None when the word is another family's."""
+        return self if numbers is None and word == self.key.removesuffix(" x") else None
+
+    def constant_words(self, x: str, y: str) -> tuple[str, ...]:
+        """What each searched constant means, "mass_kg at half of the ceiling"."""
+        return self.searched
 
     @abstractmethod
     def words(self, x: str) -> str:
@@ -147,7 +172,7 @@ class Shape(ABC):
 
     @abstractmethod
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
-        """Design columns (n, k)."""
+        """Design columns (n, k); NaN in rows where x is missing or outside the shape's domain."""
 
     @abstractmethod
     def slopes(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
@@ -156,6 +181,17 @@ class Shape(ABC):
     def theta_slopes(self, x: Array, state: Constants, theta: Constants) -> Array:
         """d columns / d theta, (q, n, k)."""
         return np.empty((0, len(x), self.columns(x[:1], state, theta).shape[1]))
+
+    def cuts(self, state: Constants, theta: Constants = ()) -> Constants | None:
+        """Places (knots, edges, breaks) between which every column is a cubic in x or less; None for other shapes.
+
+        A step belongs to the cell on its right: the cell of a cut starts at the cut.
+        """
+        return None
+
+    def penalty(self, state: Constants) -> Array | None:
+        """Roughness penalty (k, k) on the coefficients of the columns, its amount left to the engine; None for none."""
+        return None
 
     @abstractmethod
     def names(self, x: str, state: Constants, theta: Constants = ()) -> list[str]:
@@ -172,11 +208,20 @@ class Link(ABC):
     family: ClassVar[str]
     searched: tuple[str, ...] = ()
     reading: ClassVar[Literal["difference", "ratio", "none"]] = "ratio"
-    rank: ClassVar[int] = 0
+    #: name for `only`
+    group: ClassVar[str] = "links"
+    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
+    rank: ClassVar[int] = 3
+    detail: ClassVar[int] = 0
+    readable: ClassVar[bool] = True
 
     @property
     @abstractmethod
     def key(self) -> str: ...
+
+    def read(self, word: str, numbers: Constants | None) -> Link | None:
+        """The member that is written `word(numbers) y`, or None when the word is another family's."""
+        return self if numbers is None and word == self.key.removesuffix(" y") else None
 
     @abstractmethod
     def words(self, y: str) -> str: ...
@@ -211,11 +256,3 @@ class Link(ABC):
     @abstractmethod
     def code(self, y: str) -> Code:
         """The link in a script; `inverse` is the mean as an expression in `z`."""
-
-
-@dataclass(frozen=True)
-class Order:
-    """A remedy's place from simple to elaborate."""
-
-    rank: int
-    detail: tuple[int, ...] = field(default=())

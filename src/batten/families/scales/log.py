@@ -18,8 +18,8 @@ class Log(Scale):
     """z = log y for y > 0.
 
     Use when effects multiply and the spread grows with the level; not where y can be zero (a log link keeps zeros).
-    A difference on this scale is a ratio of medians, and of means where the spread does not change. The back-transformed
-    fit is a median; the mean is that times the smearing factor mean(exp(e)) (Duan 1983).
+    A difference on this scale is a ratio of medians, and of means where the spread does not change. The
+    back-transformed fit is a median; the mean is that times the smearing factor mean(exp(e)) (Duan 1983).
     """
 
     family: ClassVar[str] = "log"
@@ -48,10 +48,11 @@ class Log(Scale):
         return np.log(y)
 
     def inverse(self, z: Array, c: Constants) -> Array:
-        return np.exp(z)
+        with np.errstate(over="ignore"):
+            return np.exp(z)
 
     def inverse_slope(self, z: Array, c: Constants) -> Array:
-        return np.exp(z)
+        return self.inverse(z, c)
 
     def log_jacobian(self, y: Array, c: Constants) -> Array:
         return -np.log(y)

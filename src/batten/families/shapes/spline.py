@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import ClassVar
 
 import numpy as np
 
-from batten.errors import Refusal
+from batten.errors import Refusal, keys
 from batten.families.base import Array, Code, Constants, Shape
+from batten.families.numbers import listed, plain
 
 __all__ = ["FAMILY", "QUANTILES", "Spline", "knots_at_quantiles"]
 
@@ -46,11 +49,16 @@ class Spline(Shape):
 
     knots: int | tuple[float, ...] = 4
     family: ClassVar[str] = "spline"
+    group: ClassVar[str] = "splines"
+    readable: ClassVar[bool] = False
 
     @property
-    def rank(self) -> int:  # type: ignore[override]
-        """FP2 stands between the spline with three knots and the others (METHODS 4.5)."""
+    def rank(self) -> int:  # type: ignore[override]  # FP2 stands between three knots and more
         return 6 if self.count == 3 else 8
+
+    @property
+    def detail(self) -> int:  # type: ignore[override]  # by columns, before the polynomial with as many
+        return 10 * (self.count - 1)
 
     @property
     def count(self) -> int:
@@ -60,10 +68,31 @@ class Spline(Shape):
     def key(self) -> str:
         if isinstance(self.knots, int):
             return f"spline{self.knots} x"
-        return "spline(" + ", ".join(f"{k!r}" for k in self.knots) + ") x"
+        return f"spline({listed(self.knots)}) x"
+
+    def read(self, word: str, numbers: Constants | None) -> Shape | None:
+        written = re.fullmatch(r"spline(\d*)", word)
+        if not written or bool(written.group(1)) is (numbers is not None):
+            return None
+        if numbers is None:
+            count = int(written.group(1))
+            if count not in QUANTILES:
+                raise keys.wrong_numbers(
+                    f"{word} x", "A spline has 3 to 7 knots at its usual places.",
+                    instead="Write spline4 x, or knots by hand: spline(5, 10, 20) x.",
+                )  # fmt: skip
+            return Spline(count)
+        if len(numbers) < 3 or any(b <= a for a, b in pairwise(numbers)):
+            raise keys.wrong_numbers(
+                f"spline({listed(numbers)}) x", "A spline needs three or more knots in rising order.",
+                instead="Write spline(5, 10, 20) x, or spline4 x.",
+            )  # fmt: skip
+        return Spline(numbers)
 
     def words(self, x: str) -> str:
-        return f"spline in {x} ({self.count} knots)"
+        return f"spline in {x} ({self.count} knots)" if isinstance(self.knots, int) else (
+            f"spline in {x} (knots {listed(self.knots)})"
+        )
 
     def refuse(self, x: Array) -> Refusal | None:
         if not isinstance(self.knots, int):
@@ -86,11 +115,14 @@ class Spline(Shape):
     def slopes(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         return np.column_stack([np.ones_like(x), *_bends(x, state, power=2)])
 
+    def cuts(self, state: Constants, theta: Constants = ()) -> Constants | None:
+        return state
+
     def names(self, x: str, state: Constants, theta: Constants = ()) -> list[str]:
         return [x, *(f"{x} bend {j}" for j in range(1, len(state) - 1))]
 
     def code(self, x: str, state: Constants, theta: Constants = ()) -> Code:
-        knots = ", ".join(repr(k) for k in state)
+        knots = ", ".join(plain(k) for k in state)
         bends = tuple((f"s{j}", f"bend(x, {j - 1})") for j in range(1, len(state) - 1))
         return Code(
             columns=(("x", "x"), *bends),

@@ -35,6 +35,9 @@ class Straight(Shape):
     def slopes(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         return np.ones((len(x), 1))
 
+    def cuts(self, state: Constants, theta: Constants = ()) -> Constants | None:
+        return ()
+
     def names(self, x: str, state: Constants, theta: Constants = ()) -> list[str]:
         return [x]
 

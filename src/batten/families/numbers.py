@@ -1,0 +1,71 @@
+"""Small number work shared by the members: literals a person would write, and powers that never warn."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+
+import numpy as np
+
+from batten.families.base import Array
+
+__all__ = ["distinct", "exp", "listed", "log", "near", "origin", "plain", "power", "shown", "typical"]
+
+
+def plain(value: float) -> str:
+    """The shortest text that reads back as the same number: 10, 0.5, -2."""
+    return str(int(value)) if value == int(value) and abs(value) < 1e15 else repr(float(value))
+
+
+def shown(value: float) -> str:
+    """A number for labels: six digits, no trailing zeros."""
+    return f"{value:.6g}"
+
+
+def listed(values: Iterable[float]) -> str:
+    """Numbers inside brackets of a key: 10, 20, 40."""
+    return ", ".join(plain(v) for v in values)
+
+
+def distinct(x: Array) -> int:
+    """How many different values there are."""
+    return len(np.unique(x))
+
+
+def near(value: float, spread: float) -> float:
+    """`value` rounded to a tenth of the leading digit of `spread`: a literal a person would write (1898 -> 1900)."""
+    if not (spread > 0 and math.isfinite(spread)):
+        return float(value)
+    return float(round(value, 1 - math.floor(math.log10(spread))))
+
+
+def origin(x: Array) -> float:
+    """0, or a rounded middle of x where the values lie far from zero compared with their range.
+
+    Powers of x itself are easiest to read and are safe while max|x| is at most three ranges; beyond that they are
+    nearly collinear (years, temperatures in kelvin), and powers of the distance from a literal say the same better.
+    """
+    low, high = float(np.min(x)), float(np.max(x))
+    return near((low + high) / 2, high - low) if max(abs(low), abs(high)) > 3 * (high - low) else 0.0
+
+
+def typical(x: Array) -> float:
+    """A power of ten near the geometric mean of x > 0: dividing by it keeps high powers within range."""
+    return float(10.0 ** np.round(np.mean(np.log10(x))))
+
+
+def log(x: Array) -> Array:
+    """Natural logarithm; NaN where x is zero or negative."""
+    return np.log(np.where(x > 0, x, np.nan))
+
+
+def power(x: Array, exponent: float) -> Array:
+    """x to a fixed power; NaN where it is not defined or not finite."""
+    with np.errstate(all="ignore"):
+        raised = 1 / x if exponent == -1 else x**exponent
+    return np.where(np.isfinite(raised), raised, np.nan)
+
+
+def exp(t: Array) -> Array:
+    """e^t that stays finite far outside the data, so that products with it do too."""
+    return np.exp(np.clip(t, -300.0, 300.0))

@@ -1,0 +1,108 @@
+"""Fixed powers of the focal predictor: sqrt x, 1/x, x^2 and any other number."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from typing import ClassVar
+
+import numpy as np
+
+from batten.errors import Refusal, keys
+from batten.families.base import Array, Code, Constants, Shape
+from batten.families.numbers import plain, power, shown
+
+__all__ = ["FAMILIES", "FixedPower"]
+
+_KEYS = {0.5: "sqrt x", -1.0: "1/x"}
+_WORDS = {0.5: "square root of {x}", -1.0: "reciprocal of {x}", 2.0: "square of {x} only", 3.0: "cube of {x} only"}
+_LABELS = {0.5: "square root of {x}", -1.0: "1 / {x}", 2.0: "{x} squared", 3.0: "{x} cubed"}
+_EXPRESSIONS = {0.5: "np.sqrt(x)", -1.0: "1 / x"}
+_DETAIL = {0.5: 2, -1.0: 3, 2.0: 4}
+
+
+@dataclass(frozen=True)
+class FixedPower(Shape):
+    """One column, x to a fixed power (Tukey 1977, ladder of powers).
+
+    Use for a single bend that never turns: roots and reciprocals fade, squares steepen. x^2 alone has no straight part
+    (`poly2 x` has one); its zero slope stands at x = 0.
+    """
+
+    exponent: float
+    family: ClassVar[str] = "fixed power"
+    needs_zero: ClassVar[bool] = True
+    rank: ClassVar[int] = 1
+
+    @property
+    def tail(self) -> str:  # type: ignore[override]  # a reciprocal flattens, a square steepens
+        return "bends on" if self.exponent > 0 else "levels off"
+
+    @property
+    def detail(self) -> int:  # type: ignore[override]  # named powers come before other numbers
+        return _DETAIL.get(self.exponent, 5)
+
+    @property
+    def key(self) -> str:
+        return _KEYS.get(self.exponent, f"x^{plain(self.exponent)}")
+
+    def read(self, word: str, numbers: Constants | None) -> Shape | None:
+        named = {"sqrt": 0.5, "1/x": -1.0}
+        written = re.fullmatch(r"x\^([-+]?[0-9.]+(?:e[-+]?\d+)?)", word)
+        if numbers is not None or (word not in named and not written):
+            return None
+        exponent = named[word] if word in named else _number(word, written)
+        if exponent in (0.0, 1.0):
+            instead = "Write x." if exponent else "Write log x, which stands at power 0 of the ladder."
+            raise keys.wrong_numbers(word, f"x^{plain(exponent)} is {'x itself' if exponent else 'a constant'}.",
+                                     instead=instead)  # fmt: skip
+        return FixedPower(exponent)
+
+    def words(self, x: str) -> str:
+        return _WORDS.get(self.exponent, f"{{x}} to the power {shown(self.exponent)}").format(x=x)
+
+    def refuse(self, x: Array) -> Refusal | None:
+        if self.exponent > 0 and self.exponent == int(self.exponent):
+            return None
+        if self.exponent == -1 and (np.all(x > 0) or np.all(x < 0)):
+            return None
+        bad, needs, seen = x <= 0, "above zero", "zero or negative"
+        if self.exponent > 0:
+            bad, needs, seen = x < 0, "of zero or more", "negative"
+        if not bad.any():
+            return None
+        name = self.words("x")
+        return Refusal(
+            wrong=f"{name[0].upper()}{name[1:]} needs a predictor {needs}.",
+            seen=f"{int(bad.sum())} of {len(x)} values are {seen} (lowest {shown(np.min(x))}).",
+            instead="poly2 x, hinge x and spline4 x take any value.",
+        )
+
+    def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
+        return power(x, self.exponent)[:, None]
+
+    def slopes(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
+        return self.exponent * power(x, self.exponent - 1)[:, None]
+
+    def cuts(self, state: Constants, theta: Constants = ()) -> Constants | None:
+        return () if self.exponent in (2.0, 3.0) else None
+
+    def names(self, x: str, state: Constants, theta: Constants = ()) -> list[str]:
+        return [_LABELS.get(self.exponent, f"{{x}} to the power {shown(self.exponent)}").format(x=x)]
+
+    def code(self, x: str, state: Constants, theta: Constants = ()) -> Code:
+        expression = _EXPRESSIONS.get(self.exponent, f"x**{plain(self.exponent)}")
+        whole = self.exponent > 0 and self.exponent == int(self.exponent)
+        need = ("x >= 0", "of zero or more") if self.exponent > 0 else ("x != 0", "other than zero")
+        check = None if whole else (need[0], f"this power needs {x} {need[1]}")
+        return Code(columns=(("power_x", expression),), check=check)
+
+
+def _number(word: str, written: re.Match[str] | None) -> float:
+    try:
+        return float(written.group(1)) if written else float("nan")
+    except ValueError:
+        raise keys.wrong_numbers(word, "A power of x is written with one number.", instead="x^2, x^-0.5.") from None
+
+
+FAMILIES = (FixedPower(0.5), FixedPower(-1.0), FixedPower(2.0))

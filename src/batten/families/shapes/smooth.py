@@ -1,0 +1,112 @@
+"""A smooth curve with a penalty on its bending."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import ClassVar
+
+import numpy as np
+
+from batten.errors import Refusal
+from batten.families.base import Array, Code, Constants, Shape
+from batten.families.numbers import distinct, plain
+
+__all__ = ["FAMILY", "Smooth"]
+
+
+@dataclass(frozen=True)
+class Smooth(Shape):
+    """Cubic between 10 to 20 knots, straight beyond, its squared second derivative penalised (Reinsch 1967).
+
+    Use to see the relation with as few assumptions as possible; single coefficients mean nothing, read the curve. The
+    basis is the natural cubic spline on fixed knots (the penalised regression splines of Ruppert, Wand and Carroll
+    2003; Wood 2017, section 5.3), written as x and one rounded hinge per inner knot: zero on the left, slope 1 on the
+    right, its second derivative a triangle over the neighbouring knots. So the second derivative is linear between
+    knots, the penalty has a closed form, and no column cancels against another far to the right.
+    State: the knots, at equally spaced quantiles of x; their number depends on the number of rows alone.
+    """
+
+    family: ClassVar[str] = "smooth"
+    group: ClassVar[str] = "smooth"
+    rank: ClassVar[int] = 9
+    readable: ClassVar[bool] = False
+
+    @property
+    def key(self) -> str:
+        return "smooth x"
+
+    def words(self, x: str) -> str:
+        return f"smooth curve in {x}"
+
+    def refuse(self, x: Array) -> Refusal | None:
+        if distinct(x) >= 6:
+            return None
+        return Refusal(
+            wrong="A smooth curve needs six different values.",
+            seen=f"There are {distinct(x)} in {len(x)} rows.",
+            instead="poly2 x, or the predictor as groups: C(...) in the formula.",
+        )
+
+    def learn(self, x: Array, *, constant: bool = True) -> Constants:
+        count = min(10 + len(x) // 20, 20)
+        knots = np.quantile(x, np.linspace(0, 1, count))
+        apart = np.diff(knots, prepend=-np.inf) > 1e-6 * np.ptp(x)
+        return tuple(float(k) for k in knots[apart])
+
+    def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
+        return np.column_stack([x, *_rounded_hinges(x, state)])
+
+    def slopes(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
+        out = [np.ones_like(x)]
+        for low, middle, high in zip(state, state[1:], state[2:], strict=False):
+            a, b = middle - low, high - middle
+            p, v = np.clip(x - low, 0, a), np.clip(x - middle, 0, b)
+            out.append((p**2 / (2 * a) + v - v**2 / (2 * b)) * 2 / (a + b))
+        return np.column_stack(out)
+
+    def cuts(self, state: Constants, theta: Constants = ()) -> Constants | None:
+        return state
+
+    def penalty(self, state: Constants) -> Array | None:
+        """Integral of f''^2 times the range of the knots: tridiagonal, zero for the straight part."""
+        knots = np.array(state)
+        gap = np.diff(knots)
+        width = (gap[:-1] + gap[1:]) / 2
+        inner = np.diag(2 * width / 3) + np.diag(gap[1:-1] / 6, 1) + np.diag(gap[1:-1] / 6, -1)
+        out = np.zeros((len(knots) - 1, len(knots) - 1))
+        out[1:, 1:] = inner / np.outer(width, width) * (knots[-1] - knots[0])
+        return out
+
+    def names(self, x: str, state: Constants, theta: Constants = ()) -> list[str]:
+        return [x, *(f"{x} bend {j}" for j in range(1, len(state) - 1))]
+
+    def code(self, x: str, state: Constants, theta: Constants = ()) -> Code:
+        knots = ", ".join(plain(k) for k in state)
+        bends = tuple((f"s{j}", f"bend(x, {j})") for j in range(1, len(state) - 1))
+        return Code(
+            columns=(("x", "x"), *bends),
+            constants=(("KNOTS", f"({knots})", f"where the curve in {x} may bend; straight beyond the outer two"),),
+            helper=_HELPER,
+        )
+
+
+def _rounded_hinges(x: Array, knots: Constants) -> list[Array]:
+    """For each inner knot: 0 up to the knot before, slope 1 from the knot after, a cubic rounding between."""
+    out = []
+    for low, middle, high in zip(knots, knots[1:], knots[2:], strict=False):
+        a, b = middle - low, high - middle
+        p, v, beyond = np.clip(x - low, 0, a), np.clip(x - middle, 0, b), np.maximum(x - high, 0)
+        out.append((p**3 / (6 * a) + a * v / 2 + v**2 / 2 - v**3 / (6 * b)) * 2 / (a + b) + beyond)
+    return out
+
+
+_HELPER = '''
+def bend(x, j):
+    """Column j of a natural cubic spline: 0 before knot j - 1, slope 1 after knot j + 1, rounded between."""
+    a, b = KNOTS[j] - KNOTS[j - 1], KNOTS[j + 1] - KNOTS[j]
+    p, v = np.clip(x - KNOTS[j - 1], 0, a), np.clip(x - KNOTS[j], 0, b)
+    rounded = p**3 / (6 * a) + a * v / 2 + v**2 / 2 - v**3 / (6 * b)
+    return rounded * 2 / (a + b) + np.maximum(x - KNOTS[j + 1], 0)
+'''
+
+FAMILY = Smooth()
