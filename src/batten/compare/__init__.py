@@ -1,1 +1,1 @@
-"""."""
+"""The grid of remedies: held-out scores, ties, choice, and what the choice hangs on."""

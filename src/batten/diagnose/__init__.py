@@ -1,1 +1,1 @@
-"""."""
+"""What is wrong with one fit: bend, spread, influence."""

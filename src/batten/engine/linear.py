@@ -7,9 +7,9 @@ solutions), so that badly scaled polynomials keep the digits the data hold; else
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
-from scipy.linalg import solve_triangular
 
 from batten.engine.rows import Array, Rows
 
@@ -49,20 +49,19 @@ class Factored:
         """h_i (n,)."""
         return np.asarray(np.einsum("ij,ij->i", self.q, self.q))
 
-    def back(self, u: Array) -> Array:
-        """Solve R b = u in raw units; u (p,) or (p, k)."""
-        b = solve_triangular(self.r, u, check_finite=False)
-        return np.asarray(b / (self.length if b.ndim == 1 else self.length[:, None]))
+    @cached_property
+    def root(self) -> Array:
+        """R^-1 in raw units (p, p): X @ root is orthonormal, root root' = (X'X)^-1."""
+        return np.asarray(np.linalg.inv(self.r) / self.length[:, None])
 
     @property
     def inverse_cross(self) -> Array:
         """(X'X)^-1 in raw units (p, p)."""
-        root = self.back(np.eye(len(self.r)))
-        return np.asarray(root @ root.T)
+        return np.asarray(self.root @ self.root.T)
 
     def rows_of_inverse(self) -> Array:
-        """x_i' (X'X)^-1 for every row, (n, p): q R^-T in raw units."""
-        return np.asarray(self.back(self.q.T).T)
+        """x_i' (X'X)^-1 for every row, (n, p)."""
+        return np.asarray(self.q @ self.root.T)
 
 
 def dependent_columns(x: Array) -> list[int]:
@@ -86,15 +85,15 @@ def factor(x: Array) -> Factored:
 
 def solve(factored: Factored, x: Array, z: Array) -> tuple[Array, Array]:
     """Least-squares coefficients (p,) in raw units, refined, and the residuals (n,) of the refined solution."""
-    b = factored.back(factored.q.T @ z)
+    b = factored.root @ (factored.q.T @ z)
     if x.size > REFINE_UP_TO or x.size == 0:
         return b, z - x @ b
     wide_x, wide_z, wide_b = x.astype(np.longdouble), z.astype(np.longdouble), b.astype(np.longdouble)
     for _ in range(4):
         residual = wide_z - wide_x @ wide_b
         # the right-hand side of the semi-normal step is taken in extended precision, its solution need not be
-        push = (wide_x.T @ residual).astype(np.float64) / factored.length
-        step = factored.back(solve_triangular(factored.r, push, trans="T", check_finite=False))
+        push = (wide_x.T @ residual).astype(np.float64)
+        step = factored.root @ (factored.root.T @ push)
         wide_b = wide_b + step
         if not np.abs(step).max() > 1e-17 * np.abs(b).max():
             break

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -21,7 +22,10 @@ SCAN_ROWS = 20_000
 
 @dataclass(frozen=True, eq=False)
 class Searched:
-    """A model with constants inside: columns(theta) -> (n, k) and their slopes (q, n, k), beside fixed columns (n, p)."""
+    """A model with constants inside: columns(theta) -> (n, k) with slopes (q, n, k), beside fixed columns (n, p).
+
+    candidates (K, q): the grid; finite: there is nothing between its points. lower, upper (q,): limits of theta.
+    """
 
     fixed: Array
     columns: Callable[[Array], Array]
@@ -30,6 +34,26 @@ class Searched:
     lower: Array
     upper: Array
     finite: bool = False
+
+    @cached_property
+    def basis(self) -> Array:
+        """Orthonormal basis of the fixed columns."""
+        return _orthonormal(self.fixed)
+
+    @cached_property
+    def grid(self) -> Array:
+        """The candidates' columns (K, n, k), computed once for all training sets."""
+        return np.stack([self.columns(theta) for theta in self.candidates])
+
+    def part(self, which: Array) -> Searched:
+        """The same model on some of its rows; the grid is shared."""
+        columns, slopes = self.columns, self.slopes
+        smaller = Searched(
+            self.fixed[which], lambda t: columns(t)[which], lambda t: slopes(t)[:, which], self.candidates,
+            self.lower, self.upper, self.finite,
+        )  # fmt: skip
+        smaller.__dict__["grid"] = self.grid[:, which]
+        return smaller
 
 
 @dataclass(frozen=True, eq=False)
@@ -52,97 +76,116 @@ def _orthonormal(x: Array) -> Array:
 
 def scan(model: Searched, z: Array) -> Array:
     """Profile RSS of every candidate for every response: z (n, R) -> (K, R)."""
-    q = _orthonormal(model.fixed)
+    q = model.basis
     e = z - q @ (q.T @ z)
-    total = (e * e).sum(axis=0)
-    out = np.empty((len(model.candidates), z.shape[1]))
-    for i, theta in enumerate(model.candidates):
-        block = model.columns(theta)
-        block = block - q @ (q.T @ block)
-        scale = np.sqrt((block * block).sum(axis=0))
-        good = np.isfinite(scale) & (scale > 0)
-        basis = _orthonormal(block[:, good]) if good.any() else np.empty((len(e), 0))
-        out[i] = total - ((basis.T @ e) ** 2).sum(axis=0)
-    return np.where(np.isfinite(out), out, np.inf)
+    block = model.grid - q @ (q.T @ model.grid)
+    scale = np.sqrt(np.einsum("knj,knj->kj", block, block))
+    usable = np.isfinite(scale).all(axis=1) & (scale > 1e-10 * np.abs(model.grid).max(axis=1)).all(axis=1)
+    block = np.where(usable[:, None, None], block / np.where(scale > 0, scale, 1)[:, None, :], 0.0)
+    right = block.transpose(0, 2, 1) @ e
+    cross = block.transpose(0, 2, 1) @ block
+    if cross.shape[1] == 1:
+        gained = right[:, 0] ** 2
+    else:
+        gained = np.einsum("kjr,kjl,klr->kr", right, np.linalg.pinv(cross, rcond=1e-10, hermitian=True), right)
+    out = (e * e).sum(axis=0) - gained
+    return np.where(usable[:, None], np.maximum(out, 0.0), np.inf)
 
 
-def _solve_at(model: Searched, theta: Array, z: Array) -> tuple[float, Array, Array, Array]:
-    """RSS, residuals (n,), coefficients of the searched columns (k,), orthonormal basis."""
+@dataclass(frozen=True, eq=False)
+class _Place:
+    """The linear problem solved at one theta: rss, residuals (n,), coefficients (k,) and unit columns (n, k)."""
+
+    rss: float
+    residual: Array
+    coef: Array
+    block: Array
+    solver: Array
+
+
+def _solve_at(model: Searched, theta: Array, e: Array) -> _Place | None:
+    """Solve for the searched columns with the fixed ones projected out of both sides; e (n,) is already projected."""
+    q = model.basis
     block = model.columns(theta)
-    x = np.hstack([model.fixed, block])
-    length = np.sqrt((x * x).sum(axis=0))
-    if not (np.isfinite(length).all() and (length > 0).all()):
-        return np.inf, z, np.zeros(block.shape[1]), np.empty((len(z), 0))
-    q, r = np.linalg.qr(x / length)
-    if np.abs(np.diagonal(r)).min() < 1e-12:
-        return np.inf, z, np.zeros(block.shape[1]), q
-    c = q.T @ z
-    e = z - q @ c
-    b = np.linalg.solve(r, c) / length
-    return float(e @ e), e, b[model.fixed.shape[1] :], q
+    block = block - q @ (q.T @ block)
+    length = np.sqrt((block * block).sum(axis=0))
+    if not (np.isfinite(length).all() and length.min() > 0):
+        return None
+    unit = block / length
+    cross = unit.T @ unit
+    if len(cross) > 1 and np.linalg.eigvalsh(cross)[0] < 1e-12:
+        return None
+    solver = np.linalg.inv(cross)
+    c = solver @ (unit.T @ e)
+    residual = e - unit @ c
+    return _Place(float(residual @ residual), residual, c / length, unit, solver)
 
 
-def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60) -> Found:
+def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precision: float = 1e-13) -> Found:
     """Gauss-Newton on the projected model from theta (q,), each step halved until the RSS falls."""
-    rss, e, b, q = _solve_at(model, theta, z)
+    q = model.basis
+    e = z - q @ (q.T @ z)
+    place = _solve_at(model, theta, e)
+    if place is None:
+        return Found(theta, np.inf, settled=False)
     scale = np.maximum(np.abs(model.upper - model.lower), 1e-300)
     floor = 1e-26 * float(z @ z)
     for _ in range(steps):
-        if not np.isfinite(rss) or rss <= floor:
+        if place.rss <= floor:
             break
-        pull = np.einsum("qnk,k->nq", model.slopes(theta), b)
-        pull = pull - q @ (q.T @ pull)
-        step = np.linalg.lstsq(pull, e, rcond=1e-14)[0]
-        fraction, better = 1.0, False
+        step = _gauss_newton(model, theta, place)
+        fraction, better = 1.0, None
         while fraction > 1e-6:
             trial = np.clip(theta + fraction * step, model.lower, model.upper)
-            new = _solve_at(model, trial, z)
-            if new[0] < rss:
-                better = True
+            new = _solve_at(model, trial, e)
+            if new is not None and new.rss < place.rss:
+                better = new
                 break
-            fraction *= 0.5
-        if not better:
+            fraction *= 0.25
+        if better is None:
             break
         moved = np.abs(trial - theta)
-        theta, (rss, e, b, q) = trial, new
-        if (moved <= 1e-13 * np.maximum(np.abs(theta), 1e-8 * scale)).all():
+        theta, place = trial, better
+        if (moved <= precision * np.maximum(np.abs(theta), 1e-8 * scale)).all():
             break
     edge = ((theta <= model.lower) | (theta >= model.upper)).any()
-    return Found(theta, rss, settled=bool(np.isfinite(rss) and not edge))
+    return Found(theta, place.rss, settled=not edge)
 
 
-def search(model: Searched, z: Array, *, start: Array | None = None, tries: int = 3) -> Found:
+def _gauss_newton(model: Searched, theta: Array, place: _Place) -> Array:
+    """Step of theta (q,) with the linear coefficients free (Kaufman 1975)."""
+    q = model.basis
+    pull = np.einsum("qnk,k->nq", model.slopes(theta), place.coef)
+    pull = pull - q @ (q.T @ pull)
+    pull = pull - place.block @ (place.solver @ (place.block.T @ pull))
+    if pull.shape[1] == 1:
+        size = float(pull[:, 0] @ pull[:, 0])
+        return pull.T @ place.residual / size if size > 0 else np.zeros(1)
+    return np.asarray(np.linalg.lstsq(pull, place.residual, rcond=1e-14)[0])
+
+
+def search(
+    model: Searched, z: Array, *, start: Array | None = None, tries: int = 3, precision: float = 1e-13
+) -> Found:
     """Lowest profile over the candidates (and `start`), refined; a finite set is only looked through."""
-    thinned = _thin(model, z)
-    profile = scan(thinned[0], thinned[1][:, None])[:, 0]
+    every = max(1, len(z) // SCAN_ROWS)
+    small, thin_z = (model, z) if every == 1 else (model.part(np.arange(0, len(z), every)), z[::every])
+    profile = scan(model if model.finite else small, (z if model.finite else thin_z)[:, None])[:, 0]
     order = np.argsort(profile, kind="stable")
     if model.finite:
-        best = model.candidates[order[0]]
-        return Found(best, _solve_at(model, best, z)[0], settled=True)
-    if start is not None:
-        # a warm start saves the other starts unless the grid knows a clearly lower cell
-        found = refine(model, start, z)
-        if found.settled and found.rss <= profile[order[0]] * (1 if len(thinned[1]) == len(z) else np.inf):
-            return found
-        return min(found, refine(model, model.candidates[order[0]], z), key=lambda f: f.rss)
-    starts = _apart(model, order, profile, tries)
-    return min((refine(model, model.candidates[k], z) for k in starts), key=lambda f: f.rss)
-
-
-def _thin(model: Searched, z: Array) -> tuple[Searched, Array]:
-    """The model on an evenly spaced part of the rows, for choosing the starting cell at large n."""
-    every = len(z) // SCAN_ROWS
-    if every < 2:
-        return model, z
-    part = slice(None, None, every)
-    columns = model.columns
-    return Searched(
-        model.fixed[part], lambda t: columns(t)[part], model.slopes, model.candidates, model.lower, model.upper
-    ), z[part]
+        return Found(model.candidates[order[0]], float(profile[order[0]]), settled=bool(np.isfinite(profile[order[0]])))
+    if start is None:
+        starts = _apart(model, order, profile, tries)
+        return min((refine(model, model.candidates[k], z, precision=precision) for k in starts), key=lambda f: f.rss)
+    found = refine(model, start, z, precision=precision)
+    # a warm start saves the other starts unless the grid knows a clearly lower cell
+    if found.settled and found.rss * len(thin_z) / len(z) <= profile[order[0]] * (1 if every == 1 else 1.02):
+        return found
+    return min(found, refine(model, model.candidates[order[0]], z, precision=precision), key=lambda f: f.rss)
 
 
 def _apart(model: Searched, order: Array, profile: Array, tries: int) -> list[int]:
-    """The best candidate and the next best local minima of a one-dimensional grid (all of the best in more)."""
+    """The best candidate and the next best local minima of a one-dimensional grid (the best few in more)."""
     if model.candidates.shape[1] > 1:
         return [int(k) for k in order[:tries]]
     along = np.argsort(model.candidates[:, 0], kind="stable")

@@ -17,7 +17,7 @@ from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
 from batten.fit.guard import domain_trouble, too_few
 
-__all__ = ["Estimate", "estimate", "searched_model"]
+__all__ = ["Estimate", "estimate", "scale_power", "searched_model"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,6 +66,11 @@ class Estimate:
         return len(self.z)
 
     @property
+    def moving(self) -> int:
+        """How many of theta move continuously (powers chosen from a finite set do not)."""
+        return 0 if self.shape.finite else len(self.theta)
+
+    @property
     def mu(self) -> Array:
         """Fitted means of a link (n,)."""
         assert self.link is not None
@@ -93,7 +98,7 @@ class Estimate:
         """d eta / d (coef, theta, c) (k, P); the columns of c are zero, since eta does not hold them."""
         exact = self.design_at(x, base, modifier)
         parts = [exact]
-        if self.theta:
+        if self.moving:
             parts.append(self._theta_pull(self.shape.theta_slopes(x, self.state, self.theta), modifier))
         searched = len(self.c) if self.remedy.left.searched else 0
         if searched:
@@ -108,14 +113,14 @@ class Estimate:
         """d (d eta / dx) / d (coef, theta, c) (k, P); by central differences in x, which theta_slopes allow exactly."""
         s = self.shape.slopes(x, self.state, self.theta)
         p = len(self.coef)
-        out = np.zeros((len(x), p + len(self.theta) + (len(self.c) if self.remedy.left.searched else 0)))
+        out = np.zeros((len(x), p + self.moving + (len(self.c) if self.remedy.left.searched else 0)))
         out[:, p - s.shape[1] * modifier.shape[1] : p] = (s[:, None, :] * modifier[:, :, None]).reshape(len(x), -1)
-        if self.theta:
+        if self.moving:
             h = 1e-5 * (np.ptp(self.rows.x) or 1.0)
             up, down = (
                 self._theta_pull(self.shape.theta_slopes(x + d, self.state, self.theta), modifier) for d in (h, -h)
             )
-            out[:, p : p + len(self.theta)] = (up - down) / (2 * h)
+            out[:, p : p + self.moving] = (up - down) / (2 * h)
         return out
 
     def _focal(self, columns: Array, modifier: Array) -> Array:
@@ -220,7 +225,7 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
 
     return Searched(
         fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
-        candidates=shape.candidates(rows.x, state), lower=lower, upper=upper, finite=getattr(shape, "finite", False),
+        candidates=shape.candidates(rows.x, state), lower=lower, upper=upper, finite=shape.finite,
     )  # fmt: skip
 
 
@@ -253,7 +258,7 @@ def _fit_scale(
     trouble = domain_trouble(scale, c, eta, residual)
     if trouble:
         return trouble
-    df = rows.count - x.shape[1] - len(t)
+    df = rows.count - x.shape[1] - (0 if shape.finite else len(t))
     rss = float(residual @ residual)
     est = Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
@@ -261,7 +266,7 @@ def _fit_scale(
         log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c)),
         parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0), notes=("constant set by hand; not ranked",) if by_hand else (),
     )  # fmt: skip
-    if not t or getattr(shape, "finite", False):
+    if not est.moving:
         return est
     full = est.jacobian_at(rows.x, rows.base, rows.modifier)
     full = full[:, :-1] if scale.searched else full
@@ -290,7 +295,7 @@ def _constants(
             t = tuple(float(v) for v in found.theta)
         if search_c:
             x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
-            lam, inside = best_power(_power(scale), rows.y, factor(x).q, start=c[0] if turn else None)
+            lam, inside = best_power(scale_power(scale), rows.y, factor(x).q, start=c[0] if turn else None)
             if not inside:
                 return _edge(scale, lam)
             c = (lam,)
@@ -299,7 +304,8 @@ def _constants(
     return t, c
 
 
-def _power(scale: Scale) -> Power:
+def scale_power(scale: Scale) -> Power:
+    """The scale seen as a one-constant family, for the likelihood search."""
     low, high = scale.search()
     return Power(lambda y, v: scale.forward(y, (v,)), lambda y, v: scale.log_jacobian(y, (v,)), low, high)
 

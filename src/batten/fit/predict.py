@@ -13,7 +13,7 @@ from batten.fit.estimate import Estimate
 from batten.fit.means import Averaged, interval, means_at_rows
 from batten.fit.smear import row_means
 
-__all__ = ["Prediction", "Total", "new_row_interval", "predict", "rows_needed", "total"]
+__all__ = ["Prediction", "Total", "new_row_interval", "positive_by_nature", "predict", "rows_needed", "total"]
 
 #: rows predicted at once while every deletion is held
 CHUNK = 256
@@ -54,7 +54,7 @@ def predict(
         averaged = means_at_rows(est, *part, of=of, errors=errors, root=kind == "estimate")
         value[some] = averaged.value
         if kind == "estimate":
-            low[some], high[some] = interval(averaged, level, positive=_positive(est, averaged))
+            low[some], high[some] = interval(averaged, level, positive=positive_by_nature(est, averaged))
         elif kind == "new row":
             low[some], high[some] = new_row_interval(est, *part, level=level, errors=errors)
     notes = [""] * k
@@ -70,7 +70,7 @@ def predict(
     return Prediction(value, low, high, tuple(notes))
 
 
-def _positive(est: Estimate, averaged: Averaged) -> bool:
+def positive_by_nature(est: Estimate, averaged: Averaged) -> bool:
     """Whether the mean is positive by construction, so that its interval is taken on the log scale."""
     if isinstance(est.remedy.left, Link):
         return est.remedy.left.reading == "ratio"

@@ -1,0 +1,169 @@
+"""The whole comparison: fit every remedy, score it held out, measure its left-over bend, choose."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from types import MappingProxyType
+
+import numpy as np
+
+from batten.compare.choose import Candidate, Choice, choose
+from batten.compare.heldout import HeldOut, held_out
+from batten.diagnose.bend import Bend, Flexible, bend_of, flexible
+from batten.engine.folds import Splits, deal, default_repeats
+from batten.engine.rows import Rows
+from batten.errors import Refusal
+from batten.errors.compare import nothing_fits
+from batten.families.remedy import Remedy, parse
+from batten.fit.estimate import Estimate, estimate
+from batten.fit.means import averaged_means
+from batten.fit.question import Question
+
+__all__ = ["Comparison", "Progress", "compare", "extend"]
+
+#: progress(done, total, label)
+Progress = Callable[[int, int, str], None]
+STRAIGHT = "y ~ x"
+#: places along the data where a curve's turning is looked for
+TURN_PLACES = 41
+
+
+@dataclass(frozen=True, eq=False)
+class Comparison:
+    """Everything the search found.
+
+    estimates: every remedy that could be fitted, by key, in table order (held-out RMSE; unranked ones last).
+    scores, bends: by key, for the ranked ones (a bend may be None). refused: why others cannot be used.
+    """
+
+    rows: Rows
+    question: Question
+    splits: Splits
+    reference: Flexible
+    estimates: Mapping[str, Estimate]
+    scores: Mapping[str, HeldOut]
+    bends: Mapping[str, Bend | None]
+    turns: Mapping[str, str]
+    refused: Mapping[str, Refusal]
+    choice: Choice
+
+    @property
+    def candidates(self) -> dict[str, Candidate]:
+        """The remedies that can be ranked."""
+        return _candidates(self.estimates, self.scores, self.bends, self.turns)
+
+
+def compare(
+    rows: Rows, remedies: tuple[Remedy, ...], question: Question, *, unit: str = "", progress: Progress | None = None
+) -> Comparison:
+    """Fit, score and compare the remedies on the same rows and folds; the straight line is always among them."""
+    repeats = question.repeats or default_repeats(rows.n)
+    splits = deal(rows, folds=question.folds, repeats=repeats, seed=question.seed)
+    reference = flexible(rows, tolerance=question.tolerance, level=question.level)
+    wanted = dict.fromkeys([STRAIGHT, *(r.key for r in remedies)])
+    if question.planned is not None:
+        wanted[parse(question.planned).key] = None
+    return _run(rows, question, splits, reference, [parse(k) for k in wanted], unit=unit, progress=progress)
+
+
+def extend(old: Comparison, remedy: Remedy, *, unit: str = "") -> Comparison:
+    """The same comparison with one more remedy on the same rows and folds."""
+    new = _run(old.rows, old.question, old.splits, old.reference, [parse(STRAIGHT), remedy], unit=unit)
+    return _assemble(
+        old.rows, old.question, old.splits, old.reference, {**old.estimates, **new.estimates},
+        {**old.scores, **new.scores}, {**old.bends, **new.bends}, {**old.turns, **new.turns},
+        {**{k: v for k, v in old.refused.items() if k not in new.estimates}, **new.refused}, unit=unit,
+    )  # fmt: skip
+
+
+def _run(
+    rows: Rows,
+    question: Question,
+    splits: Splits,
+    reference: Flexible,
+    remedies: list[Remedy],
+    *,
+    unit: str,
+    progress: Progress | None = None,
+) -> Comparison:
+    steps = len(remedies) + 2
+    estimates: dict[str, Estimate] = {}
+    refused: dict[str, Refusal] = {}
+    for done, remedy in enumerate(remedies):
+        if progress:
+            progress(done, steps, remedy.key)
+        result = estimate(rows, remedy)
+        if isinstance(result, Refusal):
+            refused[remedy.key] = result
+        else:
+            estimates[remedy.key] = result
+    if progress:
+        progress(len(remedies), steps, "held-out errors")
+    scores: dict[str, HeldOut] = {}
+    for key, score in zip(list(estimates), held_out(list(estimates.values()), splits), strict=True):
+        if isinstance(score, Refusal):
+            refused[key] = score
+            del estimates[key]
+        else:
+            scores[key] = score
+    if progress:
+        progress(steps - 1, steps, "left-over bend")
+    bends = {key: bend_of(reference, est, level=question.level) for key, est in estimates.items()}
+    turns = {key: _turns(est, question.expect) for key, est in estimates.items()}
+    done = _assemble(rows, question, splits, reference, estimates, scores, bends, turns, refused, unit=unit)
+    if progress:
+        progress(steps, steps, "done")
+    return done
+
+
+def _assemble(
+    rows: Rows,
+    question: Question,
+    splits: Splits,
+    reference: Flexible,
+    estimates: Mapping[str, Estimate],
+    scores: Mapping[str, HeldOut],
+    bends: Mapping[str, Bend | None],
+    turns: Mapping[str, str],
+    refused: Mapping[str, Refusal],
+    *,
+    unit: str,
+) -> Comparison:
+    candidates = _candidates(estimates, scores, bends, turns)
+    if not candidates:
+        raise nothing_fits(refused)
+    choice = choose(candidates, question, splits.k, unit)
+    order = sorted(estimates, key=lambda k: (scores[k].rmse, estimates[k].remedy.order))
+
+    def frozen(items: Mapping[str, object]) -> Mapping[str, object]:
+        return MappingProxyType({k: items[k] for k in order})
+
+    return Comparison(
+        rows, question, splits, reference, frozen(estimates), frozen(scores), frozen(bends), frozen(turns),  # type: ignore[arg-type]
+        MappingProxyType(dict(refused)), choice,
+    )  # fmt: skip
+
+
+def _candidates(
+    estimates: Mapping[str, Estimate],
+    scores: Mapping[str, HeldOut],
+    bends: Mapping[str, Bend | None],
+    turns: Mapping[str, str],
+) -> dict[str, Candidate]:
+    return {k: Candidate(estimates[k], scores[k], bends[k], turns[k]) for k in scores}
+
+
+def _turns(est: Estimate, expect: str | None) -> str:
+    """Words for where the mean curve runs against the expected direction inside the data, or ""."""
+    if expect is None:
+        return ""
+    x = est.rows.x
+    places = np.linspace(x.min(), x.max(), TURN_PLACES)
+    curve = averaged_means(est, places, jackknife=False).value
+    steps = np.diff(curve) * (1 if expect == "rising" else -1)
+    against = np.flatnonzero(steps < -1e-9 * np.ptp(curve))
+    if not len(against):
+        return ""
+    start, stop = places[against[0]], places[against[-1] + 1]
+    return f"not {expect} between {start:.4g} and {stop:.4g}"

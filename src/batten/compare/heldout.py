@@ -1,0 +1,283 @@
+"""Held-out scores of many remedies on the same splits, everything re-learned inside every training set.
+
+Remedies that share a shape share its columns: fixed columns are solved for all training sets and all scales from one
+orthonormal basis, since leaving rows K out only changes its cross-product to I - Q_K'Q_K. Shapes that learn knots or
+edges get columns of their own in each training set, brought close to orthonormal by the all-rows triangle so that
+cross-products keep their digits; constants searched with the response are searched again from the all-rows place.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.special import gammaln
+
+from batten.engine.folds import Splits
+from batten.engine.irls import Mean, iterate
+from batten.engine.linear import design
+from batten.engine.power import best_power
+from batten.engine.rows import Array, Ints, Rows
+from batten.engine.search import search
+from batten.errors import Refusal
+from batten.families.base import Constants, Link, Scale
+from batten.fit.estimate import Estimate, scale_power, searched_model
+from batten.fit.smear import mean_of
+
+__all__ = ["HeldOut", "held_out"]
+
+#: above this many rows a log link takes one Newton step per training set from the all-rows fit
+FULL_STEPS_ROWS = 20_000
+
+
+@dataclass(frozen=True, eq=False)
+class HeldOut:
+    """Mean losses of every split (S,): squared and absolute error in units of y, share within 10%, log score.
+
+    squared belongs to the mean, absolute to the median. log_score is None for a pseudo-likelihood. rows (S,): held-out
+    rows of each split.
+    """
+
+    squared: Array
+    absolute: Array
+    within: Array
+    log_score: Array | None
+    rows: Ints
+
+    def overall(self, losses: Array) -> float:
+        """Average over all held-out rows."""
+        return float(losses @ self.rows / self.rows.sum())
+
+    @property
+    def rmse(self) -> float:
+        return float(np.sqrt(self.overall(self.squared)))
+
+
+@dataclass(frozen=True, eq=False)
+class _Trained:
+    """One training set's fit: linear predictor of all rows (n,), the scale's constants, and v = x0'(X'X)^-1 x0 of the
+    held-out rows."""
+
+    eta: Array
+    c: Constants
+    v: Array
+    columns: int
+
+
+def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusal]:
+    """Scores of every estimate on the same splits, in the order given."""
+    out: list[HeldOut | Refusal | None] = [None] * len(estimates)
+    sets = splits.sets
+    shapes: dict[str, list[int]] = {}
+    for i, est in enumerate(estimates):
+        if est.link is not None:
+            out[i] = _score_link(est, sets)
+        elif est.shape.searched:
+            out[i] = _score(est, sets, _searched_fits(est, sets))
+        else:
+            shapes.setdefault(est.shape.key, []).append(i)
+    for members in shapes.values():
+        group = [estimates[i] for i in members]
+        for i, result in zip(members, _score_group(group, sets), strict=True):
+            out[i] = result
+    return [r for r in out if r is not None]
+
+
+def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[HeldOut | Refusal]:
+    """All scales of one shape whose columns do not depend on the response."""
+    rows, shape = group[0].rows, group[0].shape
+    precondition = group[0].factored.root
+    states = [shape.learn(rows.x[train], constant=rows.constant) for train, _ in sets]
+    shared = all(state == group[0].state for state in states)
+    whole = group[0].factored.q if shared else None
+    width = len(precondition)
+    trained: list[list[_Trained] | Refusal] = [[] for _ in group]
+    z_fixed = np.column_stack([np.zeros(rows.count) if est.scale.searched else est.z for est in group])
+    for s, (train, test) in enumerate(sets):
+        basis = whole
+        if basis is None:
+            columns = shape.columns(rows.x, states[s])
+            if columns.shape[1] * rows.modifier.shape[1] + rows.base.shape[1] != width:
+                return [_fewer(shape.key)] * len(group)
+            basis = design(rows, columns) @ precondition
+        held = basis[test]
+        cross = basis.T @ basis - held.T @ held
+        inverse = _inverse(cross)
+        if inverse is None:
+            return [_rank(shape.key)] * len(group)
+        right = basis.T @ z_fixed - held.T @ z_fixed[test]
+        eta = basis @ (inverse @ right)
+        v = np.einsum("ij,jk,ik->i", held, inverse, held)
+        for j, est in enumerate(group):
+            fits = trained[j]
+            if isinstance(fits, Refusal):
+                continue
+            if est.scale.searched:
+                trained[j] = _with_power(est, fits, basis, inverse, train, v)
+            else:
+                fits.append(_Trained(eta[:, j], est.c, v, width))
+    return [
+        fits if isinstance(fits, Refusal) else _score(est, sets, iter(fits))
+        for est, fits in zip(group, trained, strict=True)
+    ]
+
+
+def _with_power(
+    est: Estimate, fits: list[_Trained], basis: Array, inverse: Array, train: Ints, v: Array
+) -> list[_Trained] | Refusal:
+    """The power of y learned again on one training set, and the fit at it."""
+    root = np.linalg.cholesky(inverse)
+    c, inside = best_power(scale_power(est.scale), est.rows.y[train], basis[train] @ root, start=est.c[0])
+    if not inside:
+        return Refusal(
+            "The power of y is not settled in every training set.", f"It runs to {c:.3g} in one of them.",
+            "A named scale: log y, sqrt y or 1/y.",
+        )  # fmt: skip
+    z = est.scale.forward(est.rows.y, (c,))
+    eta = basis @ (inverse @ (basis[train].T @ z[train]))
+    return [*fits, _Trained(eta, (c,), v, len(inverse))]
+
+
+def _searched_fits(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Iterator[_Trained | Refusal]:
+    """Shapes with constants of their own, searched again in each training set."""
+    rows, shape = est.rows, est.shape
+    whole = searched_model(rows, shape, est.state)
+    for train, test in sets:
+        part = rows.take(train)
+        state = shape.learn(part.x, constant=rows.constant)
+        # the grid only gives places to start from, so that of all rows serves every training set
+        model = whole.part(train) if state == est.state else searched_model(part, shape, state)
+        c, theta = est.c, np.array(est.theta)
+        for _ in range(8 if est.scale.searched else 1):
+            found = search(model, est.scale.forward(part.y, c), start=theta, precision=1e-9)
+            moved, theta = np.abs(found.theta - theta).max(), found.theta
+            if not est.scale.searched:
+                break
+            q = np.linalg.qr(np.hstack([model.fixed, model.columns(theta)]))[0]
+            c = (best_power(scale_power(est.scale), part.y, q, start=c[0])[0],)
+            if moved < 1e-8 * max(1.0, float(np.abs(theta).max())):
+                break
+        x = design(rows, shape.columns(rows.x, state, tuple(theta)), own_level=shape.own_level)
+        fitted = _least_squares(x, est.scale.forward(rows.y, c), train, test)
+        if fitted is None:
+            yield _rank(shape.key)
+            return
+        yield _Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
+
+
+def _least_squares(x: Array, z: Array, train: Ints, test: Ints) -> tuple[Array, Array] | None:
+    """Linear predictor of all rows and v of the held-out ones, fitted on the training rows."""
+    length = np.sqrt((x[train] ** 2).sum(axis=0))
+    if not (np.isfinite(length).all() and (length > 0).all()):
+        return None
+    unit = x / length
+    q, r = np.linalg.qr(unit[train])
+    if np.abs(np.diagonal(r)).min() < 1e-10:
+        return None
+    eta = unit @ np.linalg.solve(r, q.T @ z[train])
+    v = (np.linalg.solve(r.T, unit[test].T) ** 2).sum(axis=0)
+    return eta, v
+
+
+def _score(est: Estimate, sets: list[tuple[Ints, Ints]], fits: Iterator[_Trained | Refusal]) -> HeldOut | Refusal:
+    """Losses of one remedy on a transformed (or plain) response."""
+    scale, y = est.scale, est.rows.y
+    out = np.empty((4, len(sets)))
+    for s, ((train, test), fit) in enumerate(zip(sets, fits, strict=False)):
+        if isinstance(fit, Refusal):
+            return fit
+        z = est.z if fit.c == est.c else scale.forward(y, fit.c)
+        eta = fit.eta[test]
+        residual = z[train] - fit.eta[train]
+        low, high = scale.limits(fit.c)
+        with np.errstate(all="ignore"):
+            mean = mean_of(scale, [fit.c], eta[None], residual[None])[0]
+            median = scale.inverse(eta + float(np.median(residual)), fit.c)
+        if not (np.isfinite(mean).all() and eta.min() > low and eta.max() < high and _sound(scale, fit.c, eta, residual)):
+            return _unsafe(est)
+        df = len(train) - fit.columns
+        jacobian = scale.log_jacobian(y[test], fit.c)
+        out[:3, s] = _losses(y[test], mean, median)
+        out[3, s] = (_log_t(z[test] - eta, residual, fit.v, df) + jacobian).mean()
+    return HeldOut(out[0], out[1], out[2], out[3], np.array([len(test) for _, test in sets]))
+
+
+def _sound(scale: Scale, c: Constants, eta: Array, residual: Array) -> bool:
+    """Whether every pair eta + e can be brought back (closed boundaries are kept to, open ones must not be reached)."""
+    low, high = scale.limits(c)
+    edges = [low] if eta.min() + residual.min() <= low else []
+    edges += [high] if eta.max() + residual.max() >= high else []
+    with np.errstate(all="ignore"):
+        return all(bool(np.isfinite(scale.inverse(np.array([edge]), c)[0])) for edge in edges)
+
+
+def _losses(y: Array, mean: Array, median: Array) -> Array:
+    return np.array([
+        ((y - mean) ** 2).mean(), np.abs(y - median).mean(), (np.abs(y - mean) <= 0.1 * np.abs(y)).mean(),
+    ])  # fmt: skip
+
+
+def _log_t(error: Array, residual: Array, v: Array, df: int) -> Array:
+    """Log density of held-out z under the t predictive distribution with estimated coefficients and variance."""
+    variance = float(residual @ residual) / df * (1 + v)
+    return np.asarray(
+        gammaln((df + 1) / 2) - gammaln(df / 2) - 0.5 * np.log(df * np.pi * variance)
+        - (df + 1) / 2 * np.log1p(error**2 / (variance * df))
+    )  # fmt: skip
+
+
+def _score_link(est: Estimate, sets: list[tuple[Ints, Ints]]) -> HeldOut | Refusal:
+    """Losses of a mean model; its median is the mean times the median of y / mu."""
+    rows, shape, link = est.rows, est.shape, est.link
+    assert isinstance(link, Link)
+    model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
+    out = np.empty((3, len(sets)))
+    for s, (train, test) in enumerate(sets):
+        state = shape.learn(rows.x[train], constant=rows.constant)
+        x = design(rows, shape.columns(rows.x, state, est.theta), own_level=shape.own_level)
+        offset = None if rows.offset is None else rows.offset[train]
+        start = est.coef if state == est.state else None
+        steps = 1 if start is not None and rows.count > FULL_STEPS_ROWS else 60
+        eta0 = None if start is not None else est.eta[train]
+        done = iterate(model, x[train], rows.y[train], eta=eta0, coef=start, offset=offset, steps=steps)
+        if steps > 1 and not done.settled:
+            return _rank(shape.key)
+        eta = x[test] @ done.coef + (0 if rows.offset is None else rows.offset[test])
+        mean = link.mean(eta)
+        if not np.isfinite(mean).all():
+            return _unsafe(est)
+        out[:, s] = _losses(rows.y[test], mean, mean * float(np.median(rows.y[train] / done.mu)))
+    return HeldOut(out[0], out[1], out[2], None, np.array([len(test) for _, test in sets]))
+
+
+def _inverse(cross: Array) -> Array | None:
+    """Inverse of a near-identity cross-product, or None where the training set lost a direction."""
+    values, vectors = np.linalg.eigh(cross)
+    if values[0] < 1e-10 * max(1.0, values[-1]):
+        return None
+    return np.asarray((vectors / values) @ vectors.T)
+
+
+def _rank(shape: str) -> Refusal:
+    return Refusal(
+        wrong="One training set cannot fit this remedy.",
+        seen=f"With a tenth of the rows held out, columns of {shape} or of the covariates coincide.",
+        instead="Fewer columns, or merge levels that few rows have.",
+    )
+
+
+def _fewer(shape: str) -> Refusal:
+    return Refusal(
+        wrong="One training set has too few different values for this remedy.",
+        seen=f"{shape} loses a knot or a group when a tenth of the rows is held out.",
+        instead="Fewer knots or groups, or edges given by hand: bins(10, 20) x.",
+    )
+
+
+def _unsafe(est: Estimate) -> Refusal:
+    return Refusal(
+        wrong="Held-out predictions leave what this scale can undo.",
+        seen=f"In at least one training set {est.remedy.key} gives rows no finite mean.",
+        instead="log y or a log link, whose mean always exists.",
+    )
