@@ -1,8 +1,8 @@
 """Critical values for bands that hold everywhere along a curve at once.
 
 A curve is a path of linear combinations l(x)'b of coefficients with covariance V (p, p); a band is l'b -+ c SE. Three
-ways to c: Scheffe's is exact for the worst of all combinations, the tube bound pays only for the path (Naiman 1986; Sun and
-Loader 1994), draws approximate the exact value. Rows L (m, p) must run in order of x on a grid fine enough to draw.
+ways to c: Scheffe's is exact for the worst of all combinations, the tube bound pays only for the path (Naiman 1986; Sun
+and Loader 1994), draws approximate the exact value. Rows L (m, p) must run in order of x on a grid fine enough to draw.
 """
 
 from __future__ import annotations
@@ -41,16 +41,19 @@ def critical(L: Array, V: Array, *, df: float, level: float = 0.95) -> Critical:
 
 
 def path(L: Array, V: Array) -> Array:
-    """Unit vectors u(x) = V^(1/2) l(x) / |V^(1/2) l(x)|, (m, p); rows of no variance are left out."""
+    """Unit vectors u(x) = V^(1/2) l(x) / |V^(1/2) l(x)|, (m, p); rows of no variance are left out.
+
+    Give V of centred columns: in raw powers of a year the variances of a curve are lost in cancellation.
+    """
     # scaled first, so that a covariance of coefficients in very different units keeps its small directions
     size = np.sqrt(np.diag(V))
     size = np.where(size > 0, size, 1.0)
     values, vectors = np.linalg.eigh(V / np.outer(size, size))
-    root = vectors * np.sqrt(np.maximum(values, 0.0))
+    # eigenvalues that are rounding would leave directions where the combination is fixed
+    root = vectors * np.sqrt(np.where(values > 1e-14 * values.max(), values, 0.0))
     u = (L * size) @ root
     length = np.linalg.norm(u, axis=1)
-    # what rounding leaves of l where the combination is fixed is no direction
-    keep = length > 1e-12 * np.linalg.norm(L * size, axis=1)
+    keep = length > 1e-9 * np.linalg.norm(L * size, axis=1)
     return np.asarray(u[keep] / length[keep, None])
 
 
