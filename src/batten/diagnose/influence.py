@@ -92,9 +92,9 @@ def loo_log_scores(e: Array, h: Array, *, s2: float, df: int, log_jacobian: Arra
     """Leave-one-out log predictive density per row (n,), in units of y (proper: Gneiting and Raftery 2007).
 
     Of a Gaussian linear model on the scale of the fit, parameter uncertainty included: with
-    t_i = e_i / (s_(-i) sqrt(1 - h_i)), log f of a t on df - 1 at t_i + log((1 - h_i) / s2_(-i)) / 2 + log |T'(y_i)|. e: residuals; h: leverages;
-    s2 = RSS / df; df = n - p; log_jacobian: per row. Constants the data chose (lambda, powers, knots) count as known.
-    NaN for a row that owns a parameter.
+    t_i = e_i / (s_(-i) sqrt(1 - h_i)), log f of a t on df - 1 at t_i + log((1 - h_i) / s2_(-i)) / 2 + log |T'(y_i)|.
+    e: residuals; h: leverages; s2 = RSS / df; df = n - p; log_jacobian: per row. Constants the data chose (lambda,
+    powers, knots) count as known. NaN for a row that owns a parameter.
     """
     free = np.where(1 - h > OWNED, 1 - h, np.nan)
     s2_without = (s2 * df - e**2 / free) / (df - 1)

@@ -29,8 +29,8 @@ def scores_of_last(Q: Array, left: Array, *, tested: int, cluster: Ints | None =
 
     Rows: HC3, q_i e_i / (1 - h_i). Clusters: (I - Q_c'Q_c)^-1 Q_c'e_c times sqrt((G - 1) / G), which are the changes
     when cluster c is left out (CR3), or with many clusters Q_c'e_c times sqrt(G / (G - 1) (n - 1) / (n - p)) (CR1). A
-    row or cluster that alone settles an untested column is fitted exactly and says nothing about the tested ones; one that
-    alone settles a tested column makes them unknowable: None.
+    row or cluster that alone settles an untested column is fitted exactly and says nothing about the tested ones; one
+    that alone settles a tested column makes them unknowable: None.
     """
     n, p = Q.shape
     if cluster is None:

@@ -78,7 +78,8 @@ class Park:
 def koenker(e: Array, columns: Array) -> SpreadTest | None:
     """n R2 of squared residuals on `columns` (n, k) and a constant (Koenker 1981).
 
-    The default, robust to non-normality. For clustered rows use `add_on_robust` with a constant as the null design and e squared as the response.
+    The default, robust to non-normality. For clustered rows use `add_on_robust` with a constant as the null design and
+    e squared as the response.
     """
     return _auxiliary(e, columns)
 
@@ -149,7 +150,8 @@ def fitted_spread(e: Array, driver: Array) -> Spread | None:
 def park(y: Array, mu: Array) -> Park | None:
     """Modified Park test: Gamma-log regression of (y - mu)^2 on log mu (Manning and Mullahy 2001).
 
-    mu (n,): fitted means, from a log link or back-transformed, units of y. None unless all are above zero and differ. The standard error is of HC3 type, since squared residuals are far from Gamma.
+    mu (n,): fitted means, from a log link or back-transformed, units of y. None unless all are above zero and differ.
+    The standard error is of HC3 type, since squared residuals are far from Gamma.
     """
     if np.min(mu) <= 0 or len(y) < 4:
         return None

@@ -36,7 +36,8 @@ def percent_of_dummy(b: float, std_error: float, *, df: int, critical: float) ->
 
     Plain: Halvorsen and Palmquist 1980; Kennedy 1981; exact with its variance: van Garderen and Shah 2002, with
     m = df / 2, v = SE^2: 100 (exp(b) 0F1(m; -(m / 2) v) - 1), variance 100^2 exp(2 b) times
-    0F1(m; -(m / 2) v)^2 - 0F1(m; -2 m v). critical: t quantile of the interval. The exact forms take the errors to be normal with equal spread.
+    0F1(m; -(m / 2) v)^2 - 0F1(m; -2 m v). critical: t quantile of the interval. The exact forms take the errors to be
+    normal with equal spread.
     """
     m, v, growth = df / 2, std_error**2, float(np.exp(b))
     shrink = float(hyp0f1(m, -m * v / 2))
