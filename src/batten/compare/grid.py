@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
 from types import MappingProxyType
 
 import numpy as np
@@ -52,6 +52,18 @@ class Comparison:
     def candidates(self) -> dict[str, Candidate]:
         """The remedies that can be ranked."""
         return _candidates(self.estimates, self.scores, self.bends, self.turns)
+
+    def asked(self, question: Question, *, unit: str = "") -> Comparison:
+        """The same fits and scores under another aim."""
+        return replace(self, question=question, choice=choose(self.candidates, question, self.splits.k, unit))
+
+    def __getstate__(self) -> dict[str, object]:
+        # mapping proxies do not pickle
+        return {f.name: dict(v) if isinstance(v := getattr(self, f.name), Mapping) else v for f in fields(self)}
+
+    def __setstate__(self, state: dict[str, object]) -> None:
+        for name, value in state.items():
+            object.__setattr__(self, name, MappingProxyType(value) if isinstance(value, dict) else value)
 
 
 def compare(

@@ -41,6 +41,8 @@ class Problem:
     "why". announcements: choices made that the user should know ("focal predictor: mass_kg; others it could be: ...").
     units: unit of a column, "" where unknown. base_names, modifier_names: plain labels of the columns of `rows`; the
     modifier that is a constant has label "". zero_is_arbitrary: the focal predictor is a date, a year or a temperature.
+    profile: (base, modifier) of the rows with the covariates named in `at` set to the asked values, to average over
+    instead of the rows' own; None without `at`.
     design: codes further frames the same way and knows the formula's terms (for emitted scripts).
     """
 
@@ -58,6 +60,7 @@ class Problem:
     zero_is_arbitrary: bool
     design: Design
     frame_name: str = "data"
+    profile: tuple[Array, Array] | None = None
 
     def unit(self, column: str) -> str:
         """Unit of a column, "" when none is known."""
