@@ -1,8 +1,1 @@
-"""The public facades: `examine`, `Examination` and `Fit`."""
-
-from __future__ import annotations
-
-from batten.exam.examination import Examination, examine
-from batten.exam.fit import Fit
-
-__all__ = ["Examination", "Fit", "examine"]
+"""The public facades: one examination, and each fit in it."""

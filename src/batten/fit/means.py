@@ -182,7 +182,7 @@ def _with_errors(
         return _values(est, tar, share, of, move, keep)
 
     value = values(np.zeros((1, parameters)), None)[0]
-    if errors == "robust" and jackknife and jackknifed(est):
+    if errors == "robust" and jackknife and jackknifed(est, of):
         left = values(est.moves(), 1.0 - np.eye(est.n))
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
     gradient = _gradient(est, values, parameters)
@@ -199,8 +199,14 @@ def _with_errors(
     return Averaged(value, root, None, est.df_residual)
 
 
-def jackknifed(est: Estimate) -> bool:
-    """Whether intervals of this estimate leave out each row in turn."""
+def jackknifed(est: Estimate, of: str = "mean") -> bool:
+    """Whether intervals of this estimate leave out each row in turn.
+
+    A mean that is linear in the coefficients does not: its error is that of the coefficients (HC3), so that a straight
+    line's span effect and its coefficient carry the same interval.
+    """
+    if of == "mean" and not est.theta and est.link is None and est.scale.closed == "identity":
+        return False
     closed = est.link is not None or est.scale.closed != ""
     return est.n <= (JACKKNIFE_ROWS if closed else JACKKNIFE_GENERAL)
 
@@ -337,7 +343,7 @@ def average_slope(est: Estimate, *, of: str = "mean", errors: str = "robust") ->
 
     no_move = np.zeros((1, eta_pull.shape[1]))
     value = values(no_move, None)[0]
-    if errors == "robust" and jackknifed(est):
+    if errors == "robust" and jackknifed(est, of):
         left = values(est.moves(), 1.0 - np.eye(est.n))
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
     gradient = _gradient(est, values, eta_pull.shape[1])

@@ -1,0 +1,31 @@
+"""Questions to one fit that cannot be answered as asked."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from batten.errors import InputError, closest
+
+__all__ = ["not_a_level", "not_a_number", "one_of", "same_ends"]
+
+
+def one_of(what: str, given: object, options: Sequence[str]) -> InputError:
+    """An option that has only a few values was given another."""
+    listed = " or ".join(map(repr, options))
+    return InputError(f"`{what}` takes {listed}.", f"It is {given!r}.", closest(str(given), list(options)))
+
+
+def same_ends(a: float, focus: str) -> InputError:
+    return InputError(
+        "The two ends of the span are the same.",
+        f"Both are {focus} = {a:.6g}.",
+        "Give two different values.",
+    )
+
+
+def not_a_number(what: str, given: object) -> InputError:
+    return InputError(f"{what} must be a number.", f"It is {given!r}.", "Give one finite number.")
+
+
+def not_a_level(given: object) -> InputError:
+    return InputError("A level lies between 0 and 1.", f"It is {given!r}.", "Give 0.95 for 95% intervals.")
