@@ -14,11 +14,14 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.stats import t as student
 
-from batten.engine.rows import Array
+from batten.engine.rows import Array, Ints
 from batten.fit.estimate import Estimate
 from batten.fit.smear import mean_of, median_residual
 
-__all__ = ["Averaged", "Target", "average_slope", "averaged_means", "interval", "jackknifed", "means_at_rows"]
+__all__ = [
+    "BLOCK", "Averaged", "Target", "averaged_means", "interval", "jackknifed", "means_at_rows", "pattern_weights",
+    "patterns", "replicated", "target", "with_errors",
+]  # fmt: skip
 
 #: up to this many rows intervals of retransformed means leave out each row in turn
 JACKKNIFE_ROWS = 3_000
@@ -88,7 +91,7 @@ class Target:
     eta: Array
     jacobian: Array
     count: Array
-    pattern: Array | None
+    pattern: Ints | None
 
 
 def target(est: Estimate, xs: Array, *, base: Array | None = None, modifier: Array | None = None) -> Target:
@@ -97,19 +100,14 @@ def target(est: Estimate, xs: Array, *, base: Array | None = None, modifier: Arr
         base, modifier, count, pattern = patterns(est)
     else:
         count, pattern = np.ones(len(base)), None
-    u = len(base)
-    eta, jacobian = np.empty((u, len(xs))), None
-    for g, x in enumerate(xs):
-        at = np.full(u, float(x))
-        j = est.jacobian_at(at, base, modifier)
-        jacobian = np.empty((len(xs), u, j.shape[1])) if jacobian is None else jacobian
-        jacobian[g] = j
-        eta[:, g] = j[:, : len(est.coef)] @ est.coef
-    assert jacobian is not None
-    return Target(eta, jacobian, count, pattern)
+    u, places = len(base), len(xs)
+    every = np.repeat(np.asarray(xs, dtype=float), u)
+    j = est.jacobian_at(every, np.tile(base, (places, 1)), np.tile(modifier, (places, 1)))
+    eta = (j[:, : len(est.coef)] @ est.coef).reshape(places, u).T
+    return Target(eta, j.reshape(places, u, -1), count, pattern)
 
 
-def patterns(est: Estimate) -> tuple[Array, Array, Array, Array]:
+def patterns(est: Estimate) -> tuple[Array, Array, Array, Ints]:
     """Distinct covariate rows: base (u, q), modifier (u, m), count (u,), pattern of each row (n,)."""
     rows = est.rows
     both = np.hstack([rows.base, rows.modifier])
@@ -117,10 +115,11 @@ def patterns(est: Estimate) -> tuple[Array, Array, Array, Array]:
         return rows.base[:1], rows.modifier[:1], np.array([float(rows.count)]), np.zeros(rows.count, dtype=np.intp)
     # equal rows give equal sums in a fixed order of additions, so one sort of numbers replaces a sort of rows
     mark = np.zeros(rows.count)
-    for j, w in enumerate(np.random.default_rng(1).normal(size=both.shape[1])):
-        mark = mark + both[:, j] * w
+    draw: Array = np.random.default_rng(1).normal(size=(both.shape[1],))
+    for column, w in zip(both.T, draw, strict=True):
+        mark = mark + column * w
     _, first, pattern, count = np.unique(mark, return_index=True, return_inverse=True, return_counts=True)
-    return rows.base[first], rows.modifier[first], count.astype(float), pattern
+    return rows.base[first], rows.modifier[first], count.astype(float), pattern.astype(np.intp)
 
 
 def averaged_means(
@@ -176,27 +175,43 @@ def _with_errors(
     errors: str,
     jackknife: bool = True,
 ) -> Averaged:
-    parameters = tar.jacobian.shape[2]
-
     def values(move: Array, keep: Array | None) -> Array:
         return _values(est, tar, share, of, move, keep)
 
+    def own_shares(value: Array) -> list[Array]:
+        return [part for part in _direct_parts(est, tar, share, of, value) if part is not None]
+
+    return with_errors(
+        est, values, own_shares, parameters=tar.jacobian.shape[2], of=of, errors=errors, jackknife=jackknife
+    )
+
+
+def with_errors(
+    est: Estimate,
+    values: Callable[[Array, Array | None], Array],
+    own_shares: Callable[[Array], list[Array]],
+    *,
+    parameters: int,
+    of: str,
+    errors: str,
+    jackknife: bool = True,
+) -> Averaged:
+    """A functional of the rows with its uncertainty.
+
+    values(move (R, P), keep (R, n) or None) -> (R, G): the functional when the parameters have moved and row j counts
+    keep times. own_shares(value (G,)) -> arrays (n, G): row i's own share in each average it enters, minus the value.
+    """
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
         left = values(est.moves(), 1.0 - np.eye(est.n))
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
     gradient = _gradient(est, values, parameters)
-    by_residual, by_covariate = _direct_parts(est, tar, share, of, value)
+    shares = [part / est.n for part in own_shares(value)]
     if errors == "constant":
-        root = np.linalg.cholesky(est.covariance("constant") + 0.0).T @ gradient
-        parts = [root] + [p / est.n for p in (by_residual, by_covariate) if p is not None]
-        return Averaged(value, np.vstack(parts), None, est.df_residual)
+        root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
+        return Averaged(value, np.vstack([root, *shares]), None, est.df_residual)
     # moves are what leaving a row out does; its influence points the other way
-    root = -est.moves() @ gradient
-    for part in (by_residual, by_covariate):
-        if part is not None:
-            root = root + part / est.n
-    return Averaged(value, root, None, est.df_residual)
+    return Averaged(value, sum(shares, -est.moves() @ gradient), None, est.df_residual)
 
 
 def jackknifed(est: Estimate, of: str = "mean") -> bool:
@@ -221,38 +236,31 @@ def _gradient(est: Estimate, values: Callable[[Array, Array | None], Array], par
 
 def _values(est: Estimate, tar: Target, share: Array, of: str, move: Array, keep: Array | None) -> Array:
     """Averaged values (R, G) when the parameters have moved by move (R, P) and residual j counts keep (R, n) times."""
-    count, (u, points) = len(move), tar.eta.shape
-    out = np.empty((count, points))
-    block = max(1, BLOCK // max(est.n, u, 1))
+    if of == "mean" and keep is None and est.link is None and est.scale.closed == "identity":
+        return np.asarray(share @ tar.eta + move @ np.einsum("gup,u->pg", tar.jacobian, share))
+    count, (u, places) = len(move), tar.eta.shape
+    out = np.empty((count, places))
+    block = max(1, BLOCK // max(est.n, u * places))
     for start in range(0, count, block):
         some = slice(start, min(count, start + block))
-        m, k = move[some], None if keep is None else keep[some]
-        out[some] = _block_values(est, tar, share, of, m, k)
+        out[some] = _block_values(est, tar, share, of, move[some], None if keep is None else keep[some])
     return out
 
 
 def _block_values(est: Estimate, tar: Target, share: Array, of: str, move: Array, keep: Array | None) -> Array:
-    weights = _pattern_weights(tar, share, keep)
-    points = tar.eta.shape[1]
-    bring = _bring_back(est, of, move, keep)
-    out = np.empty((len(move), points))
-    for g in range(points):
-        eta = tar.eta[:, g] + move @ tar.jacobian[g].T
-        back = bring(eta)
-        out[:, g] = back @ weights if weights.ndim == 1 else np.einsum("ru,ru->r", back, weights)
-    return out
+    weights = pattern_weights(tar.pattern, share, keep)
+    u, places = tar.eta.shape
+    eta = tar.eta.T.reshape(-1) + move @ tar.jacobian.reshape(places * u, -1).T
+    back = _bring_back(est, of, move, keep)(eta).reshape(len(move), places, u)
+    return np.asarray(back @ weights if weights.ndim == 1 else np.einsum("rgu,ru->rg", back, weights))
 
 
-def _pattern_weights(tar: Target, share: Array, keep: Array | None) -> Array:
+def pattern_weights(pattern: Ints | None, share: Array, keep: Array | None) -> Array:
     """Weights of the covariate patterns in each replicate: (u,) or (R, u), summing to one."""
-    if keep is None or tar.pattern is None or len(share) == 1:
+    if keep is None or pattern is None or len(share) == 1:
         return share
     u = len(share)
-    counts = (
-        np.stack([np.bincount(tar.pattern, k, u) for k in keep])
-        if u < keep.shape[1]
-        else keep[:, np.argsort(tar.pattern)]
-    )
+    counts = np.stack([np.bincount(pattern, k, u) for k in keep]) if u < keep.shape[1] else keep[:, np.argsort(pattern)]
     return np.asarray(counts / counts.sum(axis=1, keepdims=True))
 
 
@@ -262,7 +270,7 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
         link = est.link
         if of == "mean":
             return link.mean
-        ratio = _replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move))
+        ratio = replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move))
         factor = median_residual(ratio, keep)
         return lambda eta: link.mean(eta) * factor[:, None]
     scale = est.scale
@@ -278,7 +286,7 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
     return lambda eta: np.stack([scale.inverse(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
 
 
-def _replicated(row: Array, count: int) -> Array:
+def replicated(row: Array, count: int) -> Array:
     return np.broadcast_to(row, (count, len(row)))
 
 
@@ -320,70 +328,3 @@ def _median_part(est: Estimate, tar: Target, share: Array) -> Array:
     shift = np.sign(e - middle) / (2 * density)
     lean = np.array([est.scale.inverse_slope(tar.eta[:, g] + middle, est.c) @ share for g in range(tar.eta.shape[1])])
     return np.asarray(shift[:, None] * lean)
-
-
-def average_slope(est: Estimate, *, of: str = "mean", errors: str = "robust") -> Averaged:
-    """Average over the rows of d mean / dx at each row's own x and covariates, (1,).
-
-    For log y with smearing this is S mean(eta' exp(eta)); undefined for groups.
-    """
-    rows = est.rows
-    eta_pull = est.jacobian_at(rows.x, rows.base, rows.modifier)
-    steep, steep_pull = est.slopes_at(rows.x, rows.modifier), est.slope_jacobian_at(rows.x, rows.modifier)
-
-    def values(move: Array, keep: Array | None) -> Array:
-        out = np.empty((len(move), 1))
-        block = max(1, BLOCK // est.n)
-        for start in range(0, len(move), block):
-            m = move[start : start + block]
-            k = None if keep is None else keep[start : start + block]
-            back = _slope_back(est, of, m, k)(est.eta + m @ eta_pull.T) * (steep + m @ steep_pull.T)
-            out[start : start + block, 0] = back.mean(axis=1) if k is None else (back * k).sum(axis=1) / k.sum(axis=1)
-        return out
-
-    no_move = np.zeros((1, eta_pull.shape[1]))
-    value = values(no_move, None)[0]
-    if errors == "robust" and jackknifed(est, of):
-        left = values(est.moves(), 1.0 - np.eye(est.n))
-        return Averaged(value, _jackknife_root(left), left, est.df_residual)
-    gradient = _gradient(est, values, eta_pull.shape[1])
-    own = (_slope_back(est, of, no_move, None)(est.eta[None])[0] * steep)[:, None] - value
-    parts = [own / est.n]
-    if est.link is None and est.scale.closed != "identity":
-        by_residual = _slope_residual_part(est, steep) - value
-        parts.append(by_residual / est.n)
-    if errors == "constant":
-        root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
-        return Averaged(value, np.vstack([root, *parts]), None, est.df_residual)
-    return Averaged(value, -est.moves() @ gradient + sum(parts), None, est.df_residual)
-
-
-def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Callable[[Array], Array]:
-    """d mean / d eta at linear predictors (R, u)."""
-    if est.link is not None:
-        link = est.link
-        if of == "mean":
-            return link.mean_slope
-        factor = median_residual(_replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move)), keep)
-        return lambda eta: link.mean_slope(eta) * factor[:, None]
-    scale = est.scale
-    if scale.closed == "identity":
-        return np.ones_like
-    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
-    residual = est.residual - move @ est.residual_jacobian.T
-    if of == "mean":
-        return lambda eta: mean_of(scale, c, eta, residual, keep, slope=True)
-    shift = median_residual(residual, keep)[:, None]
-    return lambda eta: np.stack([scale.inverse_slope(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
-
-
-def _slope_residual_part(est: Estimate, steep: Array) -> Array:
-    """Average over rows c of eta'_c g'(eta_c + e_i), (n, 1): weights may be negative, so two averages are taken."""
-    total = np.zeros(est.n)
-    for sign in (1.0, -1.0):
-        part = np.maximum(sign * steep, 0.0)
-        if part.any():
-            share = part / part.sum()
-            mean = mean_of(est.scale, [est.c], est.residual[None], est.eta[None], share[None], slope=True)[0]
-            total = total + sign * part.sum() / est.n * mean
-    return total[:, None]

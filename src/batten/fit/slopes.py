@@ -1,0 +1,133 @@
+"""Slopes of the mean in units of y per unit of x: at given places averaged over covariates, or averaged over the rows.
+
+d/dx of the average of g(eta + e) is the average of eta'(x) g'(eta + e), taken exactly; for log y with smearing this is
+S mean(eta' exp(eta)). Undefined for groups. At a break the slope on its left is given.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from batten.engine.rows import Array, Ints
+from batten.fit.estimate import Estimate
+from batten.fit.means import BLOCK, Averaged, pattern_weights, patterns, replicated, with_errors
+from batten.fit.smear import mean_of, median_residual
+
+__all__ = ["average_slope", "averaged_slopes"]
+
+
+@dataclass(frozen=True, eq=False)
+class _Place:
+    """Rows that one slope is averaged over: eta, steep = d eta / dx (u,), and their pulls (u, P) by the parameters."""
+
+    eta: Array
+    eta_pull: Array
+    steep: Array
+    steep_pull: Array
+
+
+def averaged_slopes(
+    est: Estimate,
+    xs: Array,
+    *,
+    of: str = "mean",
+    base: Array | None = None,
+    modifier: Array | None = None,
+    errors: str = "robust",
+    jackknife: bool = True,
+) -> Averaged:
+    """Slope of the mean (or "median") at each x of xs (G,), averaged over covariate rows: the rows' own by default.
+
+    base (u, q), modifier (u, m): covariate rows to average over instead, taken as fixed.
+    """
+    if base is None or modifier is None:
+        base, modifier, count, pattern = patterns(est)
+    else:
+        count, pattern = np.ones(len(base)), None
+    places = [_place(est, np.full(len(base), float(x)), base, modifier) for x in xs]
+    return _averaged(est, places, count / count.sum(), pattern, of, errors=errors, jackknife=jackknife)
+
+
+def average_slope(est: Estimate, *, of: str = "mean", errors: str = "robust", jackknife: bool = True) -> Averaged:
+    """Average over the rows of the slope at each row's own x and covariates, (1,)."""
+    rows = est.rows
+    place = _place(est, rows.x, rows.base, rows.modifier)
+    share = np.full(est.n, 1 / est.n)
+    return _averaged(est, [place], share, np.arange(est.n), of, errors=errors, jackknife=jackknife)
+
+
+def _place(est: Estimate, x: Array, base: Array, modifier: Array) -> _Place:
+    pull = est.jacobian_at(x, base, modifier)
+    eta = pull[:, : len(est.coef)] @ est.coef
+    return _Place(eta, pull, est.slopes_at(x, modifier), est.slope_jacobian_at(x, modifier))
+
+
+def _averaged(
+    est: Estimate,
+    places: list[_Place],
+    share: Array,
+    pattern: Ints | None,
+    of: str,
+    *,
+    errors: str,
+    jackknife: bool,
+) -> Averaged:
+    def values(move: Array, keep: Array | None) -> Array:
+        out = np.empty((len(move), len(places)))
+        block = max(1, BLOCK // max(est.n, len(share)))
+        for start in range(0, len(move), block):
+            m = move[start : start + block]
+            k = None if keep is None else keep[start : start + block]
+            weights = np.broadcast_to(pattern_weights(pattern, share, k), (len(m), len(share)))
+            back = _slope_back(est, of, m, k)
+            for g, at in enumerate(places):
+                slope = back(at.eta + m @ at.eta_pull.T) * (at.steep + m @ at.steep_pull.T)
+                out[start : start + block, g] = np.einsum("ru,ru->r", slope, weights)
+        return out
+
+    def own_shares(value: Array) -> list[Array]:
+        parts = []
+        if pattern is not None and len(share) > 1:
+            back = _slope_back(est, of, np.zeros((1, places[0].eta_pull.shape[1])), None)
+            still = np.column_stack([back(at.eta[None])[0] * at.steep for at in places])
+            parts.append(still[pattern] - value)
+        if est.link is None and est.scale.closed != "identity":
+            parts.append(np.column_stack([_residual_part(est, at, share) for at in places]) - value)
+        return parts
+
+    return with_errors(
+        est, values, own_shares, parameters=places[0].eta_pull.shape[1], of=of, errors=errors, jackknife=jackknife
+    )
+
+
+def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Callable[[Array], Array]:
+    """d mean / d eta at linear predictors (R, u)."""
+    if est.link is not None:
+        link = est.link
+        if of == "mean":
+            return link.mean_slope
+        factor = median_residual(replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move)), keep)
+        return lambda eta: link.mean_slope(eta) * factor[:, None]
+    scale = est.scale
+    if scale.closed == "identity":
+        return np.ones_like
+    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
+    residual = est.residual - move @ est.residual_jacobian.T
+    if of == "mean":
+        return lambda eta: mean_of(scale, c, eta, residual, keep, slope=True)
+    shift = median_residual(residual, keep)[:, None]
+    return lambda eta: np.stack([scale.inverse_slope(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+
+
+def _residual_part(est: Estimate, at: _Place, share: Array) -> Array:
+    """Average over covariates c of eta'_c g'(eta_c + e_i), (n,): weights may be negative, so two averages are taken."""
+    total = np.zeros(est.n)
+    for sign in (1.0, -1.0):
+        part = np.maximum(sign * at.steep * share, 0.0)
+        if part.any():
+            mean = mean_of(est.scale, [est.c], est.residual[None], at.eta[None], (part / part.sum())[None], slope=True)
+            total = total + sign * part.sum() * mean[0]
+    return total
