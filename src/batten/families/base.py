@@ -56,7 +56,7 @@ class Scale(ABC):
     unit_free: ClassVar[bool] = True
     #: name for `only` where the shape does not decide it: "ladder", or "powers" where lambda is searched
     group: ClassVar[str] = "ladder"
-    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
+    #: place in the order from simple to elaborate, and the place among members of the same rank
     rank: ClassVar[int] = 0
     detail: ClassVar[int] = 0
     #: whether a reader can be told in one sentence what the model says
@@ -131,7 +131,7 @@ class Shape(ABC):
     finite: ClassVar[bool] = False
     #: name for `only`: "ladder", "powers", "polynomials", "groups", ...
     group: ClassVar[str] = "ladder"
-    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
+    #: place in the order from simple to elaborate, and the place among members of the same rank
     rank: ClassVar[int] = 0
     detail: ClassVar[int] = 0
     #: whether a reader can be told in one sentence what the model says
@@ -210,7 +210,7 @@ class Link(ABC):
     reading: ClassVar[Literal["difference", "ratio", "none"]] = "ratio"
     #: name for `only`
     group: ClassVar[str] = "links"
-    #: place in the order from simple to elaborate (METHODS 4.5), and the place among members of the same rank
+    #: place in the order from simple to elaborate, and the place among members of the same rank
     rank: ClassVar[int] = 3
     detail: ClassVar[int] = 0
     readable: ClassVar[bool] = True

@@ -113,14 +113,14 @@ def default_grid(y: Array, x: Array, *, zero_is_arbitrary: bool) -> tuple[Remedy
     )
 
 
-def expand(only: Iterable[str], grid: Sequence[Remedy]) -> tuple[Remedy, ...]:
+def expand(only: str | Iterable[str], grid: Sequence[Remedy]) -> tuple[Remedy, ...]:
     """The remedies that `only` names, from simple to elaborate, each once.
 
     A family's name stands for its members in `grid`; where the grid has none (shares of a response beyond 0 to 1), for
     the members it would have, so that their refusal can be read. Any other name is a key.
     """
     chosen: list[Remedy] = []
-    for name in only:
+    for name in [only] if isinstance(only, str) else only:
         if name in FAMILIES:
             chosen += [r for r in grid if r.family == name] or [r for r in _full_grid() if r.family == name]
         elif "~" in name:

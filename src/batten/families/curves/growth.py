@@ -43,11 +43,15 @@ class Growth(Shape):
         )
 
     def candidates(self, x: Array, state: Constants) -> Array:
-        """Places from half a range before the data to one range after; 1.5 to 25 steepness units over the range."""
+        """Places from half a range before the data to one range after; 1.5 to 25 steepness units over the range.
+
+        Curves that are still zero at their higher end of the data are left out: nothing could scale them up.
+        """
         low, width = float(np.min(x)), float(np.ptp(x))
-        places = low + width * np.linspace(-0.5, 2.0, 11)
-        sizes = np.array([1.5, 3.0, 6.0, 12.0, 25.0]) / width
-        return np.array([(m, r) for m in places for r in (*-sizes[::-1], *sizes)])
+        sizes = np.array([1.5, 3.0, 6.0, 12.0, 25.0])
+        grid = np.array([(m, r) for m in np.linspace(-0.5, 2.0, 11) for r in (*-sizes[::-1], *sizes)])
+        highest = np.maximum(grid[:, 1] * (0 - grid[:, 0]), grid[:, 1] * (1 - grid[:, 0]))
+        return grid[self.share(highest)[0] > 1e-6] * (width, 1 / width) + (low, 0.0)
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
         low, width = float(np.min(x)), float(np.ptp(x))

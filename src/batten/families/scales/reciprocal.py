@@ -9,7 +9,6 @@ import numpy as np
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Scale
-from batten.families.numbers import plain
 
 __all__ = ["FAMILY", "Reciprocal"]
 
@@ -65,12 +64,12 @@ class Reciprocal(Scale):
         return (0.0, np.inf) if c[0] > 0 else (-np.inf, 0.0)
 
     def code(self, y: str, c: Constants) -> Code:
-        side, words = ("z > 0", "above") if c[0] > 0 else ("z < 0", "below")
-        return Code(
-            columns=(("z", "1 / y"),),
-            inverse=f"1 / np.where({side}, z, {plain(0.0 * c[0]) if c[0] > 0 else '-0.0'})",
-            check=(side.replace("z", "y"), f"the reciprocal needs {y} {words} zero throughout"),
-        )
+        if c[0] > 0:
+            inverse, condition, side = "np.where(z <= 0, np.inf, 1 / z)", "y > 0", "above"
+        else:
+            inverse, condition, side = "np.where(z >= 0, -np.inf, 1 / z)", "y < 0", "below"
+        check = (condition, f"the reciprocal needs {y} {side} zero throughout")
+        return Code(columns=(("z", "1 / y"),), inverse=inverse, check=check)
 
 
 FAMILY = Reciprocal()

@@ -57,6 +57,10 @@ class YeoJohnson(Scale):
     def learn(self, y: Array) -> Constants:
         return () if self.power is None else (self.power,)
 
+    def search(self) -> tuple[float, float]:
+        """Symmetric about 1, as the family is: turning y around turns L into 2 - L."""
+        return -3.0, 5.0
+
     def forward(self, y: Array, c: Constants) -> Array:
         size = np.log1p(np.abs(y))
         return np.where(y < 0, -_bend(size, 2 - c[0]), _bend(size, c[0]))

@@ -116,7 +116,7 @@ def _equal_count(x: Array, count: int) -> Constants:
     """Inner edges, each the first value of its group, so that ties stay together and units do not matter."""
     ordered = np.sort(x)
     smallest = max(10.0, 0.05 * len(x))
-    for groups in range(count, 1, -1):
+    for groups in range(min(count, len(x)), 1, -1):
         starts = np.ceil(np.arange(1, groups) * len(x) / groups).astype(int)
         edges = np.unique(ordered[starts])
         edges = edges[edges > ordered[0]]

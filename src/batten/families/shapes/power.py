@@ -91,8 +91,11 @@ class EstimatedPower(Shape):
         return [f"({name} to the power {p} - 1) / {p}" if state[0] and theta[0] else f"{name} to the power {p}"]
 
     def code(self, x: str, state: Constants, theta: Constants = ()) -> Code:
-        raised = f"(x / UNIT)**{'POWER'}"
-        column = raised if not state[0] else f"({raised} - 1) / POWER" if theta[0] else "np.log(x / UNIT)"
+        column = "np.exp(POWER * np.log(x / UNIT))"
+        if state[0]:
+            column = "((x / UNIT)**POWER - 1) / POWER" if theta[0] else "np.log(x / UNIT)"
+            if 0 < abs(theta[0]) < 1e-3:  # the subtraction would lose digits
+                column = "np.expm1(POWER * np.log(x / UNIT)) / POWER"
         return Code(
             columns=(("power_x", column),),
             constants=(

@@ -11,7 +11,7 @@ import numpy as np
 
 from batten.errors import Refusal, keys
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import listed, plain
+from batten.families.numbers import listed, plain, shown
 
 __all__ = ["FAMILY", "QUANTILES", "Spline", "knots_at_quantiles"]
 
@@ -31,10 +31,10 @@ def knots_at_quantiles(x: Array, count: int) -> Constants:
     Ties are dropped, so fewer knots than asked for may come back.
     """
     knots = np.quantile(x, QUANTILES[count])
-    if len(x) < 100:
-        ordered = np.sort(x)
-        fifth = min(5, (len(x) + 1) // 2)
-        knots[0], knots[-1] = min(knots[0], ordered[fifth - 1]), max(knots[-1], ordered[-fifth])
+    if 10 <= len(x) < 100:
+        low, high = np.sort(x)[[4, -5]]
+        if low < knots[1] and knots[-2] < high:  # in a few rows the fifth value lies too far in
+            knots[0], knots[-1] = low, high
     return tuple(float(k) for k in np.unique(knots))
 
 
@@ -95,15 +95,23 @@ class Spline(Shape):
         )
 
     def refuse(self, x: Array) -> Refusal | None:
-        if not isinstance(self.knots, int):
-            return None
-        found = len(self.learn(x))
-        if found >= min(self.knots, 3) and found == self.knots:
+        values = np.unique(x)
+        if isinstance(self.knots, int):
+            found = len(self.learn(x))
+            if found == self.knots < len(values) + 1:
+                return None
+            return Refusal(
+                wrong=f"A spline with {self.knots} knots needs {self.knots} different knot places.",
+                seen=f"Ties among the values leave {found} ({len(values)} different values in {len(x)} rows).",
+                instead="Fewer knots, groups, or knots given by hand: spline(10, 20, 40) x.",
+            )
+        if len(values) >= self.count and _told_apart(self, values):
             return None
         return Refusal(
-            wrong=f"A spline with {self.knots} knots needs {self.knots} different knot places.",
-            seen=f"Ties among the values leave {found} ({len(np.unique(x))} different values in {len(x)} rows).",
-            instead="Fewer knots, groups, or knots given by hand: spline(10, 20, 40) x.",
+            wrong="Rows must lie between the knots, or the pieces of the spline cannot be told apart.",
+            seen=f"Knots at {listed(self.knots)}; {len(values)} different values from {shown(values[0])} "
+            f"to {shown(values[-1])}.",
+            instead=f"Other knots, or knots at quantiles of x: spline{min(max(self.count, 3), 7)} x.",
         )
 
     def learn(self, x: Array, *, constant: bool = True) -> Constants:
@@ -129,6 +137,14 @@ class Spline(Shape):
             constants=(("KNOTS", f"({knots})", f"where the curve in {x} may bend; straight beyond the outer two"),),
             helper=_HELPER,
         )
+
+
+def _told_apart(shape: Spline, values: Array) -> bool:
+    """Whether a constant and the columns are linearly independent on up to 2,000 of the different values."""
+    some = values[np.unique(np.linspace(0, len(values) - 1, min(len(values), 2000)).astype(int))]
+    columns = np.column_stack([np.ones_like(some), shape.columns(some, shape.learn(some))])
+    lengths = np.linalg.norm(columns, axis=0)
+    return bool(lengths.all()) and int(np.linalg.matrix_rank(columns / lengths, tol=1e-10)) == columns.shape[1]
 
 
 def _bends(x: Array, knots: Constants, *, power: int) -> list[Array]:
