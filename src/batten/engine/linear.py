@@ -13,7 +13,7 @@ import numpy as np
 
 from batten.engine.rows import Array, Rows
 
-__all__ = ["Factored", "dependent_columns", "design", "factor", "solve"]
+__all__ = ["Factored", "design", "factor", "solve"]
 
 #: a column is aliased when less than this share of its length is left after the columns before it
 ALIASED = 1e-11
@@ -49,6 +49,12 @@ class Factored:
         """h_i (n,)."""
         return np.asarray(np.einsum("ij,ij->i", self.q, self.q))
 
+    @property
+    def aliased(self) -> int:
+        """How many columns are (numerically) combinations of the columns before them."""
+        left = np.abs(np.diagonal(self.r))
+        return self.r.shape[1] - len(left) + int((left < ALIASED).sum())
+
     @cached_property
     def root(self) -> Array:
         """R^-1 in raw units (p, p): X @ root is orthonormal, root root' = (X'X)^-1."""
@@ -64,19 +70,8 @@ class Factored:
         return np.asarray(self.q @ self.root.T)
 
 
-def dependent_columns(x: Array) -> list[int]:
-    """Positions of columns that are (numerically) combinations of the columns before them."""
-    length = np.sqrt((x * x).sum(axis=0))
-    zero = length == 0
-    r = np.linalg.qr(x / np.where(zero, 1.0, length), mode="r")
-    left = np.abs(np.diagonal(r))
-    if len(left) < x.shape[1]:  # more columns than rows
-        left = np.append(left, np.zeros(x.shape[1] - len(left)))
-    return [int(j) for j in np.flatnonzero((left < ALIASED) | zero)]
-
-
 def factor(x: Array) -> Factored:
-    """QR with columns scaled to unit length; the caller has made sure that no column is aliased."""
+    """QR with columns scaled to unit length; ask `aliased` before using it."""
     length = np.sqrt((x * x).sum(axis=0))
     length = np.where(length == 0, 1.0, length)
     q, r = np.linalg.qr(x / length)

@@ -128,40 +128,60 @@ def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precisio
     place = _solve_at(model, theta, e)
     if place is None:
         return Found(theta, np.inf, settled=False)
-    scale = np.maximum(np.abs(model.upper - model.lower), 1e-300)
     floor = 1e-26 * float(z @ z)
     for _ in range(steps):
         if place.rss <= floor:
             break
-        step = _gauss_newton(model, theta, place)
+        step, promised = _gauss_newton(model, theta, place)
+        if promised <= 1e-9 * place.rss:
+            theta, place = _settle(model, theta, place, e, precision)
+            break
         fraction, better = 1.0, None
-        while fraction > 1e-6:
+        while fraction > 1e-4:
             trial = np.clip(theta + fraction * step, model.lower, model.upper)
             new = _solve_at(model, trial, e)
             if new is not None and new.rss < place.rss:
                 better = new
                 break
-            fraction *= 0.25
+            fraction *= 0.2
         if better is None:
             break
-        moved = np.abs(trial - theta)
         theta, place = trial, better
-        if (moved <= precision * np.maximum(np.abs(theta), 1e-8 * scale)).all():
-            break
     edge = ((theta <= model.lower) | (theta >= model.upper)).any()
     return Found(theta, place.rss, settled=not edge)
 
 
-def _gauss_newton(model: Searched, theta: Array, place: _Place) -> Array:
-    """Step of theta (q,) with the linear coefficients free (Kaufman 1975)."""
+def _settle(model: Searched, theta: Array, place: _Place, e: Array, precision: float) -> tuple[Array, _Place]:
+    """Final steps, where the RSS no longer shows a step's gain: as long as each is smaller than the one before."""
+    size = np.inf
+    for _ in range(40):
+        step, _ = _gauss_newton(model, theta, place)
+        trial = theta + step
+        new_size = float(np.abs(step / np.where(theta == 0, 1, theta)).max())
+        if not new_size < size or ((trial <= model.lower) | (trial >= model.upper)).any():
+            break
+        new = _solve_at(model, trial, e)
+        if new is None or new.rss > place.rss * (1 + 1e-9):
+            break
+        theta, place, size = trial, new, new_size
+        if size <= precision:
+            break
+    return theta, place
+
+
+def _gauss_newton(model: Searched, theta: Array, place: _Place) -> tuple[Array, float]:
+    """Step of theta (q,) with the linear coefficients free (Kaufman 1975), and the fall of the RSS it promises."""
     q = model.basis
     pull = np.einsum("qnk,k->nq", model.slopes(theta), place.coef)
     pull = pull - q @ (q.T @ pull)
     pull = pull - place.block @ (place.solver @ (place.block.T @ pull))
     if pull.shape[1] == 1:
         size = float(pull[:, 0] @ pull[:, 0])
-        return pull.T @ place.residual / size if size > 0 else np.zeros(1)
-    return np.asarray(np.linalg.lstsq(pull, place.residual, rcond=1e-14)[0])
+        step = pull.T @ place.residual / size if size > 0 else np.zeros(1)
+    else:
+        step = np.linalg.lstsq(pull, place.residual, rcond=1e-14)[0]
+    fall = pull @ step
+    return step, float(fall @ fall)
 
 
 def search(

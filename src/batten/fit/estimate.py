@@ -8,7 +8,7 @@ from functools import cached_property
 import numpy as np
 
 from batten.engine.irls import Mean, iterate
-from batten.engine.linear import Factored, dependent_columns, design, factor, solve
+from batten.engine.linear import Factored, design, factor, solve
 from batten.engine.power import Power, best_power
 from batten.engine.rows import Array, Rows
 from batten.engine.search import Searched, search
@@ -248,11 +248,10 @@ def _fit_scale(
     x = design(rows, columns, own_level=shape.own_level)
     if not np.isfinite(x).all():
         return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
-    aliased = dependent_columns(x)
-    if aliased:
-        return _aliased(remedy, len(aliased), x.shape[1])
-    z = scale.forward(rows.y, c)
     linear = factor(x)
+    if linear.aliased:
+        return _aliased(remedy, linear.aliased, x.shape[1])
+    z = scale.forward(rows.y, c)
     coef, residual = solve(linear, x, z)
     eta = z - residual
     trouble = domain_trouble(scale, c, eta, residual)
@@ -270,9 +269,8 @@ def _fit_scale(
         return est
     full = est.jacobian_at(rows.x, rows.base, rows.modifier)
     full = full[:, :-1] if scale.searched else full
-    if dependent_columns(full):
-        return _not_settled(shape)
-    return replace(est, factored=factor(full))
+    effective = factor(full)
+    return _not_settled(shape) if effective.aliased else replace(est, factored=effective)
 
 
 def _constants(
@@ -327,9 +325,9 @@ def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | N
             "Use a spline under the link, or the same shape on log y.",
         )  # fmt: skip
     x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
-    aliased = dependent_columns(x)
+    aliased = factor(x).aliased
     if aliased:
-        return _aliased(remedy, len(aliased), x.shape[1])
+        return _aliased(remedy, aliased, x.shape[1])
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     done = iterate(model, x, rows.y, eta=link.start(rows.y), offset=rows.offset)
     if not done.settled or not np.isfinite(done.mu).all():
