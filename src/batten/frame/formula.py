@@ -1,0 +1,348 @@
+"""One formula: parsed and coded by patsy, the engine statsmodels uses by default; the only module that imports it.
+
+Patsy decides what the operators mean, which contrasts make the terms non-redundant, and what center(), bs() and the
+like remember. Everything it finds out is handed on as plain values that pickle.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from types import ModuleType
+from typing import Any
+
+import numpy as np
+import patsy
+import patsy.builtins
+from patsy.eval import EvalEnvironment, EvalFactor, ast_names
+from patsy.infix_parser import ParseNode
+from patsy.origin import Origin
+from patsy.parse_formula import parse_formula
+
+from batten.engine.rows import Array
+from batten.errors import formula as errors
+
+__all__ = [
+    "Block",
+    "Formula",
+    "Grouping",
+    "LearningError",
+    "Recipe",
+    "grouping",
+    "learn",
+    "namespace",
+    "parse",
+    "without_memory",
+]
+
+_STRING = r"\"(?:\\.|[^\"\\])*\"|'(?:\\.|[^'\\])*'"
+_BOX = type(patsy.builtins.C(None))
+
+# what patsy objects to -> why it cannot be read, and what to do
+_OBJECTIONS = (
+    ("the expression ended", "nothing follows this sign", "Add what should follow, or remove the sign."),
+    ("expected a noun", "no column stands before this sign", "Add the column that is missing, or remove the sign."),
+    ("expected an operator", "no sign joins this to what stands before it", "Join predictors with +, groups with : or *."),
+    ("intercept term cannot", "a bare 1 can be added or removed, not combined", "Arithmetic goes inside I(): I(1/z)."),
+    ("requires a positive", "a bare power must be a whole number", "Arithmetic goes inside I(): I(z**0.5)."),
+    ("Unary minus", "a minus takes away a term or the intercept", "Arithmetic goes inside I(): I(-z)."),
+    ("numbers besides", "a bare number other than 0 and 1 is no term", "Arithmetic goes inside I(): I(2*z)."),
+)
+
+
+@dataclass(frozen=True)
+class Formula:
+    """A parsed formula, not yet looked up in any data.
+
+    text: on one line, without comments. left: what stands before the ~. response: the factors in it; `plain_response` is
+    False when signs or several terms stand there. terms: factors of each term after the ~; () is the intercept. places: where each
+    factor stands in the text. powers: bare powers of one column, `x**2`, which mean just `x`.
+    """
+
+    text: str
+    left: str
+    response: tuple[str, ...]
+    plain_response: bool
+    terms: tuple[tuple[str, ...], ...]
+    places: Mapping[str, tuple[int, int]]
+    powers: tuple[str, ...]
+
+    def rewritten(self, response: str, names: Mapping[str, str | None]) -> str:
+        """The formula with some factors renamed (None: left out); terms that become equal are kept once."""
+        kept: dict[tuple[str, ...], None] = {}
+        for term in self.terms:
+            factors = [f if f not in names else names[f] for f in term]
+            if term and None not in factors:
+                kept[tuple(dict.fromkeys(str(f) for f in factors))] = None
+        right = [":".join(term) for term in kept]
+        if () not in self.terms:
+            right.insert(0, "0")
+        return f"{response} ~ " + " + ".join(right)
+
+
+def parse(text: str) -> Formula:
+    """Read the formula's grammar; errors point at the place with carets."""
+    text = _on_one_line(text)
+    _check_ends(text)
+    _check_signs(text)
+    try:
+        tree = parse_formula(text)
+        right = patsy.ModelDesc.from_formula(ParseNode("~", None, [tree.args[-1]], tree.origin)).rhs_termlist
+    except patsy.PatsyError as error:
+        raise _translated(text, error) from None
+    leaves = list(_leaves(tree))
+    places = {EvalFactor(leaf.token.extra).code: (leaf.origin.start, leaf.origin.end) for leaf in reversed(leaves)}
+    return Formula(
+        text=text,
+        left=tree.args[0].origin.relevant_code(),
+        response=tuple(dict.fromkeys(EvalFactor(leaf.token.extra).code for leaf in _leaves(tree.args[0]))),
+        plain_response=tree.args[0].type == "PYTHON_EXPR",
+        terms=tuple(tuple(f.code for f in term.factors) for term in right),
+        places=places,
+        powers=tuple(dict.fromkeys(_bare_powers(tree.args[1]))),
+    )
+
+
+def _on_one_line(text: str) -> str:
+    """Comments removed, lines joined; quoted names are left alone."""
+    return re.sub(rf"({_STRING})|(?:#[^\n]*|\\\n|\s)+", lambda m: m.group(1) or " ", text).strip()
+
+
+def _masked(text: str) -> str:
+    """The text with everything in quotation marks replaced by x, so that signs can be looked for."""
+    return re.sub(_STRING, lambda m: "x" * len(m.group()), text)
+
+
+def _check_ends(text: str) -> None:
+    left, tilde, right = _masked(text).partition("~")
+    if not tilde:
+        raise errors.no_tilde(text)
+    if not left.strip():
+        raise errors.no_response(text)
+    if not right.strip():
+        raise errors.no_right_side(text)
+    second, hanging = right.find("~"), left.rstrip()
+    if second >= 0:
+        at = len(left) + 1 + second
+        raise errors.unreadable(text, at, at + 1, why="a formula has one ~", do="Join predictors with +.")
+    if hanging[-1] in "+-*/:":
+        at = len(hanging) - 1
+        do = "Add what should follow, or remove the sign."
+        raise errors.unreadable(text, at, at + 1, why="nothing follows this sign", do=do)
+
+
+def _check_signs(text: str) -> None:
+    """What Python's tokenizer reports differently from version to version: quotes, brackets, stray signs."""
+    masked = _masked(text)
+    opened: list[int] = []
+    pairs = {")": "(", "]": "[", "}": "{"}
+    for i, sign in enumerate(masked):
+        if sign in "\"'":
+            do = "Close it, or remove it."
+            raise errors.unreadable(text, i, i + 1, why="this quotation mark is never closed", do=do)
+        if sign in "`$?;\\" or (sign == "!" and masked[i + 1 : i + 2] != "="):
+            do = 'A column with an unusual name is written Q("its name").'
+            raise errors.unreadable(text, i, i + 1, why="this sign has no meaning in a formula", do=do)
+        if sign in "^|" and not opened:
+            do = "A power is I(z**2), an interaction a:b or a*b."
+            raise errors.unreadable(text, i, i + 1, why="this sign has no meaning in a formula", do=do)
+        if sign in "([{":
+            opened.append(i)
+        elif sign in pairs:
+            if not opened or masked[opened[-1]] != pairs[sign]:
+                do = "Open it, or remove it."
+                raise errors.unreadable(text, i, i + 1, why="this bracket was never opened", do=do)
+            opened.pop()
+    if opened:
+        at = opened[-1]
+        raise errors.unreadable(text, at, at + 1, why="this bracket is never closed", do="Close it, or remove it.")
+
+
+def _translated(text: str, error: patsy.PatsyError) -> Exception:
+    """Patsy's objection in plain words, with carets under its place."""
+    place = (error.origin.start, error.origin.end) if error.origin is not None else (0, len(text))
+    for sign, why, do in _OBJECTIONS:
+        if sign in error.message:
+            return errors.unreadable(text, *place, why=why, do=do)
+    return errors.unreadable(text, *place, why=error.message, do="Correct it there.")
+
+
+def _leaves(node: ParseNode) -> Iterable[ParseNode]:
+    """The factors below a node, left to right."""
+    if node.type == "PYTHON_EXPR":
+        yield node
+    for arg in node.args:
+        yield from _leaves(arg)
+
+
+def _bare_powers(node: ParseNode) -> Iterable[str]:
+    if node.type == "**" and node.args[0].type == "PYTHON_EXPR":
+        yield node.origin.relevant_code()
+    for arg in node.args:
+        yield from _bare_powers(arg)
+
+
+# --- coding -----------------------------------------------------------------------------------------------------------
+
+
+def namespace(env: Mapping[str, Any] | None) -> dict[str, Any]:
+    """Names a formula may use beside columns: Python's own, numpy as np, patsy's, then the caller's.
+
+    A variable of the caller does not hide what the grammar itself needs (C, I, Q).
+    """
+    import builtins
+
+    own = {name: getattr(patsy.builtins, name) for name in patsy.builtins.__all__}
+    grammar = {name: own[name] for name in ("C", "I", "Q")}
+    return {**vars(builtins), "np": np, **own, **(env or {}), **grammar}
+
+
+@dataclass(frozen=True)
+class Grouping:
+    """What C(column, ...) asks for. reference: first level (treatment coding). levels: in this order, or None.
+
+    contrast: patsy's object for any other coding, else None.
+    """
+
+    reference: Any = None
+    levels: tuple[Any, ...] | None = None
+    contrast: Any = None
+
+
+def grouping(code: str, names: Mapping[str, Any]) -> Grouping:
+    """Read C(None, contrast, levels=...)."""
+    value = eval(code, dict(names))
+    levels = None if value.levels is None else tuple(value.levels)
+    contrast = value.contrast
+    if contrast is None or contrast is patsy.Treatment:
+        return Grouping(levels=levels)
+    if isinstance(contrast, patsy.Treatment):
+        return Grouping(contrast.reference, levels)
+    return Grouping(None, levels, contrast)
+
+
+class LearningError(Exception):
+    """A factor that patsy could not work out: its code, and what was said."""
+
+    def __init__(self, code: str, message: str) -> None:
+        super().__init__(code, message)
+        self.code, self.message = code, message
+
+
+@dataclass(frozen=True, eq=False)
+class Recipe:
+    """How one factor is worked out on any rows, with what it learned.
+
+    code: Python in safe column names. names: the functions and learned transforms it calls. levels: of a group, else
+    None. width: columns of a numeric factor (0 for a group).
+    """
+
+    code: str
+    names: Mapping[str, Any]
+    levels: tuple[Any, ...] | None
+    width: int
+
+    def evaluate(self, data: Mapping[str, Any]) -> Any:
+        """The factor's values on some rows, as its code gives them."""
+        with np.errstate(all="ignore"):  # values that are no numbers are found, counted and named by the caller
+            value = eval(self.code, {**self.names, **data})
+        return value.data if isinstance(value, _BOX) else value
+
+    def __getstate__(self) -> dict[str, Any]:
+        """Modules go by name and patsy's learned transforms as their class and numbers: neither pickles by itself."""
+        return {**vars(self), "names": {name: _packed(value) for name, value in self.names.items()}}
+
+    def __setstate__(self, state: dict[str, Any]) -> None:
+        vars(self).update({**state, "names": {name: _unpacked(value) for name, value in state["names"].items()}})
+
+
+def _packed(value: Any) -> Any:
+    if isinstance(value, ModuleType):
+        return ("module", value.__name__)
+    if type(value).__module__.startswith("patsy."):
+        return ("learned", type(value), dict(vars(value)))
+    return ("as it is", value)
+
+
+def _unpacked(packed: Any) -> Any:
+    import importlib
+
+    kind, value, *rest = packed
+    if kind == "module":
+        return importlib.import_module(value)
+    if kind == "learned":
+        made = value.__new__(value)
+        vars(made).update(rest[0])
+        return made
+    return value
+
+
+@dataclass(frozen=True, eq=False)
+class Block:
+    """Columns that belong to one term: the product of its factors, the first factor's columns varying fastest.
+
+    term: position in the terms given to `learn`. factors: codes, each with its contrast (levels, columns) or None when
+    it is numeric.
+    """
+
+    term: int
+    factors: tuple[tuple[str, Array | None], ...]
+
+    def has(self, code: str) -> bool:
+        return any(own == code for own, _ in self.factors)
+
+    def width(self, recipes: Mapping[str, Recipe]) -> int:
+        """Number of columns."""
+        return math.prod(recipes[own].width if c is None else c.shape[1] for own, c in self.factors)
+
+    def without(self, code: str) -> tuple[tuple[str, Array | None], ...]:
+        return tuple(pair for pair in self.factors if pair[0] != code)
+
+
+def learn(
+    terms: Sequence[tuple[str, ...]], data: Mapping[str, Any], names: Mapping[str, Any]
+) -> tuple[dict[str, Recipe], list[Block]]:
+    """Let patsy code the terms (factors in safe names) on the analysis rows; blocks come in patsy's column order.
+
+    A text that fails raises LearningError with its code.
+    """
+    made = {code: EvalFactor(code, Origin(code, 0, len(code))) for term in terms for code in term}
+    codes = {factor: code for code, factor in made.items()}
+    as_patsy = [patsy.Term([made[code] for code in term]) for term in terms]
+    try:
+        with np.errstate(all="ignore"):
+            env = EvalEnvironment([dict(names)])
+            (info,) = patsy.design_matrix_builders([as_patsy], lambda: iter([data]), env)
+    except patsy.PatsyError as error:
+        raise LearningError(error.origin.code if error.origin else "", error.message) from None
+    recipes = {codes[factor]: _recipe(found) for factor, found in info.factor_infos.items()}
+    blocks = []
+    for term, subterms in info.term_codings.items():
+        for subterm in subterms:
+            pieces = [(codes[f], subterm.contrast_matrices.get(f)) for f in subterm.factors]
+            parts = tuple((code, None if c is None else np.asarray(c.matrix, dtype=float)) for code, c in pieces)
+            blocks.append(Block(as_patsy.index(term), parts))
+    return recipes, blocks
+
+
+def _recipe(found: Any) -> Recipe:
+    state = found.state
+    known = state["eval_env"].namespace
+    names = {name: known[name] for name in ast_names(state["eval_code"]) if name in known}
+    return Recipe(
+        code=state["eval_code"],
+        names={**names, **state["transforms"]},
+        levels=None if found.categories is None else tuple(found.categories),
+        width=found.num_columns or 0,
+    )
+
+
+def without_memory(names: Mapping[str, Any]) -> dict[str, Any]:
+    """The same names with center(), bs() and the like passing their argument through: to find rows that are no number
+    before anything is learned from them."""
+    return {
+        name: (lambda x, *_, **__: x) if hasattr(value, "__patsy_stateful_transform__") else value
+        for name, value in names.items()
+    }
