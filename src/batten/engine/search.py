@@ -25,6 +25,7 @@ class Searched:
     """A model with constants inside: columns(theta) -> (n, k) with slopes (q, n, k), beside fixed columns (n, p).
 
     candidates (K, q): the grid; finite: there is nothing between its points. lower, upper (q,): limits of theta.
+    corners: sorted places where the profile of a single theta has a corner, at which Gauss-Newton can stop short.
     """
 
     fixed: Array
@@ -34,6 +35,7 @@ class Searched:
     lower: Array
     upper: Array
     finite: bool = False
+    corners: Array | None = None
 
     @cached_property
     def basis(self) -> Array:
@@ -50,7 +52,7 @@ class Searched:
         columns, slopes = self.columns, self.slopes
         smaller = Searched(
             self.fixed[which], lambda t: columns(t)[which], lambda t: slopes(t)[:, which], self.candidates,
-            self.lower, self.upper, self.finite,
+            self.lower, self.upper, self.finite, self.corners,
         )  # fmt: skip
         smaller.__dict__["grid"] = self.grid[:, which]
         return smaller
@@ -147,8 +149,29 @@ def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precisio
         if better is None:
             break
         theta, place = trial, better
+    if model.corners is not None and len(theta) == 1:
+        theta, place = _walk(model, theta, place, e)
     edge = ((theta <= model.lower) | (theta >= model.upper)).any()
     return Found(theta, place.rss, settled=not edge)
+
+
+def _walk(model: Searched, theta: Array, place: _Place, e: Array) -> tuple[Array, _Place]:
+    """Along the corners next to theta, as long as one of them has a lower RSS."""
+    assert model.corners is not None
+    for _ in range(60):
+        left = int(np.searchsorted(model.corners, theta[0], side="left"))
+        right = int(np.searchsorted(model.corners, theta[0], side="right"))
+        better = False
+        for k in (left - 1, right):
+            if not 0 <= k < len(model.corners) or not model.lower[0] < model.corners[k] < model.upper[0]:
+                continue
+            trial = model.corners[k : k + 1]
+            new = _solve_at(model, trial, e)
+            if new is not None and new.rss < place.rss:
+                theta, place, better = trial, new, True
+        if not better:
+            break
+    return theta, place
 
 
 def _settle(model: Searched, theta: Array, place: _Place, e: Array, precision: float) -> tuple[Array, _Place]:

@@ -129,6 +129,8 @@ class Shape(ABC):
     tail: ClassVar[str] = "straight"
     #: True where `candidates` are all the values the searched constants can take (nothing to refine)
     finite: ClassVar[bool] = False
+    #: True where the searched constant is a place along x, so that the residual sum of squares has a corner at each row
+    corners: ClassVar[bool] = False
     #: name for `only`: "ladder", "powers", "polynomials", "groups", ...
     group: ClassVar[str] = "ladder"
     #: place in the order from simple to elaborate, and the place among members of the same rank

@@ -226,6 +226,7 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
     return Searched(
         fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
         candidates=shape.candidates(rows.x, state), lower=lower, upper=upper, finite=shape.finite,
+        corners=np.unique(rows.x) if shape.corners else None,
     )  # fmt: skip
 
 

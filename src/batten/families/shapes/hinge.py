@@ -27,6 +27,7 @@ class Hinge(Shape):
     count: int = 1
     breaks: Constants = ()
     family: ClassVar[str] = "hinge"
+    corners: ClassVar[bool] = True
     group: ClassVar[str] = "hinges"
 
     @property
