@@ -193,6 +193,11 @@ _READY = (
 }"""
 )
 
+_DRAWN = """() => {
+    const views = [...document.querySelectorAll('[data-mime-type="application/vnd.jupyter.widget-view+json"]')];
+    return views.every(view => view.querySelector('.jupyter-widgets')) && [...document.images].every(i => i.complete);
+}"""
+
 
 class FrontEnd:
     """One browser tab with one notebook in it, in JupyterLab ("lab") or Notebook ("notebook")."""
@@ -252,6 +257,12 @@ class FrontEnd:
         self.page.wait_for_function(_READY)
         return self
 
+    def wait_until_drawn(self) -> None:
+        """Wait until the kernel has done all that was asked before, and every widget and picture is on screen."""
+        self._begin("panel.sessionContext.session.kernel.requestExecute({code: '', silent: true}).done")
+        self._finish("an empty request to the kernel")
+        self.page.wait_for_function(_DRAWN)
+
     def wait_for_cells(self, count: int) -> list[Cell]:
         self.page.wait_for_function(
             f"n => {{ {_PANEL} return notebook.model.sharedModel.cells.length === n; }}", arg=count
@@ -282,6 +293,11 @@ class FrontEnd:
             const frame = (notebook.outerNode ?? notebook.node).getBoundingClientRect();
             return top >= frame.top - 1 && top < frame.bottom;"""
         return bool(self.page.evaluate(f"i => {{ {_PANEL} {read} }}", cell))
+
+    def has_output(self, cell: int) -> bool:
+        return bool(
+            self.page.evaluate(f"i => {{ {_PANEL} return notebook.model.cells.get(i).outputs?.length; }}", cell)
+        )
 
     def cell(self, index: int) -> Locator:
         return self.page.locator(f'.jp-Notebook-cell[data-windowed-list-index="{index}"]')
@@ -345,11 +361,15 @@ class FrontEnd:
     def click_button(self, name: str, *, cell: int | None = None) -> None:
         self.button(name, cell=cell).click()
 
+    def tab(self, name: str, *, cell: int | None = None) -> Locator:
+        return self.outputs(cell).get_by_role("tab", name=name, exact=True).locator("visible=true")
+
     def click_tab(self, name: str, *, cell: int | None = None) -> None:
-        """Select a tab of the widget and wait until it is the selected one."""
-        tab = self.outputs(cell).get_by_role("tab", name=name, exact=True).locator("visible=true")
+        """Select a tab of the widget and wait until it is drawn."""
+        tab = self.tab(name, cell=cell)
         tab.click()
         expect(tab).to_have_attribute("aria-selected", "true")
+        self.wait_until_drawn()
 
     def clipboard(self) -> str:
         return str(self.page.evaluate("() => navigator.clipboard.readText()"))
@@ -357,11 +377,10 @@ class FrontEnd:
     def screenshot(self, path: Path, *, cell: int | None = None) -> Path:
         """Save a picture of one cell's outputs, or of the whole window."""
         path.parent.mkdir(parents=True, exist_ok=True)
-        if cell is None:
-            self.page.screenshot(path=path)
-        else:
+        if cell is not None:
             self.scroll_to(cell)
-            self.outputs(cell).first.screenshot(path=path)
+        self.wait_until_drawn()
+        (self.page if cell is None else self.outputs(cell).first).screenshot(path=path)
         return path
 
     # commands
@@ -375,17 +394,17 @@ class FrontEnd:
             self._finish(command)
 
     def _start(self, command: str) -> None:
-        """Begin a command of the front end and leave its end where `_finish` can see it."""
-        begin = """id => {
-            window.battenTest = {};
-            window.jupyterapp.commands.execute(id).then(
-                value => { window.battenTest.end = value === false ? 'failed' : 'done'; },
-                error => { window.battenTest.end = String(error); });
-        }"""
-        self.page.evaluate(begin, command)
+        self._begin(f"window.jupyterapp.commands.execute('{command}')")
 
-    def _finish(self, command: str) -> None:
+    def _begin(self, promise: str) -> None:
+        """Begin something in the page and leave its end where `_finish` can see it."""
+        keep = """const kept = window.battenTest = {};
+            promise.then(value => { kept.end = value === false ? 'failed' : 'done'; },
+                         error => { kept.end = String(error); });"""
+        self.page.evaluate(f"() => {{ {_PANEL} const promise = {promise}; {keep} }}")
+
+    def _finish(self, what: str) -> None:
         end = self.page.wait_for_function("() => window.battenTest.end").json_value()
         if end != "done":
-            raise AssertionError(f"{command} {end}:\n" + "\n".join(self.outputs().all_inner_texts()))
+            raise AssertionError(f"{what} {end}:\n" + "\n".join(self.outputs().all_inner_texts()))
         self.wait_until_idle()
