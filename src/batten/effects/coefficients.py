@@ -26,11 +26,11 @@ class Coefficients:
 def coefficients(est: Estimate, *, level: float = 0.95, errors: str = "robust") -> Coefficients:
     """Estimates with t intervals on the residual degrees of freedom.
 
-    A searched constant of the shape (break, power, K) stands beside the coefficients, whose errors count it. A searched
-    power of y does not: coefficients have no meaning across powers (Hinkley and Runger 1984), so they are given at the
-    power found.
+    A searched constant of the shape (break, power, K) stands beside the coefficients, whose errors count it; powers
+    chosen from a list do not. A searched power of y does not either: coefficients have no meaning across powers
+    (Hinkley and Runger 1984), so they are given at the power found.
     """
-    value = np.append(est.coef, est.theta)
+    value = np.append(est.coef, est.theta[: est.moving])
     error = np.sqrt(np.diagonal(_covariance(est, errors))[: len(value)])
     half = float(student.ppf(0.5 + level / 2, est.df_residual)) * error
     return Coefficients(value, error, value - half, value + half)

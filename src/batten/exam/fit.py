@@ -3,14 +3,19 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
 from batten.effects.coefficients import coefficients
+from batten.effects.constants import Constant, learned_constants
 from batten.effects.contrast import SpanEffect, span_effect
+from batten.effects.rounding import Rounding, roundings
+from batten.effects.slopes import SlopeAt, average, slopes_along
 from batten.effects.value import Effect
 from batten.engine.rows import Array
 from batten.errors import ask
@@ -88,6 +93,35 @@ class Fit:
             index=pd.Index(self._labels(), name="term"),
         )
 
+    @property
+    def constants(self) -> pd.DataFrame:
+        """What was learned besides coefficients: estimate, low, high, note.
+
+        Searched constants with their profile sets (no low or high where the set has no end), a curve's own levels, and
+        facts fixed beforehand (knots, edges, centres), which have no interval.
+        """
+        found = self.learned
+        rows = []
+        for constant in found:
+            ends = (end if math.isfinite(end) else math.nan for end in (constant.low, constant.high))
+            nice = next((r for r in self.roundings(constant) if r.advised), None)
+            price = "" if nice is None else f"{nice.words} costs {nice.loss:.2f} in log-likelihood"
+            rows.append((constant.estimate, *ends, _joined(constant.note, price)))
+        return pd.DataFrame(
+            rows, columns=["estimate", "low", "high", "note"],
+            index=pd.Index([constant.name for constant in found], name="constant"),
+        )  # fmt: skip
+
+    @cached_property
+    def learned(self) -> tuple[Constant, ...]:
+        """The same as values, with their profiles."""
+        p = self.problem
+        return learned_constants(self.estimate, x=p.focus, y=p.response, level=self.question.level)
+
+    def roundings(self, constant: Constant) -> tuple[Rounding, ...]:
+        """What each nicer value of a constant costs in log-likelihood and in the span effect."""
+        return roundings(self.estimate, constant, self.question.span)
+
     def predict(
         self, frame: pd.DataFrame, of: str = "mean", interval: str | None = None, level: float | None = None
     ) -> pd.DataFrame:
@@ -152,6 +186,21 @@ class Fit:
             errors=self.question.errors, base=base, modifier=modifier,
         )  # fmt: skip
 
+    def slope(self, at: float | Sequence[float] | None = None, of: str = "mean") -> pd.DataFrame:
+        """Slopes in units of y per unit of x: estimate, low, high, note, indexed by x, or one row "average".
+
+        at: x values, averaged over covariates (two rows where one is a break); None: the average over the rows.
+        """
+        of = _target(of)
+        asked = {"of": of, "level": self.question.level, "errors": self.question.errors}
+        if at is None:
+            return effect_table({"average": average(self.estimate, **asked)}, name=self.problem.focus)  # type: ignore[arg-type]
+        xs = [_number("at", x, self.problem.focus) for x in (at if np.iterable(at) else [at])]
+        base, modifier = self._covariates()
+        found = slopes_along(self.estimate, xs, base=base, modifier=modifier, **asked)  # type: ignore[arg-type]
+        table = effect_table({k: _sided(s) for k, s in enumerate(found)}, name=self.problem.focus)
+        return table.set_axis(pd.Index([s.x for s in found], name=self.problem.focus), axis=0)
+
     def _labels(self) -> list[str]:
         """Plain names of the coefficients, then of the shape's searched constants."""
         est, base = self.estimate, list(self.problem.base_names)
@@ -162,11 +211,11 @@ class Fit:
             f"{name} × {modifier}" if modifier else name for modifier in self.problem.modifier_names for name in focal
         ]
         constants = est.shape.constant_words(self.problem.focus, self.problem.response)
-        return [*base, *crossed, *constants]
+        return [*base, *crossed, *constants[: est.moving]]
 
     def _covariates(self) -> tuple[Array | None, Array | None]:
-        """Covariate rows to average over: None, None for the rows' own."""
-        return None, None
+        """Covariate rows to average over: those of `at`, or None, None for the rows' own."""
+        return self.problem.profile or (None, None)
 
     def _level(self, level: float | None) -> float:
         if level is None:
@@ -195,6 +244,12 @@ def effect_table(effects: dict[Any, Effect], *, name: str) -> pd.DataFrame:
         columns=["estimate", "low", "high", "note"],
         index=pd.Index(list(effects), name=name),
     )
+
+
+def _sided(at: SlopeAt) -> Effect:
+    """The slope, with the side told where x is a break."""
+    side = f"{at.side} of the break" if at.side else ""
+    return Effect(at.slope.estimate, at.slope.low, at.slope.high, _joined(side, at.slope.note))
 
 
 def _target(of: str) -> str:

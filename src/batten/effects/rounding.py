@@ -1,0 +1,95 @@
+"""The price of a nice number: what is lost when a searched constant is replaced by one a person would say.
+
+Candidates for powers are the named ones; for places, rates and ceilings the roundest number in the set. The price is
+shown in log-likelihood (units of y, so it does not depend on the scale) and in the span effect. Where the set covers
+all that was searched, no value is named.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from batten.effects.constants import Constant
+from batten.effects.contrast import span_effect
+from batten.effects.profile import best_given
+from batten.fit.estimate import Estimate, estimate
+
+__all__ = ["Rounding", "roundest", "roundings"]
+
+#: powers of y that have names (Box and Cox 1964), and those of x
+_OF_Y = {-1.0: "1/y", -0.5: "1/sqrt y", 0.0: "log y", 1 / 3: "cube root of y", 0.5: "sqrt y", 1.0: "y as it is"}
+_OF_X = {
+    -2.0: "1/x^2", -1.0: "1/x", -0.5: "1/sqrt x", 0.0: "log x", 0.5: "sqrt x", 1.0: "x as it is", 2.0: "x^2",
+    3.0: "x^3",
+}  # fmt: skip
+
+
+@dataclass(frozen=True)
+class Rounding:
+    """One candidate for a constant.
+
+    loss: log-likelihood lost against the best value. inside: the data do not rule it out. difference: the span effect
+    of the mean with it, units of y, NaN where it cannot be had; change: that minus the span effect as estimated.
+    advised: the nearest inside.
+    """
+
+    value: float
+    words: str
+    loss: float
+    inside: bool
+    difference: float
+    change: float
+    advised: bool
+
+
+def roundings(est: Estimate, constant: Constant, span: tuple[float, float]) -> tuple[Rounding, ...]:
+    """Candidates in order, each with its price; empty where no value can be named or nothing was searched."""
+    if constant.profile is None or not constant.named or constant.kind == "listed":
+        return ()
+    names = {"power of y": _OF_Y, "power of x": _OF_X}.get(constant.kind)
+    if names is None:
+        value = roundest(*constant.pieces[_piece(constant)], near=constant.estimate)
+        names = {} if value is None else {value: f"{value:.6g}"}
+    inside = [v for v in names if constant.profile.holds(v)]
+    advised = min(inside, key=lambda v: abs(v - constant.estimate), default=None)
+    now = span_effect(est, span).difference.estimate
+    out = []
+    for value, words in names.items():
+        loss, difference = _price(est, constant, value, span)
+        out.append(Rounding(value, words, loss, value in inside, difference, difference - now, value == advised))
+    return tuple(out)
+
+
+def _piece(constant: Constant) -> int:
+    """Which piece holds the estimate."""
+    held = [i for i, (low, high) in enumerate(constant.pieces) if low <= constant.estimate <= high]
+    return held[0] if held else 0
+
+
+def _price(est: Estimate, constant: Constant, value: float, span: tuple[float, float]) -> tuple[float, float]:
+    """Log-likelihood lost and the span effect with the constant held, the other constants found again."""
+    if constant.position is None:
+        best = best_given(est, est.c)[0]
+        level, theta, c = best_given(est, (value,))
+        again = estimate(est.rows, est.remedy, theta=theta or None, c=c)
+    else:
+        best = best_given(est, None)[0]
+        level, theta, c = best_given(est, None, fixed=(constant.position, value))
+        again = estimate(est.rows, est.remedy, theta=theta, c=c if est.remedy.left.searched else None)
+    difference = span_effect(again, span).difference.estimate if isinstance(again, Estimate) else math.nan
+    return best - level, difference
+
+
+def roundest(low: float, high: float, *, near: float) -> float | None:
+    """The number with the fewest digits between low and high, nearest to `near` among its equals; None if unbounded."""
+    if not (math.isfinite(low) and math.isfinite(high)) or not high > low:
+        return None
+    power = math.ceil(math.log10(high - low)) + 1
+    for exponent in range(power, power - 4, -1):
+        for lead in (5, 2, 1):
+            step = lead * 10.0**exponent
+            value = round(round(near / step) * step, max(0, -exponent))
+            if low <= value <= high and (value != 0 or low <= 0 <= high):
+                return value
+    return None

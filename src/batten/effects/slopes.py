@@ -1,0 +1,89 @@
+"""Slopes in units of y per unit of x: at named places, at both sides of a break, and averaged over the rows.
+
+Every remedy answers by the same two questions, so no reading depends on how the model was written. An average slope
+near zero on a curve that turns is a warning, not a finding: show it with the slopes along x.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+
+from batten.effects.contrast import reach_trouble
+from batten.effects.value import Effect, effect_of, undefined
+from batten.engine.rows import Array
+from batten.fit.estimate import Estimate
+from batten.fit.means import interval
+from batten.fit.slopes import average_slope, averaged_slopes
+
+__all__ = ["NO_SLOPE", "SlopeAt", "average", "breaks", "slopes_along"]
+
+NO_SLOPE = "groups have steps between them, no slope"
+
+#: a slope that changes by this share at one place jumps there
+JUMP = 1e-6
+
+
+@dataclass(frozen=True)
+class SlopeAt:
+    """Slope at x; side tells which one where x is a break."""
+
+    x: float
+    side: Literal["", "left", "right"]
+    slope: Effect
+
+
+def average(est: Estimate, *, of: str = "mean", level: float = 0.95, errors: str = "robust") -> Effect:
+    """Average over the rows of the slope at each row's own x and covariates."""
+    if est.shape.steps:
+        return undefined(NO_SLOPE)
+    found = average_slope(est, of=of, errors=errors)
+    if not np.isfinite(found.value).all():
+        return undefined(f"a slope of the {of} does not exist at every row")
+    return effect_of(found.value, interval(found, level))
+
+
+def slopes_along(
+    est: Estimate,
+    xs: Sequence[float],
+    *,
+    of: str = "mean",
+    level: float = 0.95,
+    errors: str = "robust",
+    base: Array | None = None,
+    modifier: Array | None = None,
+) -> tuple[SlopeAt, ...]:
+    """Slopes at each x, averaged over the rows' own covariates or over rows handed in; two where x is a break."""
+    if est.shape.steps:
+        return tuple(SlopeAt(float(x), "", undefined(NO_SLOPE)) for x in xs)
+    asked = [(float(x), side) for x in xs for side in _sides(est, float(x))]
+    # one step beyond a break, the slope on its right holds
+    places = np.array([np.nextafter(x, np.inf) if side == "right" else x for x, side in asked])
+    troubles = [reach_trouble(est, places[[k]], of=of, base=base, modifier=modifier) for k in range(len(places))]
+    good = [k for k, trouble in enumerate(troubles) if not trouble]
+    effects = [undefined(trouble) for trouble in troubles]
+    if good:
+        found = averaged_slopes(est, places[good], of=of, base=base, modifier=modifier, errors=errors)
+        ends = interval(found, level)
+        for at, k in enumerate(good):
+            effects[k] = effect_of(found.value, ends, at)
+    return tuple(SlopeAt(x, side, effect) for (x, side), effect in zip(asked, effects, strict=True))
+
+
+def breaks(est: Estimate) -> tuple[float, ...]:
+    """Places where the slope jumps: breaks that were given or found."""
+    if est.shape.steps:
+        return ()
+    return tuple(place for place in (*est.state, *est.theta) if len(_sides(est, place)) == 2)
+
+
+def _sides(est: Estimate, x: float) -> tuple[Literal["", "left", "right"], ...]:
+    """("",), or ("left", "right") where some column's slope jumps at x."""
+    around = np.array([x, np.nextafter(x, np.inf)])
+    with np.errstate(all="ignore"):
+        slopes = est.shape.slopes(around, est.state, est.theta)
+    jump = np.abs(slopes[1] - slopes[0]) > JUMP * np.abs(slopes).max(axis=0)
+    return ("left", "right") if jump.any() else ("",)
