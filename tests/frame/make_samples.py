@@ -69,12 +69,11 @@ def glasshouse() -> pd.DataFrame:
     age = 1 + np.floor(draw.uniform(0, 5, 30))[bed]
     light = np.round(draw.uniform(3, 36, 180), 1)
     level = np.select([cultivar == "striped", cultivar == "yellow"], [1.6, -1.1], 0.0)
+    harvested = pd.Timestamp("2023-04-03") + pd.to_timedelta(np.repeat(np.arange(6), 30) * 28, unit="D")
     frame = pd.DataFrame(
         {
             "bed": [f"bed {b + 1}" for b in bed],
-            "harvested": (pd.Timestamp("2023-04-03") + pd.to_timedelta(np.repeat(np.arange(6), 30) * 28, unit="D")).strftime(
-                "%Y-%m-%d"
-            ),
+            "harvested": harvested.strftime("%Y-%m-%d"),
             "cultivar": cultivar,
             "bed_age": age.astype(int),
             "daily light": light,

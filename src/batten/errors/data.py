@@ -58,7 +58,9 @@ def not_a_table(kind: str) -> InputError:
 
 def unequal_lengths(lengths: Iterable[tuple[str, int]]) -> InputError:
     seen = ", ".join(f"{name} {length}" for name, length in lengths)
-    return InputError("The columns of the data have different lengths.", f"Seen: {seen}.", "Give every column one value per row.")
+    return InputError(
+        "The columns of the data have different lengths.", f"Seen: {seen}.", "Give every column one value per row."
+    )
 
 
 def duplicate_column(name: str, count: int) -> InputError:
@@ -75,14 +77,20 @@ def unknown_option(option: str, name: str, columns: Iterable[object]) -> Unknown
 
 
 def unit_of_unknown(name: str, columns: Iterable[object]) -> UnknownNameError:
-    return UnknownNameError(f"There is no column `{name}` to have a unit.", "", closest(name, [str(c) for c in columns]))
+    return UnknownNameError(
+        f"There is no column `{name}` to have a unit.", "", closest(name, [str(c) for c in columns])
+    )
 
 
 def columns_missing(names: Sequence[str], columns: Iterable[object]) -> UnknownNameError:
     """A frame to predict for lacks columns."""
     do = closest(names[0], [str(c) for c in columns]) if len(names) == 1 else "Add them."
     listed = ", ".join(f"`{n}`" for n in names)
-    return UnknownNameError(f"The rows to predict have no column {listed}.", "The formula uses it." if len(names) == 1 else "The formula uses them.", do)
+    return UnknownNameError(
+        f"The rows to predict have no column {listed}.",
+        "The formula uses it." if len(names) == 1 else "The formula uses them.",
+        do,
+    )
 
 
 # --- what a column holds ----------------------------------------------------------------------------------------------
@@ -90,12 +98,10 @@ def columns_missing(names: Sequence[str], columns: Iterable[object]) -> UnknownN
 
 def not_numbers(name: str, role: str, stray: Sequence[str], rows: int) -> InputError:
     """Text where numbers are needed. stray: distinct texts that are no plain numbers."""
-    commas = any("," in text for text in stray)
-    do = (
-        f'Say what the comma means: data["{name}"].str.replace(",", ".").astype(float), or read the file with decimal=",".'
-        if commas
-        else "Turn them into numbers or leave them missing: pd.to_numeric(column, errors='coerce')."
-    )
+    if any("," in text for text in stray):
+        do = f"Say what the comma means: data[{name!r}].str.replace(',', '.').astype(float), or read with decimal=','."
+    else:
+        do = f"Correct them or leave them missing: pd.to_numeric(data[{name!r}], errors='coerce')."
     return InputError(
         f"The {role} `{name}` is text that is not plainly numbers.",
         f"{len(stray)} different texts in {rows} rows are none: {_listed(stray)}.",
@@ -139,11 +145,15 @@ def not_groups(name: str) -> InputError:
 
 def no_level(name: str, level: object, levels: Iterable[object]) -> UnknownNameError:
     """A reference level or a list of levels in C(column, ...) that the rows do not hold."""
-    return UnknownNameError(f"`{name}` has no level {level!r} in these rows.", "", closest(str(level), [str(v) for v in levels]))
+    return UnknownNameError(
+        f"`{name}` has no level {level!r} in these rows.", "", closest(str(level), [str(v) for v in levels])
+    )
 
 
 def constant(name: str, role: str, value: float, rows: int) -> InputError:
-    do = "Choose another response." if role == "response" else "Choose another focal predictor, or rows where it varies."
+    do = (
+        "Choose another response." if role == "response" else "Choose another focal predictor, or rows where it varies."
+    )
     return InputError(f"The {role} `{name}` does not vary.", f"All {rows} rows hold {value:.6g}.", do)
 
 
@@ -152,7 +162,9 @@ def constant(name: str, role: str, value: float, rows: int) -> InputError:
 
 def empty(rows: int, reasons: str) -> InputError:
     seen = f"Of {rows} rows all are left out: {reasons}." if rows else "The data have no rows."
-    return InputError("There are no rows to work with.", seen, "Check the columns named in the formula, and the choice of rows.")
+    return InputError(
+        "There are no rows to work with.", seen, "Check the columns named in the formula, and the choice of rows."
+    )
 
 
 def too_few_rows(n: int, columns: int, total: int, reasons: str) -> InputError:
@@ -170,7 +182,7 @@ def too_few_rows(n: int, columns: int, total: int, reasons: str) -> InputError:
 def too_large(rows: int, columns: int, name: str) -> InputError:
     return InputError(
         "This formula has too many columns for so many rows.",
-        f"{rows} rows by {columns} columns would need {rows * columns * 8 / 1e9:.0f} GB; most columns come from `{name}`.",
+        f"{rows} rows by {columns} columns need {rows * columns * 8 / 1e9:.0f} GB; most columns come from `{name}`.",
         f"Leave `{name}` out of the formula; if its rows belong together, give it as cluster.",
     )
 
@@ -219,7 +231,9 @@ def unknown_weights_kind(kind: str, kinds: Sequence[str]) -> UnknownNameError:
 
 
 def kind_without_weights(kind: str) -> InputError:
-    return InputError("A kind of weights is given, but no weights.", f"weights_kind={kind!r}.", "Name their column: weights='...'.")
+    return InputError(
+        "A kind of weights is given, but no weights.", f"weights_kind={kind!r}.", "Name their column: weights='...'."
+    )
 
 
 def weights_not_positive(name: str, count: int, rows: int, lowest: float) -> InputError:
@@ -248,7 +262,9 @@ def exposure_not_positive(name: str, count: int, rows: int, lowest: float) -> In
 
 def clusters_too_few(name: str, value: object) -> InputError:
     return InputError(
-        "Clusters need at least two.", f"All rows have the same `{name}`: {value!r}.", "Leave the cluster out, or name another column."
+        "Clusters need at least two.",
+        f"All rows have the same `{name}`: {value!r}.",
+        "Leave the cluster out, or name another column.",
     )
 
 
@@ -264,7 +280,9 @@ def at_no_covariate(name: str, focus: str, covariates: Sequence[str]) -> BattenE
 
 def at_unusable(at: Mapping[str, object], note: str) -> InputError:
     asked = ", ".join(f"{name}={value!r}" for name, value in at.items())
-    return InputError("These covariate values cannot be used.", f"at {asked}: {note}.", "Choose values that the rows hold.")
+    return InputError(
+        "These covariate values cannot be used.", f"at {asked}: {note}.", "Choose values that the rows hold."
+    )
 
 
 # --- samples ----------------------------------------------------------------------------------------------------------

@@ -119,9 +119,7 @@ def no_expression(formula: str, start: int, end: int, *, column: str) -> Formula
 
 
 def unknown_focus(name: str, options: Iterable[str]) -> UnknownNameError:
-    return UnknownNameError(
-        f"There is no column `{name}` to be the focal predictor.", "", closest(name, list(options))
-    )
+    return UnknownNameError(f"There is no column `{name}` to be the focal predictor.", "", closest(name, list(options)))
 
 
 def focus_not_in_formula(name: str, options: Iterable[str]) -> InputError:
@@ -167,7 +165,9 @@ def response_is_focus(name: str) -> InputError:
 
 def quoted_name_needed(text: str) -> InputError:
     return InputError(
-        "Q() needs the name of a column in quotation marks.", f"Seen: {text}", "Write it like this: Q('melt temperature')"
+        "Q() needs the name of a column in quotation marks.",
+        f"Seen: {text}",
+        "Write it like this: Q('melt temperature')",
     )
 
 

@@ -18,8 +18,11 @@ _LEFT = 1e-11
 
 @dataclass(frozen=True)
 class Kept:
-    """Columns that are independent. base, modifier: positions kept. intercept: its position among the kept base columns,
-    or None. constant: whether a constant lies in the span of base."""
+    """Columns that are independent.
+
+    base, modifier: positions kept. intercept: its position among the kept base columns, or None. constant: whether a
+    constant lies in the span of base.
+    """
 
     base: tuple[int, ...]
     modifier: tuple[int, ...]
@@ -53,6 +56,8 @@ def _spans_constant(columns: Array) -> bool:
     """Whether a constant is a combination of the columns."""
     if columns.shape[1] == 0:
         return False
+    if np.any(np.all(columns == 1, axis=0)):
+        return True
     ones = np.ones((len(columns), 1))
     independent = [j for j in range(columns.shape[1]) if j not in repeats(columns)]
     return repeats(np.column_stack([columns[:, independent], ones])) == [len(independent)]
@@ -60,20 +65,20 @@ def _spans_constant(columns: Array) -> bool:
 
 def repeats(columns: Array) -> list[int]:
     """Positions of the columns (n, k) that are combinations of those before them."""
-    size = np.sqrt(np.einsum("ij,ij->j", columns, columns))
-    scaled = columns / np.where(size > 0, size, 1.0)
-    if np.all(size > 0) and _surely_independent(scaled):
+    cross = columns.T @ columns
+    size = np.sqrt(np.diag(cross))
+    if np.all(size > 0) and _surely_independent(cross / np.outer(size, size)):
         return []
-    return _dependent(np.linalg.qr(scaled, mode="r"))
+    return _dependent(np.asarray(np.linalg.qr(columns / np.where(size > 0, size, 1.0), mode="r")))
 
 
-def _surely_independent(scaled: Array) -> bool:
-    """A quick look at the cross-products, which settles nearly every design without a QR of all rows.
+def _surely_independent(cosines: Array) -> bool:
+    """A quick look at the cross-products (k, k), which settles nearly every design without a QR of all rows.
 
     Cross-products carry rounding of 1e-16, so pivots (squared shares of length) above 1e-8 are beyond doubt.
     """
     try:
-        pivots = np.diag(cholesky(scaled.T @ scaled)) ** 2
+        pivots = np.diag(cholesky(cosines)) ** 2
     except np.linalg.LinAlgError:
         return False
     return bool(pivots.min() > 1e-8)

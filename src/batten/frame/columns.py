@@ -15,7 +15,21 @@ from pandas.api import types
 from batten.engine.rows import Array, Ints
 from batten.errors import data as errors
 
-__all__ = ["Bools", "Column", "Kind", "as_groups", "as_numbers", "as_raw", "check_numbers", "days_since", "first_day", "look", "match_levels", "plain", "word"]
+__all__ = [
+    "Bools",
+    "Column",
+    "Kind",
+    "as_groups",
+    "as_numbers",
+    "as_raw",
+    "check_numbers",
+    "days_since",
+    "first_day",
+    "look",
+    "match_levels",
+    "plain",
+    "word",
+]
 
 Bools = npt.NDArray[np.bool_]
 Kind = Literal["numbers", "yes/no", "dates", "text", "categories", "mixture", "other"]
@@ -36,8 +50,8 @@ class Column:
 
     values: a copy with a fresh index 0..n-1. missing (n,): also blank text. numbers (n,): NaN where missing; for kinds
     "numbers" and "yes/no". stored: how numbers were stored when that is worth saying ("as text", "as Decimal"), else
-    "". stray: texts that keep the column from being numbers, when most of its values look like numbers. coded: for text,
-    codes (n,) and the distinct values.
+    "". stray: texts that keep the column from being numbers, when most of its values look like numbers. coded: for
+    text, codes (n,) and the distinct values.
     """
 
     name: str
@@ -80,7 +94,7 @@ def _missing(series: pd.Series[Any]) -> Bools:
 
 def _dtype_word(dtype: Any) -> str:
     """Nullable and Arrow types are named; numpy's own need no word."""
-    return "" if isinstance(dtype, np.dtype) or isinstance(dtype, pd.SparseDtype) else f"as {dtype}"
+    return "" if isinstance(dtype, np.dtype | pd.SparseDtype) else f"as {dtype}"
 
 
 def _numeric(name: str, series: pd.Series[Any], kind: Kind, stored: str) -> Column:
@@ -137,7 +151,8 @@ def _text(name: str, series: pd.Series[Any], missing: Bools) -> Column:
         table = np.array([float(t) if t.strip() else np.nan for t in texts] + [np.nan])
         return Column(name, "numbers", series.copy(), missing, table[codes], "as text", coded=(codes, texts))
     alike = sum(1 for t in told if _LIKE_A_NUMBER.fullmatch(t))
-    return Column(name, "text", series.copy(), missing, stray=stray if 2 * alike > len(told) else (), coded=(codes, texts))
+    stray = stray if 2 * alike > len(told) else ()
+    return Column(name, "text", series.copy(), missing, stray=stray, coded=(codes, texts))
 
 
 # --- as numbers -------------------------------------------------------------------------------------------------------
@@ -220,9 +235,10 @@ def plain(values: Iterable[Any]) -> list[Any]:
 
 def _factorized(column: Column) -> tuple[Ints, Sequence[Any]]:
     try:
-        return pd.factorize(_group_values(column))
+        codes, found = pd.factorize(_group_values(column))
     except TypeError:
         raise errors.not_groups(column.name) from None
+    return codes, list(found)
 
 
 def _group_values(column: Column) -> pd.Series[Any]:

@@ -126,8 +126,13 @@ class Design:
         good = np.flatnonzero(~notes.bad)
         x = self.slots[FOCUS].numbers(columns[self.focus])[good]
         base, modifier = matrices(self.blocks, values, len(good))
-        whole = (_spread(part, good, len(table)) for part in (x, base[:, list(self.keep_base)], modifier[:, list(self.keep_modifier)]))
-        return NewRows(*whole, index=table.index, notes=tuple(notes.texts))
+        return NewRows(
+            x=_spread(x, good, len(table)),
+            base=_spread(base[:, list(self.keep_base)], good, len(table)),
+            modifier=_spread(modifier[:, list(self.keep_modifier)], good, len(table)),
+            index=table.index,
+            notes=tuple(notes.texts),
+        )
 
     def _values(self, columns: Mapping[str, Column], notes: RowNotes) -> dict[str, Values]:
         """Factors on the rows that can be predicted; rows where one cannot be worked out are added to the bad ones."""
@@ -154,11 +159,15 @@ def matrices(blocks: Sequence[Block], values: Mapping[str, Values], count: int) 
 
 def _product(block: Block, values: Mapping[str, Values], count: int) -> Array:
     """Columns of one block (count, k), the focal predictor left out; the first factor's columns vary fastest."""
-    made = np.ones((count, 1))
-    for i, (code, contrast) in enumerate(block.without(FOCUS)):
-        part = values[code] if contrast is None else contrast[values[code]]
-        made = part if i == 0 else (part[:, :, None] * made[:, None, :]).reshape(count, -1)
+    parts = [_columns(values[code], contrast) for code, contrast in block.without(FOCUS)]
+    made = parts[0] if parts else np.ones((count, 1))
+    for part in parts[1:]:
+        made = (part[:, :, None] * made[:, None, :]).reshape(count, -1)
     return made
+
+
+def _columns(values: Values, contrast: Array | None) -> Array:
+    return np.asarray(values if contrast is None else contrast[values], dtype=np.float64)
 
 
 def _stacked(parts: Sequence[Array], count: int) -> Array:

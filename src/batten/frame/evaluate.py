@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from batten.engine.rows import Array, Ints
+from batten.errors import InputError
 from batten.errors import formula as errors
 from batten.frame.columns import Bools, match_levels, plain
 from batten.frame.formula import Recipe
@@ -34,7 +35,7 @@ def worked_out_in_parts(recipe: Recipe, data: Mapping[str, Any], count: int, *, 
     """As `worked_out`, but rows that fail (a spline outside its knots) become unknown instead of stopping the rest."""
     try:
         return worked_out(recipe, data, count, label=label)
-    except errors.InputError:
+    except InputError:
         if count > 1:
             half = count // 2
             parts = (slice(None, half), half), (slice(half, None), count - half)
@@ -44,7 +45,7 @@ def worked_out_in_parts(recipe: Recipe, data: Mapping[str, Any], count: int, *, 
 
 def unknown(values: Values) -> Bools:
     """Rows (n,) where a factor is no finite number or no level."""
-    return values < 0 if values.ndim == 1 else ~np.isfinite(values).all(axis=1)
+    return np.asarray(values < 0 if values.ndim == 1 else ~np.isfinite(values).all(axis=1))
 
 
 def check_row_by_row(recipe: Recipe, data: Mapping[str, Any], values: Values, *, label: str) -> None:

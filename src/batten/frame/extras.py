@@ -57,7 +57,7 @@ class Beside:
         for option, name in self.columns.items():
             yield from Slot(name, "groups" if option == "cluster" else "numbers").complaints(columns[name])
         if self.weights is not None and self.weights_kind == "frequency":
-            yield columns[self.weights].numbers == 0, f"{self.weights} is 0"
+            yield as_numbers(columns[self.weights]) == 0, f"{self.weights} is 0"
 
     def extras(self, columns: Mapping[str, Column], rows: Bools) -> Extras:
         """The values on the analysis rows, checked."""

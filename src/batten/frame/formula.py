@@ -7,7 +7,6 @@ like remember. Everything it finds out is handed on as plain values that pickle.
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from types import ModuleType
@@ -23,6 +22,7 @@ from patsy.parse_formula import parse_formula
 
 from batten.engine.rows import Array
 from batten.errors import formula as errors
+from batten.frame.spelling import check_spelling, on_one_line
 
 __all__ = [
     "Block",
@@ -37,14 +37,13 @@ __all__ = [
     "without_memory",
 ]
 
-_STRING = r"\"(?:\\.|[^\"\\])*\"|'(?:\\.|[^'\\])*'"
 _BOX = type(patsy.builtins.C(None))
 
 # what patsy objects to -> why it cannot be read, and what to do
 _OBJECTIONS = (
     ("the expression ended", "nothing follows this sign", "Add what should follow, or remove the sign."),
     ("expected a noun", "no column stands before this sign", "Add the column that is missing, or remove the sign."),
-    ("expected an operator", "no sign joins this to what stands before it", "Join predictors with +, groups with : or *."),
+    ("expected an operator", "no sign joins this to what stands before it", "Join predictors with +."),
     ("intercept term cannot", "a bare 1 can be added or removed, not combined", "Arithmetic goes inside I(): I(1/z)."),
     ("requires a positive", "a bare power must be a whole number", "Arithmetic goes inside I(): I(z**0.5)."),
     ("Unary minus", "a minus takes away a term or the intercept", "Arithmetic goes inside I(): I(-z)."),
@@ -56,9 +55,9 @@ _OBJECTIONS = (
 class Formula:
     """A parsed formula, not yet looked up in any data.
 
-    text: on one line, without comments. left: what stands before the ~. response: the factors in it; `plain_response` is
-    False when signs or several terms stand there. terms: factors of each term after the ~; () is the intercept. places: where each
-    factor stands in the text. powers: bare powers of one column, `x**2`, which mean just `x`.
+    text: on one line, without comments. left: what stands before the ~. response: the factors in it; `plain_response`
+    is False when signs or several terms stand there. terms: factors of each term after the ~; () is the intercept.
+    places: where each factor stands in the text. powers: bare powers of one column, `x**2`, which mean just `x`.
     """
 
     text: str
@@ -73,7 +72,7 @@ class Formula:
         """The formula with some factors renamed (None: left out); terms that become equal are kept once."""
         kept: dict[tuple[str, ...], None] = {}
         for term in self.terms:
-            factors = [f if f not in names else names[f] for f in term]
+            factors = [names.get(f, f) for f in term]
             if term and None not in factors:
                 kept[tuple(dict.fromkeys(str(f) for f in factors))] = None
         right = [":".join(term) for term in kept]
@@ -84,9 +83,8 @@ class Formula:
 
 def parse(text: str) -> Formula:
     """Read the formula's grammar; errors point at the place with carets."""
-    text = _on_one_line(text)
-    _check_ends(text)
-    _check_signs(text)
+    text = on_one_line(text)
+    check_spelling(text)
     try:
         tree = parse_formula(text)
         right = patsy.ModelDesc.from_formula(ParseNode("~", None, [tree.args[-1]], tree.origin)).rhs_termlist
@@ -103,61 +101,6 @@ def parse(text: str) -> Formula:
         places=places,
         powers=tuple(dict.fromkeys(_bare_powers(tree.args[1]))),
     )
-
-
-def _on_one_line(text: str) -> str:
-    """Comments removed, lines joined; quoted names are left alone."""
-    return re.sub(rf"({_STRING})|(?:#[^\n]*|\\\n|\s)+", lambda m: m.group(1) or " ", text).strip()
-
-
-def _masked(text: str) -> str:
-    """The text with everything in quotation marks replaced by x, so that signs can be looked for."""
-    return re.sub(_STRING, lambda m: "x" * len(m.group()), text)
-
-
-def _check_ends(text: str) -> None:
-    left, tilde, right = _masked(text).partition("~")
-    if not tilde:
-        raise errors.no_tilde(text)
-    if not left.strip():
-        raise errors.no_response(text)
-    if not right.strip():
-        raise errors.no_right_side(text)
-    second, hanging = right.find("~"), left.rstrip()
-    if second >= 0:
-        at = len(left) + 1 + second
-        raise errors.unreadable(text, at, at + 1, why="a formula has one ~", do="Join predictors with +.")
-    if hanging[-1] in "+-*/:":
-        at = len(hanging) - 1
-        do = "Add what should follow, or remove the sign."
-        raise errors.unreadable(text, at, at + 1, why="nothing follows this sign", do=do)
-
-
-def _check_signs(text: str) -> None:
-    """What Python's tokenizer reports differently from version to version: quotes, brackets, stray signs."""
-    masked = _masked(text)
-    opened: list[int] = []
-    pairs = {")": "(", "]": "[", "}": "{"}
-    for i, sign in enumerate(masked):
-        if sign in "\"'":
-            do = "Close it, or remove it."
-            raise errors.unreadable(text, i, i + 1, why="this quotation mark is never closed", do=do)
-        if sign in "`$?;\\" or (sign == "!" and masked[i + 1 : i + 2] != "="):
-            do = 'A column with an unusual name is written Q("its name").'
-            raise errors.unreadable(text, i, i + 1, why="this sign has no meaning in a formula", do=do)
-        if sign in "^|" and not opened:
-            do = "A power is I(z**2), an interaction a:b or a*b."
-            raise errors.unreadable(text, i, i + 1, why="this sign has no meaning in a formula", do=do)
-        if sign in "([{":
-            opened.append(i)
-        elif sign in pairs:
-            if not opened or masked[opened[-1]] != pairs[sign]:
-                do = "Open it, or remove it."
-                raise errors.unreadable(text, i, i + 1, why="this bracket was never opened", do=do)
-            opened.pop()
-    if opened:
-        at = opened[-1]
-        raise errors.unreadable(text, at, at + 1, why="this bracket is never closed", do="Close it, or remove it.")
 
 
 def _translated(text: str, error: patsy.PatsyError) -> Exception:

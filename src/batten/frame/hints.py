@@ -20,11 +20,13 @@ _TEMPERATURE_UNITS = {"c", "f", "°c", "°f", "degc", "degf", "deg c", "deg f", 
 _KELVIN = {"k", "kelvin", "kelvins"}
 _TEMPERATURE_NAMES = {"temp", "temps", "temperature", "temperatures", "celsius", "fahrenheit", "degc", "degf"}
 #: words that name a thing of which there can be several rows
-_THINGS = frozenset(
-    "id ids uid uuid guid key code nr serial machine batch lot heat subject patient participant person customer client "
-    "user operator worker animal tree plot bed block field farm site store shop branch house household school firm "
-    "company plant pump furnace mould mold vehicle device sensor specimen run shift team".split()
-)
+_THINGS = frozenset({
+    "id", "ids", "uid", "uuid", "guid", "key", "code", "nr", "serial", "machine", "batch", "lot", "heat", "subject",
+    "patient", "participant", "person", "customer", "client", "user", "operator", "worker", "animal", "tree", "plot",
+    "bed", "block", "field", "farm", "site", "store", "shop", "branch", "house", "household", "school", "firm",
+    "company", "plant", "pump", "furnace", "mould", "mold", "vehicle", "device", "sensor", "specimen", "run", "shift",
+    "team",
+})  # fmt: skip
 _DATE_TEXT = re.compile(r"\s*(\d{4}-\d{1,2}-\d{1,2}|\d{1,2}[./]\d{1,2}[./]\d{2,4})([ T]\d{1,2}:\d{2}.*)?\s*")
 
 
@@ -36,7 +38,8 @@ def _words(name: str) -> list[str]:
 def read_differently(columns: Mapping[str, Column], slots: Iterable[Slot], response: str) -> Iterator[str]:
     """Columns that were turned into numbers: text, Decimal and nullable types; yes/no; dates."""
     numeric = dict.fromkeys([response, *(slot.column for slot in slots if slot.use != "groups")])
-    turned = [f"{name} (stored {columns[name].stored})" for name in numeric if columns[name].numbers is not None and columns[name].stored]
+    stored = {name: columns[name].stored for name in numeric if columns[name].numbers is not None}
+    turned = [f"{name} (stored {how})" for name, how in stored.items() if how]
     if turned:
         yield "Read as numbers: " + ", ".join(turned) + "."
     if columns[response].kind == "yes/no":

@@ -111,7 +111,8 @@ class _Maker:
 def expression_complaints(plan: Plan, columns: Mapping[str, Column], rows: Bools) -> Iterator[Complaint]:
     """Among rows that are complete, those where an expression (np.log(z)) is no finite number."""
     names = without_memory(plan.names)
-    data = {name: slot.values(columns[slot.column], rows) for name, slot in plan.slots.items() if slot.use == "as it is"}
+    raw = {name: slot for name, slot in plan.slots.items() if slot.use == "as it is"}
+    data = {name: slot.values(columns[slot.column], rows) for name, slot in raw.items()}
     for code, factor in plan.factors.items():
         if plan.is_expression(code):
             recipe = Recipe(code, names, levels=None, width=0)

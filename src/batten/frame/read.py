@@ -13,7 +13,7 @@ from batten.errors import data as errors
 from batten.errors.formula import unknown_focus
 from batten.frame import hints
 from batten.frame.choice import chosen_rows
-from batten.frame.columns import Bools, Column, check_numbers, look
+from batten.frame.columns import Column, check_numbers, look
 from batten.frame.extras import Beside
 from batten.frame.formula import Formula, namespace, parse
 from batten.frame.learning import Learned, learn_design
@@ -114,7 +114,8 @@ def _numbers(
         raise errors.empty(len(rows), sample.summary())
     extras = beside.extras(columns, rows)
     y = np.asarray(columns[roles.response].numbers)[rows]
-    standing_for = int(extras.weights.sum()) if beside.weights_kind == "frequency" and extras.weights is not None else len(y)
+    counts = extras.weights if beside.weights_kind == "frequency" else None
+    standing_for = len(y) if counts is None else int(counts.sum())
     if standing_for < 5:
         raise errors.too_few_rows(standing_for, 0, len(rows), sample.summary())
     if y.min() == y.max():

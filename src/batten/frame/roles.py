@@ -16,8 +16,8 @@ from batten.frame.formula import Formula
 __all__ = ["Roles", "choose_roles", "read_factors"]
 
 _KIND_WORDS = {
-    "numbers": "a function of numbers", "yes/no": "yes/no", "dates": "dates", "text": "text", "categories": "categories",
-    "mixture": "numbers and text together", "other": "not numbers",
+    "numbers": "a function of numbers", "yes/no": "yes/no", "dates": "dates", "text": "text",
+    "categories": "categories", "mixture": "numbers and text together", "other": "not numbers",
 }  # fmt: skip
 
 
@@ -87,9 +87,7 @@ def _candidates(right: list[Expression], columns: Mapping[str, Column]) -> list[
     return []
 
 
-def _response(
-    formula: Formula, factors: Mapping[str, Expression], right: list[Expression], meant: str | None
-) -> str:
+def _response(formula: Formula, factors: Mapping[str, Expression], right: list[Expression], meant: str | None) -> str:
     left = [factors[text] for text in formula.response]
     if not left:
         raise errors.no_response(formula.text)

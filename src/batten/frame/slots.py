@@ -17,12 +17,13 @@ from batten.frame.rownotes import Complaint
 
 __all__ = ["Slot"]
 
+
 @dataclass(frozen=True)
 class Slot:
     """How a column enters the design under one safe name.
 
-    use: "numbers" (n,), "groups" (codes of `levels`) or "as it is" (inside an expression). levels: in use, the reference
-    first. start: the day from which dates are counted. low, high: range of the numbers on the analysis rows.
+    use: "numbers" (n,), "groups" (codes of `levels`) or "as it is" (inside an expression). levels: in use, the
+    reference first. start: the day from which dates are counted. low, high: range of the numbers on the analysis rows.
     """
 
     column: str
@@ -58,7 +59,7 @@ class Slot:
         if self.use == "numbers":
             return self.numbers(column)[rows]
         if self.use == "groups":
-            return pd.Categorical.from_codes(self.codes(column, rows), categories=list(self.levels))
+            return pd.Categorical.from_codes(self.codes(column, rows), categories=pd.Index(self.levels))
         return as_raw(column, rows)
 
     def complaints(self, column: Column) -> Iterator[Complaint]:

@@ -45,12 +45,12 @@ class Table:
         return self.source.select(wanted).to_pandas().set_axis(self.index) if wanted else pd.DataFrame(index=self.index)
 
     def kinds(self) -> dict[Any, str]:
-        """Rough kind of every column from its type alone: "whole", "text", "dates" or "" (other, or a name used twice)."""
+        """Rough kind of every column from its type: "whole", "text", "dates" or ""; names used twice are left out."""
         if isinstance(self.source, pd.DataFrame):
-            found = zip(self.names, map(_pandas_kind, self.source.dtypes), strict=True)
+            kinds = [_pandas_kind(dtype) for dtype in self.source.dtypes]
         else:
-            found = ((name, _narwhals_kind(dtype)) for name, dtype in self.source.schema.items())
-        return {name: kind for name, kind in found if self.counts[name] == 1}
+            kinds = [_narwhals_kind(dtype) for dtype in self.source.schema.values()]
+        return {name: kind for name, kind in zip(self.names, kinds, strict=True) if self.counts[name] == 1}
 
 
 def open_table(data: Any) -> Table:
