@@ -181,8 +181,7 @@ def _straightening(v: Array, other: Array) -> Array:
 
     def above(p: Array) -> Array:
         """Positive where p is too high."""
-        small = np.abs(p) < 1e-9
-        powered = np.where(small, logs.T, np.expm1(p * logs.T) / np.where(small, 1.0, p))
+        powered = np.where(p == 0, logs.T, np.expm1(p * logs.T) / np.where(p == 0, 1.0, p))
         early, late = np.diff(powered, axis=0)
         return np.asarray(rising * (np.log(late / early) - target))
 

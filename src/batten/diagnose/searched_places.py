@@ -69,8 +69,9 @@ def place_t(X0: Array, columns: Array, z: Array, *, weights: Array | None = None
 def davies(t: Array, *, df: int | None = None) -> Davies | None:
     """Does the kink or step exist anywhere? Bound on p from the t statistics (K,) along ordered places (Davies 1987).
 
-    p <= 2 [Phi(-M) + V exp(-M^2 / 2) / sqrt(8 pi)] for normal scores. With `df` the t are first turned into normal
-    scores of the same tail probability, which matters below some 50 rows. None when no place can be tested.
+    p <= 2 [Phi(-M) + V exp(-M^2 / 2) / sqrt(8 pi)] for normal scores. Give `df` to turn the t into normal scores of the
+    same tail first: without it a straight line is rejected at the 5% level in 11% of samples of 12 rows, 8% of 20, 6%
+    of 60, with it in 4 to 5% (simulated, 20 places). None when no place can be tested.
     """
     where = np.flatnonzero(np.isfinite(t))
     if not len(where):

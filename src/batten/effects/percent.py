@@ -40,8 +40,8 @@ def percent_of_dummy(b: float, std_error: float, *, df: int, critical: float) ->
     normal with equal spread.
     """
     m, v, growth = df / 2, std_error**2, float(np.exp(b))
-    shrink = float(hyp0f1(m, -m * v / 2))
-    variance = shrink**2 - float(hyp0f1(m, -2 * m * v))
+    shrink = _bessel_like(m, -v / 2)
+    variance = shrink**2 - _bessel_like(m, -2 * v)
     return PercentOfDummy(
         plain=100 * float(np.expm1(b)),
         low=100 * float(np.expm1(b - critical * std_error)),
@@ -51,3 +51,22 @@ def percent_of_dummy(b: float, std_error: float, *, df: int, critical: float) ->
         std_error_exact=100 * growth * float(np.sqrt(max(variance, 0.0))),
         std_error_approximate=100 * growth * float(np.sqrt(np.exp(-v) - np.exp(-2 * v))),
     )
+
+
+def _bessel_like(m: float, t: float) -> float:
+    """0F1(m; m t), which tends to exp(t) as m grows; t <= 0.
+
+    scipy's function turns to NaN from some hundreds of degrees of freedom, so large m sums the series; beyond t = -20,
+    where its terms would cancel, the value is below 1e-8 and the limit serves.
+    """
+    if m <= 50:
+        return float(hyp0f1(m, m * t))
+    if t < -20:
+        return float(np.exp(t))
+    total = term = 1.0
+    k = 0
+    while abs(term) > 1e-17:
+        term *= t * m / ((m + k) * (k + 1))
+        total += term
+        k += 1
+    return total
