@@ -17,6 +17,7 @@ from typing import TypeVar
 
 from batten.errors import keys
 from batten.families.base import Constants, Link, Scale, Shape
+from batten.families.numbers import number
 from batten.families.registry import curves, links, scales, shapes
 
 __all__ = ["read_left", "read_right", "split"]
@@ -67,12 +68,13 @@ def _word(part: str, variable: str, text: str) -> tuple[str, Constants | None]:
     bracket = _BRACKET.fullmatch(body)
     if not bracket or body == part:
         return body, None
-    try:
-        numbers = tuple(float(number) for number in bracket["numbers"].split(",") if bracket["numbers"].strip())
-    except ValueError:
+    inside = bracket["numbers"].strip()
+    numbers = [number(part.strip()) for part in inside.split(",")] if inside else []
+    found = tuple(value for value in numbers if value is not None)
+    if len(found) < len(numbers):
         raise keys.wrong_numbers(text, "Brackets in a key hold numbers with commas between them.",
-                                 instead="Write y ~ bins(10, 20, 40) x.") from None  # fmt: skip
-    return bracket["word"], numbers
+                                 instead="Write y ~ bins(10, 20, 40) x.")  # fmt: skip
+    return bracket["word"], found
 
 
 def _first(members: Iterable[Member], word: str, numbers: Constants | None) -> Member | None:

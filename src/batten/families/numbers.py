@@ -3,13 +3,19 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable
 
 import numpy as np
 
 from batten.families.base import Array
 
-__all__ = ["distinct", "exp", "listed", "log", "near", "origin", "plain", "power", "shown", "typical"]
+__all__ = ["distinct", "exp", "listed", "log", "near", "number", "origin", "plain", "power", "shown", "typical"]
+
+
+def number(text: str) -> float | None:
+    """The finite decimal number that a text spells, or None."""
+    return float(text) if re.fullmatch(r"[-+]?(\d+\.?\d*|\.\d+)([eE][-+]?\d+)?", text) else None
 
 
 def plain(value: float) -> str:

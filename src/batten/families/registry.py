@@ -11,6 +11,9 @@ from batten.families.base import Link, Scale, Shape
 
 __all__ = ["curves", "links", "scales", "shapes"]
 
+# Loaded here, so that the package can afterwards give the functions below the names of its folders for good.
+_FOLDERS = {name: import_module(f"batten.families.{name}") for name in ("curves", "links", "scales", "shapes")}
+
 
 @cache
 def scales() -> tuple[Scale, ...]:
@@ -37,7 +40,7 @@ def curves() -> tuple[Shape, ...]:
 
 
 def _members(folder: str) -> tuple[Any, ...]:
-    package = import_module(f"batten.families.{folder}")
+    package = _FOLDERS[folder]
     found: list[Any] = []
     for info in pkgutil.iter_modules(package.__path__):
         module = import_module(f"{package.__name__}.{info.name}")

@@ -37,7 +37,7 @@ class Growth(Shape):
         if distinct(x) >= 5:
             return None
         return Refusal(
-            wrong=f"{self.words('x').split(' in ')[0]} needs five different values.",
+            wrong="A curve from zero to a ceiling needs five different values.",
             seen=f"There are {distinct(x)} in {len(x)} rows.",
             instead="A straight line, or log x.",
         )

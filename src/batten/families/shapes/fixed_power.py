@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from dataclasses import dataclass
 from typing import ClassVar
 
@@ -10,7 +9,7 @@ import numpy as np
 
 from batten.errors import Refusal, keys
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import plain, power, shown
+from batten.families.numbers import number, plain, power, shown
 
 __all__ = ["FAMILIES", "FixedPower"]
 
@@ -48,10 +47,11 @@ class FixedPower(Shape):
 
     def read(self, word: str, numbers: Constants | None) -> Shape | None:
         named = {"sqrt": 0.5, "1/x": -1.0}
-        written = re.fullmatch(r"x\^([-+]?[0-9.]+(?:e[-+]?\d+)?)", word)
-        if numbers is not None or (word not in named and not written):
+        if numbers is not None or (word not in named and (not word.startswith("x^") or word == "x^p")):
             return None
-        exponent = named[word] if word in named else _number(word, written)
+        exponent = named[word] if word in named else number(word.removeprefix("x^"))
+        if exponent is None:
+            raise keys.wrong_numbers(word, "A power of x is written with one number.", instead="Write x^2 or x^-0.5.")
         if exponent in (0.0, 1.0):
             instead = "Write x." if exponent else "Write log x, which stands at power 0 of the ladder."
             raise keys.wrong_numbers(word, f"x^{plain(exponent)} is {'x itself' if exponent else 'a constant'}.",
@@ -96,13 +96,6 @@ class FixedPower(Shape):
         need = ("x >= 0", "of zero or more") if self.exponent > 0 else ("x != 0", "other than zero")
         check = None if whole else (need[0], f"this power needs {x} {need[1]}")
         return Code(columns=(("power_x", expression),), check=check)
-
-
-def _number(word: str, written: re.Match[str] | None) -> float:
-    try:
-        return float(written.group(1)) if written else float("nan")
-    except ValueError:
-        raise keys.wrong_numbers(word, "A power of x is written with one number.", instead="x^2, x^-0.5.") from None
 
 
 FAMILIES = (FixedPower(0.5), FixedPower(-1.0), FixedPower(2.0))
