@@ -19,6 +19,7 @@ __all__ = [
     "no_tilde",
     "not_worked_out",
     "quoted_name_needed",
+    "read_as_attribute",
     "response_both_sides",
     "response_is_focus",
     "several_responses",
@@ -26,6 +27,7 @@ __all__ = [
     "transformed_response",
     "unknown_column",
     "unknown_focus",
+    "unknown_function",
     "unreadable",
     "wrong_length",
 ]
@@ -93,13 +95,28 @@ def transformed_focus(focus: str, texts: Iterable[str], instead: str) -> InputEr
     )
 
 
-def unknown_column(name: str, columns: Iterable[object], *, dotted: bool = False) -> UnknownNameError:
-    """`dotted`: the name is part of a text like mass.kg, which is a column as a whole."""
+def unknown_column(name: str, columns: Iterable[object]) -> UnknownNameError:
     options = [str(c) for c in columns]
-    do = f"Write Q({name!r})." if dotted else closest(name, options)
-    if dotted:
-        return UnknownNameError(f"`{name}` is read as an attribute, not as a column.", "", do)
-    return UnknownNameError(f"There is no column `{name}`.", f"The data have {len(options)} columns.", do)
+    return UnknownNameError(
+        f"There is no column `{name}`.", f"The data have {len(options)} columns.", closest(name, options)
+    )
+
+
+def unknown_function(name: str, text: str) -> UnknownNameError:
+    return UnknownNameError(
+        f"`{name}` is not known here.",
+        f"It is called in: {text}",
+        "numpy is there as np (np.log, np.sqrt); define other functions where the formula is used.",
+    )
+
+
+def read_as_attribute(text: str) -> InputError:
+    """A column called mass.kg beside a column, or a module, called mass."""
+    return InputError(
+        f"`{text}` could be a column, or an attribute of `{text.partition('.')[0]}`.",
+        "Both names are there.",
+        f"For the column write Q({text!r}).",
+    )
 
 
 def no_column_in(text: str, columns: Iterable[object]) -> UnknownNameError:

@@ -62,18 +62,22 @@ class Expression:
 
 
 def read_expression(text: str, columns: Iterable[object], namespace: Mapping[str, Any]) -> Expression:
-    """Find the columns in one factor's text; refuse names that are neither columns nor in the namespace."""
+    """Find the columns in one factor's text; refuse names that are neither columns nor in the namespace.
+
+    Text that is no Python raises SyntaxError.
+    """
     known = {c for c in columns if isinstance(c, str)}
     if _is_plain_name(text, known, namespace):
         return Expression(text, (text,), bare=text)
+    if text in known and _DOTTED.fullmatch(text):
+        raise errors.read_as_attribute(text)
     finder = _Finder(known, namespace)
     tree = _parsed(text)
     finder.visit(tree)
-    whole = _first_attribute(tree)
-    for name in finder.unknown:
-        if whole in known:
-            raise errors.unknown_column(whole, known, dotted=True)
-        raise errors.unknown_column(name, known)
+    if finder.uncallable:
+        raise errors.unknown_function(finder.uncallable[0], text)
+    if finder.unknown:
+        raise errors.unknown_column(finder.unknown[0], known)
     found = tuple(dict.fromkeys(finder.found))
     if not found:
         raise errors.no_column_in(text, known)
@@ -91,10 +95,6 @@ def _is_plain_name(text: str, known: set[str], namespace: Mapping[str, Any]) -> 
 
 def _parsed(text: str) -> ast.Expression:
     return ast.parse(text, mode="eval")
-
-
-def _first_attribute(tree: ast.Expression) -> str:
-    return ast.unparse(tree) if isinstance(tree.body, ast.Attribute) else ""
 
 
 def _group(body: ast.expr, finder: _Finder) -> str | None:
@@ -123,6 +123,7 @@ class _Finder(ast.NodeVisitor):
         self.found: list[str] = []
         self.calls: list[str] = []
         self.unknown: list[str] = []
+        self.uncallable: list[str] = []
 
     def column(self, node: ast.AST) -> str | None:
         """The column a node stands for, when it is a bare name or a quoted one."""
@@ -136,9 +137,12 @@ class _Finder(ast.NodeVisitor):
         if quoted is not None:
             (self.found if quoted in self.known else self.unknown).append(quoted)
             return
+        root = node.func.value if isinstance(node.func, ast.Attribute) else node.func
         if isinstance(node.func, ast.Name):
             # what is called is a function, whatever the columns are called
-            (self.calls if node.func.id in self.namespace else self.unknown).append(node.func.id)
+            (self.calls if node.func.id in self.namespace else self.uncallable).append(node.func.id)
+        elif isinstance(root, ast.Name) and root.id not in self.plain and root.id not in self.namespace:
+            self.uncallable.append(root.id)
         else:
             self.visit(node.func)
         for part in (*node.args, *node.keywords):
