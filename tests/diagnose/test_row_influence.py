@@ -9,6 +9,7 @@ from scipy import stats
 from two_sets import A_X, A_Y, B_X, B_Y, line, residuals
 
 from batten.diagnose.influence import dfbeta, loo_log_scores, power_pull, preference
+from batten.engine.power import Power, best_power
 
 
 def scores(X, z, log_jacobian):
@@ -86,18 +87,27 @@ def test_quick_power_without_each_row_is_the_refit_with_the_same_constructed_var
         assert found.without[i] == pytest.approx(1 - b[2], rel=1e-9)
 
 
-def test_rows_that_pull_the_quick_power_pull_the_likelihood_too():
-    """Lambda by profile likelihood without each row (Box and Cox 1964), computed apart: the same rows stand out.
+#: lambda of y on x by profile likelihood without each row (Box and Cox 1964), computed apart
+LAMBDA_WITHOUT = np.array(
+    [0.386399, 0.469884, 0.459034, 0.447067, 0.467927, 0.421491, 0.443180, 0.401945, 0.476241, 0.443579, 0.513223,
+     0.560313]
+)  # fmt: skip
 
-    The quick form is one step from lambda 1, so only the order is compared, and the two rows that pull most.
-    """
-    likelihood = np.array(
-        [0.386399, 0.469884, 0.459034, 0.447067, 0.467927, 0.421491, 0.443180, 0.401945, 0.476241, 0.443579, 0.513223,
-         0.560313]
-    )  # fmt: skip
+
+def test_lambda_without_each_row_by_the_engine():
+    power = Power(lambda y, lam: (y**lam - 1) / lam, lambda y, lam: (lam - 1) * np.log(y), -3.0, 3.0)
+    for i in range(12):
+        rest = np.arange(12) != i
+        found, inside = best_power(power, A_Y[rest], np.linalg.qr(line(A_X)[rest])[0], start=0.45)
+        assert inside
+        assert found == pytest.approx(LAMBDA_WITHOUT[i], rel=1e-5)
+
+
+def test_rows_that_pull_the_quick_power_pull_the_likelihood_too():
+    """The quick form is one step from lambda 1, so only the order is compared, and the two rows that pull most."""
     quick = power_pull(line(A_X), A_Y).without
-    assert stats.spearmanr(quick, likelihood).statistic > 0.6
-    assert set(np.argsort(quick)[-2:]) == set(np.argsort(likelihood)[-2:]) == {10, 11}
+    assert stats.spearmanr(quick, LAMBDA_WITHOUT).statistic > 0.6
+    assert set(np.argsort(quick)[-2:]) == set(np.argsort(LAMBDA_WITHOUT)[-2:]) == {10, 11}
 
 
 def test_constructed_variable_needs_responses_above_zero():

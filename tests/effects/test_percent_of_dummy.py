@@ -8,7 +8,7 @@ from data import A_D, A_X, A_Y
 from scipy import stats
 from scipy.special import hyp0f1
 
-from batten.effects.percent import percent_of_dummy
+from batten.effects.percent import percent_of_dummy, ratio_of_means
 
 
 def reading(X, z):
@@ -45,6 +45,14 @@ def test_the_exact_reading_is_unbiased_and_so_is_its_variance():
     variances = [percent_of_dummy(float(b[i]), float(np.sqrt(v[i])), df=df, critical=2.3).std_error_exact ** 2
                  for i in range(20_000)]  # fmt: skip
     assert np.mean(variances) == pytest.approx(every.var(), rel=0.05)
+
+
+def test_with_uneven_spread_the_ratio_of_means_is_not_that_of_medians():
+    """Manning 1998: factors 1.036555 and 1.023225 turn exp(b) 1.368616 into 1.351015; values computed apart."""
+    X, z = np.column_stack([np.ones(12), A_X, A_D]), np.log(A_Y)
+    b = np.linalg.lstsq(X, z, rcond=None)[0]
+    assert np.exp(b[2]) == pytest.approx(1.368616, rel=1e-6)
+    assert ratio_of_means(float(b[2]), z - X @ b, A_D) == pytest.approx(1.351015, rel=1e-6)
 
 
 def test_with_many_rows_the_exact_forms_are_the_approximate_ones():

@@ -11,7 +11,9 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.special import hyp0f1
 
-__all__ = ["PercentOfDummy", "percent_of_dummy"]
+from batten.engine.rows import Array
+
+__all__ = ["PercentOfDummy", "percent_of_dummy", "ratio_of_means"]
 
 
 @dataclass(frozen=True)
@@ -51,6 +53,16 @@ def percent_of_dummy(b: float, std_error: float, *, df: int, critical: float) ->
         std_error_exact=100 * growth * float(np.sqrt(max(variance, 0.0))),
         std_error_approximate=100 * growth * float(np.sqrt(np.exp(-v) - np.exp(-2 * v))),
     )
+
+
+def ratio_of_means(b: float, e: Array, group: Array) -> float:
+    """Ratio of the two groups' means of the response, where the spread differs between them (Manning 1998).
+
+    exp(b) S1 / S0 with each group's own smearing factor, the mean of exp(e) over its residuals e (n,); exp(b) alone is
+    the ratio of medians. group (n,): 0 or 1.
+    """
+    grown = np.exp(e)
+    return float(np.exp(b) * grown[group == 1].mean() / grown[group == 0].mean())
 
 
 def _bessel_like(m: float, t: float) -> float:
