@@ -23,8 +23,8 @@ __all__ = ["NO_SLOPE", "SlopeAt", "average", "breaks", "slopes_along"]
 
 NO_SLOPE = "groups have steps between them, no slope"
 
-#: a slope that changes by this share at one place jumps there
-JUMP = 1e-6
+#: a slope that changes by this share of its largest within this share of the data's range jumps
+JUMP, NEAR = 1e-3, 1e-9
 
 
 @dataclass(frozen=True)
@@ -82,8 +82,9 @@ def breaks(est: Estimate) -> tuple[float, ...]:
 
 def _sides(est: Estimate, x: float) -> tuple[Literal["", "left", "right"], ...]:
     """("",), or ("left", "right") where some column's slope jumps at x."""
-    around = np.array([x, np.nextafter(x, np.inf)])
+    low, high = float(est.rows.x.min()), float(est.rows.x.max())
+    near = np.array([x, x + NEAR * (high - low)])
     with np.errstate(all="ignore"):
-        slopes = est.shape.slopes(around, est.state, est.theta)
-    jump = np.abs(slopes[1] - slopes[0]) > JUMP * np.abs(slopes).max(axis=0)
-    return ("left", "right") if jump.any() else ("",)
+        before, after = est.shape.slopes(near, est.state, est.theta)
+        size = np.abs(est.shape.slopes(np.linspace(low, high, 21), est.state, est.theta)).max(axis=0)
+    return ("left", "right") if (np.abs(after - before) > JUMP * size).any() else ("",)

@@ -78,8 +78,11 @@ class Estimate:
 
     @cached_property
     def leverage(self) -> Array:
-        """h_i of the effective design (n,)."""
-        return self.factored.leverage
+        """h_i of the effective design (n,).
+
+        Kept below 1: a row that owns a parameter has residual zero, and so says nothing once it is divided by 1 - h.
+        """
+        return np.minimum(self.factored.leverage, 1 - 1e-9)
 
     @property
     def aicc(self) -> float:
@@ -99,7 +102,7 @@ class Estimate:
         exact = self.design_at(x, base, modifier)
         parts = [exact]
         if self.moving:
-            parts.append(self._theta_pull(self.shape.theta_slopes(x, self.state, self.theta), modifier))
+            parts.append(self.theta_pull(self.shape.theta_slopes(x, self.state, self.theta), modifier))
         searched = len(self.c) if self.remedy.left.searched else 0
         if searched:
             parts.append(np.zeros((len(x), searched)))
@@ -110,15 +113,18 @@ class Estimate:
         return self._focal(self.shape.slopes(x, self.state, self.theta), modifier)
 
     def slope_jacobian_at(self, x: Array, modifier: Array) -> Array:
-        """d (d eta / dx) / d (coef, theta, c) (k, P); by central differences in x, which theta_slopes allow exactly."""
+        """d (d eta / dx) / d (coef, theta, c) (k, P); by central differences in x, which theta_slopes allow exactly.
+
+        Between breaks a slope does not depend on where they are, so their part is zero.
+        """
         s = self.shape.slopes(x, self.state, self.theta)
         p = len(self.coef)
         out = np.zeros((len(x), p + self.moving + (len(self.c) if self.remedy.left.searched else 0)))
         out[:, p - s.shape[1] * modifier.shape[1] : p] = (s[:, None, :] * modifier[:, :, None]).reshape(len(x), -1)
-        if self.moving:
+        if self.moving and self.shape.cuts(self.state, self.theta) is None:
             h = 1e-5 * (np.ptp(self.rows.x) or 1.0)
             up, down = (
-                self._theta_pull(self.shape.theta_slopes(x + d, self.state, self.theta), modifier) for d in (h, -h)
+                self.theta_pull(self.shape.theta_slopes(x + d, self.state, self.theta), modifier) for d in (h, -h)
             )
             out[:, p : p + self.moving] = (up - down) / (2 * h)
         return out
@@ -128,7 +134,8 @@ class Estimate:
         b = self.coef[len(self.coef) - columns.shape[1] * modifier.shape[1] :].reshape(modifier.shape[1], -1)
         return np.asarray(np.einsum("nk,nm,mk->n", columns, modifier, b))
 
-    def _theta_pull(self, theta_slopes: Array, modifier: Array) -> Array:
+    def theta_pull(self, theta_slopes: Array, modifier: Array) -> Array:
+        """d eta / d theta (k, q) from the columns' theta slopes (q, k, columns)."""
         return np.column_stack([self._focal(t, modifier) for t in theta_slopes])
 
     @cached_property

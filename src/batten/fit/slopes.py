@@ -55,6 +55,8 @@ def average_slope(est: Estimate, *, of: str = "mean", errors: str = "robust", ja
     """Average over the rows of the slope at each row's own x and covariates, (1,)."""
     rows = est.rows
     place = _place(est, rows.x, rows.base, rows.modifier)
+    if est.moving and est.shape.cuts(est.state, est.theta) is not None:
+        place.steep_pull[:, len(est.coef) : len(est.coef) + est.moving] = _break_pull(est)
     share = np.full(est.n, 1 / est.n)
     return _averaged(est, [place], share, np.arange(est.n), of, errors=errors, jackknife=jackknife)
 
@@ -63,6 +65,23 @@ def _place(est: Estimate, x: Array, base: Array, modifier: Array) -> _Place:
     pull = est.jacobian_at(x, base, modifier)
     eta = pull[:, : len(est.coef)] @ est.coef
     return _Place(eta, pull, est.slopes_at(x, modifier), est.slope_jacobian_at(x, modifier))
+
+
+def _break_pull(est: Estimate) -> Array:
+    """How a moving break changes the average slope (n, q): rows near it pass from one side to the other.
+
+    The jump of the slope times a normal-kernel density of x at the break (Silverman 1986), shared out over the rows.
+    """
+    rows, x = est.rows, est.rows.x
+    middle = float(np.subtract(*np.quantile(x, [0.75, 0.25]))) / 1.349 or float(np.std(x))
+    width = 0.9 * min(float(np.std(x)), middle) * est.n ** (-0.2)
+    # eta's own slope by theta jumps at its break by minus the change of the slope there
+    after, before = (
+        est.theta_pull(est.shape.theta_slopes(np.full(est.n, end), est.state, est.theta), rows.modifier)
+        for end in (np.inf, -np.inf)
+    )
+    kernel = np.exp(-0.5 * ((x[:, None] - np.array(est.theta)) / width) ** 2) / (width * np.sqrt(2 * np.pi))
+    return np.asarray((after - before) * kernel)
 
 
 def _averaged(
