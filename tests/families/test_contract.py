@@ -381,6 +381,34 @@ def test_a_penalty_is_a_quadratic_form_on_the_columns(
         assert np.linalg.eigvalsh(penalty).min() > -1e-12 * np.abs(penalty).max()
 
 
+@pytest.mark.parametrize("shape", ALL_SHAPES, ids=lambda s: s.key)
+def test_any_training_set_teaches_something(shape: Shape) -> None:
+    """Down to a single row: a fold may be poor, but it must not fail or warn."""
+    rng = np.random.default_rng(9)
+    for sample, x in PREDICTORS.items():
+        for size in (1, 2, 3, 4, 6, 9) if shape.refuse(x) is None else ():
+            few = rng.choice(x, size)
+            if "ties" in sample:
+                few = np.sort(few)[:1].repeat(size)
+            for constant in (True, False):
+                state = shape.learn(few, constant=constant)
+                low, high = shape.bounds(few, state)
+                assert (low <= high).all()
+                theta = tuple(float(t) for t in shape.candidates(few, state)[0])
+                columns = shape.columns(x, state, theta)
+                assert np.isfinite(columns).all()
+                assert len(shape.names("mass", state, theta)) == columns.shape[1]
+
+
+@pytest.mark.parametrize("shape", ALL_SHAPES, ids=lambda s: s.key)
+def test_zeros_alone_in_a_training_set_teach_something(shape: Shape) -> None:
+    x = np.concatenate([np.zeros(30), np.arange(1.0, 13)])
+    if shape.refuse(x) is None:
+        state = shape.learn(np.zeros(5))
+        theta = tuple(float(t) for t in shape.candidates(np.zeros(5), state)[0])
+        assert np.isfinite(shape.columns(x, state, theta)).all()
+
+
 # Links
 
 

@@ -10,7 +10,10 @@ import numpy as np
 
 from batten.families.base import Array
 
-__all__ = ["distinct", "exp", "listed", "log", "near", "number", "origin", "plain", "power", "shown", "typical"]
+__all__ = [
+    "distinct", "exp", "listed", "log", "near", "number", "origin", "plain", "positive", "power", "shown", "typical",
+    "width",
+]  # fmt: skip
 
 
 def number(text: str) -> float | None:
@@ -53,6 +56,17 @@ def origin(x: Array) -> float:
     """
     low, high = float(np.min(x)), float(np.max(x))
     return near((low + high) / 2, high - low) if max(abs(low), abs(high)) > 3 * (high - low) else 0.0
+
+
+def positive(x: Array) -> Array:
+    """The values above zero; 1 alone where a training set holds none."""
+    above: Array = x[x > 0]
+    return above if len(above) else np.ones(1)
+
+
+def width(x: Array) -> float:
+    """Range of x; 1 where a training set holds a single value."""
+    return float(np.ptp(x)) or 1.0
 
 
 def typical(x: Array) -> float:

@@ -9,7 +9,7 @@ import numpy as np
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import distinct, exp, origin, plain, shown
+from batten.families.numbers import distinct, exp, origin, plain, shown, width
 
 __all__ = ["FAMILY", "Exponential"]
 
@@ -55,11 +55,11 @@ class Exponential(Shape):
 
     def candidates(self, x: Array, state: Constants) -> Array:
         """Growth and decay by 5% up to e^20 over the range of x."""
-        rates = np.geomspace(0.05, 20, 13) / np.ptp(x)
+        rates = np.geomspace(0.05, 20, 13) / width(x)
         return np.concatenate([-rates[::-1], rates])[:, None]
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
-        return np.array([-25 / np.ptp(x)]), np.array([25 / np.ptp(x)])
+        return np.array([-25 / width(x)]), np.array([25 / width(x)])
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         return exp(theta[0] * (x - state[0]))[:, None]

@@ -11,7 +11,7 @@ from scipy.special import expit
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import distinct, exp, plain
+from batten.families.numbers import distinct, exp, plain, width
 
 __all__ = ["FAMILIES", "Gompertz", "SCurve"]
 
@@ -47,15 +47,14 @@ class Growth(Shape):
 
         Curves that are still zero at their higher end of the data are left out: nothing could scale them up.
         """
-        low, width = float(np.min(x)), float(np.ptp(x))
         sizes = np.array([1.5, 3.0, 6.0, 12.0, 25.0])
         grid = np.array([(m, r) for m in np.linspace(-0.5, 2.0, 11) for r in (*-sizes[::-1], *sizes)])
         highest = np.maximum(grid[:, 1] * (0 - grid[:, 0]), grid[:, 1] * (1 - grid[:, 0]))
-        return grid[self.share(highest)[0] > 1e-6] * (width, 1 / width) + (low, 0.0)
+        return grid[self.share(highest)[0] > 1e-6] * (width(x), 1 / width(x)) + (np.min(x), 0.0)
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
-        low, width = float(np.min(x)), float(np.ptp(x))
-        return np.array([low - 2 * width, -100 / width]), np.array([low + 3 * width, 100 / width])
+        low, reach = float(np.min(x)), width(x)
+        return np.array([low - 2 * reach, -100 / reach]), np.array([low + 3 * reach, 100 / reach])
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         m, r = theta

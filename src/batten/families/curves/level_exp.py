@@ -9,7 +9,7 @@ import numpy as np
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import distinct, exp, origin, plain, shown
+from batten.families.numbers import distinct, exp, origin, plain, shown, width
 
 __all__ = ["FAMILY", "LevelExponential"]
 
@@ -59,7 +59,7 @@ class LevelExponential(Shape):
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
         """From nearly straight over the data to levelling off within a fiftieth of them."""
-        reach = np.ptp(x) if state[0] else np.max(np.abs(x))
+        reach = width(x) if state[0] else float(np.max(np.abs(x))) or 1.0
         return np.array([0.01 / reach]), np.array([50 / reach])
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:

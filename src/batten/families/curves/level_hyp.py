@@ -9,7 +9,7 @@ import numpy as np
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import plain, shown
+from batten.families.numbers import plain, positive, shown
 
 __all__ = ["FAMILY", "LevelHyperbola"]
 
@@ -56,8 +56,8 @@ class LevelHyperbola(Shape):
         return np.geomspace(low[0], high[0], 33)[:, None]
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
-        positive = x[x > 0]
-        return np.array([np.min(positive) / 30]), np.array([np.max(positive) * 100])
+        above = positive(x)
+        return np.array([np.min(above) / 30]), np.array([np.max(above) * 100])
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         x = np.where(x >= 0, x, np.nan)

@@ -9,7 +9,7 @@ import numpy as np
 
 from batten.errors import Refusal
 from batten.families.base import Array, Code, Constants, Shape
-from batten.families.numbers import log, near, plain, power, shown, typical
+from batten.families.numbers import log, near, plain, positive, power, shown, typical
 
 __all__ = ["FAMILY", "PowerCurve"]
 
@@ -52,10 +52,10 @@ class PowerCurve(Shape):
         )
 
     def learn(self, x: Array, *, constant: bool = True) -> Constants:
-        positive = x[x > 0]
-        low, high = float(np.min(positive)), float(np.max(positive))
-        middle = float(np.exp(np.mean(np.log(positive))))
-        return (near(middle, high - low) if high < 3 * low else typical(positive)), float(len(positive) < len(x))
+        above = positive(x)
+        low, high = float(np.min(above)), float(np.max(above))
+        middle = float(np.exp(np.mean(np.log(above))))
+        return (near(middle, high - low) if high < 3 * low else typical(above)), float(np.min(x) <= 0)
 
     def candidates(self, x: Array, state: Constants) -> Array:
         low, high = (float(limit[0]) for limit in self.bounds(x, state))
@@ -65,8 +65,8 @@ class PowerCurve(Shape):
 
     def bounds(self, x: Array, state: Constants) -> tuple[Array, Array]:
         """Wide enough for e^25 over the range of x, and for the usual exponents where x spans a wide ratio."""
-        positive = x[x > 0]
-        most = max(4.0, 25 / float(np.log(np.max(positive) / np.min(positive))))
+        above = positive(x)
+        most = max(4.0, 25 / (float(np.log(np.max(above) / np.min(above))) or 1.0))
         return np.array([0.01 if state[1] else -most]), np.array([most])
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:

@@ -115,16 +115,19 @@ def _sizes(x: Array, edges: Array) -> Array:
 def _equal_count(x: Array, count: int) -> Constants:
     """Inner edges, each the first value of its group, so that ties stay together and units do not matter."""
     ordered = np.sort(x)
-    smallest = max(10.0, 0.05 * len(x))
+    above = ordered[ordered > ordered[0]]
+    if not len(above):
+        return (float(ordered[0]),)  # a training set with a single value
+    edges = above[:1]
     for groups in range(min(count, len(x)), 1, -1):
         starts = np.ceil(np.arange(1, groups) * len(x) / groups).astype(int)
         edges = np.unique(ordered[starts])
         edges = edges[edges > ordered[0]]
-        if len(edges) and (_sizes(x, edges) >= smallest).all():
-            return tuple(float(e) for e in edges)
-    if len(edges):
-        return tuple(float(e) for e in edges)
-    return tuple(float(e) for e in ordered[ordered > ordered[0]][:1])  # over half of the rows tie at the lowest value
+        if not len(edges):  # the lowest value fills all but the last group: it is one group, the others are the second
+            edges = above[:1]
+        if (_sizes(x, edges) >= max(10.0, 0.05 * len(x))).all():
+            break
+    return tuple(float(e) for e in edges)
 
 
 _HELPER = '''

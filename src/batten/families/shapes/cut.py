@@ -59,8 +59,8 @@ class Cut(Shape):
         outer = max(1, -(-len(x) // 10))
         places = np.unique(ordered[outer : len(x) - outer + 1])
         places = places[places > ordered[0]]
-        if not len(places):
-            places = np.unique(x)[1:]
+        if not len(places):  # ties fill the lower nine tenths, or everything
+            places = np.unique(x)[-1:]
         some = np.unique(np.linspace(0, len(places) - 1, min(len(places), 60)).astype(int))
         return np.asarray(places[some][:, None])
 

@@ -23,7 +23,8 @@ class Smooth(Shape):
     2003; Wood 2017, section 5.3), written as x and one rounded hinge per inner knot: zero on the left, slope 1 on the
     right, its second derivative a triangle over the neighbouring knots. So the second derivative is linear between
     knots, the penalty has a closed form, and no column cancels against another far to the right.
-    State: the knots, at equally spaced quantiles of x; their number depends on the number of rows alone.
+    State: the knots, values of x at equally spaced shares of the rows; their number depends on the number of rows
+    alone, and ties lower it.
     """
 
     family: ClassVar[str] = "smooth"
@@ -48,10 +49,11 @@ class Smooth(Shape):
         )
 
     def learn(self, x: Array, *, constant: bool = True) -> Constants:
-        count = min(10 + len(x) // 20, 20)
-        knots = np.quantile(x, np.linspace(0, 1, count))
-        apart = np.diff(knots, prepend=-np.inf) > 1e-6 * np.ptp(x)
-        return tuple(float(k) for k in knots[apart])
+        share = np.linspace(0, 1, min(10 + len(x) // 20, 20))
+        knots = _observed(np.sort(x), share)
+        if len(knots) < 6:  # ties fill the quantiles: use those of the different values
+            knots = _observed(np.unique(x), share)
+        return tuple(float(k) for k in knots)
 
     def columns(self, x: Array, state: Constants, theta: Constants = ()) -> Array:
         return np.column_stack([x, *_rounded_hinges(x, state)])
@@ -88,6 +90,12 @@ class Smooth(Shape):
             constants=(("KNOTS", f"({knots})", f"where the curve in {x} may bend; straight beyond the outer two"),),
             helper=_HELPER,
         )
+
+
+def _observed(ordered: Array, share: Array) -> Array:
+    """Values at these shares of the ordered ones, each once. A natural spline with knots on data has full rank."""
+    places = np.unique(ordered[np.rint(share * (len(ordered) - 1)).astype(int)])
+    return places[np.diff(places, prepend=-np.inf) > 1e-6 * np.ptp(ordered)]
 
 
 def _rounded_hinges(x: Array, knots: Constants) -> list[Array]:
