@@ -42,7 +42,7 @@ __all__ = [
 def _listed(values: Iterable[object], most: int = 3) -> str:
     """The first few values as they are written in code."""
     shown = [repr(v) for v in values]
-    return ", ".join(shown[:most]) + (", ..." if len(shown) > most else "")
+    return ", ".join(shown[:most]) + (f" and {len(shown) - most} more" if len(shown) > most else "")
 
 
 # --- the table --------------------------------------------------------------------------------------------------------
@@ -104,7 +104,7 @@ def not_numbers(name: str, role: str, stray: Sequence[str], rows: int) -> InputE
         do = f"Correct them or leave them missing: pd.to_numeric(data[{name!r}], errors='coerce')."
     return InputError(
         f"The {role} `{name}` is text that is not plainly numbers.",
-        f"{len(stray)} different texts in {rows} rows are none: {_listed(stray)}.",
+        f"Among {rows} rows: {_listed(stray)}.",
         do,
     )
 
