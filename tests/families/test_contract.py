@@ -398,6 +398,9 @@ def test_any_training_set_teaches_something(shape: Shape) -> None:
                 columns = shape.columns(x, state, theta)
                 assert np.isfinite(columns).all()
                 assert len(shape.names("mass", state, theta)) == columns.shape[1]
+                assert shape.slopes(x, state, theta).shape == columns.shape
+                penalty = shape.penalty(state)
+                assert penalty is None or penalty.shape == (columns.shape[1],) * 2
 
 
 @pytest.mark.parametrize("shape", ALL_SHAPES, ids=lambda s: s.key)

@@ -82,7 +82,10 @@ def log(x: Array) -> Array:
 def power(x: Array, exponent: float) -> Array:
     """x to a fixed power; NaN where it is not defined or not finite."""
     with np.errstate(all="ignore"):
-        raised = 1 / x if exponent == -1 else x**exponent
+        size = abs(exponent)
+        # products are some ten times faster than a general power, which a million rows feel
+        raised = x * x * x if size == 3 else x * x if size == 2 else np.sqrt(x) if size == 0.5 else x**size
+        raised = raised if exponent == size else 1 / raised
     return np.where(np.isfinite(raised), raised, np.nan)
 
 

@@ -153,13 +153,16 @@ def _bends(x: Array, knots: Constants, *, power: int) -> list[Array]:
     if len(t) < 3:  # a training set with two different knot places: straight
         return []
     last, before, size = t[-1], t[-2], (t[-1] - t[0]) ** 2
-    factor = 1.0 if power == 3 else 3.0
-    tails = factor * np.maximum(x - before, 0) ** power, factor * np.maximum(x - last, 0) ** power
+
+    def piece(knot: float) -> Array:
+        above = np.maximum(x - knot, 0)
+        return above * above * above if power == 3 else 3 * above * above
+
+    near, far = piece(before), piece(last)
     return [
-        (factor * np.maximum(x - k, 0) ** power
-         - tails[0] * (last - k) / (last - before) + tails[1] * (before - k) / (last - before)) / size
+        (piece(k) - near * ((last - k) / (last - before)) + far * ((before - k) / (last - before))) / size
         for k in t[:-2]
-    ]  # fmt: skip
+    ]
 
 
 _HELPER = '''
