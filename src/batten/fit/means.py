@@ -16,11 +16,12 @@ from scipy.stats import t as student
 
 from batten.engine.rows import Array, Ints
 from batten.fit.estimate import Estimate
-from batten.fit.smear import mean_of, median_residual
+from batten.fit.medians import middle
+from batten.fit.smear import mean_of
 
 __all__ = [
     "BLOCK", "Averaged", "Target", "averaged_means", "interval", "jackknifed", "means_at_rows", "pattern_weights",
-    "patterns", "replicated", "target", "with_errors",
+    "patterns", "target", "with_errors",
 ]  # fmt: skip
 
 #: up to this many rows intervals of retransformed means leave out each row in turn
@@ -132,14 +133,17 @@ def averaged_means(
     errors: str = "robust",
     jackknife: bool = True,
     weights: Array | None = None,
+    root: bool = True,
 ) -> Averaged:
     """Mean (or "median") of y at each x of xs (G,), averaged over covariate rows.
 
     base (u, q), modifier (u, m): covariate rows to average over instead of the rows' own, taken as fixed.
-    weights (u,): their weights, summing to one; equal when None.
+    weights (u,): their weights, summing to one; equal when None. root=False leaves the uncertainty out.
     """
     tar = target(est, np.asarray(xs, dtype=float), base=base, modifier=modifier)
     share = tar.count / tar.count.sum() if weights is None else weights
+    if not root:
+        return _plain(est, tar, share, of)
     return _with_errors(est, tar, share, of, errors=errors, jackknife=jackknife)
 
 
@@ -161,9 +165,14 @@ def means_at_rows(
     eta = (j[:, : len(est.coef)] @ est.coef)[None]
     tar, share = Target(eta, j[:, None, :], np.ones(1), None), np.ones(1)
     if not root:
-        value = _values(est, tar, share, of, np.zeros((1, j.shape[1])), None)[0]
-        return Averaged(value, np.empty((0, len(x))), None, est.df_residual)
+        return _plain(est, tar, share, of)
     return _with_errors(est, tar, share, of, errors=errors)
+
+
+def _plain(est: Estimate, tar: Target, share: Array, of: str) -> Averaged:
+    """Values without their uncertainty."""
+    value = _values(est, tar, share, of, np.zeros((1, tar.jacobian.shape[2])), None)[0]
+    return Averaged(value, np.empty((0, len(value))), None, est.df_residual)
 
 
 def _with_errors(
@@ -220,7 +229,9 @@ def jackknifed(est: Estimate, of: str = "mean") -> bool:
     A mean that is linear in the coefficients does not: its error is that of the coefficients (HC3), so that a straight
     line's span effect and its coefficient carry the same interval.
     """
-    if of == "mean" and not est.theta and est.link is None and est.scale.closed == "identity":
+    if of == "median":  # see medians.py
+        return False
+    if not est.theta and est.link is None and est.scale.closed == "identity":
         return False
     closed = est.link is not None or est.scale.closed != ""
     return est.n <= (JACKKNIFE_ROWS if closed else JACKKNIFE_GENERAL)
@@ -270,31 +281,28 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
         link = est.link
         if of == "mean":
             return link.mean
-        ratio = replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move))
-        factor = median_residual(ratio, keep)
-        return lambda eta: link.mean(eta) * factor[:, None]
+        factor = middle(est).moved(move)[:, None]
+        return lambda eta: link.mean(eta) * factor
     scale = est.scale
     c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
     if of == "mean" and scale.closed == "identity":
         return lambda eta: eta
-    residual = est.residual - move @ est.residual_jacobian.T
     if of == "mean":
+        residual = est.residual - move @ est.residual_jacobian.T
         return lambda eta: mean_of(scale, c, eta, residual, keep)
-    shift = median_residual(residual, keep)[:, None]
+    shift = middle(est).moved(move)[:, None]
     if not scale.searched:
         return lambda eta: scale.inverse(eta + shift, est.c)
     return lambda eta: np.stack([scale.inverse(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
 
 
-def replicated(row: Array, count: int) -> Array:
-    return np.broadcast_to(row, (count, len(row)))
-
-
 def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Array | None, Array | None]:
     """Row i's own share in the average over residuals and in the average over covariates, minus the value (n, G)."""
     by_residual = None
-    if est.link is None and not (of == "mean" and est.scale.closed == "identity"):
-        by_residual = _residual_part(est, tar, share, of, value)
+    if of == "median":
+        by_residual = middle(est).influence[:, None] * _lean(est, tar, share)
+    elif est.link is None and est.scale.closed != "identity":
+        by_residual = _residual_part(est, tar, share, value)
     by_covariate = None
     if tar.pattern is not None and len(share) > 1:
         still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
@@ -303,10 +311,15 @@ def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Arra
     return by_residual, by_covariate
 
 
-def _residual_part(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> Array:
+def _lean(est: Estimate, tar: Target, share: Array) -> Array:
+    """Change of each median with the middle of the residuals (G,)."""
+    if est.link is not None:
+        return np.asarray(share @ est.link.mean(tar.eta))
+    return np.asarray(share @ est.scale.inverse_slope(tar.eta + middle(est).value, est.c))
+
+
+def _residual_part(est: Estimate, tar: Target, share: Array, value: Array) -> Array:
     e = est.residual
-    if of == "median":
-        return _median_part(est, tar, share)
     out = np.empty((est.n, tar.eta.shape[1]))
     for g in range(tar.eta.shape[1]):
         # the average over covariates of g(eta_c + e_i) is the smearing routine with the two swapped
@@ -316,15 +329,3 @@ def _residual_part(est: Estimate, tar: Target, share: Array, of: str, value: Arr
         else:
             out[:, g] = mean_of(est.scale, [est.c], e[None], eta[None], share[None])[0]
     return out - value
-
-
-def _median_part(est: Estimate, tar: Target, share: Array) -> Array:
-    """Influence of the median residual: sign(e - med) / (2 f(med)), f by a normal-kernel density (Silverman 1986)."""
-    e = est.residual
-    middle = float(np.median(e))
-    spread = min(float(np.std(e)), float(np.subtract(*np.quantile(e, [0.75, 0.25]))) / 1.349) or float(np.std(e)) or 1.0
-    width = 0.9 * spread * est.n ** (-0.2)
-    density = float(np.exp(-0.5 * ((e - middle) / width) ** 2).mean() / (width * np.sqrt(2 * np.pi)))
-    shift = np.sign(e - middle) / (2 * density)
-    lean = np.array([est.scale.inverse_slope(tar.eta[:, g] + middle, est.c) @ share for g in range(tar.eta.shape[1])])
-    return np.asarray(shift[:, None] * lean)

@@ -13,8 +13,9 @@ import numpy as np
 
 from batten.engine.rows import Array, Ints
 from batten.fit.estimate import Estimate
-from batten.fit.means import BLOCK, Averaged, pattern_weights, patterns, replicated, with_errors
-from batten.fit.smear import mean_of, median_residual
+from batten.fit.means import BLOCK, Averaged, pattern_weights, patterns, with_errors
+from batten.fit.medians import middle
+from batten.fit.smear import mean_of
 
 __all__ = ["average_slope", "averaged_slopes"]
 
@@ -73,8 +74,8 @@ def _break_pull(est: Estimate) -> Array:
     The jump of the slope times a normal-kernel density of x at the break (Silverman 1986), shared out over the rows.
     """
     rows, x = est.rows, est.rows.x
-    middle = float(np.subtract(*np.quantile(x, [0.75, 0.25]))) / 1.349 or float(np.std(x))
-    width = 0.9 * min(float(np.std(x)), middle) * est.n ** (-0.2)
+    spread = float(np.subtract(*np.quantile(x, [0.75, 0.25]))) / 1.349 or float(np.std(x))
+    width = 0.9 * min(float(np.std(x)), spread) * est.n ** (-0.2)
     # eta's own slope by theta jumps at its break by minus the change of the slope there
     after, before = (
         est.theta_pull(est.shape.theta_slopes(np.full(est.n, end), est.state, est.theta), rows.modifier)
@@ -113,7 +114,9 @@ def _averaged(
             back = _slope_back(est, of, np.zeros((1, places[0].eta_pull.shape[1])), None)
             still = np.column_stack([back(at.eta[None])[0] * at.steep for at in places])
             parts.append(still[pattern] - value)
-        if est.link is None and est.scale.closed != "identity":
+        if of == "median":
+            parts.append(middle(est).influence[:, None] * [_lean(est, at, share) for at in places])
+        elif est.link is None and est.scale.closed != "identity":
             parts.append(np.column_stack([_residual_part(est, at, share) for at in places]) - value)
         return parts
 
@@ -128,17 +131,26 @@ def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
         link = est.link
         if of == "mean":
             return link.mean_slope
-        factor = median_residual(replicated(est.rows.y / np.maximum(est.mu, 1e-300), len(move)), keep)
-        return lambda eta: link.mean_slope(eta) * factor[:, None]
+        factor = middle(est).moved(move)[:, None]
+        return lambda eta: link.mean_slope(eta) * factor
     scale = est.scale
     if scale.closed == "identity":
         return np.ones_like
     c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
-    residual = est.residual - move @ est.residual_jacobian.T
     if of == "mean":
+        residual = est.residual - move @ est.residual_jacobian.T
         return lambda eta: mean_of(scale, c, eta, residual, keep, slope=True)
-    shift = median_residual(residual, keep)[:, None]
+    shift = middle(est).moved(move)[:, None]
     return lambda eta: np.stack([scale.inverse_slope(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+
+
+def _lean(est: Estimate, at: _Place, share: Array) -> float:
+    """Change of a median's slope with the middle of the residuals."""
+    if est.link is not None:
+        return float((share * at.steep) @ est.link.mean_slope(at.eta))
+    at_middle, h = at.eta + middle(est).value, 1e-4 * est.sigma
+    up, down = (est.scale.inverse_slope(at_middle + d, est.c) for d in (h, -h))
+    return float((share * at.steep) @ (up - down) / (2 * h))
 
 
 def _residual_part(est: Estimate, at: _Place, share: Array) -> Array:
