@@ -52,10 +52,11 @@ class FixedPower(Shape):
         exponent = named[word] if word in named else number(word.removeprefix("x^"))
         if exponent is None:
             raise keys.wrong_numbers(word, "A power of x is written with one number.", instead="Write x^2 or x^-0.5.")
-        if exponent in (0.0, 1.0):
-            instead = "Write x." if exponent else "Write log x, which stands at power 0 of the ladder."
-            raise keys.wrong_numbers(word, f"x^{plain(exponent)} is {'x itself' if exponent else 'a constant'}.",
-                                     instead=instead)  # fmt: skip
+        if exponent == 1:
+            raise keys.wrong_numbers(word, "x^1 is x itself.", instead="Write x.")
+        if exponent == 0:
+            instead = "Write log x, which stands at power 0 of the ladder."
+            raise keys.wrong_numbers(word, "x^0 is a constant.", instead=instead)
         return FixedPower(exponent)
 
     def words(self, x: str) -> str:

@@ -90,15 +90,14 @@ class Spline(Shape):
         return Spline(numbers)
 
     def words(self, x: str) -> str:
-        return f"spline in {x} ({self.count} knots)" if isinstance(self.knots, int) else (
-            f"spline in {x} (knots {listed(self.knots)})"
-        )
+        knots = f"{self.knots} knots" if isinstance(self.knots, int) else f"knots {listed(self.knots)}"
+        return f"spline in {x} ({knots})"
 
     def refuse(self, x: Array) -> Refusal | None:
         values = np.unique(x)
         if isinstance(self.knots, int):
             found = len(self.learn(x))
-            if found == self.knots < len(values) + 1:
+            if found == self.knots <= len(values):
                 return None
             return Refusal(
                 wrong=f"A spline with {self.knots} knots needs {self.knots} different knot places.",
