@@ -167,14 +167,6 @@ class Cell(NamedTuple):
     source: str
 
 
-class Active(NamedTuple):
-    """The active cell, the notebook's mode, and whether that cell has the keyboard."""
-
-    index: int
-    mode: str
-    focused: bool
-
-
 # The panel in front, or nothing while the page is loading.
 _PANEL = "const panel = window.jupyterapp?.shell?.currentWidget; const notebook = panel?.content;"
 
@@ -269,6 +261,12 @@ class FrontEnd:
         )
         return self.cells()
 
+    def wait_until_active(self, cell: int, *, mode: str) -> None:
+        """Wait until a cell is the active one, in "command" or "edit" mode, and has the keyboard."""
+        condition = """return notebook.activeCellIndex === i && notebook.mode === mode
+            && notebook.activeCell.node.contains(document.activeElement);"""
+        self.page.wait_for_function(f"([i, mode]) => {{ {_PANEL} {condition} }}", arg=[cell, mode])
+
     def wait_for_text(self, text: str, *, cell: int) -> None:
         """Wait until the outputs of a cell hold `text`."""
         expect(self.outputs(cell)).to_contain_text(text, timeout=PATIENCE)
@@ -281,11 +279,6 @@ class FrontEnd:
 
     def sources(self) -> list[str]:
         return [cell.source for cell in self.cells()]
-
-    def active(self) -> Active:
-        read = """return [notebook.activeCellIndex, notebook.mode,
-            notebook.activeCell.node.contains(document.activeElement)];"""
-        return Active(*self.page.evaluate(f"() => {{ {_PANEL} {read} }}"))
 
     def is_in_view(self, cell: int) -> bool:
         """Tell whether the top of a cell lies inside the part of the notebook that is on screen."""

@@ -46,7 +46,7 @@ def test_the_code_goes_right_below_the_widget_and_one_z_takes_it_back(front_end:
     front_end.click_button(PUT)
     front_end.wait_for_text("Inserted below", cell=0)
     assert front_end.sources() == [panel(), CODE, "'after'"]
-    assert front_end.active() == (1, "command", True)
+    front_end.wait_until_active(1, mode="command")
     assert front_end.is_in_view(1)
     assert front_end.page.evaluate("() => window.ran") is None
 
@@ -65,7 +65,7 @@ def test_whoever_types_in_another_cell_meanwhile_goes_on_typing_there(front_end:
     front_end.wait_for_text("Inserted below", cell=0)
     front_end.page.keyboard.type("+ 2")
     assert front_end.sources() == [slow_panel(pipe), CODE, "mine = 1 + 2''"]
-    assert front_end.active() == (2, "edit", True)
+    front_end.wait_until_active(2, mode="edit")
 
     front_end.press("Escape")
     front_end.undo()
