@@ -65,6 +65,8 @@ def _spans_constant(columns: Array) -> bool:
 
 def repeats(columns: Array) -> list[int]:
     """Positions of the columns (n, k) that are combinations of those before them."""
+    if columns.shape[1] == 0:
+        return []
     cross = columns.T @ columns
     size = np.sqrt(np.diag(cross))
     if np.all(size > 0) and _surely_independent(cross / np.outer(size, size)):

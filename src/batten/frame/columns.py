@@ -195,12 +195,12 @@ def check_numbers(column: Column, role: str) -> None:
     raise errors.stores(column.name, role, column.stored or column.kind)
 
 
-def as_raw(column: Column, rows: Bools) -> pd.Series[Any]:
-    """The column for use in an expression: numbers as float64, yes/no as booleans, text and dates as they are."""
-    if column.kind == "yes/no":
-        values = pd.Series(column.numbers == 1)
+def as_raw(column: Column, rows: Bools, kind: Kind) -> pd.Series[Any]:
+    """The column for use in an expression, as the kind it was: float64, booleans, or text and dates as they are."""
+    if kind == "yes/no":
+        values = pd.Series(as_numbers(column) == 1)
     else:
-        values = column.values if column.numbers is None else pd.Series(column.numbers)
+        values = pd.Series(as_numbers(column)) if kind == "numbers" else column.values
     return values[rows].reset_index(drop=True)
 
 
@@ -275,6 +275,6 @@ def word(level: Any) -> str:
     """A level as people write it."""
     if isinstance(level, float):
         return f"{level:.10g}"
-    if isinstance(level, pd.Timestamp) and level == level.normalize():
-        return level.strftime("%Y-%m-%d")
+    if isinstance(level, pd.Timestamp):
+        return level.isoformat(sep=" ").removesuffix(":00").removesuffix(" 00:00")
     return str(level)

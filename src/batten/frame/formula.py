@@ -70,12 +70,13 @@ class Formula:
 
     def rewritten(self, response: str, names: Mapping[str, str | None]) -> str:
         """The formula with some factors renamed (None: left out); terms that become equal are kept once."""
-        kept: dict[tuple[str, ...], None] = {}
+        kept: dict[frozenset[str], tuple[str, ...]] = {}
         for term in self.terms:
             factors = [names.get(f, f) for f in term]
             if term and None not in factors:
-                kept[tuple(dict.fromkeys(str(f) for f in factors))] = None
-        right = [":".join(term) for term in kept]
+                distinct = tuple(dict.fromkeys(str(f) for f in factors))
+                kept.setdefault(frozenset(distinct), distinct)
+        right = [":".join(term) for term in kept.values()]
         if () not in self.terms:
             right.insert(0, "0")
         return f"{response} ~ " + " + ".join(right)

@@ -182,6 +182,10 @@ def _level(column: Array, levels: Sequence[Any], j: int) -> str:
     return word(levels[single[0]]) if len(single) == 1 and column[single[0]] == 1 else f"contrast {j + 1}"
 
 
+def _joined(focus: str, modifier: str) -> str:
+    return f"{focus} : {modifier}" if modifier else focus
+
+
 def _terms(
     plan: Plan, blocks: Sequence[Block], labels: Labels, kept: Kept, factors: Mapping[str, Factor]
 ) -> tuple[Term, ...]:
@@ -193,7 +197,8 @@ def _terms(
         owned, keep = (labels[True], kept.modifier) if FOCUS in codes else (labels[False], kept.base)
         mine = [j for j, (term, _) in enumerate(owned) if term == t]
         columns = tuple(keep.index(j) for j in mine if j in keep)
-        dropped = tuple(owned[j][1] or factors[FOCUS].label for j in mine if j not in keep)
+        x = factors[FOCUS].label
+        dropped = tuple(_joined(x, owned[j][1]) if FOCUS in codes else owned[j][1] for j in mine if j not in keep)
         if codes:
             made[codes] = Term(tuple(factors[code] for code in codes), FOCUS in codes, columns, dropped)
     alive = {code for codes, term in made.items() if term.columns for code in codes}

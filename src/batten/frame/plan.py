@@ -129,5 +129,5 @@ def _unusable(recipe: Recipe, data: Mapping[str, Any], count: int) -> Bools:
         return np.zeros(count, dtype=bool)
     if values.ndim == 0 or len(values) != count:
         return np.zeros(count, dtype=bool)
-    lost = ~np.isfinite(values) if values.dtype.kind in "iuf" else pd.isna(values)
-    return np.asarray(lost.reshape(count, -1).any(axis=1))
+    lost = np.asarray(~np.isfinite(values) if values.dtype.kind in "iuf" else pd.isna(values))
+    return lost if lost.ndim == 1 else np.asarray(lost.any(axis=1))

@@ -90,11 +90,9 @@ def _leave_out_incomplete(
     sample: RowNotes, plan: Plan, roles: Roles, columns: Mapping[str, Column], beside: Beside
 ) -> None:
     """Rows that miss something are left out by name; of rows not chosen nothing more is said."""
-    chosen, said = ~sample.bad, set()
+    chosen = ~sample.bad
     for rows, words in _complaints(plan, roles, columns, beside):
-        if words not in said:  # a column may be used in two ways
-            sample.add((rows & chosen, words))
-        said.add(words)
+        sample.add((rows & chosen, words))
     for rows, words in expression_complaints(plan, columns, ~sample.bad):
         sample.add((rows, words))
 

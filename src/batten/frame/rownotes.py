@@ -30,14 +30,15 @@ class RowNotes:
         rows, words = complaint
         places = np.flatnonzero(rows)
         if isinstance(words, str):
-            self._counts[words] += len(places)
             fresh = places[self.texts[places] == ""]
+            self._counts[words] += len(fresh)
             self.texts[fresh] = words
             places = np.setdiff1d(places, fresh, assume_unique=True)
         for i in places:
             said = words if isinstance(words, str) else words(int(i))
-            self._counts[said] += not isinstance(words, str)
-            self.texts[i] = f"{self.texts[i]}; {said}" if self.texts[i] else said
+            if said not in self.texts[i].split("; "):  # a column may be used in two ways
+                self._counts[said] += 1
+                self.texts[i] = f"{self.texts[i]}; {said}" if self.texts[i] else said
         if fatal:
             self.bad |= rows
 

@@ -31,4 +31,4 @@ def sample(name: str) -> pd.DataFrame:
     if name not in _DATES:
         raise errors.unknown_sample(name, sorted(_DATES))
     with (files("batten.frame") / "data" / f"{name}.csv").open(encoding="utf-8") as source:
-        return pd.read_csv(source, parse_dates=[_DATES[name]], float_precision="round_trip")
+        return pd.read_csv(source, parse_dates=[_DATES[name]])

@@ -11,7 +11,7 @@ import pandas as pd
 
 from batten.engine.rows import Array, Ints
 from batten.errors import data as errors
-from batten.frame.columns import Bools, Column, as_groups, as_numbers, as_raw, first_day, word
+from batten.frame.columns import Bools, Column, Kind, as_groups, as_numbers, as_raw, first_day, word
 from batten.frame.formula import Grouping
 from batten.frame.rownotes import Complaint
 
@@ -22,29 +22,34 @@ __all__ = ["Slot"]
 class Slot:
     """How a column enters the design under one safe name.
 
-    use: "numbers" (n,), "groups" (codes of `levels`) or "as it is" (inside an expression). levels: in use, the
-    reference first. start: the day from which dates are counted. low, high: range of the numbers on the analysis rows.
+    use: "numbers" (n,), "groups" (codes of `levels`) or "as it is" (inside an expression). kind: what the column held
+    when the slot was learned. levels: in use, the reference first. start: the day from which dates are counted. low,
+    high: range of the numbers on the analysis rows.
     """
 
     column: str
     use: Literal["numbers", "groups", "as it is"]
+    kind: Kind | None = None
     levels: tuple[Any, ...] = ()
     start: pd.Timestamp | None = None
     low: float = -np.inf
     high: float = np.inf
 
+    @property
+    def numeric(self) -> bool:
+        """Whether the column is used as numbers, also inside an expression."""
+        return self.use == "numbers" or (self.use == "as it is" and self.kind == "numbers")
+
     def learned(self, column: Column, rows: Bools, asked: Grouping) -> Slot:
         """The slot with what it learns from the analysis rows."""
-        if self.use == "groups":
-            return replace(self, levels=_levels(column, rows, asked))
-        if column.kind == "dates" and self.use == "numbers":
-            start = first_day(column, rows)
-            values = as_numbers(column, start)[rows]
-            return replace(self, start=start, low=float(values.min()), high=float(values.max()))
-        if self.use == "numbers":
-            values = as_numbers(column)[rows]
-            return replace(self, low=float(values.min()), high=float(values.max()))
-        return self
+        slot = replace(self, kind=column.kind)
+        if slot.use == "groups":
+            return replace(slot, levels=_levels(column, rows, asked))
+        if not slot.numeric:
+            return slot
+        start = first_day(column, rows) if column.kind == "dates" else None
+        values = as_numbers(column, start)[rows]
+        return replace(slot, start=start, low=float(values.min()), high=float(values.max()))
 
     def numbers(self, column: Column) -> Array:
         """All rows as numbers (n,), NaN where there is none."""
@@ -60,7 +65,7 @@ class Slot:
             return self.numbers(column)[rows]
         if self.use == "groups":
             return pd.Categorical.from_codes(self.codes(column, rows), categories=pd.Index(self.levels))
-        return as_raw(column, rows)
+        return as_raw(column, rows, self.kind or column.kind)
 
     def complaints(self, column: Column) -> Iterator[Complaint]:
         """Rows that cannot be used, each kind with its words."""
@@ -68,7 +73,7 @@ class Slot:
         yield missing, f"missing {name}"
         if column.kind == "dates" and self.start is None:
             return  # nothing learned yet: dates are only there or not
-        if self.use == "numbers":
+        if self.numeric:
             numbers = self.numbers(column)
             yield np.isinf(numbers), f"infinite {name}"
             yield np.isnan(numbers) & ~missing, lambda i: f"{name} {column.values.iloc[i]!r} is not a number"
@@ -81,7 +86,7 @@ class Slot:
 
     def beyond(self, column: Column) -> Iterator[Complaint]:
         """Rows outside the range of the analysis rows; they can be predicted, with a note."""
-        if self.use == "numbers":
+        if self.numeric:
             numbers = self.numbers(column)
             with np.errstate(invalid="ignore"):
                 outside = np.isfinite(numbers) & ((numbers < self.low) | (numbers > self.high))
