@@ -225,6 +225,7 @@ def test_no_residuals_no_test_of_spread():
     assert koenker(A_LEFT, np.ones((12, 1))) is None
     assert koenker(A_LEFT[:2], A_X[:2, None]) is None
     assert brown_forsythe(np.zeros(12), A_X) is None
+    assert brown_forsythe(A_LEFT[:8], A_X[:8], groups=4) is None  # pairs lie equally far from their median
 
 
 @pytest.mark.parametrize(

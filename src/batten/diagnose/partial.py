@@ -1,4 +1,4 @@
-"""The response with the covariates taken off, row by row: what the bulging rule and the plots of what is left look at."""
+"""The response with the covariates taken off, row by row: for the bulging rule and plots of what is left."""
 
 from __future__ import annotations
 
@@ -29,7 +29,7 @@ def conditional_residuals(others: Array, z: Array, x: Array, *, degree: int = 2)
     on the covariates and these means, and e plus the means' part is returned at the level of z. The response's curve in
     x shows without the covariates' curves.
     """
-    powers = np.vander((x - x.mean()) / x.std(), degree + 1)
+    powers = np.vander((x - x.mean()) / (x.std() or 1.0), degree + 1)
     given_x = basis(powers)
     design = others
     for column in (given_x @ (given_x.T @ others)).T:
