@@ -1,0 +1,139 @@
+"""The fit of a script: rows, statsmodels, leverages, coefficients without each row, the table of coefficients."""
+
+from __future__ import annotations
+
+from batten.emit.covariates import read_numbers
+from batten.emit.functions import undo
+from batten.emit.parts import Parts
+from batten.emit.text import FRAME, literal, noted, wrapped
+
+__all__ = ["chosen", "fitting"]
+
+#: family, square root of the variance, square root of the working weight (in mu)
+_LINKS = {
+    "loglink y": ("Poisson()", "np.sqrt(mu)", "np.sqrt(mu)"),
+    "loglink-gamma y": ("Gamma(sm.families.links.Log())", "mu", ""),
+    "loglink-gaussian y": ("Gaussian(sm.families.links.Log())", "", "mu"),
+    "share y": ("Binomial()", "np.sqrt(mu * (1 - mu))", "np.sqrt(mu * (1 - mu))"),
+}
+
+
+def chosen(parts: Parts) -> str:
+    """The expression given with --rows, or ""."""
+    for why in parts.problem.left_out["why"]:
+        found = str(why).partition("not in --rows ")[2]
+        if found:
+            return found
+    return ""
+
+
+def fitting(parts: Parts) -> list[str]:
+    """From the frame to fitted coefficients and what their uncertainty needs."""
+    return [*_rows(parts), *(_glm(parts) if parts.link else _ols(parts)), *_table(parts)]
+
+
+def _rows(parts: Parts) -> list[str]:
+    response, lines, data = parts.problem.response, [], FRAME
+    if chosen(parts):
+        data = "data"
+        lines = wrapped(f"data = {FRAME}.query({literal(chosen(parts))})")
+    text = any(f"{response} (stored as text)" in said for said in parts.problem.announcements)
+    source = read_numbers(response, data, text=text)
+    lines += wrapped(f"rows = columns({data}).assign(y={source}.to_numpy())")
+    if any("finite" in str(why) for why in parts.problem.left_out["why"]):  # infinite; not a finite number
+        lines.append("rows = rows.replace([np.inf, -np.inf], np.nan).dropna()")
+    else:
+        lines[-1] += ".dropna()"
+    lines.append(f'y, used = rows["y"].to_numpy(), {data}.iloc[rows.index]')
+    if parts.left.check is not None:
+        condition, words = parts.left.check
+        lines += wrapped(f"assert ({condition}).all(), {literal(words)}")
+    return lines
+
+
+def _ols(parts: Parts) -> list[str]:
+    source = parts.left.columns[0][1]
+    response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
+    simple = parts.robust and not parts.searched
+    fit = f"fit = smf.ols(MODEL, rows{response})"
+    if simple:
+        lines = noted(f'{fit}.fit(cov_type="HC3", use_t=True)', "HC3: errors may be of uneven size")
+    else:
+        lines = [f"{fit}.fit()"]
+    if parts.searched:
+        lines.append("X, z, e = jacobian(used), fit.model.endog, fit.resid.to_numpy()")
+        lines += noted(f"b = np.append(fit.params, {_zeros(parts)})", "0: the fit is linear around what was searched")
+    else:
+        lines.append("X, z, e, b = fit.model.exog, fit.model.endog, fit.resid.to_numpy(), fit.params.to_numpy()")
+    if parts.kind == "exp":
+        lines.append("smear = np.exp(e).mean()  # exp() of a fitted log is a median; this makes it a mean (Duan 1983)")
+    lines.append("Q, R = np.linalg.qr(X)")
+    if parts.needs_s2:
+        lines.append(f"s2 = e @ e / {parts.est.df_residual}")
+    if not parts.robust:
+        return lines if not parts.power else [*lines, "out = e / (1 - (Q**2).sum(axis=1))", *_power_moves(parts)]
+    lines.append("out = e / (1 - (Q**2).sum(axis=1))  # each row's error around the fit without it")
+    if parts.power:
+        return [*lines, *_power_moves(parts)]
+    return [*lines, "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out"]
+
+
+def _zeros(parts: Parts) -> str:
+    return "0.0" if len(parts.searched) == 1 else f"[{', '.join(['0.0'] * len(parts.searched))}]"
+
+
+def _power_moves(parts: Parts) -> list[str]:
+    """Coefficients and LAMBDA without each row: a Newton step of the full likelihood, sigma included."""
+    slope = "np.log(y)" if parts.est.remedy.left.family == "boxcox" else "np.sign(y) * np.log1p(np.abs(y))"
+    return [
+        "# LAMBDA was estimated too: each row is left out by a Newton step of the whole likelihood (Box and Cox 1964)",
+        f"(up, down), v = ({_forward(parts)} for v in (LAMBDA + 1e-4, LAMBDA - 1e-4)), e @ e / len(e)",
+        "z1, z2 = (up - down) / 2e-4, (up - 2 * z + down) / 1e-8  # first and second slope of z in LAMBDA",
+        f"score = np.column_stack([X * (e / v)[:, None], {slope} - e * z1 / v, (e * e / v - 1) / (2 * v)])",
+        "known = np.zeros((X.shape[1] + 2,) * 2)  # observed information about coefficients, LAMBDA and v",
+        "known[:-2, :-2], known[:-2, -2], known[-2, :-2] = X.T @ X, -(X.T @ z1), -(X.T @ z1)",
+        "known[-2:, -2:] = [[z1 @ z1 + e @ z2, -(e @ z1) / v], [-(e @ z1) / v, len(e) / (2 * v)]]",
+        "b = np.append(b, LAMBDA)",
+        "without = b - (np.linalg.solve(known / v, score.T) * (out / e)).T[:, :-1]",
+    ]
+
+
+def _forward(parts: Parts) -> str:
+    """The scale at the power v."""
+    source = parts.left.columns[0][1]
+    return "bent(y, v)" if source == "bent(y)" else source.replace("LAMBDA", "v")
+
+
+def _glm(parts: Parts) -> list[str]:
+    family, spread, weight = _LINKS[parts.est.remedy.left.key]
+    score = f"(y - mu) / {spread}" if spread else "y - mu"
+    lines = [
+        f"model = smf.glm(MODEL, rows, family=sm.families.{family})",
+        'fit = model.fit(tol=0, rtol=1e-10, tol_criterion="params")',
+        "X, b = fit.model.exog, fit.params.to_numpy()",
+        f"mu = {undo(parts, 'X @ b')}",
+        f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})",
+        f"score = {score}",
+        "# GLM's own HC1 to HC3 are all HC0: leave out each row instead, by one Newton step",
+        "without = b - np.linalg.solve(R, Q.T * (score / (1 - (Q**2).sum(axis=1)))).T",
+        f"out = y {'-' if parts.kind == 'share' else '/'} {undo(parts, '(X * without).sum(axis=1)')}"
+        "  # each row against the mean without it",
+    ]
+    return [*lines, f"s2 = score @ score / {parts.est.df_residual}"] if not parts.robust else lines
+
+
+def _table(parts: Parts) -> list[str]:
+    """The coefficients with standard errors of the kind in use."""
+    if not parts.own_table:
+        return ['print(table := pd.DataFrame({"estimate": fit.params, "std_error": fit.bse}))']
+    if not parts.robust:
+        spread = "s2 * (np.linalg.inv(R) ** 2).sum(axis=1)"
+    elif parts.power:
+        spread = "(np.linalg.solve(R, Q.T * out) ** 2).sum(axis=1)"
+    else:
+        spread = "((without - b) ** 2).sum(axis=0)"
+    names = "".join(f', "{name}"' for name in parts.searched)
+    estimate = f"[*fit.params, {', '.join(parts.searched)}]" if parts.searched else "fit.params"
+    index = f"[*fit.params.index{names}]"
+    line = f'table = pd.DataFrame({{"estimate": {estimate}, "std_error": np.sqrt({spread})}}, index={index})'
+    return [*wrapped(line), "print(table)"]

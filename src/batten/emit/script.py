@@ -1,0 +1,182 @@
+"""A standalone script of one remedy: fits, predicts, answers the standing question, and checks itself."""
+
+from __future__ import annotations
+
+from batten.emit.fitting import fitting
+from batten.emit.functions import functions
+from batten.emit.parts import Parts, read_parts
+from batten.emit.renaming import without_names
+from batten.emit.span import held_at, span
+from batten.emit.text import FRAME, comment, constant, literal, number, rounded, said, wrapped
+from batten.fit.estimate import Estimate
+from batten.fit.question import Question
+from batten.frame.problem import Problem
+
+__all__ = ["script"]
+
+
+def script(problem: Problem, question: Question, estimate: Estimate) -> str:
+    """Source that runs on numpy, pandas, statsmodels and matplotlib where a data frame of the user's name exists.
+
+    It ends with asserts against the numbers on the screen, so a script that runs through gives the same answer.
+    """
+    parts = read_parts(problem, question, estimate)
+    sections = [
+        _header(parts) + _imports(parts),
+        _constants(parts),
+        functions(parts),
+        fitting(parts),
+        span(parts),
+        _picture(parts),
+        _checks(parts),
+    ]
+    text = "\n\n".join("\n".join(lines) for lines in sections if lines) + "\n"
+    return _named(text, parts)
+
+
+def _header(parts: Parts) -> list[str]:
+    p, remedy = parts.problem, parts.est.remedy
+    words = remedy.words(parts.y, parts.x)
+    lines = [
+        f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
+        f"`{FRAME}`: {_rows_words(parts)} Errors: {parts.question.errors}.",
+        *parts.covariates.notes,
+    ]
+    if parts.covariates.external:
+        lines.append(f"Needs {', '.join(parts.covariates.external)} as defined where the formula was written.")
+    return [line for text in lines for line in comment(text)]
+
+
+def _rows_words(parts: Parts) -> str:
+    left = parts.problem.left_out["why"].astype(str)
+    total = parts.est.n + len(left)
+    if not len(left):
+        return f"all {total} rows used."
+    counts = left.value_counts()
+    told = ", ".join(f"{count} {said(why)}" for why, count in counts.head(3).items())
+    more = f" and {len(counts) - 3} other reasons" if len(counts) > 3 else ""
+    return f"{parts.est.n} of {total} rows used; left out: {told}{more}."
+
+
+def _imports(parts: Parts) -> list[str]:
+    plain = ["import matplotlib.pyplot as plt", "import numpy as np", "import pandas as pd"]
+    plain += ["import statsmodels.api as sm"] if parts.link else []
+    plain += ["import statsmodels.formula.api as smf"]
+    plain += [line for line in parts.covariates.imports if line.startswith("import ")]
+    merged: dict[str, list[str]] = {}
+    for line in parts.covariates.imports:
+        if line.startswith("from "):
+            _, module, _, name = line.split()
+            merged.setdefault(module, []).append(name)
+    named = [f"from {module} import {', '.join(sorted(names))}" for module, names in sorted(merged.items())]
+    return [*sorted(plain, key=lambda line: line.split()[1]), *named]
+
+
+def _constants(parts: Parts) -> list[str]:
+    a, b = parts.question.span
+    unit = parts.problem.unit(parts.problem.focus)
+    lines = [line for one in (*parts.shape.constants, *parts.left.constants, *parts.covariates.constants)
+             for line in constant(*one)]  # fmt: skip
+    if not parts.numbers.span.note:
+        meaning = f"the question: rows at {parts.x} {b:.6g}{' ' + said(unit) if unit else ''} against rows at {a:.6g}"
+        lines += constant("SPAN", f"({number(a)}, {number(b)})", meaning)
+    if parts.searched and parts.est.shape.family == "hinge":
+        lines += constant(
+            "STEP", number(_step(parts)), "no row lies this close above a break, so slopes in it are exact"
+        )
+    meaning = f"t quantile for {parts.percent} on {parts.est.df_residual} degrees of freedom"
+    if _uses_t(parts):
+        lines += constant(parts.t_name, number(parts.t_quantile), meaning)
+    return [*lines, *_model(parts)]
+
+
+def _step(parts: Parts) -> float:
+    """Half of the way from a break to the next value of x above it."""
+    x = parts.est.rows.x
+    return min(float((x[x > place] - place).min()) / 2 for place in parts.est.theta)
+
+
+def _uses_t(parts: Parts) -> bool:
+    return not parts.numbers.span.note or not parts.ordered
+
+
+def _model(parts: Parts) -> list[str]:
+    c = parts.covariates
+    shape = parts.columns[0] if len(parts.columns) == 1 else f"({' + '.join(parts.columns)})"
+    terms = [f"{shape}:{m}" if m else " + ".join(parts.columns) for m in c.modifiers]
+    right = " + ".join([*(() if c.intercept else ("0",)), *terms, *c.terms])
+    return _long_string("MODEL", f"{parts.response} ~ {right}")
+
+
+def _long_string(name: str, text: str) -> list[str]:
+    """A string constant, over several lines where it must."""
+    if len(f'{name} = "{text}"') <= 120:
+        return [f'{name} = "{text}"']
+    pieces, line = [], ""
+    for word in text.split(" "):
+        if len(line) + len(word) > 105:
+            pieces.append(line)
+            line = ""
+        line += f"{word} "
+    pieces.append(line.rstrip())
+    return [f"{name} = (", *(f'    "{piece}"' for piece in pieces), ")"]
+
+
+# --- picture ----------------------------------------------------------------------------------------------------------
+
+
+def _picture(parts: Parts) -> list[str]:
+    p, middle = parts.problem, int(parts.numbers.probes[0])
+    every = max(1, parts.est.n // 10_000)
+    some = f"[::{every}]" if every > 1 else ""
+    unit_x, unit_y = said(p.unit(p.focus)), said(p.unit(p.response))
+    labels = (f"{parts.x} ({unit_x})" if unit_x else parts.x, f"{parts.y} ({unit_y})" if unit_y else parts.y)
+    x_label, y_label = (literal(label.replace("$", r"\$")) for label in labels)
+    where = f', title="covariates as in row {middle + 1} of those used"' if p.covariates else ""
+    grid = f"used.iloc[[{middle}] * 200].assign({held_at(parts, 'at')})"
+    return [
+        'at = np.linspace(rows["x"].min(), rows["x"].max(), 200)',
+        *wrapped(f"curve, (figure, ax) = predict({grid}), plt.subplots()"),
+        f'ax.plot(rows["x"]{some}, y{some}, ".", color="0.6", label="rows")',
+        f'ax.fill_between(at, curve["low"], curve["high"], alpha=0.2, label="{parts.percent} of further rows")',
+        'ax.plot(at, curve["mean"], label="mean")',
+        *wrapped(f"ax.set(xlabel={x_label}, ylabel={y_label}{where})"),
+        "ax.legend()",
+    ]
+
+
+# --- checks -----------------------------------------------------------------------------------------------------------
+
+
+def _checks(parts: Parts) -> list[str]:
+    n = parts.numbers
+    got, want = ["len(rows)"], [str(n.rows)]
+    if len(n.coef):
+        names = [*(parts.columns if len(n.coef) > len(parts.searched) else ()), *parts.searched]
+        chosen = ", ".join(f'"{name}"' for name in names)
+        got.append(f"*np.ravel(table.loc[[{chosen}]])")
+        want += [rounded(v) for pair in zip(n.coef, n.error, strict=True) for v in pair]
+    if n.smear is not None:
+        got.append("smear")
+        want.append(rounded(n.smear))
+    if not n.span.note:
+        got += ["effect", "half"]
+        want += [rounded(n.span.difference.estimate), rounded((n.span.difference.high - n.span.difference.low) / 2)]
+    probes = ", ".join(str(int(i)) for i in n.probes)
+    got.append(f"*np.ravel(predict(used.iloc[[{probes}]]))")
+    want += [rounded(v) for v in n.predictions.ravel()]
+    message = literal(f"`{FRAME}` differs from the rows this script was written for")
+    return [
+        *wrapped(f"got = [{', '.join(got)}]"),
+        *wrapped(f"want = [{', '.join(want)}]"),
+        *wrapped(f"np.testing.assert_allclose(got, want, rtol=1e-6, err_msg={message})"),
+    ]
+
+
+# --- names ------------------------------------------------------------------------------------------------------------
+
+
+def _named(text: str, parts: Parts) -> str:
+    """Put in the frame's name; names of the script that it, or a function of the user's, already has are changed."""
+    theirs = {parts.problem.frame_name, *parts.covariates.external}
+    return without_names(text, theirs).replace(FRAME, parts.problem.frame_name)

@@ -1,0 +1,165 @@
+"""The standing question in a script: the span effect, averaged over covariates, with the interval of the screen."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from keyword import iskeyword
+from typing import Any
+
+import pandas as pd
+
+from batten.emit.functions import design_call, undo
+from batten.emit.parts import Parts
+from batten.emit.text import comment, fstring, literal, said, wrapped
+
+__all__ = ["held_at", "span"]
+
+
+def span(parts: Parts) -> list[str]:
+    """effect and half, the half width of its interval; only words where the question has no answer."""
+    note = parts.numbers.span.note
+    if note:
+        return comment(f"No effect over the span: {said(note, 200)}.")
+    how = _deleted(parts) if parts.deletes else _linearised(parts)
+    return [*comment(_introduction(parts)), *_ends(parts), *how, *_told(parts)]
+
+
+def held_at(parts: Parts, value: str, others: Mapping[str, Any] | None = None) -> str:
+    """Arguments of assign() that hold the focal predictor at a value, as the user's frame has it, and others too."""
+    value = f'START + pd.to_timedelta({value}, "D")' if parts.covariates.start else value
+    entries = {parts.problem.focus: value, **{name: literal(given) for name, given in (others or {}).items()}}
+    if all(name.isidentifier() and not iskeyword(name) and name != "self" for name in entries):
+        return ", ".join(f"{name}={source}" for name, source in entries.items())
+    return f"**{{{', '.join(f'{literal(name)}: {source}' for name, source in entries.items())}}}"
+
+
+def _introduction(parts: Parts) -> str:
+    over = "" if parts.single else ", averaged over the rows' own covariates"
+    if parts.problem.profile is not None:
+        over = ", at " + ", ".join(f"{said(name)} = {said(value)}" for name, value in parts.question.at.items())
+    if parts.deletes:
+        way = "by leaving out each row in turn"
+    else:
+        way = "by each row's influence" if parts.robust else "for errors of one size"
+    return f"Change of the mean over SPAN{over}; interval {way}."
+
+
+def _ends(parts: Parts) -> list[str]:
+    """Designs A and B at the two ends; one row is enough where all have the same covariates."""
+    one = ".iloc[:1]" if parts.single else ""
+    made = f"{design_call(parts)}(used{one}.assign({held_at(parts, 'at', _asked(parts))}))"
+    return wrapped(f"A, B = ({made} for at in SPAN)")
+
+
+def _asked(parts: Parts) -> dict[str, Any]:
+    """Covariate values to hold, as their columns would store them."""
+    return {name: _stored(value, parts.problem.design.read[name]) for name, value in parts.question.at.items()}
+
+
+def _stored(value: Any, column: pd.Series[Any]) -> Any:
+    if isinstance(value, str) and pd.api.types.is_bool_dtype(column.dtype):
+        return value.lower() in ("true", "yes", "1")
+    return value
+
+
+# --- leaving out rows -------------------------------------------------------------------------------------------------
+
+
+def _deleted(parts: Parts) -> list[str]:
+    return [
+        "def difference(b, keep):",
+        *_difference(parts),
+        "effect = difference(b, slice(None))",
+        "each = [difference(w, np.arange(len(y)) != i) for i, w in enumerate(without)]",
+        f"half = {parts.t_name} * np.sqrt((len(y) - 1) * np.var(each))",
+    ]
+
+
+def _difference(parts: Parts) -> list[str]:
+    """Body of difference(b, keep): the effect under coefficients b, averaged over the rows kept."""
+    keep = "" if parts.fixed else "[keep]"
+    if parts.kind == "identity":
+        return [f"    return ((B - A) @ b){keep}.mean()"]
+    if parts.kind == "exp":
+        return [f"    return np.exp(z - X @ b)[keep].mean() * (np.exp(B @ b) - np.exp(A @ b)){keep}.mean()"]
+    if parts.link:
+        return [f"    return ({undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}){keep}.mean()"]
+    if parts.power:
+        return [
+            "    e = (z + (b[-1] - LAMBDA) * z1 - X @ b[:-1])[keep]",
+            f"    low, high = (mean((N @ b[:-1]){keep}, e, b[-1]) for N in (A, B))",
+            "    return (high - low).mean()",
+        ]
+    return [
+        "    e = (z - X @ b)[keep]",
+        f"    return (mean((B @ b){keep}, e) - mean((A @ b){keep}, e)).mean()",
+    ]
+
+
+# --- to first order ---------------------------------------------------------------------------------------------------
+
+
+def _linearised(parts: Parts) -> list[str]:
+    """effect, its slopes in the coefficients (pull), and each row's own share in the averages."""
+    lines, own = _slopes(parts)
+    if parts.robust:
+        total = " + ".join(["len(y) * (b - without) @ pull", *own])
+        return [
+            *lines,
+            *wrapped(f"influence = {total}"),
+            f"half = {parts.t_name} * np.sqrt((influence**2).sum()) / len(y)",
+        ]
+    spread = "(((without - b) @ pull) ** 2).sum()" if parts.power else "s2 * (np.linalg.solve(R.T, pull) ** 2).sum()"
+    if own:
+        own = [f"({share})" for share in own]
+        spread += f" + sum((share**2).sum() for share in [{', '.join(own)}]) / len(y) ** 2"
+    return [*lines, *wrapped(f"half = {parts.t_name} * np.sqrt({spread})")]
+
+
+def _slopes(parts: Parts) -> tuple[list[str], list[str]]:
+    """Statements, and sources of the rows' own shares."""
+    if parts.kind == "identity":
+        lines = ["gap = (B - A) @ b", "effect, pull = gap.mean(), (B - A).mean(axis=0)"]
+        return lines, [] if parts.fixed else ["gap - effect"]
+    if parts.link:
+        low, high = ("low * (1 - low)", "high * (1 - high)") if parts.kind == "share" else ("low", "high")
+        lines = [
+            f"low, high = {undo(parts, 'A @ b')}, {undo(parts, 'B @ b')}",
+            "effect = (high - low).mean()",
+            f"pull = ({high} @ B - {low} @ A) / len(A)",
+        ]
+        return lines, [] if parts.fixed else ["high - low - effect"]
+    if parts.kind == "exp":
+        lines = [
+            "low, high = np.exp(A @ b), np.exp(B @ b)",
+            "gap = (high - low).mean()",
+            "effect, pull = smear * gap, smear * (high @ B - low @ A) / len(A) - gap * (np.exp(e) @ X) / len(y)",
+        ]
+        own = ["np.exp(e) * gap - effect"]
+        return lines, own if parts.fixed else [*own, "smear * (high - low) - effect"]
+    return _numeric_slopes(parts)
+
+
+def _numeric_slopes(parts: Parts) -> tuple[list[str], list[str]]:
+    moves = "without - b" if parts.robust or parts.power else "np.linalg.solve(R, Q.T * e).T"
+    lines = [
+        "def difference(b, keep=slice(None)):",
+        *_difference(parts),
+        "effect = difference(b)",
+        f"steps = 1e-4 * np.sqrt((({moves}) ** 2).sum(axis=0))",
+        "pull = np.array([difference(b + d) - difference(b - d) for d in np.diag(steps)]) / (2 * steps)",
+        f"low, high = (N @ {'b[:-1]' if parts.power else 'b'} for N in (A, B))",
+    ]
+    own = ["mean(e, high) - mean(e, low) - effect"]
+    return lines, own if parts.fixed else [*own, "mean(high, e) - mean(low, e) - effect"]
+
+
+def _told(parts: Parts) -> list[str]:
+    a, b = (f"{end:.6g}" for end in parts.question.span)
+    unit, x_unit = parts.problem.unit(parts.problem.response), parts.problem.unit(parts.problem.focus)
+    text = (
+        f"{parts.y}, mean at {parts.x} {b}{' ' + said(x_unit) if x_unit else ''} against {a}: "
+        f"{{effect}}{' ' + said(unit) if unit else ''} ({parts.percent} {{low}} to {{high}})"
+    )
+    values = {"effect": "effect:+.4g", "low": "effect - half:.4g", "high": "effect + half:.4g"}
+    return wrapped(f"print({fstring(text, values)})")
