@@ -164,6 +164,12 @@ def test_it_works_after_a_restart(front_end: FrontEnd) -> None:
     assert front_end.sources() == [panel(), CODE, "'after'"]
 
 
+def test_a_running_cell_puts_code_into_the_cell_below_it(front_end: FrontEnd) -> None:
+    source = f"from batten.notebook.insertion import put_in_next_cell\nput_in_next_cell({CODE!r})"
+    front_end.open([source, "'after'"]).run_cell(0)
+    assert [cell.source for cell in front_end.wait_for_cells(3)] == [source, CODE, "'after'"]
+
+
 def test_plain_keys_belong_to_the_widget_and_escape_leads_back_to_the_cell(front_end: FrontEnd) -> None:
     front_end.open([panel("1")]).run_all()
     front_end.button(PUT).focus()
