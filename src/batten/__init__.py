@@ -9,11 +9,13 @@ from __future__ import annotations
 from typing import Any
 
 from batten.errors import BattenError, InputError, UnknownNameError
+from batten.exam import Examination, Fit, examine
+from batten.frame.samples import sample
 
 __version__ = "0.1.0"
 
 __all__ = [
-    "BattenError", "InputError", "UnknownNameError", "__version__",
+    "BattenError", "Examination", "Fit", "InputError", "UnknownNameError", "__version__", "examine", "sample",
 ]  # fmt: skip
 
 

@@ -99,6 +99,10 @@ def choose(candidates: Mapping[str, Candidate], question: Question, folds: int, 
     tied.sort(key=lambda k: candidates[k].estimate.remedy.order)
     chosen = tied[0]
     reasons.append(_tie_words(candidates, gap, chosen, head, len(tied), len(candidates), unit))
+    plain = _simpler_and_better(candidates, pool, chosen)
+    if plain != chosen:
+        reasons.append(f"{plain} is simpler still and has a lower held-out error than {chosen}, so it is taken.")
+        tied, chosen = [plain, *tied], plain
     runner_up = tied[1] if len(tied) > 1 else next((k for k in pool if k != chosen), None)
     if question.planned is not None and question.planned in candidates:
         chosen, runner_up = question.planned, chosen if chosen != question.planned else runner_up
@@ -118,6 +122,20 @@ def _without_bend(candidates: Mapping[str, Candidate], pool: list[str], reasons:
     reasons.append("Every remedy leaves a bend that matters; the choice is the least bad, not a good one.")
     least = min(pool, key=lambda k: b.largest if (b := candidates[k].bend) else 0.0)
     return [least]
+
+
+def _simpler_and_better(candidates: Mapping[str, Candidate], pool: list[str], chosen: str) -> str:
+    """The simplest remedy that is no more elaborate than the chosen one and errs less held out, else the chosen one.
+
+    A noisy paired error can leave such a remedy just outside the ties while a worse one is inside.
+    """
+    mine = candidates[chosen]
+    better = [
+        k
+        for k in pool
+        if candidates[k].scores.rmse < mine.scores.rmse and candidates[k].estimate.remedy.order < mine.estimate.remedy.order
+    ]
+    return min(better, key=lambda k: candidates[k].estimate.remedy.order, default=chosen)
 
 
 def _tie_words(

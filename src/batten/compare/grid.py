@@ -13,6 +13,7 @@ from batten.compare.heldout import HeldOut, held_out
 from batten.diagnose.bend import Bend, Flexible, bend_of, flexible
 from batten.engine.folds import Splits, deal, default_repeats
 from batten.engine.rows import Rows
+from batten.engine.threads import one_thread
 from batten.errors import Refusal
 from batten.errors.compare import nothing_fits
 from batten.families.remedy import Remedy, parse
@@ -70,6 +71,13 @@ def compare(
     rows: Rows, remedies: tuple[Remedy, ...], question: Question, *, unit: str = "", progress: Progress | None = None
 ) -> Comparison:
     """Fit, score and compare the remedies on the same rows and folds; the straight line is always among them."""
+    with one_thread():
+        return _compare(rows, remedies, question, unit=unit, progress=progress)
+
+
+def _compare(
+    rows: Rows, remedies: tuple[Remedy, ...], question: Question, *, unit: str, progress: Progress | None
+) -> Comparison:
     repeats = question.repeats or default_repeats(rows.n)
     splits = deal(rows, folds=question.folds, repeats=repeats, seed=question.seed)
     reference = flexible(rows, tolerance=question.tolerance, level=question.level)
@@ -81,7 +89,8 @@ def compare(
 
 def extend(old: Comparison, remedy: Remedy, *, unit: str = "") -> Comparison:
     """The same comparison with one more remedy on the same rows and folds."""
-    new = _run(old.rows, old.question, old.splits, old.reference, [parse(STRAIGHT), remedy], unit=unit)
+    with one_thread():
+        new = _run(old.rows, old.question, old.splits, old.reference, [parse(STRAIGHT), remedy], unit=unit)
     return _assemble(
         old.rows, old.question, old.splits, old.reference, {**old.estimates, **new.estimates},
         {**old.scores, **new.scores}, {**old.bends, **new.bends}, {**old.turns, **new.turns},

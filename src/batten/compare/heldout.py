@@ -17,7 +17,7 @@ from scipy.special import gammaln
 from batten.engine.folds import Splits
 from batten.engine.irls import Mean, iterate
 from batten.engine.linear import design
-from batten.engine.power import best_power
+from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
 from batten.errors import Refusal
@@ -92,9 +92,10 @@ def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[H
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
     width = len(precondition)
-    trained: list[list[_Trained] | Refusal] = [[] for _ in group]
+    trained: list[list[_Trained]] = [[] for _ in group]
     z_fixed = np.column_stack([np.zeros(rows.count) if est.scale.searched else est.z for est in group])
-    for s, (train, test) in enumerate(sets):
+    bases, inverses = [], []
+    for s, (_, test) in enumerate(sets):
         basis = whole
         if basis is None:
             columns = shape.columns(rows.x, states[s])
@@ -102,41 +103,42 @@ def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[H
                 return [_fewer(shape.key)] * len(group)
             basis = design(rows, columns) @ precondition
         held = basis[test]
-        cross = basis.T @ basis - held.T @ held
-        inverse = _inverse(cross)
+        inverse = _inverse(basis.T @ basis - held.T @ held)
         if inverse is None:
             return [_rank(shape.key)] * len(group)
-        right = basis.T @ z_fixed - held.T @ z_fixed[test]
-        eta = basis @ (inverse @ right)
+        eta = basis @ (inverse @ (basis.T @ z_fixed - held.T @ z_fixed[test]))
         v = np.einsum("ij,jk,ik->i", held, inverse, held)
         for j, est in enumerate(group):
-            fits = trained[j]
-            if isinstance(fits, Refusal):
-                continue
-            if est.scale.searched:
-                trained[j] = _with_power(est, fits, basis, inverse, train, v)
-            else:
-                fits.append(_Trained(eta[:, j], est.c, v, width))
+            trained[j].append(_Trained(eta[:, j], est.c, v, width))
+        bases.append(basis)
+        inverses.append(inverse)
     return [
-        fits if isinstance(fits, Refusal) else _score(est, sets, iter(fits))
+        _score(est, sets, iter(fits) if not est.scale.searched else _with_powers(est, sets, fits, bases, inverses))
         for est, fits in zip(group, trained, strict=True)
     ]
 
 
-def _with_power(
-    est: Estimate, fits: list[_Trained], basis: Array, inverse: Array, train: Ints, v: Array
-) -> list[_Trained] | Refusal:
-    """The power of y learned again on one training set, and the fit at it."""
-    root = np.linalg.cholesky(inverse)
-    c, inside = best_power(scale_power(est.scale), est.rows.y[train], basis[train] @ root, start=est.c[0])
-    if not inside:
-        return Refusal(
-            "The power of y is not settled in every training set.", f"It runs to {c:.3g} in one of them.",
-            "A named scale: log y, sqrt y or 1/y.",
-        )  # fmt: skip
-    z = est.scale.forward(est.rows.y, (c,))
-    eta = basis @ (inverse @ (basis[train].T @ z[train]))
-    return [*fits, _Trained(eta, (c,), v, len(inverse))]
+def _with_powers(
+    est: Estimate, sets: list[tuple[Ints, Ints]], fits: list[_Trained], bases: list[Array], inverses: list[Array]
+) -> Iterator[_Trained | Refusal]:
+    """The power of y learned again in every training set, and the fit at it."""
+    y, power, shared = est.rows.y, scale_power(est.scale), bases[0] is bases[-1]
+    found = fold_powers(power, y, bases[0], inverses, [test for _, test in sets], est.c[0]) if shared else None
+    for s, ((train, _), fit) in enumerate(zip(sets, fits, strict=True)):
+        if found is not None:
+            c, inside = float(found[s]), True
+        else:
+            root = np.linalg.cholesky(inverses[s])
+            c, inside = best_power(power, y[train], bases[s][train] @ root, start=est.c[0])
+        if not inside:
+            yield Refusal(
+                "The power of y is not settled in every training set.", f"It runs to {c:.3g} in one of them.",
+                "A named scale: log y, sqrt y or 1/y.",
+            )  # fmt: skip
+            return
+        z = est.scale.forward(y, (c,))
+        eta = bases[s] @ (inverses[s] @ (bases[s][train].T @ z[train]))
+        yield _Trained(eta, (c,), fit.v, fit.columns)
 
 
 def _searched_fits(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Iterator[_Trained | Refusal]:

@@ -10,13 +10,17 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.polynomial import chebyshev
+from scipy.fft import dct
 from scipy.optimize import minimize_scalar
 
-from batten.engine.rows import Array
+from batten.engine.rows import Array, Ints
 
-__all__ = ["Power", "best_power", "profile_likelihood"]
+__all__ = ["Power", "best_power", "fold_powers", "profile_likelihood"]
 
 SCAN_ROWS = 5_000
+#: places around the optimum through which a training set's profile is interpolated
+NODES = 24
 
 
 @dataclass(frozen=True, eq=False)
@@ -74,6 +78,58 @@ def best_power(power: Power, y: Array, q: Array, *, start: float | None = None) 
     if warm and not low + 1e-4 < best < high - 1e-4:
         return best_power(power, y, q)
     return best, power.lower + 1e-6 < best < power.upper - 1e-6
+
+
+def fold_powers(power: Power, y: Array, basis: Array, cross: list[Array], held: list[Ints], best: float) -> Array | None:
+    """Best lambda of every training set (S,), from the basis (n, p) that all of them share.
+
+    cross: inverse cross-product of each training set (p, p); held: its held-out rows. The profile of each training set
+    is interpolated through Chebyshev nodes around the all-rows optimum; None where one of them runs out of the nodes.
+    """
+    width = 8 * _width(power, y, basis, best)
+    low, high = max(power.lower, best - width), min(power.upper, best + width)
+    count = NODES if len(y) < SCAN_ROWS else NODES // 2  # many rows mean a narrow, smooth stretch
+    nodes = np.cos(np.pi * (np.arange(count) + 0.5) / count)
+    places = low + (nodes + 1) * (high - low) / 2
+    z = np.column_stack([power.forward(y, float(v)) for v in places])
+    z = z - z.mean(axis=0) if _holds_constant(basis) else z
+    jacobian = np.column_stack([power.jacobian(y, float(v)) for v in places])
+    square, right, jump = (z * z).sum(axis=0), basis.T @ z, jacobian.sum(axis=0)
+    out = np.empty(len(held))
+    for s, (inverse, rows) in enumerate(zip(cross, held, strict=True)):
+        left = right - basis[rows].T @ z[rows]
+        rss = square - (z[rows] ** 2).sum(axis=0) - np.einsum("pm,pq,qm->m", left, inverse, left)
+        n = len(y) - len(rows)
+        if not (rss > 0).all():
+            return None
+        likelihood = -0.5 * n * np.log(rss / n) + jump - jacobian[rows].sum(axis=0)
+        fitted = chebyshev.Chebyshev(_coefficients(likelihood - likelihood.max()))
+        slope, bend = fitted.deriv(), fitted.deriv(2)
+        at = float(nodes[np.argmax(likelihood)])
+        for _ in range(30):
+            step = float(slope(at) / bend(at))
+            at -= step
+            if abs(step) < 1e-12 or not abs(at) < 1:
+                break
+        if not abs(at) < 1 or not bend(at) < 0:
+            return None
+        out[s] = low + (at + 1) * (high - low) / 2
+    return out
+
+
+def _coefficients(values: Array) -> Array:
+    """Chebyshev coefficients from values at the nodes."""
+    out = dct(values, type=2) / len(values)
+    out[0] /= 2
+    return np.asarray(out)
+
+
+def _width(power: Power, y: Array, q: Array, best: float) -> float:
+    """Standard error of lambda from the bend of its profile."""
+    h = 0.05
+    three = [profile_likelihood(power, y, q, best + k * h) for k in (-1, 0, 1)]
+    bend = -(three[0] - 2 * three[1] + three[2]) / h**2
+    return float(min(1.0, 1 / np.sqrt(bend))) if bend > 1 else 1.0
 
 
 def _polish(loss: Callable[[float], float], at: float) -> float:

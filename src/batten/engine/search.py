@@ -12,19 +12,21 @@ from functools import cached_property
 
 import numpy as np
 
-from batten.engine.rows import Array
+from batten.engine.rows import Array, Ints
 
 __all__ = ["Found", "Searched", "profile_interval", "refine", "scan", "search"]
 
 #: rows used to choose the starting cell; the refinement always uses all rows
-SCAN_ROWS = 20_000
+SCAN_ROWS = 3_000
+#: beyond this many rows a training set's constant starts so near its place that one final step settles it
+FEW_ROWS = 5_000
 
 
 @dataclass(frozen=True, eq=False)
 class Searched:
     """A model with constants inside: columns(theta) -> (n, k) with slopes (q, n, k), beside fixed columns (n, p).
 
-    candidates (K, q): the grid; finite: there is nothing between its points. lower, upper (q,): limits of theta.
+    rebuild: the same on some of the rows. candidates (K, q): the grid; finite: there is nothing between its points. lower, upper (q,): limits of theta.
     corners: sorted places where the profile of a single theta has a corner, at which Gauss-Newton can stop short.
     """
 
@@ -34,6 +36,7 @@ class Searched:
     candidates: Array
     lower: Array
     upper: Array
+    rebuild: Callable[[Ints], Searched]
     finite: bool = False
     corners: Array | None = None
 
@@ -44,17 +47,14 @@ class Searched:
 
     @cached_property
     def grid(self) -> Array:
-        """The candidates' columns (K, n, k), computed once for all training sets."""
+        """The candidates' columns (K, n, k)."""
         return np.stack([self.columns(theta) for theta in self.candidates])
 
-    def part(self, which: Array) -> Searched:
-        """The same model on some of its rows; the grid is shared."""
-        columns, slopes = self.columns, self.slopes
-        smaller = Searched(
-            self.fixed[which], lambda t: columns(t)[which], lambda t: slopes(t)[:, which], self.candidates,
-            self.lower, self.upper, self.finite, self.corners,
-        )  # fmt: skip
-        smaller.__dict__["grid"] = self.grid[:, which]
+    def part(self, which: Ints) -> Searched:
+        """The same model on some of its rows; a small grid is shared rather than computed again."""
+        smaller = self.rebuild(which)
+        if len(self.fixed) <= SCAN_ROWS:
+            smaller.__dict__["grid"] = self.grid[:, which]
         return smaller
 
 
@@ -136,7 +136,7 @@ def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precisio
             break
         step, promised = _gauss_newton(model, theta, place)
         if promised <= 1e-9 * place.rss:
-            theta, place = _settle(model, theta, place, e, precision)
+            theta, place = _settle(model, theta, place, e, precision, steps=40 if precision < 1e-10 or len(e) <= FEW_ROWS else 1)
             break
         fraction, better = 1.0, None
         while fraction > 1e-4:
@@ -174,10 +174,12 @@ def _walk(model: Searched, theta: Array, place: _Place, e: Array) -> tuple[Array
     return theta, place
 
 
-def _settle(model: Searched, theta: Array, place: _Place, e: Array, precision: float) -> tuple[Array, _Place]:
+def _settle(
+    model: Searched, theta: Array, place: _Place, e: Array, precision: float, *, steps: int
+) -> tuple[Array, _Place]:
     """Final steps, where the RSS no longer shows a step's gain: as long as each is smaller than the one before."""
     size = np.inf
-    for _ in range(40):
+    for _ in range(steps):
         step, _ = _gauss_newton(model, theta, place)
         trial = theta + step
         new_size = float(np.abs(step / np.where(theta == 0, 1, theta)).max())

@@ -19,6 +19,7 @@ from batten.errors import exam as errors
 from batten.exam.fit import Fit
 from batten.exam.tables import comparison_table, effects_table, refusal_table
 from batten.families import default_grid, expand, parse
+from batten.fit.guard import not_offered
 from batten.fit.question import Question
 from batten.frame.problem import Problem
 from batten.frame.read import read
@@ -221,7 +222,7 @@ def examine(
         folds=folds, repeats=repeats, seed=seed,
     )  # fmt: skip
     grid = default_grid(problem.rows.y, problem.rows.x, zero_is_arbitrary=problem.zero_is_arbitrary)
-    remedies = expand(keys, grid) if keys else grid
+    remedies = expand(keys, grid) if keys else tuple(r for r in grid if not_offered(r) is None)
     unit = problem.unit(problem.response)
     return Examination(problem, question, compare(problem.rows, remedies, question, unit=unit, progress=progress))
 

@@ -15,9 +15,9 @@ from batten.engine.search import Searched, search
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
-from batten.fit.guard import domain_trouble, too_few
+from batten.fit.guard import domain_trouble, not_offered, too_few
 
-__all__ = ["Estimate", "estimate", "scale_power", "searched_model"]
+__all__ = ["Estimate", "estimate", "own_units", "scale_power", "searched_model"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -147,10 +147,19 @@ class Estimate:
         return out
 
     def _scale_slope(self) -> Array:
-        """d z / d lambda (n,), by a central difference."""
+        """d z / d lambda (n,) beyond what `own_units` takes out, by a central difference."""
         h = 1e-5
-        up, down = (self.scale.forward(self.rows.y, (self.c[0] + d,)) for d in (h, -h))
+        own = [own_units(self, self.c[0] + d) for d in (h, -h)]
+        up, down = (
+            self.pivot[0] + (self.scale.forward(self.rows.y, (self.c[0] + d,)) - shift) / stretch
+            for d, (shift, stretch) in zip((h, -h), own, strict=True)
+        )
         return np.asarray((up - down) / (2 * h))
+
+    @cached_property
+    def pivot(self) -> tuple[float, float]:
+        """Value and slope of the scale at the median of y (the value is 0 where no constant can take it up)."""
+        return _pivot(self, self.c[0])
 
     def moves(self, *, leave_out: bool = True) -> Array:
         """Change of (coef, theta, c) when row i is left out, (n, P); exact for linear remedies, else one step.
@@ -159,9 +168,21 @@ class Estimate:
         """
         weight = 1.0 / (1.0 - self.leverage) if leave_out else np.ones(self.n)
         if self.remedy.left.searched:
-            return -_likelihood_moves(self) * weight[:, None]
+            return -self._without_drift(_likelihood_moves(self)) * weight[:, None]
         score = self.residual if self.link is None else self._link_score()
         return -self.factored.rows_of_inverse() * (score * weight)[:, None]
+
+    def _without_drift(self, moved: Array) -> Array:
+        """Coefficient moves less the part that only follows the scale's own change of place and length with lambda."""
+        h = 1e-5
+        (up, up_stretch), (down, down_stretch) = (own_units(self, self.c[0] + d) for d in (h, -h))
+        place, length = (up - down) / (2 * h), (up_stretch - down_stretch) / (2 * h)
+        drift = length * self.coef
+        if self.rows.intercept is not None:
+            drift[self.rows.intercept] += place - length * self.pivot[0]
+        out = moved.copy()
+        out[:, : len(drift)] -= moved[:, -1:] * drift
+        return out
 
     def _link_score(self) -> Array:
         """Score residual on the weighted scale: (y - mu) / sqrt V."""
@@ -174,6 +195,23 @@ class Estimate:
             d = self.moves()
             return np.asarray(d.T @ d)
         return np.asarray(self.factored.inverse_cross * self.sigma**2)
+
+
+def _pivot(est: Estimate, lam: float) -> tuple[float, float]:
+    middle = np.array([np.median(est.rows.y)])
+    value = float(est.scale.forward(middle, (lam,))[0]) if est.rows.intercept is not None else 0.0
+    return value, float(np.exp(est.scale.log_jacobian(middle, (lam,))[0]))
+
+
+def own_units(est: Estimate, lam: float) -> tuple[float, float]:
+    """Place and length of the scale at lambda: z(lambda) = place + length * (z - pivot), to first order near median y.
+
+    A power of y stretches the whole scale as lambda moves, and the coefficients with it; in these units both stand
+    almost still, so that one step in (coefficients, lambda) is a good one (the scaling of Box and Cox 1964, with the
+    median in the place of the geometric mean).
+    """
+    value, slope = _pivot(est, lam)
+    return value, slope / est.pivot[1]
 
 
 def _likelihood_moves(est: Estimate) -> Array:
@@ -210,7 +248,7 @@ def estimate(
 
     theta, c: constants set by hand (a profile, a dragged lambda); learned from the rows when None.
     """
-    refusal = remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
+    refusal = not_offered(remedy) or remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
     if refusal:
         return refusal
     state = remedy.shape.learn(rows.x, constant=rows.constant)
@@ -232,7 +270,8 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
 
     return Searched(
         fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
-        candidates=shape.candidates(rows.x, state), lower=lower, upper=upper, finite=shape.finite,
+        candidates=shape.candidates(rows.x, state),
+        rebuild=lambda which: searched_model(rows.take(which), shape, state), lower=lower, upper=upper, finite=shape.finite,
         corners=np.unique(rows.x) if shape.corners else None,
     )  # fmt: skip
 

@@ -9,7 +9,22 @@ from batten.errors import Refusal
 from batten.families.base import Constants, Scale
 from batten.families.remedy import Remedy
 
-__all__ = ["domain_trouble", "too_few"]
+__all__ = ["domain_trouble", "not_offered", "too_few"]
+
+
+def not_offered(remedy: Remedy) -> Refusal | None:
+    """Members that the grammar knows and this version cannot fit yet."""
+    if remedy.weighted:
+        return Refusal(
+            "Weights learned from the spread are not offered in this version.", f"{remedy.key}.",
+            "Robust errors, which hold whatever the spread (the default), or log y where it grows with the level.",
+        )  # fmt: skip
+    if remedy.shape.family == "smooth":
+        return Refusal(
+            "The penalised spline is not offered in this version.", f"{remedy.key}.",
+            "A restricted cubic spline: spline5 x.",
+        )  # fmt: skip
+    return None
 
 
 def too_few(rows: Rows, remedy: Remedy) -> Refusal | None:

@@ -15,12 +15,14 @@ import numpy as np
 from scipy.stats import t as student
 
 from batten.engine.rows import Array, Ints
+from batten.families.base import Constants
+from batten.fit.carry import Carried, carried
 from batten.fit.estimate import Estimate
 from batten.fit.medians import middle
 from batten.fit.smear import mean_of
 
 __all__ = [
-    "BLOCK", "Averaged", "Target", "averaged_means", "interval", "jackknifed", "means_at_rows", "pattern_weights",
+    "BLOCK", "Averaged", "Target", "averaged_means", "by_replicate", "interval", "jackknifed", "means_at_rows", "pattern_weights",
     "patterns", "target", "with_errors",
 ]  # fmt: skip
 
@@ -284,16 +286,21 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
         factor = middle(est).moved(move)[:, None]
         return lambda eta: link.mean(eta) * factor
     scale = est.scale
-    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
     if of == "mean" and scale.closed == "identity":
         return lambda eta: eta
+    own = carried(est, move)
     if of == "mean":
-        residual = est.residual - move @ est.residual_jacobian.T
-        return lambda eta: mean_of(scale, c, eta, residual, keep)
+        residual = own.residual(est.residual - move @ est.residual_jacobian.T)
+        return lambda eta: mean_of(scale, own.c, own.eta(eta), residual, keep)
     shift = middle(est).moved(move)[:, None]
-    if not scale.searched:
-        return lambda eta: scale.inverse(eta + shift, est.c)
-    return lambda eta: np.stack([scale.inverse(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+    return lambda eta: by_replicate(scale.inverse, own, own.eta(eta + shift))
+
+
+def by_replicate(undo: Callable[[Array, Constants], Array], own: Carried, eta: Array) -> Array:
+    """The scale's inverse (or its slope) at (R, k), each replicate with its own constants."""
+    if all(c == own.c[0] for c in own.c):
+        return undo(eta, own.c[0])
+    return np.stack([undo(row, c) for row, c in zip(eta, own.c, strict=True)])
 
 
 def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Array | None, Array | None]:

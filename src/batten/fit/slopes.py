@@ -12,8 +12,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from batten.engine.rows import Array, Ints
+from batten.fit.carry import carried
 from batten.fit.estimate import Estimate
-from batten.fit.means import BLOCK, Averaged, pattern_weights, patterns, with_errors
+from batten.fit.means import BLOCK, Averaged, by_replicate, pattern_weights, patterns, with_errors
 from batten.fit.medians import middle
 from batten.fit.smear import mean_of
 
@@ -136,12 +137,13 @@ def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
     scale = est.scale
     if scale.closed == "identity":
         return np.ones_like
-    c = [tuple(np.add(est.c, m[-len(est.c) :])) if scale.searched else est.c for m in move]
+    own = carried(est, move)
+    length = own.length[:, None]
     if of == "mean":
-        residual = est.residual - move @ est.residual_jacobian.T
-        return lambda eta: mean_of(scale, c, eta, residual, keep, slope=True)
+        residual = own.residual(est.residual - move @ est.residual_jacobian.T)
+        return lambda eta: length * mean_of(scale, own.c, own.eta(eta), residual, keep, slope=True)
     shift = middle(est).moved(move)[:, None]
-    return lambda eta: np.stack([scale.inverse_slope(e + s, k) for e, s, k in zip(eta, shift, c, strict=True)])
+    return lambda eta: length * by_replicate(scale.inverse_slope, own, own.eta(eta + shift))
 
 
 def _lean(est: Estimate, at: _Place, share: Array) -> float:
