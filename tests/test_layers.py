@@ -42,7 +42,15 @@ def imports(path: Path) -> set[tuple[str, bool]]:
     """(module, at the top level of the file) of every absolute import that runs."""
     found = set()
     tree = ast.parse(path.read_text(encoding="utf-8"))
+    for_types = {
+        id(inner)
+        for node in ast.walk(tree)
+        if isinstance(node, ast.If) and isinstance(node.test, ast.Name) and node.test.id == "TYPE_CHECKING"
+        for inner in ast.walk(node)
+    }
     for node in ast.walk(tree):
+        if id(node) in for_types:
+            continue
         names = []
         if isinstance(node, ast.Import):
             names = [alias.name for alias in node.names]
