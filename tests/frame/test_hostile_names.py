@@ -72,8 +72,8 @@ def test_labels_show_the_users_names_and_nothing_of_ours() -> None:
 
 
 def test_variables_of_the_notebook_do_not_hide_the_grammar() -> None:
-    env = {"C": 3, "I": "a variable", "Q": None, "x": "not the column", "z": np.zeros(N)}
-    problem = read("y ~ x + C(g) + I(z * 2) + Q('z'):C(g)", PLAIN, env=env, focus="x")
+    env = {"C": 3, "I": "a variable", "Q": None, "center": 1.5, "x": "not the column", "z": np.zeros(N)}
+    problem = read("y ~ x + C(g) + I(z * 2) + center(Q('z')):C(g)", PLAIN, env=env, focus="x")
     np.testing.assert_array_equal(problem.rows.base[:, 3], 2 * VALUES["z"])
 
 

@@ -214,3 +214,15 @@ def test_a_name_used_twice_is_refused_only_where_it_is_used() -> None:
 def test_frequency_weights_decide_what_too_few_means() -> None:
     data = frame().iloc[[0, 1, 2]].assign(count=[2, 2, 2])
     assert read("minutes ~ mass_kg", data, weights="count", weights_kind="frequency").rows.n == 6
+
+
+def test_a_group_with_as_many_levels_as_rows_is_refused_before_memory_runs_out() -> None:
+    n = 30_000
+    data = pd.DataFrame({"y": np.arange(n) % 7, "x": np.arange(n), "casting": [f"c{i}" for i in range(n)]})
+    with pytest.raises(InputError) as caught:
+        read("y ~ x + casting", data)
+    assert str(caught.value) == (
+        "This formula has too many columns for so many rows.\n"
+        "30000 rows by 30000 columns need 7 GB; most columns come from `casting`.\n"
+        "Leave `casting` out of the formula; if its rows belong together, give it as cluster."
+    )

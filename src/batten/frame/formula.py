@@ -6,6 +6,8 @@ like remember. Everything it finds out is handed on as plain values that pickle.
 
 from __future__ import annotations
 
+import builtins
+import importlib
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
@@ -134,13 +136,13 @@ def _bare_powers(node: ParseNode) -> Iterable[str]:
 def namespace(env: Mapping[str, Any] | None) -> dict[str, Any]:
     """Names a formula may use beside columns: Python's own, numpy as np, patsy's, then the caller's.
 
-    A variable of the caller does not hide what the grammar itself needs (C, I, Q).
+    What the grammar itself needs (C, I, Q) is not hidden by variables of the caller, nor patsy's functions by variables
+    that are none.
     """
-    import builtins
-
     own = {name: getattr(patsy.builtins, name) for name in patsy.builtins.__all__}
     grammar = {name: own[name] for name in ("C", "I", "Q")}
-    return {**vars(builtins), "np": np, **own, **(env or {}), **grammar}
+    given = {name: value for name, value in (env or {}).items() if name not in own or callable(value)}
+    return {**vars(builtins), "np": np, **own, **given, **grammar}
 
 
 @dataclass(frozen=True)
@@ -211,8 +213,6 @@ def _packed(value: Any) -> Any:
 
 
 def _unpacked(packed: Any) -> Any:
-    import importlib
-
     kind, value, *rest = packed
     if kind == "module":
         return importlib.import_module(value)

@@ -64,14 +64,14 @@ def codes_or_amounts(x: Array, focus: str, covariates: Iterable[tuple[str, Array
     distinct = np.unique(x)
     if len(distinct) == 2:
         yield f"{focus} takes only two values: it has a difference, but no shape."
-    elif len(distinct) <= 5 and _whole(distinct):
+    elif len(distinct) <= min(5, len(x) / 4) and _whole(distinct):
         yield (
             f"{focus} takes only {len(distinct)} whole numbers: if they are codes, it is a group; "
             f"then write C({focus}) and choose another focal predictor."
         )
     for name, values in covariates:
         distinct = np.unique(values)
-        if 2 < len(distinct) <= 8 and _whole(distinct):
+        if 2 < len(distinct) <= min(8, len(x) / 4) and _whole(distinct):
             yield f"{name} holds {len(distinct)} whole numbers: if they are codes, write C({name})."
 
 
@@ -121,13 +121,11 @@ def _repeats(table: Table, name: str, kind: str, rows: Bools, *, grouped: bool) 
     named = bool(_THINGS & set(_words(name)))
     if not named and kind != "text":
         return 0
-    values = table.frame([name])[name]
     try:
         # a look at the start settles most columns of a long table: hardly any repeats, or only a handful of values
-        start = values.iloc[:2000].nunique()
-        if not named and not 10 <= start <= 1000:
+        if not named and not 10 <= table.start(name, 2000).nunique() <= 1000:
             return 0
-        count = int(values[rows].nunique())
+        count = int(table.frame([name])[name][rows].nunique())
     except TypeError:
         return 0
     fewest = 2 if named and not grouped else 10
@@ -136,7 +134,7 @@ def _repeats(table: Table, name: str, kind: str, rows: Bools, *, grouped: bool) 
 
 def _holds_dates(table: Table, name: str) -> bool:
     """Text or objects that read as dates, judged by the first twenty."""
-    first = table.frame([name])[name].iloc[:200].dropna().iloc[:20]
+    first = table.start(name, 200).dropna().iloc[:20]
     if pd.api.types.infer_dtype(first) in ("date", "datetime", "datetime64"):
         return True
     return len(first) > 0 and all(isinstance(v, str) and _DATE_TEXT.fullmatch(v) for v in first)

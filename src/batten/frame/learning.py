@@ -48,10 +48,14 @@ def learn_design(plan: Plan, columns: Mapping[str, Column], rows: Bools) -> Lear
         name: slot.learned(columns[slot.column], rows, plan.asked.get(name, Grouping()))
         for name, slot in plan.slots.items()
     }
+    for slot in slots.values():
+        _check_size(count, len(slot.levels), slot.column)
     data = {name: slot.values(columns[slot.column], rows) for name, slot in slots.items()}
     recipes, blocks = _coded(plan, data)
     factors = {code: _factor(plan, code, slots) for code in plan.factors}
-    _check_size(blocks, recipes, factors, count)
+    widest = max(blocks, key=lambda block: block.width(recipes))
+    total = sum(block.width(recipes) for block in blocks)
+    _check_size(count, total, " : ".join(factors[code].label for code, _ in widest.factors))
     values = _values(plan, recipes, data, factors, count)
     base, modifier = matrices(blocks, values, count)
     labels = _labels(blocks, recipes, factors)
@@ -117,15 +121,10 @@ def _factor(plan: Plan, code: str, slots: Mapping[str, Slot]) -> Factor:
     return Factor(expression.text, slot.column, "categorical column", expression, slot.levels, coding)
 
 
-def _check_size(
-    blocks: Sequence[Block], recipes: Mapping[str, Recipe], factors: Mapping[str, Factor], count: int
-) -> None:
-    """Refuse a design that memory cannot hold, before it is made."""
-    widths = {block: block.width(recipes) for block in blocks}
-    total = sum(widths.values())
-    if count * total * 8 > _LARGEST:
-        widest = max(blocks, key=widths.__getitem__)
-        raise data_errors.too_large(count, total, " : ".join(factors[code].label for code, _ in widest.factors))
+def _check_size(rows: int, columns: int, label: str) -> None:
+    """Refuse a design that memory cannot hold, before it is made. label: where most of the columns come from."""
+    if rows * columns * 8 > _LARGEST:
+        raise data_errors.too_large(rows, columns, label)
 
 
 def _values(

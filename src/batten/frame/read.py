@@ -180,7 +180,8 @@ class _Asked:
         yield from hints.powers(self.formula, roles.focus)
         if learned.dropped:
             yield "Left out because other columns say the same: " + ", ".join(learned.dropped) + "."
-        whole = [(name, columns[name].numbers) for name in roles.covariates if name in numeric]
+        grouped = [slot.column for slot in slots if slot.use == "groups"]
+        whole = [(name, columns[name].numbers) for name in roles.covariates if name in numeric.difference(grouped)]
         yield from hints.codes_or_amounts(
             learned.x, roles.focus, [(name, v[rows]) for name, v in whole if v is not None]
         )
@@ -191,5 +192,4 @@ class _Asked:
             )
         if self.beside.cluster is None:
             used = {roles.response, *numeric, *self.beside.columns.values()}
-            grouped = [slot.column for slot in slots if slot.use == "groups"]
             yield from hints.dependence(self.table, rows, grouped=grouped, numeric=used)

@@ -44,6 +44,13 @@ class Table:
         # an empty selection would lose the number of rows
         return self.source.select(wanted).to_pandas().set_axis(self.index) if wanted else pd.DataFrame(index=self.index)
 
+    def start(self, name: str, rows: int) -> pd.Series[Any]:
+        """The first rows of one column."""
+        if isinstance(self.source, pd.DataFrame):
+            return self.source[name].iloc[:rows]
+        first: pd.DataFrame = self.source.select(name).head(rows).to_pandas()
+        return first[name]
+
     def kinds(self) -> dict[Any, str]:
         """Rough kind of every column from its type: "whole", "text", "dates" or ""; names used twice are left out."""
         if isinstance(self.source, pd.DataFrame):
