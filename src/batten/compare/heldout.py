@@ -15,14 +15,16 @@ import numpy as np
 from scipy.special import gammaln
 
 from batten.engine.folds import Splits
-from batten.engine.irls import Mean, iterate
+from batten.engine.irls import Mean
 from batten.engine.linear import design
 from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
+from batten.engine.sets import BLOCK, masks, search_sets, solve_means
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale
 from batten.fit.estimate import Estimate, scale_power, searched_model
+from batten.fit.guard import meets_constant
 from batten.fit.smear import mean_of
 
 __all__ = ["HeldOut", "held_out"]
@@ -88,7 +90,7 @@ def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[H
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
     precondition = group[0].factored.root
-    states = [shape.learn(rows.x[train], constant=rows.constant) for train, _ in sets]
+    states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in sets]
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
     width = len(precondition)
@@ -144,28 +146,47 @@ def _with_powers(
 def _searched_fits(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Iterator[_Trained | Refusal]:
     """Shapes with constants of their own, searched again in each training set."""
     rows, shape = est.rows, est.shape
-    whole = searched_model(rows, shape, est.state)
-    for train, test in sets:
-        part = rows.take(train)
-        state = shape.learn(part.x, constant=rows.constant)
-        # the grid only gives places to start from, so that of all rows serves every training set
-        model = whole.part(train) if state == est.state else searched_model(part, shape, state)
-        c, theta = est.c, np.array(est.theta)
-        for _ in range(8 if est.scale.searched else 1):
-            found = search(model, est.scale.forward(part.y, c), start=theta, precision=1e-9)
-            moved, theta = np.abs(found.theta - theta).max(), found.theta
-            if not est.scale.searched:
-                break
-            q = np.linalg.qr(np.hstack([model.fixed, model.columns(theta)]))[0]
-            c = (best_power(scale_power(est.scale), part.y, q, start=c[0])[0],)
-            if moved < 1e-8 * max(1.0, float(np.abs(theta).max())):
-                break
-        x = design(rows, shape.columns(rows.x, state, tuple(theta)), own_level=shape.own_level)
+    states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in sets]
+    if all(state == est.state for state in states) and not est.scale.searched:
+        thetas = _shared_search(est, sets)
+    else:
+        thetas = None
+    for s, (train, test) in enumerate(sets):
+        theta, c = (thetas[s], est.c) if thetas is not None else _own_search(est, rows.take(train), states[s])
+        x = design(rows, shape.columns(rows.x, states[s], tuple(theta)), own_level=shape.own_level)
         fitted = _least_squares(x, est.scale.forward(rows.y, c), train, test)
         if fitted is None:
             yield _rank(shape.key)
             return
         yield _Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
+
+
+def _shared_search(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Array:
+    """Best constants of every training set (S, q), all sets at once as far as memory allows."""
+    model = searched_model(est.rows, est.shape, est.state)
+    block = max(1, BLOCK // (est.n * (1 + len(est.theta))))
+    held = [test for _, test in sets]
+    out = [
+        search_sets(model, est.z, masks(est.n, held[s : s + block]), np.array(est.theta))
+        for s in range(0, len(held), block)
+    ]
+    return np.vstack(out)
+
+
+def _own_search(est: Estimate, part: Rows, state: Constants) -> tuple[Array, Constants]:
+    """Constants of one training set whose columns or scale are its own."""
+    model = searched_model(part, est.shape, state)
+    c, theta = est.c, np.array(est.theta)
+    for _ in range(8 if est.scale.searched else 1):
+        found = search(model, est.scale.forward(part.y, c), start=theta, precision=1e-9)
+        moved, theta = np.abs(found.theta - theta).max(), found.theta
+        if not est.scale.searched:
+            break
+        q = np.linalg.qr(np.hstack([model.fixed, model.columns(theta)]))[0]
+        c = (best_power(scale_power(est.scale), part.y, q, start=c[0])[0],)
+        if moved < 1e-8 * max(1.0, float(np.abs(theta).max())):
+            break
+    return theta, c
 
 
 def _least_squares(x: Array, z: Array, train: Ints, test: Ints) -> tuple[Array, Array] | None:
@@ -234,22 +255,29 @@ def _score_link(est: Estimate, sets: list[tuple[Ints, Ints]]) -> HeldOut | Refus
     rows, shape, link = est.rows, est.shape, est.link
     assert isinstance(link, Link)
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
+    steps = 1 if rows.count > FULL_STEPS_ROWS else 30
     out = np.empty((3, len(sets)))
-    for s, (train, test) in enumerate(sets):
-        state = shape.learn(rows.x[train], constant=rows.constant)
-        x = design(rows, shape.columns(rows.x, state, est.theta), own_level=shape.own_level)
-        offset = None if rows.offset is None else rows.offset[train]
-        start = est.coef if state == est.state else None
-        steps = 1 if start is not None and rows.count > FULL_STEPS_ROWS else 60
-        eta0 = None if start is not None else est.eta[train]
-        done = iterate(model, x[train], rows.y[train], eta=eta0, coef=start, offset=offset, steps=steps)
-        if steps > 1 and not done.settled:
+    block = max(1, BLOCK // (rows.count * len(est.coef)))
+    for first in range(0, len(sets), block):
+        some = sets[first : first + block]
+        states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in some]
+        if any(len(state) != len(est.state) for state in states):
+            return _fewer(shape.key)
+        shared = all(state == est.state for state in states)
+        x = np.stack([
+            design(rows, shape.columns(rows.x, state, est.theta), own_level=shape.own_level)
+            for state in (states[:1] if shared else states)
+        ])  # fmt: skip
+        mask = masks(rows.count, [test for _, test in some])
+        done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, offset=rows.offset, steps=steps)
+        if (steps > 1 and not done.settled.all()) or not np.isfinite(done.eta).all():
             return _rank(shape.key)
-        eta = x[test] @ done.coef + (0 if rows.offset is None else rows.offset[test])
-        mean = link.mean(eta)
-        if not np.isfinite(mean).all():
+        mu = link.mean(done.eta)
+        if not np.isfinite(mu).all():
             return _unsafe(est)
-        out[:, s] = _losses(rows.y[test], mean, mean * float(np.median(rows.y[train] / done.mu)))
+        for s, (train, test) in enumerate(some):
+            median = float(np.median(rows.y[train] / mu[s, train]))
+            out[:, first + s] = _losses(rows.y[test], mu[s, test], mu[s, test] * median)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(test) for _, test in sets]))
 
 

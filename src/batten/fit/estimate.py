@@ -15,7 +15,7 @@ from batten.engine.search import Searched, search
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
-from batten.fit.guard import domain_trouble, not_offered, too_few
+from batten.fit.guard import domain_trouble, meets_constant, not_offered, too_few
 
 __all__ = ["Estimate", "estimate", "own_units", "scale_power", "searched_model"]
 
@@ -251,7 +251,7 @@ def estimate(
     refusal = not_offered(remedy) or remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
     if refusal:
         return refusal
-    state = remedy.shape.learn(rows.x, constant=rows.constant)
+    state = remedy.shape.learn(rows.x, constant=meets_constant(rows, remedy.shape))
     if isinstance(remedy.left, Link):
         return _fit_link(rows, remedy, state, theta)
     return _fit_scale(rows, remedy, state, theta, c)
@@ -261,12 +261,16 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
     """The shape's search on these rows, for variable projection."""
     none = np.empty((rows.count, 0))
     lower, upper = shape.bounds(rows.x, state)
+    alone = rows.modifier.shape[1] == 1 and bool((rows.modifier == 1).all())
+    bare = Rows(rows.y, rows.x, none, rows.modifier, None, False)
 
     def columns(t: Array) -> Array:
-        return design(_bare(rows), shape.columns(rows.x, state, tuple(t)))
+        found = shape.columns(rows.x, state, tuple(t))
+        return found if alone else design(bare, found)
 
     def slopes(t: Array) -> Array:
-        return np.stack([design(_bare(rows), s) for s in shape.theta_slopes(rows.x, state, tuple(t))])
+        found = shape.theta_slopes(rows.x, state, tuple(t))
+        return found if alone else np.stack([design(bare, s) for s in found])
 
     return Searched(
         fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
@@ -274,11 +278,6 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
         rebuild=lambda which: searched_model(rows.take(which), shape, state), lower=lower, upper=upper, finite=shape.finite,
         corners=np.unique(rows.x) if shape.corners else None,
     )  # fmt: skip
-
-
-def _bare(rows: Rows) -> Rows:
-    """The rows with no base columns: only the focal block of the design."""
-    return Rows(rows.y, rows.x, np.empty((rows.count, 0)), rows.modifier, None, False)
 
 
 def _fit_scale(

@@ -6,10 +6,15 @@ import numpy as np
 
 from batten.engine.rows import Array, Rows
 from batten.errors import Refusal
-from batten.families.base import Constants, Scale
+from batten.families.base import Constants, Scale, Shape
 from batten.families.remedy import Remedy
 
-__all__ = ["domain_trouble", "not_offered", "too_few"]
+__all__ = ["domain_trouble", "meets_constant", "not_offered", "too_few"]
+
+
+def meets_constant(rows: Rows, shape: Shape) -> bool:
+    """Whether the shape meets a constant: for one that brings its own level, only a column that it replaces counts."""
+    return rows.intercept is not None if shape.own_level else rows.constant
 
 
 def not_offered(remedy: Remedy) -> Refusal | None:
@@ -29,7 +34,7 @@ def not_offered(remedy: Remedy) -> Refusal | None:
 
 def too_few(rows: Rows, remedy: Remedy) -> Refusal | None:
     """A fit needs rows beyond its columns."""
-    state = remedy.shape.learn(rows.x, constant=rows.constant)
+    state = remedy.shape.learn(rows.x, constant=meets_constant(rows, remedy.shape))
     start = tuple(remedy.shape.candidates(rows.x, state)[0])
     shape_columns = remedy.shape.columns(rows.x[:1], state, start).shape[1]
     base = rows.base.shape[1] - (1 if remedy.shape.own_level and rows.intercept is not None else 0)

@@ -215,6 +215,8 @@ def with_errors(
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
         left = values(est.moves(), 1.0 - np.eye(est.n))
+        # a mean that is infinite without one row has no error
+        left = np.where(np.isfinite(left), left, np.nan)
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
     gradient = _gradient(est, values, parameters)
     shares = [part / est.n for part in own_shares(value)]
