@@ -100,7 +100,8 @@ def test_a_cell_without_rows_is_left_out() -> None:
     data = data[~((data["g"] == "r") & (data["h"] == "lo"))]
     problem = read("y ~ x + g*h", data, focus="x")
     assert problem.base_names == ("intercept", "g: q", "g: r", "h: lo", "g q : h lo")
-    assert problem.announcements[0] == "Left out because other columns say the same: g r : h lo."
+    assert problem.announcements[0] == "Left out because no rows hold them: g r : h lo."
+    assert problem.design.terms[2].dropped == ("g r : h lo",)
 
 
 def test_covariates_that_are_nearly_but_not_quite_alike_are_kept() -> None:

@@ -132,7 +132,7 @@ REFUSED = {
         "Correct these or leave them missing; if it is a group, write C(comma)."
     ),
     ("minutes ~ mass_kg + held", None): (
-        "The covariate `held` cannot be used as it is stored.\nIt holds: timedelta64[us].\n"
+        "The covariate `held` cannot be used as it is stored.\nIt holds: lengths of time.\n"
         "Make it a number (for lengths of time: .dt.total_seconds()), text or a category first."
     ),
     ("poured ~ mass_kg", None): (
@@ -153,6 +153,21 @@ REFUSED = {
         "`age - np.mean(age)` gives a row another value when other rows are taken away.\n"
         "A mean, a rank or a cut into parts is worked out anew on every frame, so predictions would be wrong.\n"
         "Use center(), standardize() or bs(), which remember, or make it a column of the data frame first."
+    ),
+    ("minutes ~ mass_kg + C(alloy, 'sum')", None): (
+        "`C(alloy, 'sum')` cannot be worked out on these rows.\n"
+        "AttributeError: 'str' object has no attribute 'code_with_intercept'\n"
+        "Arithmetic stands inside I(), a power is **, and functions must be defined where the formula is used."
+    ),
+    ("minutes ~ mass_kg + C(alloy, 1, 2, 3)", None): (
+        "`C(alloy, 1, 2, 3)` cannot be worked out on these rows.\n"
+        "TypeError: C() takes from 1 to 3 positional arguments but 4 were given\n"
+        "Arithmetic stands inside I(), a power is **, and functions must be defined where the formula is used."
+    ),
+    ("minutes ~ mass_kg + bs(age, df=2)", None): (
+        "`bs(age, df=2)` cannot be worked out on these rows.\n"
+        "ValueError: df=2 is too small for degree=3 and include_intercept=False; must be >= 3\n"
+        "Arithmetic stands inside I(), a power is **, and functions must be defined where the formula is used."
     ),
     ("minutes ~ mass_kg + np.mean(age)", None): (
         "`np.mean(age)` must give one value for each row.\nIt gives 1 for 50 rows.\n"

@@ -42,6 +42,7 @@ _INFERRED: dict[str, Kind] = {
     "mixed-integer-float": "numbers", "empty": "numbers", "date": "dates", "datetime": "dates",
     "datetime64": "dates", "mixed-integer": "mixture", "mixed": "mixture",
 }  # fmt: skip
+_OBJECTS = {"mixed": "lists or other objects", "timedelta": "lengths of time", "bytes": "raw bytes"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -85,7 +86,8 @@ def look(name: str, series: pd.Series[Any]) -> Column:
         return _numeric(name, series, "numbers", _dtype_word(dtype))
     if types.is_object_dtype(dtype) or types.is_string_dtype(dtype):
         return _objects(name, series)
-    return Column(name, "other", series.copy(), _missing(series), stored=str(dtype))
+    stored = "lengths of time" if types.is_timedelta64_dtype(dtype) else str(dtype)
+    return Column(name, "other", series.copy(), _missing(series), stored=stored)
 
 
 def _missing(series: pd.Series[Any]) -> Bools:
@@ -125,7 +127,7 @@ def _objects(name: str, series: pd.Series[Any]) -> Column:
         return _dates(name, series)
     if kind == "text":
         return _text(name, series, missing)
-    stored = inferred if kind == "other" else "numbers and text together"
+    stored = {"mixture": "numbers and text together"}.get(kind, _OBJECTS.get(inferred, inferred))
     return Column(name, kind, series.copy(), missing, stored=stored)
 
 

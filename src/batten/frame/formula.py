@@ -19,7 +19,6 @@ import patsy
 import patsy.builtins
 from patsy.eval import EvalEnvironment, EvalFactor, ast_names
 from patsy.infix_parser import ParseNode
-from patsy.origin import Origin
 from patsy.parse_formula import parse_formula
 
 from batten.engine.rows import Array
@@ -252,15 +251,19 @@ def learn(
 
     A text that fails raises LearningError with its code.
     """
-    made = {code: EvalFactor(code, Origin(code, 0, len(code))) for term in terms for code in term}
+    made = {code: EvalFactor(code) for term in terms for code in term}
     codes = {factor: code for code, factor in made.items()}
     as_patsy = [patsy.Term([made[code] for code in term]) for term in terms]
     try:
-        with np.errstate(all="ignore"):
-            env = EvalEnvironment([dict(names)])
-            (info,) = patsy.design_matrix_builders([as_patsy], lambda: iter([data]), env)
-    except patsy.PatsyError as error:
-        raise LearningError(error.origin.code if error.origin else "", error.message) from None
+        info = _design_info(as_patsy, data, names)
+    except Exception:
+        for code, factor in made.items():  # which factor it was, patsy does not always say
+            try:
+                _design_info([patsy.Term([factor])], data, names)
+            except Exception as error:
+                said = error.message if isinstance(error, patsy.PatsyError) else f"{type(error).__name__}: {error}"
+                raise LearningError(code, said.removeprefix("Error evaluating factor: ")) from None
+        raise
     recipes = {codes[factor]: _recipe(found) for factor, found in info.factor_infos.items()}
     blocks = []
     for term, subterms in info.term_codings.items():
@@ -269,6 +272,11 @@ def learn(
             parts = tuple((code, None if c is None else np.asarray(c.matrix, dtype=float)) for code, c in pieces)
             blocks.append(Block(as_patsy.index(term), parts))
     return recipes, blocks
+
+
+def _design_info(terms: Sequence[Any], data: Mapping[str, Any], names: Mapping[str, Any]) -> Any:
+    with np.errstate(all="ignore"):  # values that are no numbers are found, counted and named by the caller
+        return patsy.design_matrix_builders([terms], lambda: iter([data]), EvalEnvironment([dict(names)]))[0]
 
 
 def _recipe(found: Any) -> Recipe:

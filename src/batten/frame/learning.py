@@ -30,7 +30,8 @@ _LARGEST = 4e9
 @dataclass(frozen=True, eq=False)
 class Learned:
     """design and its matrices on the analysis rows: x (n,), base (n, q), modifier (n, m). intercept: its position in
-    base. constant: whether a constant lies in the span of base. dropped: labels of the aliased columns."""
+    base. constant: whether a constant lies in the span of base. dropped: labels of the aliased columns; empty: of those
+    that hold no rows."""
 
     design: Design
     x: Array
@@ -39,6 +40,7 @@ class Learned:
     intercept: int | None
     constant: bool
     dropped: tuple[str, ...]
+    empty: tuple[str, ...]
 
 
 def learn_design(plan: Plan, columns: Mapping[str, Column], rows: Bools) -> Learned:
@@ -62,6 +64,7 @@ def learn_design(plan: Plan, columns: Mapping[str, Column], rows: Bools) -> Lear
     intercept = [label for _, label in labels[False]].index(INTERCEPT) if () in plan.terms else None
     kept = keep_independent(data[FOCUS], base, modifier, intercept=intercept)
     terms = _terms(plan, blocks, labels, kept, factors)
+    empty = _empty(base, labels[False]) + _empty(modifier, labels[True])
     design = Design(
         terms=terms,
         has_intercept=() in plan.terms,
@@ -83,7 +86,8 @@ def learn_design(plan: Plan, columns: Mapping[str, Column], rows: Bools) -> Lear
         modifier=_only(modifier, kept.modifier),
         intercept=kept.intercept,
         constant=kept.constant,
-        dropped=tuple(label for term in terms for label in term.dropped),
+        dropped=tuple(label for term in terms for label in term.dropped if label not in empty),
+        empty=empty,
     )
 
 
@@ -104,9 +108,7 @@ def _coded(plan: Plan, data: Mapping[str, Any]) -> tuple[dict[str, Recipe], list
     try:
         return learn(plan.terms, {**data, FOCUS: np.ones(len(data[FOCUS]))}, plan.names)
     except LearningError as error:
-        factor = plan.factors.get(error.code)
-        said = error.message.removeprefix("Error evaluating factor: ")
-        raise errors.not_worked_out(factor.label if factor else error.code, said) from None
+        raise errors.not_worked_out(plan.factors[error.code].text, error.message) from None
 
 
 def _factor(plan: Plan, code: str, slots: Mapping[str, Slot]) -> Factor:
@@ -179,6 +181,11 @@ def _level(column: Array, levels: Sequence[Any], j: int) -> str:
     """The level a contrast column stands for, when it is one level's indicator."""
     single = np.flatnonzero(column)
     return word(levels[single[0]]) if len(single) == 1 and column[single[0]] == 1 else f"contrast {j + 1}"
+
+
+def _empty(columns: Array, labels: Sequence[tuple[int, str]]) -> tuple[str, ...]:
+    """Labels of columns (n, k) that are zero in every row: a level, or a combination of levels, without rows."""
+    return tuple(label for (_, label), some in zip(labels, np.atleast_1d(columns.any(axis=0)), strict=True) if not some)
 
 
 def _joined(focus: str, modifier: str) -> str:

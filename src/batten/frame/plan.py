@@ -10,6 +10,7 @@ import numpy as np
 import pandas as pd
 
 from batten.errors import data as data_errors
+from batten.errors import formula as errors
 from batten.frame.columns import Bools, Column
 from batten.frame.design import FOCUS
 from batten.frame.expression import Expression
@@ -73,9 +74,15 @@ class _Maker:
         if factor.bare is not None:
             return self._bare(self.columns[factor.bare])
         if factor.group is not None and len(factor.columns) == 1:
-            asked = grouping(factor.arguments(), self.names)
+            asked = self._asked_for(factor)
             return self._group(factor.group, asked, text=factor.text if asked.contrast is not None else "")
         return factor.written({name: self._slot(Slot(name, "as it is")) for name in factor.columns})
+
+    def _asked_for(self, factor: Expression) -> Grouping:
+        try:
+            return grouping(factor.arguments(), self.names)
+        except Exception as error:  # the user's own Python
+            raise errors.not_worked_out(factor.text, f"{type(error).__name__}: {error}") from None
 
     def _bare(self, column: Column) -> str:
         """Numbers and dates as numbers, text and categories as groups; what could be either is asked about."""

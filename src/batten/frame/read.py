@@ -178,6 +178,8 @@ class _Asked:
             yield f"{int(sample.bad.sum())} of {len(rows)} rows are left out: {sample.summary()}."
         yield from hints.read_differently(columns, slots, roles.response)
         yield from hints.powers(self.formula, roles.focus)
+        if learned.empty:
+            yield "Left out because no rows hold them: " + ", ".join(learned.empty) + "."
         if learned.dropped:
             yield "Left out because other columns say the same: " + ", ".join(learned.dropped) + "."
         grouped = [slot.column for slot in slots if slot.use == "groups"]

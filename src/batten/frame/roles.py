@@ -72,9 +72,7 @@ def _meant(right: list[Expression], columns: Mapping[str, Column], focus: str | 
     """The focal predictor somebody has in mind, transformed or not: for the formula offered instead."""
     if focus is not None:
         return focus
-    plain = _candidates(right, columns)
-    inside = [e.columns[0] for e in right if len(e.columns) == 1 and columns[e.columns[0]].kind == "numbers"]
-    return next(iter([*plain, *inside]), None)
+    return next(iter([*_candidates(right, columns), *_inside(right, columns)]), None)
 
 
 def _candidates(right: list[Expression], columns: Mapping[str, Column]) -> list[str]:
@@ -85,6 +83,12 @@ def _candidates(right: list[Expression], columns: Mapping[str, Column]) -> list[
         if found:
             return found
     return []
+
+
+def _inside(right: list[Expression], columns: Mapping[str, Column]) -> list[str]:
+    """Numeric columns that stand alone inside a function: mass_kg in np.log(mass_kg)."""
+    functions = [e.columns for e in right if e.bare is None and e.group is None]
+    return [used[0] for used in functions if len(used) == 1 and columns[used[0]].kind == "numbers"]
 
 
 def _response(formula: Formula, factors: Mapping[str, Expression], right: list[Expression], meant: str | None) -> str:
@@ -148,10 +152,10 @@ def _first(
 def _guess(chosen: str, right: list[Expression], columns: Mapping[str, Column]) -> str:
     """Announcement of a focal predictor that was not given."""
     others = [c for c in _candidates(right, columns) if c != chosen]
-    inside = [e for e in right if e.bare is None and not e.group and len(e.columns) == 1]
+    inside = dict.fromkeys(c for c in _inside(right, columns) if c not in others)
     text = f"Focal predictor: {chosen}, the " + ("first" if others or inside else "only") + " plain numeric predictor"
     if others:
         text += "; others it could be: " + ", ".join(others)
     if inside:
-        text += "; written plain it could also be " + ", ".join(dict.fromkeys(e.columns[0] for e in inside))
+        text += "; written plain it could also be " + ", ".join(inside)
     return text + "."

@@ -64,7 +64,8 @@ class Slot:
         if self.use == "numbers":
             return self.numbers(column)[rows]
         if self.use == "groups":
-            return pd.Categorical.from_codes(self.codes(column, rows), categories=pd.Index(self.levels))
+            levels = pd.Index(list(self.levels), tupleize_cols=False)
+            return pd.Categorical.from_codes(self.codes(column, rows), categories=levels)
         return as_raw(column, rows, self.kind or column.kind)
 
     def complaints(self, column: Column) -> Iterator[Complaint]:
