@@ -173,7 +173,7 @@ def test_rounding_the_power_of_y_shows_its_price():
     """0.5 costs 0.07 in log-likelihood, the log 4.15 and is ruled out (profile of Box and Cox 1964, computed apart)."""
     est = fitted("boxcox y ~ x", A)
     found = {r.words: r for r in roundings(est, learned_constants(est)[0], (5, 10))}
-    root, log = found["sqrt y"], found["log y"]
+    root, log = found["the square root of y"], found["the log of y"]
     assert (root.inside, root.advised) == (True, True)
     assert root.loss == pytest.approx(27.600553 - 27.526523, abs=2e-6)
     assert (log.inside, log.advised) == (False, False)

@@ -37,7 +37,7 @@ def test_the_hardwood_maximum_lies_where_the_published_fit_puts_it():
     assert found.estimate == pytest.approx(7.2632 + 2.546 / (2 * 0.635), abs=0.01)
     assert found.estimate == pytest.approx(9.269577701050393, rel=1e-9)
     np.testing.assert_allclose(found.pieces, [(8.820116246098358, 9.843254762188849)], rtol=1e-8)
-    assert found.reading == "highest at 9.3% (95% interval 8.8 to 9.8%)"
+    assert found.reading == "highest at 9.27% (95% interval 8.82 to 9.84%)"
 
 
 @pytest.mark.parametrize("key", ["log y ~ poly2 x", "sqrt y ~ poly2 x", "1/y ~ poly2 x", "loglink y ~ poly2 x"])

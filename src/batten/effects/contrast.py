@@ -8,17 +8,19 @@ searched constants, the residuals that bring a transformed response back, and th
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
+from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.means import Averaged, averaged_means, interval, target
 from batten.fit.predict import positive_by_nature
 
-__all__ = ["NO_ANSWER", "SpanEffect", "reach_trouble", "same_group", "span_effect"]
+__all__ = ["NO_ANSWER", "SpanEffect", "no_interval", "reach_trouble", "same_group", "span_difference", "span_effect"]
 
 NO_ANSWER = "this grouping cannot answer: both ends lie in one group"
 
@@ -70,7 +72,26 @@ def span_effect(
     gap = ends.combine(np.array([[-1.0], [1.0]]))
     difference = effect_of(gap.value, interval(gap, level))
     ratio = _ratio(ends, at_a, at_b, of=of, level=level)
-    return SpanEffect(a, b, of, level, at_a, at_b, difference, ratio, difference.times(1 / (b - a)))
+    effects = [at_a, at_b, difference, ratio, difference.times(1 / (b - a))]
+    why = no_interval(est, difference, of=of)
+    if why:
+        effects = [effect.without_interval(why) for effect in effects]
+    return SpanEffect(a, b, of, level, *effects)  # type: ignore[arg-type]  # five effects in the order of the fields
+
+
+def no_interval(est: Estimate, effect: Effect, *, of: str) -> str:
+    """Why an effect of the mean (or median) has no interval, or ""."""
+    if effect.defined and not math.isfinite(effect.high - effect.low):
+        return f"no interval: without one of the rows the {of} is not finite"
+    return no_mean_interval(est) if of == "mean" else ""
+
+
+def span_difference(est: Estimate, span: tuple[float, float]) -> float:
+    """The difference of means over the span alone, NaN where it cannot be had."""
+    if same_group(est, *span) or reach_trouble(est, np.array(span)):
+        return math.nan
+    a, b = averaged_means(est, np.array(span), root=False).value
+    return float(b - a)
 
 
 def same_group(est: Estimate, a: float, b: float) -> bool:
@@ -113,7 +134,7 @@ def _ratio(ends: Averaged, at_a: Effect, at_b: Effect, *, of: str, level: float)
         if not end.low > 0:
             return undefined(f"no ratio: the interval of a {of} reaches zero")
     logs = ends.log().combine(np.array([[-1.0], [1.0]]))
-    low, high = interval(logs, level)
-    if not np.isfinite([low[0], high[0]]).all():
+    found = effect_of(logs.value, interval(logs, level))
+    if not np.isfinite([found.low, found.high]).all():
         return undefined(f"no ratio: without one row a {of} is no longer above zero")
-    return Effect(float(np.exp(logs.value[0])), float(np.exp(low[0])), float(np.exp(high[0])))
+    return found.through(math.exp)

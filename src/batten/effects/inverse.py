@@ -14,8 +14,9 @@ import numpy as np
 from scipy.optimize import brentq
 
 from batten.effects.contrast import reach_trouble
-from batten.effects.numbers import place, show, show_interval
+from batten.effects.numbers import about, place, show, show_interval
 from batten.engine.rows import Array
+from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.means import averaged_means, interval
 from batten.fit.predict import positive_by_nature
@@ -77,6 +78,10 @@ def x_for(
     if not len(xs):
         return Inverse(y, of, level, (), (), (), (), f"the {of} cannot be had anywhere inside the data")
     band = _Band(est, y, of, level, errors, base, modifier)
+    carried = no_mean_interval(est) if of == "mean" else ""
+    if carried:
+        passes = _passes(band, xs, np.array([band.gap(x) for x in xs]))
+        return Inverse(y, of, level, passes, (), (), (), carried)
     curve, lower, upper = band.gaps(xs)
     estimates = _passes(band, xs, curve)
     holds = _pieces(lambda x: max(band.at(x)[1], -band.at(x)[2]), xs, np.maximum(lower, -upper))
@@ -166,7 +171,7 @@ class _Words:
     def reading(self, y: float, estimates: tuple[float, ...], pieces: tuple[Piece, ...], curve: Array) -> str:
         """One sentence without a full stop."""
         target = f"{self.of} of {place(y, self.y_unit)}"
-        ends = f"{place(self.low)} to {place(self.high, self.unit)}"
+        ends = f"{about(self.low)} to {about(self.high, self.unit)}"
         if not pieces and not estimates:
             seen = show_interval(float(curve.min()), float(curve.max()), self.y_unit)
             return f"a {target} is not reached: from {ends} the {self.of} runs from {seen}"
@@ -174,7 +179,7 @@ class _Words:
         if not estimates:
             return f"the curve does not reach a {target} from {ends}, but {where} cannot be excluded"
         width = max((b - a for a, b in pieces), default=self.high - self.low)
-        at = " and ".join(show(x, self.unit, width=width) for x in estimates)
+        at = " and ".join(place(x, self.unit) if self.leaps else show(x, self.unit, width=width) for x in estimates)
         percent = place(round(100 * self.level, 6))
         passed = "is passed where groups change, at" if self.leaps else "is reached at"
         return f"a {target} {passed} {at} ({percent}% interval {where})"

@@ -167,8 +167,9 @@ def _without(model: Searched, which: int, value: float, *, joined: bool) -> Sear
         candidates = candidates[((candidates > lower) & (candidates < upper)).all(axis=1)]
         lower, upper = np.minimum(lower, model.upper[0]), np.maximum(upper, model.lower[0])
     return Searched(
-        model.fixed, lambda t: model.columns(whole(t)), lambda t: np.delete(model.slopes(whole(t)), which, axis=0),
-        candidates, lower, upper,
+        fixed=model.fixed, columns=lambda t: model.columns(whole(t)),
+        slopes=lambda t: np.delete(model.slopes(whole(t)), which, axis=0), candidates=candidates, lower=lower,
+        upper=upper, rebuild=lambda rows: _without(model.rebuild(rows), which, value, joined=joined),
     )  # fmt: skip
 
 

@@ -11,18 +11,19 @@ import math
 from dataclasses import dataclass
 
 from batten.effects.constants import Constant
-from batten.effects.contrast import span_effect
+from batten.effects.contrast import span_difference
 from batten.effects.profile import best_given
 from batten.fit.estimate import Estimate, estimate
 
 __all__ = ["Rounding", "roundest", "roundings"]
 
 #: powers of y that have names (Box and Cox 1964), and those of x
-_OF_Y = {-1.0: "1/y", -0.5: "1/sqrt y", 0.0: "log y", 1 / 3: "cube root of y", 0.5: "sqrt y", 1.0: "y as it is"}
-_OF_X = {
-    -2.0: "1/x^2", -1.0: "1/x", -0.5: "1/sqrt x", 0.0: "log x", 0.5: "sqrt x", 1.0: "x as it is", 2.0: "x^2",
-    3.0: "x^3",
+_OF_Y = {
+    -1.0: "the reciprocal of {}", -0.5: "the reciprocal root of {}", 0.0: "the log of {}",
+    1 / 3: "the cube root of {}", 0.5: "the square root of {}", 1.0: "{} as it is",
 }  # fmt: skip
+_OF_X = {**_OF_Y, -2.0: "the reciprocal square of {}", 2.0: "the square of {}", 3.0: "the cube of {}"}
+del _OF_X[1 / 3]
 
 
 @dataclass(frozen=True)
@@ -43,8 +44,13 @@ class Rounding:
     advised: bool
 
 
-def roundings(est: Estimate, constant: Constant, span: tuple[float, float]) -> tuple[Rounding, ...]:
-    """Candidates in order, each with its price; empty where no value can be named or nothing was searched."""
+def roundings(
+    est: Estimate, constant: Constant, span: tuple[float, float], *, x: str = "x", y: str = "y"
+) -> tuple[Rounding, ...]:
+    """Candidates in order, each with its price; empty where no value can be named or nothing was searched.
+
+    x, y: names for the words.
+    """
     if constant.profile is None or not constant.named or constant.kind == "listed":
         return ()
     names = {"power of y": _OF_Y, "power of x": _OF_X}.get(constant.kind)
@@ -53,11 +59,12 @@ def roundings(est: Estimate, constant: Constant, span: tuple[float, float]) -> t
         names = {} if value is None else {value: f"{value:.6g}"}
     inside = [v for v in names if constant.profile.holds(v)]
     advised = min(inside, key=lambda v: abs(v - constant.estimate), default=None)
-    now = span_effect(est, span).difference.estimate
+    now = span_difference(est, span)
     out = []
-    for value, words in names.items():
+    for value, words in sorted(names.items()):
         loss, difference = _price(est, constant, value, span)
-        out.append(Rounding(value, words, loss, value in inside, difference, difference - now, value == advised))
+        told = words.format(y if constant.kind == "power of y" else x)
+        out.append(Rounding(value, told, loss, value in inside, difference, difference - now, value == advised))
     return tuple(out)
 
 
@@ -77,19 +84,22 @@ def _price(est: Estimate, constant: Constant, value: float, span: tuple[float, f
         best = best_given(est, None)[0]
         level, theta, c = best_given(est, None, fixed=(constant.position, value))
         again = estimate(est.rows, est.remedy, theta=theta, c=c if est.remedy.left.searched else None)
-    difference = span_effect(again, span).difference.estimate if isinstance(again, Estimate) else math.nan
+    difference = span_difference(again, span) if isinstance(again, Estimate) else math.nan
     return best - level, difference
 
 
 def roundest(low: float, high: float, *, near: float) -> float | None:
-    """The number with the fewest digits between low and high, nearest to `near` among its equals; None if unbounded."""
+    """The number with the fewest digits that lies in the set and within a quarter of its width from `near`.
+
+    None where the set has no ends.
+    """
     if not (math.isfinite(low) and math.isfinite(high)) or not high > low:
         return None
     power = math.ceil(math.log10(high - low)) + 1
-    for exponent in range(power, power - 4, -1):
+    for exponent in range(power, power - 5, -1):
         for lead in (5, 2, 1):
             step = lead * 10.0**exponent
             value = round(round(near / step) * step, max(0, -exponent))
-            if low <= value <= high and (value != 0 or low <= 0 <= high):
+            if low <= value <= high and abs(value - near) <= (high - low) / 4:
                 return value
     return None

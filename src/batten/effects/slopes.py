@@ -12,7 +12,7 @@ from typing import Literal
 
 import numpy as np
 
-from batten.effects.contrast import reach_trouble
+from batten.effects.contrast import no_interval, reach_trouble
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
@@ -43,7 +43,9 @@ def average(est: Estimate, *, of: str = "mean", level: float = 0.95, errors: str
     found = average_slope(est, of=of, errors=errors)
     if not np.isfinite(found.value).all():
         return undefined(f"a slope of the {of} does not exist at every row")
-    return effect_of(found.value, interval(found, level))
+    effect = effect_of(found.value, interval(found, level))
+    why = no_interval(est, effect, of=of)
+    return effect.without_interval(why) if why else effect
 
 
 def slopes_along(
@@ -69,7 +71,9 @@ def slopes_along(
         found = averaged_slopes(est, places[good], of=of, base=base, modifier=modifier, errors=errors)
         ends = interval(found, level)
         for at, k in enumerate(good):
-            effects[k] = effect_of(found.value, ends, at)
+            effect = effect_of(found.value, ends, at)
+            why = no_interval(est, effect, of=of)
+            effects[k] = effect.without_interval(why) if why else effect
     return tuple(SlopeAt(x, side, effect) for (x, side), effect in zip(asked, effects, strict=True))
 
 
@@ -77,7 +81,8 @@ def breaks(est: Estimate) -> tuple[float, ...]:
     """Places where the slope jumps: breaks that were given or found."""
     if est.shape.steps:
         return ()
-    return tuple(place for place in (*est.state, *est.theta) if len(_sides(est, place)) == 2)
+    places = est.shape.cuts(est.state, est.theta) or ()
+    return tuple(place for place in places if len(_sides(est, place)) == 2)
 
 
 def _sides(est: Estimate, x: float) -> tuple[Literal["", "left", "right"], ...]:

@@ -9,13 +9,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
 from scipy.stats import t as student
 
-from batten.effects.numbers import place, show, show_interval
+from batten.effects.numbers import about, place, show, show_interval
 from batten.effects.profile import profile_of_shape
 from batten.effects.slopes import breaks, slopes_along
 from batten.effects.turning import UShape, delta_std_error, fieller, flat_set, u_shape
@@ -38,7 +38,8 @@ class Turn:
     estimate: the one place inside the data where the curve turns, or the quadratic's vertex wherever it lies; NaN where
     there is none or several. estimates: all of them. pieces: every x that cannot be excluded; infinite ends for a
     quadratic. located: one interval inside the data. form: what y is there. std_error: by the delta method, for
-    comparison only. ends: slopes at the lowest and highest x against zero (quadratics and smooth curves).
+    comparison only. ends: slopes at the lowest and highest x against zero (quadratics and smooth curves). data: the
+    lowest and the highest x.
     """
 
     estimate: float
@@ -49,6 +50,7 @@ class Turn:
     reading: str
     std_error: float = math.nan
     ends: UShape | None = None
+    data: Piece = (math.nan, math.nan)
 
 
 @dataclass(frozen=True)
@@ -69,7 +71,7 @@ class _Asked:
 
     @property
     def range(self) -> str:
-        return f"{place(self.low)} to {place(self.high, self.unit)}"
+        return f"{about(self.low)} to {about(self.high, self.unit)}"
 
     def inside(self, piece: Piece) -> bool:
         return self.low <= piece[0] and piece[1] <= self.high
@@ -91,6 +93,13 @@ def turning_point(
 
     base (u, q), modifier (u, m): covariate rows to average over under interactions instead of the rows' own.
     """
+    found = _turn(est, level=level, errors=errors, unit=unit, base=base, modifier=modifier)
+    return replace(found, data=(float(est.rows.x.min()), float(est.rows.x.max())))
+
+
+def _turn(
+    est: Estimate, *, level: float, errors: str, unit: str, base: Array | None, modifier: Array | None
+) -> Turn:  # fmt: skip
     x = est.rows.x
     asked = _Asked(float(x.min()), float(x.max()), level, errors, unit)
     if est.shape.steps:

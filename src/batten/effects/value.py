@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
 
@@ -29,6 +30,14 @@ class Effect:
         if self.low > against:
             return "higher"
         return "lower" if self.high < against else "open"
+
+    def without_interval(self, why: str) -> Effect:
+        """The estimate alone, and why it has no interval."""
+        return Effect(self.estimate, math.nan, math.nan, self.note or why)
+
+    def through(self, rising: Callable[[float], float]) -> Effect:
+        """The same quantity read through a rising function, its interval by its ends."""
+        return Effect(rising(self.estimate), rising(self.low), rising(self.high), self.note)
 
     def times(self, factor: float) -> Effect:
         """The same quantity in other units; a negative factor turns the interval round."""

@@ -11,15 +11,24 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from batten.effects.checks import checks
 from batten.effects.coefficients import coefficients
 from batten.effects.constants import Constant, learned_constants
 from batten.effects.contrast import SpanEffect, span_effect
+from batten.effects.groups import GroupEffect, group_effects
+from batten.effects.inverse import Inverse, x_for
+from batten.effects.lookup import lookup, round_places
 from batten.effects.rounding import Rounding, roundings
-from batten.effects.slopes import SlopeAt, average, slopes_along
-from batten.effects.value import Effect
+from batten.effects.sentences import sentences
+from batten.effects.slopes import average, slopes_along
+from batten.effects.tell import Names, Sentence
+from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
 from batten.errors import ask
+from batten.exam.answers import check_table, effect_table, group_table, lookup_table, slope_table
+from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by
 from batten.families import Remedy
+from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.predict import predict, total
 from batten.fit.question import Question
@@ -120,7 +129,8 @@ class Fit:
 
     def roundings(self, constant: Constant) -> tuple[Rounding, ...]:
         """What each nicer value of a constant costs in log-likelihood and in the span effect."""
-        return roundings(self.estimate, constant, self.question.span)
+        p = self.problem
+        return roundings(self.estimate, constant, self.question.span, x=p.focus, y=p.response)
 
     def predict(
         self, frame: pd.DataFrame, of: str = "mean", interval: str | None = None, level: float | None = None
@@ -141,8 +151,11 @@ class Fit:
                 of=of, kind=interval, level=level, errors=self.question.errors,
             )  # fmt: skip
             out[whole] = np.column_stack([done.estimate, done.low, done.high])
+            carried = no_mean_interval(self.estimate) if of == "mean" and interval == "estimate" else ""
+            if carried:
+                out[:, 1:] = np.nan
             for place, note in zip(np.flatnonzero(whole), done.note, strict=True):
-                notes[place] = _joined(notes[place], note)
+                notes[place] = _joined(_joined(notes[place], note), carried)
         return pd.DataFrame(
             {"estimate": out[:, 0], "low": out[:, 1], "high": out[:, 2], "note": notes}, index=new.index
         )
@@ -198,8 +211,90 @@ class Fit:
         xs = [_number("at", x, self.problem.focus) for x in (at if np.iterable(at) else [at])]
         base, modifier = self._covariates()
         found = slopes_along(self.estimate, xs, base=base, modifier=modifier, **asked)  # type: ignore[arg-type]
-        table = effect_table({k: _sided(s) for k, s in enumerate(found)}, name=self.problem.focus)
-        return table.set_axis(pd.Index([s.x for s in found], name=self.problem.focus), axis=0)
+        return slope_table(found, focus=self.problem.focus)
+
+    def by_group(self, by: str | None = None, of: str = "mean") -> pd.DataFrame:
+        """The span effect per group: difference, ratio and their intervals, and against the first group; note.
+
+        by: a covariate (a number at its 10th, 50th and 90th percentile); default the question's `by`, then the column
+        that the focal predictor is multiplied with.
+        """
+        return group_table(self.group_effects(by, of=of))
+
+    def group_effects(self, by: str | None = None, of: str = "mean") -> tuple[GroupEffect, ...]:
+        """The same as numbers; () without groups."""
+        column = by or self.question.by
+        groups = groups_by(self.problem, column) if column else interaction_groups(self.problem)
+        if not groups:
+            return ()
+        q = self.question
+        return group_effects(self.estimate, groups, q.span, of=_target(of), level=q.level, errors=q.errors)
+
+    def x_for(self, y: float, of: str = "mean", at: dict[str, Any] | None = None) -> Inverse:
+        """Every x inside the data whose mean (or median) is y, and every x that cannot be told from that.
+
+        at: covariate values to hold; the others stay as the rows have them. Returns estimates, pieces, surely_below,
+        surely_above, reached and a reading in words.
+        """
+        p, q = self.problem, self.question
+        base, modifier = covariate_rows(p, at) if at else self._covariates()
+        return x_for(
+            self.estimate, _number("y", y, p.response), of=_target(of), level=q.level, errors=q.errors, base=base,
+            modifier=modifier, unit=p.unit(p.focus), y_unit=p.unit(p.response),
+        )  # fmt: skip
+
+    def turning_point(self) -> Turn:
+        """Where the curve turns: estimate, pieces, located and a reading in words."""
+        base, modifier = self._covariates()
+        q, unit = self.question, self.problem.unit(self.problem.focus)
+        return turning_point(
+            self.estimate, level=q.level, errors=q.errors, unit=unit, base=base, modifier=modifier
+        )  # fmt: skip
+
+    def lookup(self, by: str | None = None) -> pd.DataFrame:
+        """Mean, median and the interval for a new row (low, high) at round x, by group if asked; units of y."""
+        p, q = self.problem, self.question
+        places = round_places(float(p.rows.x.min()), float(p.rows.x.max()))
+        asked = {"level": q.level, "errors": q.errors}
+        if by is None:
+            return lookup_table(lookup(self.estimate, places, profile=p.profile, **asked), focus=p.focus)  # type: ignore[arg-type]
+        parts = {}
+        for level in masks_by(p, by):
+            held = covariate_rows(p, {by: level})
+            parts[level] = lookup_table(lookup(self.estimate, places, profile=held, **asked), focus=p.focus)  # type: ignore[arg-type]
+        table: pd.DataFrame = pd.concat(parts, names=[by])
+        return table
+
+    def sentences(self, of: str = "mean") -> tuple[Sentence, ...]:
+        """What this fit says, the standing question first; each sentence knows its numbers."""
+        base, modifier = self._covariates()
+        nice = tuple((c, next((r for r in self.roundings(c) if r.advised), None)) for c in self.learned)
+        q = self.question
+        groups = groups_by(self.problem, q.by) if q.by else interaction_groups(self.problem)
+        return sentences(
+            self.estimate, self.names, q.span, of=_target(of), errors=q.errors, groups=groups, base=base,
+            modifier=modifier, learned=nice, turn=self.turning_point(),
+        )  # fmt: skip
+
+    def checks(self) -> pd.DataFrame:
+        """What can be checked about this fit: asked, size, unit, p (missing where there is no test), reading."""
+        found = checks(self.estimate, self.names, self.question.span, errors=self.question.errors)
+        return check_table(found, self.problem.index)
+
+    def code(self) -> str:
+        """A standalone script that fits this remedy again and asserts the numbers shown here."""
+        from batten.emit.script import script
+
+        return script(self.problem, self.question, self.estimate)
+
+    @property
+    def names(self) -> Names:
+        """Names, units and level for words."""
+        p, q = self.problem, self.question
+        return Names(
+            p.response, p.focus, p.unit(p.response), p.unit(p.focus), covariates=bool(p.covariates),
+            at=tuple(q.at.items()), level=q.level,
+        )  # fmt: skip
 
     def _labels(self) -> list[str]:
         """Plain names of the coefficients, then of the shape's searched constants."""
@@ -235,21 +330,6 @@ class Fit:
         for place in np.flatnonzero(given & ~taken):
             told[place] = _joined(told[place], f"{self.estimate.shape.key} cannot be taken at {x[place]:.6g}")
         return given & taken, told
-
-
-def effect_table(effects: dict[Any, Effect], *, name: str) -> pd.DataFrame:
-    """One row per effect: estimate, low, high, note."""
-    return pd.DataFrame(
-        [(e.estimate, e.low, e.high, e.note) for e in effects.values()],
-        columns=["estimate", "low", "high", "note"],
-        index=pd.Index(list(effects), name=name),
-    )
-
-
-def _sided(at: SlopeAt) -> Effect:
-    """The slope, with the side told where x is a break."""
-    side = f"{at.side} of the break" if at.side else ""
-    return Effect(at.slope.estimate, at.slope.low, at.slope.high, _joined(side, at.slope.note))
 
 
 def _target(of: str) -> str:

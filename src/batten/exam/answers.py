@@ -1,0 +1,72 @@
+"""Tables of one fit's answers: the place where effects meet pandas."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import pandas as pd
+
+from batten.effects.checks import Check
+from batten.effects.groups import GroupEffect
+from batten.effects.lookup import LookupRow
+from batten.effects.slopes import SlopeAt
+from batten.effects.value import Effect
+
+__all__ = ["check_table", "effect_table", "group_table", "lookup_table", "slope_table"]
+
+
+def effect_table(effects: Mapping[str, Effect], *, name: str) -> pd.DataFrame:
+    """One row per effect: estimate, low, high, note."""
+    return pd.DataFrame(
+        [(e.estimate, e.low, e.high, e.note) for e in effects.values()],
+        columns=["estimate", "low", "high", "note"],
+        index=pd.Index(list(effects), name=name),
+    )
+
+
+def slope_table(slopes: tuple[SlopeAt, ...], *, focus: str) -> pd.DataFrame:
+    """One row per place, indexed by x; the note tells the side where x is a break."""
+    rows = []
+    for at in slopes:
+        side = f"{at.side} of the break" if at.side else ""
+        note = "; ".join(part for part in (side, at.slope.note) if part)
+        rows.append((at.slope.estimate, at.slope.low, at.slope.high, note))
+    index = pd.Index([at.x for at in slopes], name=focus)
+    return pd.DataFrame(rows, columns=["estimate", "low", "high", "note"], index=index)
+
+
+def group_table(effects: tuple[GroupEffect, ...]) -> pd.DataFrame:
+    """One row per group: difference, ratio, against_first, ratio_against_first, each with _low and _high; note."""
+    rows = {}
+    for e in effects:
+        row: dict[str, Any] = {}
+        parts = {
+            "difference": e.span.difference, "ratio": e.span.ratio, "against_first": e.difference,
+            "ratio_against_first": e.ratio,
+        }  # fmt: skip
+        for name, effect in parts.items():
+            row[name], row[f"{name}_low"], row[f"{name}_high"] = effect.estimate, effect.low, effect.high
+        rows[e.label] = {**row, "note": e.span.note}
+    table = pd.DataFrame.from_dict(rows, orient="index")
+    table.index.name = "group"
+    return table
+
+
+def lookup_table(rows: tuple[LookupRow, ...], *, focus: str) -> pd.DataFrame:
+    """mean, median, low, high, note by x."""
+    return pd.DataFrame(
+        [(r.mean, r.median, r.low, r.high, r.note) for r in rows],
+        columns=["mean", "median", "low", "high", "note"],
+        index=pd.Index([r.x for r in rows], name=focus),
+    )
+
+
+def check_table(checks: tuple[Check, ...], labels: pd.Index) -> pd.DataFrame:
+    """asked, size, unit, p, reading by check; a row's position in a reading becomes the label the user gave it."""
+    rows = [
+        (c.asked, c.size, c.unit, c.p, c.reading if c.row is None else c.reading.replace("{row}", str(labels[c.row])))
+        for c in checks
+    ]
+    columns = ["asked", "size", "unit", "p", "reading"]
+    return pd.DataFrame(rows, columns=columns, index=pd.Index([c.name for c in checks], name="check"))
