@@ -14,6 +14,7 @@ import numpy as np
 from batten.effects.contrast import same_group
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
+from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.means import Averaged, averaged_means, interval, jackknifed, patterns
 from batten.fit.moved import moved_row_interval
@@ -49,7 +50,8 @@ class Ground:
 class Curve:
     """value, low, high (G,) at x (G,), units of y; NaN where the fit has none there.
 
-    how: how the band was made, "" without one. averaged: covariate rows averaged over where not all, else 0.
+    how: how the band was made, or why there is none, "" where none was asked for. averaged: covariate rows averaged
+    over where that is not all, else 0.
     """
 
     x: Array
@@ -100,6 +102,7 @@ def curve_of(
     if not band and of == "mean" and est.link is None and est.scale.closed == "identity" and profile is None:
         # the mean of y itself is linear in the covariates: their average row gives the average curve
         covariates, sampled = (est.rows.base.mean(axis=0)[None], est.rows.modifier.mean(axis=0)[None]), 0
+    trouble = no_mean_interval(est) if band and of == "mean" else ""
     jackknife = est.n <= JACKKNIFE_ROWS
     nothing = np.full(len(xs), np.nan)
     out = Curve(xs, nothing.copy(), nothing.copy(), nothing.copy(), "", sampled)
@@ -107,10 +110,10 @@ def curve_of(
     for some in _blocks(est, asked, covariates):
         averaged = _averaged(est, xs[some], of, errors, covariates, jackknife)
         out.value[some] = averaged.value
-        if band:
+        if band and not trouble:
             ends = interval(averaged, level, positive=positive_by_nature(est, averaged))
             out.low[some], out.high[some] = ends
-    return replace(out, how=_how(est, of, errors, jackknife)) if band else out
+    return replace(out, how=trouble or _how(est, of, errors, jackknife)) if band else out
 
 
 def row_band(
@@ -135,7 +138,11 @@ def span_ends(
     xs, none = np.asarray(span, dtype=float), undefined("")
     if same_group(est, *span) or not _reachable(est, xs, covariates).all():
         return SpanEnds(*span, none, none, none)
+    trouble = no_mean_interval(est)
     both = _averaged(est, xs, "mean", errors, covariates, est.n <= JACKKNIFE_ROWS)
+    if trouble:
+        a, b = (Effect(float(v), np.nan, np.nan, trouble) for v in both.value)
+        return SpanEnds(*span, a, b, Effect(b.estimate - a.estimate, np.nan, np.nan, trouble))
     limits = interval(both, level, positive=positive_by_nature(est, both))
     gap = both.combine(np.array([[-1.0], [1.0]]))
     difference = effect_of(gap.value, interval(gap, level))

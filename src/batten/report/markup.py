@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 import html
-from collections.abc import Iterable, Sequence
 
-__all__ = ["details", "esc", "paragraph", "table"]
+__all__ = ["details", "esc", "paragraph", "part"]
 
 
 def esc(text: object) -> str:
@@ -23,23 +22,6 @@ def details(summary: str, inside: str) -> str:
     return f"<details><summary>{esc(summary)}</summary>\n{inside}\n</details>"
 
 
-def table(
-    head: Sequence[str], rows: Iterable[Sequence[str]], *, numbers: Sequence[bool], marks: Iterable[str] = ()
-) -> str:
-    """A table of HTML cells; the first cell of a row heads it.
-
-    numbers: which columns hold numbers. marks: class name (without the prefix) of each row, "" for none.
-    """
-    kinds = [' class="batten-number"' if number else "" for number in numbers]
-    top = "".join(f'<th scope="col"{kind}>{esc(word)}</th>' for word, kind in zip(head, kinds, strict=True))
-    rows = list(rows)
-    body = []
-    for row, mark in zip(rows, [*marks] or [""] * len(rows), strict=True):
-        first = f'<th scope="row"{kinds[0]}>{row[0]}</th>'
-        rest = "".join(f"<td{kind}>{cell}</td>" for cell, kind in zip(row[1:], kinds[1:], strict=True))
-        body.append(f'<tr class="batten-{mark}">{first}{rest}</tr>' if mark else f"<tr>{first}{rest}</tr>")
-    lines = "\n".join(body)
-    return (
-        f'<div class="batten-scroll"><table class="batten-table">\n<thead><tr>{top}</tr></thead>\n'
-        f"<tbody>\n{lines}\n</tbody></table></div>"
-    )
+def part(title: str, inside: str) -> str:
+    """A titled part of a page; `inside` is HTML."""
+    return f"<section>\n<h2>{esc(title)}</h2>\n{inside}\n</section>"

@@ -10,13 +10,13 @@ __all__ = ["behind", "difference", "error", "percent", "span_words"]
 
 
 def error(value: float, lowest: float, unit: str = "") -> str:
-    """A held-out error, to a hundredth of the lowest one; errors far above it keep three digits."""
+    """A held-out error, to a hundredth of the lowest one; errors far above it keep three or four digits."""
     return show(value, unit, width=_width(value, lowest))
 
 
 def behind(gap: float, lowest: float, unit: str = "") -> str:
-    """A gap to the lowest held-out error, with its digits."""
-    return show(gap, unit, width=_width(gap, lowest))
+    """The gap of a held-out error to the lowest one, with the digits of that error."""
+    return show(gap, unit, width=_width(lowest + gap, lowest))
 
 
 def _width(value: float, lowest: float) -> float | None:

@@ -51,7 +51,7 @@ def line_against_choice(exam: Examination) -> Picture:
     parts.draw_curve(ax, choice, at, color=style.CHOICE)
     _draw_span(ax, span, choice, problem)
     parts.ends_of_curves(ax, ends)
-    notes = [parts.drawn_of(len(problem.rows.x)), f"Band: {asked.level:.0%} for the mean."]
+    notes = [parts.drawn_of(len(problem.rows.x)), _band_words("Band", choice, asked)]
     notes += [_averaged(problem, choice), GROUND]
     parts.caption(figure, notes, left=0.14)
     return settle(figure, [*_seen(problem), *_told(fit, span, second, is_line), *notes])
@@ -80,7 +80,8 @@ def fit_figure(fit: Fit, straight: Fit | None = None) -> Picture:
     parts.ends_of_curves(ax, ends)
     notes = [
         parts.drawn_of(len(problem.rows.x)),
-        f"Blue band: {asked.level:.0%} for the mean. Grey band: where {asked.level:.0%} of new rows are expected.",
+        _band_words("Blue band", mean, asked),
+        f"Grey band: where {asked.level:.0%} of new rows are expected.",
         "" if apart else "Mean and median are too close to draw apart.",
         _averaged(problem, mean), GROUND,
     ]  # fmt: skip
@@ -133,6 +134,12 @@ def _prepared(problem: Problem, curves: list[Curve], room: list[Curve] | None = 
     parts.scatter(ax, rows.x[some], rows.y[some])
     parts.rug(ax, rows.x[some])
     return figure, ax, at
+
+
+def _band_words(name: str, curve: Curve, asked: _Asked) -> str:
+    if np.isfinite(curve.low).any():
+        return f"{name}: {asked.level:.0%} for the mean."
+    return f"No band: {curve.how}." if curve.how else "No band."
 
 
 def _name(fit: Fit) -> str:

@@ -1,7 +1,7 @@
 """The look of everything shown: colours, lines, type and style sheet in one place.
 
-Two hues carry meaning: the straight line is amber and dashed, the choice is blue and solid. They differ in lightness
-and in dash as well, so that the difference survives colour blindness and grey print. All else is ink on white.
+Two hues carry meaning: the straight line is amber and dashed, the choice is blue and solid. Amber against blue is a
+difference that the common kinds of colour blindness keep, and the dash keeps it in grey print. All else is ink.
 Figures stay opaque white in dark notebooks; text, tables and frames follow the notebook's theme.
 """
 
@@ -15,16 +15,16 @@ __all__ = [
 PAPER = "#ffffff"
 #: words and marks that matter; 14:1 on white
 INK = "#1f2d38"
-#: words that stand back; 5.4:1 on white
+#: words that stand back; 5.6:1 on white
 QUIET = "#5a6a76"
 #: axes and frames
 RULE = "#b3bdc4"
 #: grid lines
 FAINT = "#e7ebee"
 DATA = "#7d8b96"
-#: the straight line; 5.0:1 on white
+#: the straight line; 5.4:1 on white
 LINE = "#a8520a"
-#: the choice (or the remedy a figure is about); 7.2:1 on white
+#: the choice (or the remedy a figure is about); 7.8:1 on white
 CHOICE = "#0b5688"
 BAND = "#a9cbe3"
 #: ground outside the central 90% of the predictor, and beyond its last rows
@@ -56,24 +56,27 @@ body[data-jp-theme-light="false"] .batten-report { --batten-choice: #7cbce6; --b
 .batten-report .batten-figure { margin: .7em 0; }
 .batten-report .batten-figure img { background: #fff; max-width: 100%; height: auto; border-radius: 2px; }
 .batten-report .batten-scroll { overflow-x: auto; }
-.batten-report table.batten-table { border-collapse: collapse; margin: .5em 0; font-size: .93em; border: 0; }
+.batten-report table.batten-table { border-collapse: collapse; margin: .5em 0; font-size: .93em; border: 0;
+  color: var(--batten-ink); }
 .batten-report .batten-table th, .batten-report .batten-table td {
   padding: .28em .75em; border: 0; border-bottom: 1px solid var(--batten-faint); background: transparent;
-  text-align: left; vertical-align: top; white-space: normal; max-width: 26em; overflow-wrap: anywhere;
+  color: inherit; text-align: left; vertical-align: top; white-space: normal; max-width: 24em;
+  overflow-wrap: break-word;
 }
 .batten-report .batten-table thead th {
   color: var(--batten-quiet); font-weight: 600; border-bottom: 1px solid var(--batten-rule); vertical-align: bottom;
 }
-.batten-report .batten-table .batten-number {
-  text-align: right; white-space: nowrap; font-variant-numeric: tabular-nums; overflow-wrap: normal;
-}
+.batten-report .batten-table .batten-number { text-align: right; font-variant-numeric: tabular-nums; }
+.batten-report .batten-table td.batten-number { white-space: nowrap; }
 .batten-report .batten-table tbody tr, .batten-report .batten-table tbody tr:nth-child(odd) { background: transparent; }
 .batten-report .batten-table tr.batten-choice th { box-shadow: inset 4px 0 var(--batten-choice); }
 .batten-report .batten-table tr.batten-line th { box-shadow: inset 4px 0 var(--batten-line); }
 .batten-report .batten-table tbody th { font-weight: 400; }
 .batten-report .batten-table tr.batten-choice th { font-weight: 600; }
-.batten-report .batten-key { font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); font-size: .9em;
-  color: var(--batten-quiet); white-space: nowrap; }
+.batten-report .batten-table td.batten-key {
+  font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); font-size: .88em; white-space: nowrap;
+  color: var(--batten-quiet);
+}
 .batten-report details { margin: .6em 0; }
 .batten-report summary { cursor: pointer; color: var(--batten-choice); }
 .batten-report pre.batten-code {

@@ -1,0 +1,183 @@
+"""The examination as HTML: a page that needs no other file, and the fragment that a notebook keeps.
+
+Every text passes through `esc`, figures are data inside <img>, and without the style sheet (which some viewers strip)
+headings, tables and lists still read in order.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pandas as pd
+
+from batten.compare.grid import STRAIGHT
+from batten.effects.numbers import place, show
+from batten.errors import BattenError
+from batten.report.cautions import CARE, SUBTITLE, cautions, choosing_note, left_out_words
+from batten.report.figures import Picture, fit_figure, img_html, ladder_figure, left_figure, line_against_choice
+from batten.report.figures import spans_figure as spans_of
+from batten.report.grid import Column, Grid, as_html
+from batten.report.how import how_computed
+from batten.report.lettering import plain
+from batten.report.markup import details, esc, paragraph, part
+from batten.report.style import CSS
+from batten.report.tables import full_table, refused_table, shortlist_table
+from batten.report.words import choice_words, headline, otherwise, refused_words, span_words, trial_words
+from batten.report.write_up import write_up
+
+if TYPE_CHECKING:
+    from batten.exam.examination import Examination
+
+__all__ = ["page", "save_page", "static_html"]
+
+
+def page(exam: Examination) -> str:
+    """A whole HTML document."""
+    problem, fit = exam.problem, exam.chosen
+    title = f"{plain(problem.response)} on {plain(problem.focus)}"
+    body = "\n".join([
+        *_first_screen(exam),
+        part(f"The choice: {plain(fit.words)}", _choice(exam)),
+        part("What is left", _figure(left_figure(fit, exam[STRAIGHT])) + _checks(exam)),
+        part("All that were tried", _tried(exam, figures=True)),
+        part("How this was computed", _list(how_computed(exam))),
+        part("Methods and results, as text", _paragraphs(write_up(exam, exam.choice.key))),
+        part("The chosen remedy as a script", _script(exam)),
+        paragraph(CARE, "quiet"),
+    ])  # fmt: skip
+    return (
+        '<!DOCTYPE html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
+        '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
+        f"<title>{esc(title)}</title>\n<style>{_PAGE_CSS}{CSS}</style>\n</head>\n"
+        f'<body>\n<main class="batten-report">\n{body}\n</main>\n</body>\n</html>\n'
+    )
+
+
+def static_html(exam: Examination) -> str:
+    """What a notebook keeps for readers without a kernel: the first screen, and the rest behind clicks."""
+    body = "\n".join([
+        *_first_screen(exam),
+        details(f"All {len(exam)} tried", _tried(exam, figures=False)),
+        details("How this was computed", _list(how_computed(exam)) + paragraph(CARE, "quiet")),
+        details(f"The chosen remedy as a script: {exam.choice.key}", _script(exam)),
+    ])  # fmt: skip
+    return f'<div class="batten-report">\n<style>{CSS}</style>\n{body}\n</div>'
+
+
+def save_page(exam: Examination, path: str | Path) -> None:
+    """Write the page to a file, in UTF-8."""
+    Path(path).write_text(page(exam), encoding="utf-8")
+
+
+#: only for the page by itself; a notebook brings its own ground
+_PAGE_CSS = """
+body { background: #fff; margin: 2.5em auto; max-width: 62em; padding: 0 1.5em; }
+"""
+
+
+def _first_screen(exam: Examination) -> list[str]:
+    """Verdict, figure, rows, span, reasons, cautions."""
+    rows = f"{exam.problem.rows.n:,} rows. {left_out_words(exam.problem)}".strip()
+    span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
+    return [
+        f'<h1 class="batten-headline">{esc(headline(exam))}</h1>',
+        paragraph(f"{trial_words(exam)} {rows}"),
+        _figure(line_against_choice(exam)),
+        f'<div class="batten-span">\n{span}\n</div>',
+        shortlist_table(exam),
+        *(f'<div class="batten-caution">{paragraph(words)}</div>' for words in cautions(exam)),
+        f"<h2>Why {esc(choice_words(exam))}</h2>",
+        _list([*exam.choice.reasons, otherwise(exam), *exam.problem.announcements]),
+    ]
+
+
+def _choice(exam: Examination) -> str:
+    """The chosen fit: its figure, what it says, its constants, and values to look up."""
+    fit = exam.chosen
+    said = [plain(sentence) for sentence in fit.sentences()]
+    level = f"{exam.question.level:.0%}"
+    return "\n".join([
+        _figure(fit_figure(fit)),
+        _list(said),
+        details("Values to look up", _lookup(exam) + paragraph(
+            f"Low and high: where {level} of new rows are expected, with covariates as in the rows.", "quiet")),
+        details("Coefficients, on the fitting scale", _numbers(fit.coefficients, "term")),
+    ])  # fmt: skip
+
+
+def _tried(exam: Examination, *, figures: bool) -> str:
+    """The whole table, the two overviews, and what cannot be used."""
+    parts = []
+    if figures:
+        parts += [_figure(spans_of(exam)), _figure(ladder_figure(exam))]
+        parts.append(details(f"Table of all {len(exam)}", full_table(exam)))
+    else:
+        parts.append(full_table(exam))
+    refused = refused_words(exam)
+    if refused:
+        parts += [paragraph(f"{refused[:-1]}; what to use instead:"), refused_table(exam)]
+    return "\n".join(parts)
+
+
+def _checks(exam: Examination) -> str:
+    table = exam.chosen.checks()
+    rows = tuple(
+        (plain(name), plain(asked), plain(reading))
+        for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
+    )
+    return as_html(Grid((Column("check"), Column("asked"), Column("found")), rows, ("",) * len(rows)))
+
+
+def _lookup(exam: Examination) -> str:
+    problem = exam.problem
+    unit = problem.unit(problem.response)
+    table = exam.chosen.lookup()
+    names = ["mean", "median", "low", "high"]
+    columns = [Column(_titled(plain(problem.focus), problem.unit(problem.focus)), "number")]
+    columns += [Column(_titled(name, unit), "number") for name in names]
+    values = table[names].to_numpy(float)
+    middle = float(np.nanmedian(np.abs(values))) if np.isfinite(values).any() else 0.0
+    rows = tuple(
+        # a tenth of the middle value sets the digits of all
+        (place(float(x)), *(show(float(v), width=middle / 10) for v in row))
+        for x, row in zip(table.index, values, strict=True)
+    )
+    return as_html(Grid(tuple(columns), rows, ("",) * len(rows)))
+
+
+def _numbers(table: pd.DataFrame, first: str) -> str:
+    """A table of numbers with words in front; digits by each row's standard error."""
+    columns = (Column(first), *(Column(str(name).replace("_", " "), "number") for name in table.columns))
+    rows = []
+    for name, row in zip(table.index, table.to_numpy(float), strict=True):
+        width = float(row[3] - row[2]) if len(row) > 3 else None
+        rows.append((plain(name), *(show(float(v), width=None if width is None else width / 10) for v in row)))
+    return as_html(Grid(columns, tuple(rows), ("",) * len(rows)))
+
+
+def _titled(name: str, unit: str) -> str:
+    return f"{name}, {unit}" if unit else name
+
+
+def _script(exam: Examination) -> str:
+    try:
+        source = exam.code()
+    except BattenError as error:
+        return paragraph(f"No script: {error.one_line()}")
+    return f'<pre class="batten-code">{esc(source)}</pre>'
+
+
+def _figure(figure: Picture) -> str:
+    return f'<figure class="batten-figure">{img_html(figure)}</figure>'
+
+
+def _list(items: Iterable[str]) -> str:
+    lines = "\n".join(f"<li>{esc(plain(item))}</li>" for item in items if item)
+    return f"<ul>\n{lines}\n</ul>"
+
+
+def _paragraphs(text: str) -> str:
+    return "\n".join(paragraph(block) for block in text.split("\n\n"))
