@@ -7,7 +7,8 @@ from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import pytest
-from front_end import CHROMIUM, FRONTS, FrontEnd, Server, launch, new_context, running_server
+from front_end import CHROMIUM, FRONTS, FrontEnd, launch, new_context
+from jupyter_server_process import Server, running_server
 from playwright.sync_api import BrowserContext, sync_playwright
 
 

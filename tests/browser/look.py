@@ -11,7 +11,8 @@ import argparse
 import tempfile
 from pathlib import Path
 
-from front_end import FRONTS, FrontEnd, launch, new_context, running_server
+from front_end import FRONTS, FrontEnd, launch, new_context
+from jupyter_server_process import running_server
 from playwright.sync_api import sync_playwright
 
 
