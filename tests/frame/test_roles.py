@@ -202,6 +202,25 @@ def test_what_an_expression_says_when_it_fails_is_passed_on() -> None:
     assert "batten_" not in str(caught.value)
 
 
+@pytest.mark.parametrize(
+    "text",
+    ["age / age.max()", "age / np.max(age)", "age - age.iloc[0]", "age - age.iloc[-1]", "np.cumsum(age)", "age.rank()",
+     "age.diff().fillna(0)", "age - age.groupby(alloy).transform('mean')", "C(pd.cut(age, 3))", "C(pd.qcut(age, 4))"],
+)  # fmt: skip
+def test_what_hangs_on_other_rows_is_refused_however_it_hangs(text: str) -> None:
+    with pytest.raises(BattenError) as caught:
+        read(f"minutes ~ mass_kg + {text if text.startswith('C(') else f'I({text})'}", DATA, env={"pd": pd})
+    assert caught.value.wrong.endswith("gives a row another value when other rows are taken away.")
+
+
+def test_what_an_expression_gives_back_wrongly_is_told_in_the_users_names() -> None:
+    for text in ("pd.get_dummies(alloy)", "np.ones((50, 2, 2)) * np.asarray(age)[:, None, None]"):
+        with pytest.raises(BattenError) as caught:
+            read(f"minutes ~ mass_kg + I({text})", DATA, env={"pd": pd})
+        assert caught.value.wrong == f"`I({text})` cannot be worked out on these rows."
+        assert "batten_" not in str(caught.value)
+
+
 def test_yes_and_no_can_be_response_or_focal_predictor_when_asked() -> None:
     problem = read("flag ~ mass_kg", DATA)
     np.testing.assert_array_equal(problem.rows.y, DATA["flag"].astype(float))

@@ -108,7 +108,10 @@ def _coded(plan: Plan, data: Mapping[str, Any]) -> tuple[dict[str, Recipe], list
     try:
         return learn(plan.terms, {**data, FOCUS: np.ones(len(data[FOCUS]))}, plan.names)
     except LearningError as error:
-        raise errors.not_worked_out(plan.factors[error.code].text, error.message) from None
+        said = error.message
+        for name in reversed(list(plan.slots)):  # batten_12 before batten_1
+            said = said.replace(name, plan.slots[name].column)
+        raise errors.not_worked_out(plan.factors[error.code].text, said) from None
 
 
 def _factor(plan: Plan, code: str, slots: Mapping[str, Slot]) -> Factor:

@@ -137,4 +137,4 @@ def _unusable(recipe: Recipe, data: Mapping[str, Any], count: int) -> Bools:
     if values.ndim == 0 or len(values) != count:
         return np.zeros(count, dtype=bool)
     lost = np.asarray(~np.isfinite(values) if values.dtype.kind in "iuf" else pd.isna(values))
-    return lost if lost.ndim == 1 else np.asarray(lost.any(axis=1))
+    return np.asarray(lost.any(axis=tuple(range(1, lost.ndim))))
