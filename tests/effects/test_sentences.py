@@ -271,8 +271,8 @@ def test_the_step_of_x_is_one_unit_or_a_power_of_ten_of_the_span(a, b, step):
     [
         (12.4321, "min", 4.6, "12.4 min"), (0.014567, "", 0.0021, "0.0146"), (123456.0, "EUR", 5200.0, "123,500 EUR"),
         (-3.14159, "kg", 0.02, "-3.142 kg"), (15.48, "%", 9.6, "15.5%"), (0.0004, "", 1.0, "0.00"),
-        (10.8, "%", 115.0, "11%"), (1234.5, "", None, "1,234"), (2.5e-9, "", None, "2.5e-09"), (24.0, "kg", None, "24.0 kg"),
-        (0.0, "", None, "0"), (float("nan"), "kg", None, "not defined"),
+        (10.8, "%", 115.0, "11%"), (1234.5, "", None, "1,234"), (2.5e-9, "", None, "2.5e-09"),
+        (24.0, "kg", None, "24.0 kg"), (0.0, "", None, "0"), (float("nan"), "kg", None, "not defined"),
     ],
 )  # fmt: skip
 def test_numbers_keep_the_digits_their_interval_supports(value, unit, width, text):

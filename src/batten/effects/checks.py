@@ -19,7 +19,8 @@ from batten.diagnose.searched_places import candidate_places, davies, hinge_colu
 from batten.diagnose.tests_of_shape import AddOn, add_on, add_on_robust, pure_error
 from batten.diagnose.tests_of_spread import fitted_spread, koenker
 from batten.effects.contrast import reach_trouble, same_group
-from batten.effects.numbers import about, show
+from batten.effects.numbers import about, place, show
+from batten.effects.support import support
 from batten.effects.tell import Names
 from batten.engine.rows import Array
 from batten.families.shapes.hinge import Hinge
@@ -79,6 +80,7 @@ def checks(
         _searched(est, names),
         _spread(est, work, names),
         _neighbours(work),
+        _supported(est, names, span),
         *_rows(est, names, span),
         _correction(est),
     ]
@@ -220,6 +222,18 @@ def _neighbours(work: _Working) -> Check | None:
     reading = f"errors of neighbours correlate by {show(found.correlation)}, {_chance(found.p)}"
     asked = "do rows stored beside each other err alike (Durbin-Watson)?"
     return Check("neighbouring rows", asked, found.correlation, "correlation", found.p, reading)
+
+
+def _supported(est: Estimate, names: Names, span: tuple[float, float]) -> Check | None:
+    if not names.covariates:
+        return None
+    found = support(est.rows, span)
+    ends = [f"{show(100 * share, '%')} at {place(end, names.x_unit)}"
+            for share, end in zip((found.missing_a, found.missing_b), span, strict=True)]  # fmt: skip
+    near = show(found.distance, names.x_unit)
+    reading = f"no rows of the same kind within {near}: {' and '.join(ends)}"
+    asked = "are there rows with these covariates at both ends of the span?"
+    return Check("support", asked, 100 * found.missing, "%", math.nan, reading)
 
 
 def _rows(est: Estimate, names: Names, span: tuple[float, float]) -> list[Check]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from typing import Literal
 
 import numpy as np
 
@@ -12,6 +13,8 @@ __all__ = ["round_span"]
 
 #: a rounded end may miss its quartile by half of this share of the distance between the quartiles
 STEP_SHARE = 0.1
+#: with up to this many different values the ends are among them
+FEW = 6
 
 
 def round_span(x: Array) -> tuple[float, float]:
@@ -20,8 +23,10 @@ def round_span(x: Array) -> tuple[float, float]:
     Where the quartiles are equal, the 10th and 90th percentile; where these are equal too, the lowest and the highest
     value. Rounded ends stay inside the data.
     """
+    # between a few values that x takes there is nothing to speak of
+    method: Literal["nearest", "linear"] = "nearest" if len(np.unique(x)) <= FEW else "linear"
     for tail in (0.25, 0.10, 0.0):
-        low, high = (float(v) for v in np.quantile(x, [tail, 1 - tail]))
+        low, high = (float(v) for v in np.quantile(x, [tail, 1 - tail], method=method))
         if high > low:
             break
     else:

@@ -18,9 +18,11 @@ from batten.effects.contrast import SpanEffect, span_effect
 from batten.effects.groups import GroupEffect, group_effects
 from batten.effects.inverse import Inverse, x_for
 from batten.effects.lookup import lookup, round_places
+from batten.effects.numbers import place, show
 from batten.effects.rounding import Rounding, roundings
 from batten.effects.sentences import sentences
 from batten.effects.slopes import average, slopes_along
+from batten.effects.support import support
 from batten.effects.tell import Names, Sentence
 from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
@@ -154,8 +156,8 @@ class Fit:
             carried = no_mean_interval(self.estimate) if of == "mean" and interval == "estimate" else ""
             if carried:
                 out[:, 1:] = np.nan
-            for place, note in zip(np.flatnonzero(whole), done.note, strict=True):
-                notes[place] = _joined(_joined(notes[place], note), carried)
+            for row, note in zip(np.flatnonzero(whole), done.note, strict=True):
+                notes[row] = _joined(_joined(notes[row], note), carried)
         return pd.DataFrame(
             {"estimate": out[:, 0], "low": out[:, 1], "high": out[:, 2], "note": notes}, index=new.index
         )
@@ -180,10 +182,16 @@ class Fit:
         return table.assign(rows=len(whole), note=note)
 
     def contrast(self, a: float | None = None, b: float | None = None, of: str = "mean") -> pd.DataFrame:
-        """Rows at b against rows at a, covariates alike: difference, ratio, span_slope by estimate, low, high, note."""
+        """Rows at b against rows at a, covariates alike: difference, ratio, span_slope by estimate, low, high, note.
+
+        The note also tells where many rows have none like them near an end of the span.
+        """
         found = self.span_effect(a, b, of=of)
         names = ("difference", "ratio", "span_slope")
-        return effect_table({name: getattr(found, name) for name in names}, name="effect")
+        table = effect_table({name: getattr(found, name) for name in names}, name="effect")
+        sparse = self._sparse((found.a, found.b))
+        table["note"] = [_joined(note, sparse) for note in table["note"]]
+        return table
 
     def span_effect(self, a: float | None = None, b: float | None = None, of: str = "mean") -> SpanEffect:
         """The same as numbers; a and b default to the question's span."""
@@ -208,7 +216,8 @@ class Fit:
         asked = {"of": of, "level": self.question.level, "errors": self.question.errors}
         if at is None:
             return effect_table({"average": average(self.estimate, **asked)}, name=self.problem.focus)  # type: ignore[arg-type]
-        xs = [_number("at", x, self.problem.focus) for x in (at if np.iterable(at) else [at])]
+        several = at if np.iterable(at) and not isinstance(at, str) else [at]
+        xs = [_number("at", x, self.problem.focus) for x in several]
         base, modifier = self._covariates()
         found = slopes_along(self.estimate, xs, base=base, modifier=modifier, **asked)  # type: ignore[arg-type]
         return slope_table(found, focus=self.problem.focus)
@@ -296,6 +305,17 @@ class Fit:
             at=tuple(q.at.items()), level=q.level,
         )  # fmt: skip
 
+    def _sparse(self, span: tuple[float, float]) -> str:
+        """Words where more than a twentieth of the rows have none like them near an end of the span."""
+        p = self.problem
+        if not p.covariates:
+            return ""
+        base, modifier = self._covariates()
+        found = support(p.rows, span, base=base, modifier=modifier)
+        ends = zip((found.missing_a, found.missing_b), span, strict=True)
+        parts = [f"{show(100 * share, '%')} at {place(end, p.unit(p.focus))}" for share, end in ends if share > 0.05]
+        return f"no rows like these near: {' and '.join(parts)}" if parts else ""
+
     def _labels(self) -> list[str]:
         """Plain names of the coefficients, then of the shape's searched constants."""
         est, base = self.estimate, list(self.problem.base_names)
@@ -327,8 +347,8 @@ class Fit:
         given = np.isfinite(x) & np.isfinite(base).all(axis=1) & np.isfinite(modifier).all(axis=1)
         with np.errstate(all="ignore"):
             taken = np.isfinite(self.estimate.shape.columns(x, self.estimate.state, self.estimate.theta)).all(axis=1)
-        for place in np.flatnonzero(given & ~taken):
-            told[place] = _joined(told[place], f"{self.estimate.shape.key} cannot be taken at {x[place]:.6g}")
+        for row in np.flatnonzero(given & ~taken):
+            told[row] = _joined(told[row], f"{self.estimate.shape.key} cannot be taken at {x[row]:.6g}")
         return given & taken, told
 
 
