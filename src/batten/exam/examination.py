@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import threading
 from collections.abc import Iterator, Mapping
+from dataclasses import replace
 from functools import cached_property
 from typing import Any, Literal
 
@@ -135,9 +136,13 @@ class Examination(Mapping[str, Fit]):
 
     def with_aim(self, aim: Literal["effect", "prediction"]) -> Examination:
         """The same fits and scores, chosen by the other aim."""
-        from dataclasses import replace
+        return self._asked(replace(self._question, aim=aim))
 
-        question = replace(self._question, aim=aim)
+    def with_span(self, a: float, b: float) -> Examination:
+        """The same fits, scores and choice, asked about the span from a to b."""
+        return self._asked(replace(self._question, span=_span(self._problem, (a, b))))
+
+    def _asked(self, question: Question) -> Examination:
         again = self._comparison.asked(question, unit=self._problem.unit(self._problem.response))
         return Examination(self._problem, question, again)
 

@@ -1,0 +1,41 @@
+"""The tab of one remedy."""
+
+from __future__ import annotations
+
+import ipywidgets as widgets
+
+from batten.compare.shortlist import shortlist
+from batten.exam.examination import Examination
+from batten.notebook.panels.desk import Desk, sheet
+from batten.notebook.panels.pages import Pages
+from batten.notebook.panels.remedy_panels import CodeOf, EffectOf, FitOf, HowOf, LeftOf
+from batten.notebook.panels.span import SpanFields
+from batten.notebook.panels.try_value import TryValue
+from batten.report.cautions import cautions
+from batten.report.lettering import plain
+from batten.report.markup import esc, paragraph
+
+__all__ = ["RemedyTab"]
+
+
+class RemedyTab:
+    """Its name and cautions, and the panels fit, what is left, effect, try a value, code."""
+
+    def __init__(self, desk: Desk, key: str, span: SpanFields) -> None:
+        self.key = key
+        self._heading = sheet()
+        self.tried = TryValue(desk, key)
+        panels = (FitOf(key), LeftOf(key), EffectOf(key, span), self.tried, CodeOf(key, cell_id=desk.cell_id), HowOf(key))
+        self.pages = Pages(desk, panels)
+        self.box = widgets.VBox([self._heading, self.pages.box])
+
+    def draw(self, exam: Examination) -> None:
+        self._heading.value = self._words(exam)
+        self.pages.draw(exam)
+
+    def _words(self, exam: Examination) -> str:
+        role = next((role for role, key in shortlist(exam.comparison) if key == self.key), "")
+        tail = f' <span class="batten-quiet">{esc(role)}</span>' if role else ""
+        name = plain(exam[self.key].words)
+        head = f'<h3>{esc(name)} <span class="batten-key">{esc(self.key)}</span>{tail}</h3>'
+        return head + "".join(paragraph(words, "caution") for words in cautions(exam, self.key))

@@ -1,0 +1,109 @@
+"""Small tables about one fit, as HTML: numbers straight from its public tables, in the digits of the sentences."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+import pandas as pd
+
+from batten.effects.contrast import SpanEffect
+from batten.effects.numbers import show, show_interval
+from batten.exam.fit import Fit
+from batten.report.grid import Column, Grid, as_html
+from batten.report.lettering import plain
+from batten.report.numerals import difference, span_words
+
+__all__ = ["checks_table", "coefficients_table", "constants_table", "effect_table", "predictions_table"]
+
+
+def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
+    """The span's effects side by side, of the mean and of the median."""
+    problem = fit.problem
+    y_unit, x_unit = problem.unit(problem.response), problem.unit(problem.focus)
+    first = effects[0]
+    ends = span_words(first.a, first.b, x_unit)
+    per = f"{y_unit or plain(problem.response)} per {x_unit or f'unit of {plain(problem.focus)}'}"
+    heads = [Column(f"{plain(problem.focus)} {ends}"), *(Column(f"{e.of} of {plain(problem.response)}") for e in effects)]
+    rows = [
+        (_with_unit("difference", y_unit), *(difference(*_ends(e.difference)) for e in effects)),
+        ("ratio", *(_ratio(e) for e in effects)),
+        (f"slope over the span, {per}", *(difference(*_ends(e.span_slope)) for e in effects)),
+    ]
+    return _html(heads, rows)
+
+
+def predictions_table(fit: Fit, mean: pd.DataFrame, median: pd.DataFrame, new: pd.DataFrame) -> str:
+    """One row's mean and median, and where a new row with the same values is expected."""
+    problem, level = fit.problem, f"{fit.question.level:.0%}"
+    unit = problem.unit(problem.response)
+    heads = [Column(_with_unit(plain(problem.response), unit)), Column("value"), Column(f"{level} interval")]
+    rows = [("mean", *_value_and_interval(mean)), ("median", *_value_and_interval(median))]
+    low, high = float(new["low"].iloc[0]), float(new["high"].iloc[0])
+    rows.append(("one new row like this", "", _interval(low, high)))
+    return _html(heads, rows)
+
+
+def checks_table(fit: Fit) -> str:
+    """What was checked, and what was found."""
+    table = fit.checks()
+    rows = [
+        (plain(name), plain(asked), plain(reading))
+        for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
+    ]
+    return _html([Column("check"), Column("asked"), Column("found")], rows)
+
+
+def coefficients_table(fit: Fit) -> str:
+    """Coefficients on the fitting scale."""
+    heads = [Column("coefficient, on the fitting scale")]
+    heads += [Column(name, "number") for name in ("estimate", "standard error", "low", "high")]
+    rows = []
+    for name, values in zip(fit.coefficients.index, fit.coefficients.to_numpy(float), strict=True):
+        # three digits of the standard error: these are for whoever carries them on
+        width = float(values[1]) if math.isfinite(values[1]) and values[1] > 0 else None
+        rows.append((plain(name), *(show(float(v), width=None if width is None else width / 10) for v in values)))
+    return _html(heads, rows)
+
+
+def constants_table(fit: Fit) -> str:
+    """What was learned besides coefficients; "" for nothing."""
+    table = fit.constants
+    if not len(table):
+        return ""
+    heads = [Column("constant"), Column("estimate", "number"), Column("low", "number"), Column("high", "number"),
+             Column("note")]  # fmt: skip
+    rows = []
+    for name, row in table.iterrows():
+        low, high = float(row["low"]), float(row["high"])
+        width = high - low if high > low else None
+        numbers = (show(float(v), width=width) if math.isfinite(v) else "" for v in (row["estimate"], low, high))
+        rows.append((plain(name), *numbers, plain(row["note"])))
+    return _html(heads, rows)
+
+
+def _html(heads: Sequence[Column], rows: Sequence[tuple[str, ...]]) -> str:
+    return as_html(Grid(tuple(heads), tuple(rows), ("",) * len(rows)))
+
+
+def _ends(effect: object) -> tuple[float, float, float]:
+    return effect.estimate, effect.low, effect.high  # type: ignore[attr-defined]
+
+
+def _ratio(effect: SpanEffect) -> str:
+    """A ratio takes no sign."""
+    return difference(*_ends(effect.ratio)).removeprefix("+")
+
+
+def _value_and_interval(row: pd.DataFrame) -> tuple[str, str]:
+    value, low, high = (float(row[name].iloc[0]) for name in ("estimate", "low", "high"))
+    width = high - low if math.isfinite(high - low) else None
+    return show(value, width=width), _interval(low, high)
+
+
+def _interval(low: float, high: float) -> str:
+    return show_interval(low, high) if math.isfinite(low) and math.isfinite(high) else "not defined"
+
+
+def _with_unit(name: str, unit: str) -> str:
+    return f"{name}, {plain(unit)}" if unit else name
