@@ -1,0 +1,115 @@
+"""Shows an examination: the widget and a static copy in a notebook, text in a terminal. Also an examination or a fit
+that is the last line of a cell."""
+
+from __future__ import annotations
+
+import shutil
+import textwrap
+from collections.abc import Callable
+from typing import Any
+from uuid import uuid4
+
+from batten.exam import Examination, Fit
+from batten.notebook.fit_view import fit_html, fit_text
+from batten.notebook.insertion import current_cell_id
+from batten.notebook.progress import Progress, publish
+from batten.report.grid import as_text
+from batten.report.page import static_html
+from batten.report.style import CSS
+from batten.report.tables import full_grid, full_table
+from batten.report.text import headline, text_summary
+
+__all__ = ["add_formatters", "in_kernel", "remove_formatters", "show", "show_table"]
+
+NEXT = "This examination also answers to %batten table, %batten code KEY and %batten report FILE."
+#: letters on a line, fewer where a terminal has fewer
+WIDTH = 100
+
+
+def in_kernel(shell: Any) -> bool:
+    """Whether a page shows what is printed, not a terminal."""
+    return getattr(shell, "kernel", None) is not None
+
+
+def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool) -> None:
+    """The result of %%batten; plain: as text.
+
+    In a notebook two outputs: the widget, with nothing where no widget can be shown, and a static copy, which a style
+    inside the living widget hides. A copy in the widget's own output would not be used by a notebook that is opened
+    again: there the widget's place says only that its model is gone.
+    """
+    width = _width(shell)
+    text = text_summary(exam, width=width).rstrip()
+    if plain or not in_kernel(shell):
+        # the focal predictor that was guessed, columns that were dropped, questions about the rows
+        said = [textwrap.fill(words, width) for words in exam.problem.announcements]
+        progress.end()
+        print("\n\n".join([text, *said, NEXT]))
+        return
+    token = f"batten-static-{uuid4().hex}"
+    static = {"text/html": f'<div class="{token}">{static_html(exam)}</div>', "text/plain": text}
+    view = _widget_view(exam, token)
+    if view is not None:
+        progress.place({**view, "text/plain": headline(exam), "text/html": ""})
+    progress.place(static)
+
+
+def _widget_view(exam: Examination, token: str) -> dict[str, Any] | None:
+    """The widget as an output; None where there is no ipywidgets."""
+    try:
+        from batten.notebook.widget import widget_for
+    except ModuleNotFoundError as error:
+        if (error.name or "").partition(".")[0] == "ipywidgets":
+            return None
+        raise
+    view: dict[str, Any] = widget_for(exam, cell_id=current_cell_id(), token=token)._repr_mimebundle_()
+    return view
+
+
+def show_table(exam: Examination, *, shell: Any) -> None:
+    """All remedies that were tried, with units."""
+    text = as_text(full_grid(exam), width=_width(shell))
+    if in_kernel(shell):
+        html = f'<div class="batten-report">\n<style>{CSS}</style>\n{full_table(exam)}\n</div>'
+        publish({"text/html": html, "text/plain": text})
+    else:
+        print(text)
+
+
+def add_formatters(shell: Any) -> None:
+    """Let the shell show examinations and fits as the static report does."""
+    html, text = _formatters(shell)
+    html.for_type(Examination, static_html)
+    html.for_type(Fit, fit_html)
+    text.for_type(Examination, _printer(lambda exam: text_summary(exam, width=_width(shell)), repr))
+    text.for_type(Fit, _printer(lambda fit: fit_text(fit, width=_width(shell)), _short))
+
+
+def remove_formatters(shell: Any) -> None:
+    for formatter in _formatters(shell):
+        for kind in (Examination, Fit):
+            formatter.pop(kind, None)
+
+
+def _formatters(shell: Any) -> tuple[Any, Any]:
+    by_type = shell.display_formatter.formatters
+    return by_type["text/html"], by_type["text/plain"]
+
+
+def _printer(tell: Callable[[Any], str], short: Callable[[Any], str]) -> Callable[[Any, Any, bool], None]:
+    """As IPython's pretty printer calls it; inside a list or a dict the short form does."""
+
+    def show_text(value: Any, printer: Any, cycle: bool) -> None:
+        nested = cycle or len(printer.stack) > 1
+        printer.text(short(value) if nested else tell(value).rstrip())
+
+    return show_text
+
+
+def _short(fit: Fit) -> str:
+    return f"<Fit {fit.key!r} on {fit.rows} rows>"
+
+
+def _width(shell: Any) -> int:
+    # what Python finds out about the terminal in a kernel is the width of the server's
+    return WIDTH if in_kernel(shell) else min(WIDTH, shutil.get_terminal_size((WIDTH, 24)).columns)
