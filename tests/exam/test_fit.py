@@ -124,11 +124,11 @@ def test_the_contrast_table_has_three_rows_and_follows_the_span():
 @pytest.mark.parametrize(
     ("ask", "message"),
     [
-        (lambda f: f.contrast(5, 5), "The two ends of the span are the same.\nBoth are kg = 5.\nGive two different"),
+        (lambda f: f.contrast(5, 5), "The span needs two different values, the lower one first.\nSeen: 5.0 and 5.0."),
         (lambda f: f.contrast("a", 5), "a (a value of kg) must be a number.\nIt is 'a'.\nGive one finite number."),
-        (lambda f: f.contrast(of="mode"), "`of` takes 'mean' or 'median'.\nIt is 'mode'.\nChoose one of 'mean', 'med"),
-        (lambda f: f.predict(FRAME, level=95), "A level lies between 0 and 1.\nIt is 95.\nGive 0.95 for 95% interv"),
-        (lambda f: f.predict(FRAME, interval="row"), "`interval` takes 'estimate' or 'new row'.\nIt is 'row'.\n"),
+        (lambda f: f.contrast(of="mode"), "of takes one of mean, median.\nSeen: 'mode'.\nChoose one of 'mean', 'med"),
+        (lambda f: f.predict(FRAME, level=95), "level must be between 0 and 1, such as 0.95.\nSeen: 95.\n"),
+        (lambda f: f.predict(FRAME, interval="row"), "interval takes one of estimate, new row.\nSeen: 'row'.\n"),
     ],
 )  # fmt: skip
 def test_a_question_that_cannot_be_answered_says_what_to_do(ask, message):

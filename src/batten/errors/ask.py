@@ -6,29 +6,11 @@ from collections.abc import Mapping, Sequence
 
 from batten.errors import InputError, UnknownNameError, closest
 
-__all__ = ["cannot_hold", "not_a_covariate", "not_a_level", "not_a_number", "one_of", "same_ends"]
-
-
-def one_of(what: str, given: object, options: Sequence[str]) -> InputError:
-    """An option that has only a few values was given another."""
-    listed = " or ".join(map(repr, options))
-    return InputError(f"`{what}` takes {listed}.", f"It is {given!r}.", closest(str(given), list(options)))
-
-
-def same_ends(a: float, focus: str) -> InputError:
-    return InputError(
-        "The two ends of the span are the same.",
-        f"Both are {focus} = {a:.6g}.",
-        "Give two different values.",
-    )
+__all__ = ["cannot_hold", "not_a_covariate", "not_a_number"]
 
 
 def not_a_number(what: str, given: object) -> InputError:
     return InputError(f"{what} must be a number.", f"It is {given!r}.", "Give one finite number.")
-
-
-def not_a_level(given: object) -> InputError:
-    return InputError("A level lies between 0 and 1.", f"It is {given!r}.", "Give 0.95 for 95% intervals.")
 
 
 def not_a_covariate(column: str, covariates: Sequence[str]) -> UnknownNameError:

@@ -27,6 +27,7 @@ from batten.effects.tell import Names, Sentence
 from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
 from batten.errors import ask
+from batten.errors import exam as errors
 from batten.exam.answers import check_table, effect_table, group_table, lookup_table, slope_table
 from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by
 from batten.families import Remedy
@@ -143,7 +144,7 @@ class Fit:
         """
         of, level = _target(of), self._level(level)
         if interval not in (None, "estimate", "new row"):
-            raise ask.one_of("interval", interval, ("estimate", "new row"))
+            raise errors.one_of("interval", interval, ("estimate", "new row"))
         new = self.problem.new_rows(frame)
         whole, notes = self._complete(new.x, new.base, new.modifier, new.notes)
         out = np.full((len(new.x), 3), np.nan)
@@ -195,15 +196,14 @@ class Fit:
 
     def span_effect(self, a: float | None = None, b: float | None = None, of: str = "mean") -> SpanEffect:
         """The same as numbers; a and b default to the question's span."""
-        ends = tuple(
-            _number(name, default if given is None else given, self.problem.focus)
-            for name, given, default in zip(("a", "b"), (a, b), self.question.span, strict=True)
-        )
-        if ends[0] == ends[1]:
-            raise ask.same_ends(ends[0], self.problem.focus)
+        given = self.question.span[0] if a is None else a, self.question.span[1] if b is None else b
+        low, high = (_number(name, end, self.problem.focus) for name, end in zip("ab", given, strict=True))
+        if not low < high:
+            x = self.problem.rows.x
+            raise errors.same_ends(low, high, self.problem.focus, float(x.min()), float(x.max()))
         base, modifier = self._covariates()
         return span_effect(
-            self.estimate, (ends[0], ends[1]), of=_target(of), level=self.question.level,
+            self.estimate, (low, high), of=_target(of), level=self.question.level,
             errors=self.question.errors, base=base, modifier=modifier,
         )  # fmt: skip
 
@@ -336,7 +336,7 @@ class Fit:
         if level is None:
             return self.question.level
         if not (isinstance(level, int | float) and 0 < level < 1):
-            raise ask.not_a_level(level)
+            raise errors.bad_number("level", level, "between 0 and 1, such as 0.95")
         return float(level)
 
     def _complete(
@@ -354,7 +354,7 @@ class Fit:
 
 def _target(of: str) -> str:
     if of not in ("mean", "median"):
-        raise ask.one_of("of", of, ("mean", "median"))
+        raise errors.one_of("of", of, ("mean", "median"))
     return of
 
 
