@@ -43,15 +43,15 @@ def castings() -> pd.DataFrame:
     draw = Draw(seed=1103)
     heat = np.repeat(np.arange(60), 4)
     alloy = draw.choice(["bronze", "grey iron", "steel"], [0.3, 0.4, 0.3], 60)[heat]
-    mass = np.round(np.exp(2.85 + 0.62 * draw.normal(240)), 1)
-    typical = np.exp(0.9 + 0.68 * np.log(mass)) * np.select([alloy == "grey iron", alloy == "steel"], [1.2, 1.55], 1.0)
+    mass = np.round(np.exp(draw.uniform(np.log(2), np.log(80), 240)), 1)
+    typical = np.exp(1.2 + 0.5 * np.log(mass)) * np.select([alloy == "grey iron", alloy == "steel"], [1.2, 1.55], 1.0)
     frame = pd.DataFrame(
         {
             "heat": [f"H{h + 1:02d}" for h in heat],
             "poured on": (pd.Timestamp("2024-02-05") + pd.to_timedelta(heat // 2, unit="D")).strftime("%Y-%m-%d"),
             "alloy": alloy,
             "mass_kg": mass,
-            "minutes": np.round(typical * np.exp(0.24 * draw.normal(240)), 1),
+            "minutes": np.round(typical * np.exp(0.18 * draw.normal(240)), 1),
         }
     )
     lost = draw.places(5, 240)

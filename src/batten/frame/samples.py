@@ -17,9 +17,9 @@ def sample(name: str) -> pd.DataFrame:
     """One of three invented data sets, as a fresh data frame with a few missing cells.
 
     castings (240 rows): finishing time at a small foundry, `minutes`, against `mass_kg`, with `alloy`; four castings
-        come from each `heat`, and share a date in `poured on`. Truth: the median is exp(0.9) * mass_kg**0.68 minutes
-        for bronze, 1.2 times that for grey iron and 1.55 times for steel; the spread multiplies (SD of the log 0.24),
-        so the mean is exp(0.24**2 / 2) = 1.029 times the median. Heats and dates have no effect of their own.
+        come from each `heat`, and share a date in `poured on`. Truth: the median is exp(1.2) * mass_kg**0.5 minutes
+        for bronze, 1.2 times that for grey iron and 1.55 times for steel; the spread multiplies (SD of the log 0.18),
+        so the mean is exp(0.18**2 / 2) = 1.016 times the median. Heats and dates have no effect of their own.
     glasshouse (180 rows): fresh weight per bed, `yield_kg`, against `daily light` (mol/m2/day), with `cultivar` and
         `bed_age` (years); each of 30 `bed`s was `harvested` six times. Truth: the mean is
         4 + 17 * (1 - exp(-light / 9)) - 0.4 * bed_age kg for red, 1.6 more for striped, 1.1 less for yellow; SD 1.2 kg
