@@ -5,7 +5,8 @@ from __future__ import annotations
 from batten.emit.covariates import read_numbers
 from batten.emit.functions import undo
 from batten.emit.parts import Parts
-from batten.emit.text import FRAME, literal, noted, wrapped
+from batten.emit.powers import power_moves
+from batten.emit.text import WIDTH, literal, noted, wrapped
 
 __all__ = ["chosen", "fitting"]
 
@@ -33,17 +34,19 @@ def fitting(parts: Parts) -> list[str]:
 
 
 def _rows(parts: Parts) -> list[str]:
-    response, lines, data = parts.problem.response, [], FRAME
+    response, lines, data = parts.problem.response, [], parts.frame
     if chosen(parts):
         data = "data"
-        lines = wrapped(f"data = {FRAME}.query({literal(chosen(parts))})")
+        lines = wrapped(f"data = {parts.frame}.query({literal(chosen(parts))})")
     text = any(f"{response} (stored as text)" in said for said in parts.problem.announcements)
     source = read_numbers(response, data, text=text)
-    lines += wrapped(f"rows = columns({data}).assign(y={source}.to_numpy())")
-    if any("finite" in str(why) for why in parts.problem.left_out["why"]):  # infinite; not a finite number
-        lines.append("rows = rows.replace([np.inf, -np.inf], np.nan).dropna()")
+    made = f"rows = columns({data}).assign(y={source}.to_numpy())"
+    finite = any("finite" in str(why) for why in parts.problem.left_out["why"])  # infinite; not a finite number
+    clean = ".replace([np.inf, -np.inf], np.nan).dropna()" if finite else ".dropna()"
+    if len(made + clean) <= WIDTH:
+        lines.append(made + clean)
     else:
-        lines[-1] += ".dropna()"
+        lines += [*wrapped(made), f"rows = rows{clean}"]
     lines.append(f'y, used = rows["y"].to_numpy(), {data}.iloc[rows.index]')
     if parts.left.check is not None:
         condition, words = parts.left.check
@@ -70,38 +73,17 @@ def _ols(parts: Parts) -> list[str]:
     lines.append("Q, R = np.linalg.qr(X)")
     if parts.needs_s2:
         lines.append(f"s2 = e @ e / {parts.est.df_residual}")
-    if not parts.robust:
-        return lines if not parts.power else [*lines, "out = e / (1 - (Q**2).sum(axis=1))", *_power_moves(parts)]
-    lines.append("out = e / (1 - (Q**2).sum(axis=1))  # each row's error around the fit without it")
     if parts.power:
-        return [*lines, *_power_moves(parts)]
+        lines += ["h = (Q**2).sum(axis=1)", "out = e / (1 - h)  # each row's error around the fit without it"]
+        return [*lines, *power_moves(parts)]
+    if not parts.robust:
+        return lines
+    lines.append("out = e / (1 - (Q**2).sum(axis=1))  # each row's error around the fit without it")
     return [*lines, "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out"]
 
 
 def _zeros(parts: Parts) -> str:
     return "0.0" if len(parts.searched) == 1 else f"[{', '.join(['0.0'] * len(parts.searched))}]"
-
-
-def _power_moves(parts: Parts) -> list[str]:
-    """Coefficients and LAMBDA without each row: a Newton step of the full likelihood, sigma included."""
-    slope = "np.log(y)" if parts.est.remedy.left.family == "boxcox" else "np.sign(y) * np.log1p(np.abs(y))"
-    return [
-        "# LAMBDA was estimated too: each row is left out by a Newton step of the whole likelihood (Box and Cox 1964)",
-        f"(up, down), v = ({_forward(parts)} for v in (LAMBDA + 1e-4, LAMBDA - 1e-4)), e @ e / len(e)",
-        "z1, z2 = (up - down) / 2e-4, (up - 2 * z + down) / 1e-8  # first and second slope of z in LAMBDA",
-        f"score = np.column_stack([X * (e / v)[:, None], {slope} - e * z1 / v, (e * e / v - 1) / (2 * v)])",
-        "known = np.zeros((X.shape[1] + 2,) * 2)  # observed information about coefficients, LAMBDA and v",
-        "known[:-2, :-2], known[:-2, -2], known[-2, :-2] = X.T @ X, -(X.T @ z1), -(X.T @ z1)",
-        "known[-2:, -2:] = [[z1 @ z1 + e @ z2, -(e @ z1) / v], [-(e @ z1) / v, len(e) / (2 * v)]]",
-        "b = np.append(b, LAMBDA)",
-        "without = b - (np.linalg.solve(known / v, score.T) * (out / e)).T[:, :-1]",
-    ]
-
-
-def _forward(parts: Parts) -> str:
-    """The scale at the power v."""
-    source = parts.left.columns[0][1]
-    return "bent(y, v)" if source == "bent(y)" else source.replace("LAMBDA", "v")
 
 
 def _glm(parts: Parts) -> list[str]:
@@ -132,8 +114,8 @@ def _table(parts: Parts) -> list[str]:
         spread = "(np.linalg.solve(R, Q.T * out) ** 2).sum(axis=1)"
     else:
         spread = "((without - b) ** 2).sum(axis=0)"
-    names = "".join(f', "{name}"' for name in parts.searched)
-    estimate = f"[*fit.params, {', '.join(parts.searched)}]" if parts.searched else "fit.params"
-    index = f"[*fit.params.index{names}]"
-    line = f'table = pd.DataFrame({{"estimate": {estimate}, "std_error": np.sqrt({spread})}}, index={index})'
-    return [*wrapped(line), "print(table)"]
+    estimate, index = "fit.params", ""
+    if parts.searched:
+        estimate = f"[*fit.params, {', '.join(parts.searched)}]"
+        index = f", [*fit.params.index, {', '.join(literal(name) for name in parts.searched)}]"
+    return wrapped(f'print(table := pd.DataFrame({{"estimate": {estimate}, "std_error": np.sqrt({spread})}}{index}))')

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 
 from batten.emit.parts import Parts
+from batten.emit.powers import power_functions
 from batten.emit.text import docstring, noted, wrapped
 
 __all__ = ["design_call", "functions", "undo"]
@@ -89,21 +90,16 @@ def _jacobian(parts: Parts) -> list[list[str]]:
     """Design, then how the fitted value moves with each searched constant."""
     if not parts.searched:
         return []
-    hinge = parts.est.shape.family == "hinge"
     names = " and ".join(parts.searched)
     text = f"The design, then how the fitted value moves with {names}, estimated as the coefficients are."
     lines, moves = ["def jacobian(frame):", *docstring(text)], []
-    for name in parts.searched:
-        if hinge:
+    for name, step in zip(parts.searched, parts.steps, strict=True):
+        if parts.est.shape.family == "hinge":
             moves.append(f"(design(frame, {name}={name} + STEP) - design(frame)) @ fit.params / STEP")
             continue
-        pair = f"(design(frame, {name}={name} + d) @ fit.params for d in (step, -step))"
-        lines += [f"    step = 1e-5 * abs({name})", f"    up, down = {pair}"]
-        slope = "(up - down) / (2 * step)"
-        if len(parts.searched) > 1:
-            lines.append(f"    by_{name.lower()} = {slope}")
-            slope = f"by_{name.lower()}"
-        moves.append(slope)
+        pair = f"[design(frame, {name}={name} + d) @ fit.params for d in (1{step}, -1{step})]"
+        lines.append(f"    {name.lower()} = {pair}")
+        moves.append(f"({name.lower()}[0] - {name.lower()}[1]) / 2{step}")
     return [[*lines, *wrapped(f"    return np.column_stack([design(frame), {', '.join(moves)}])", 4)]]
 
 
@@ -113,7 +109,7 @@ def _jacobian(parts: Parts) -> list[list[str]]:
 def _means(parts: Parts) -> list[list[str]]:
     """undo() and mean(), where the way back is more than exp()."""
     if parts.power:
-        return [*_searched_power(parts), _mean_of_pairs(parts)]
+        return [*power_functions(parts), _mean_of_pairs(parts)]
     found = []
     if undo(parts, "z") == "undo(z)" and parts.left.inverse != "undo(z)":
         inverse = parts.left.inverse
@@ -123,12 +119,6 @@ def _means(parts: Parts) -> list[list[str]]:
     elif parts.kind == "pairs":
         found.append(_mean_of_pairs(parts))
     return found
-
-
-def _searched_power(parts: Parts) -> list[list[str]]:
-    """The way back (and there, where it takes a function) by the power too, since it is estimated."""
-    blocks = (re.sub(r"^def (\w+)\((\w)\):", r"def \1(\2, LAMBDA=LAMBDA):", b) for b in _blocks(parts.left.helper))
-    return [block.replace("def unbent(", "def undo(").splitlines() for block in blocks]
 
 
 def _mean_of_squares(parts: Parts) -> list[str]:
@@ -180,8 +170,7 @@ def _predict(parts: Parts) -> list[str]:
 
 def _way(parts: Parts) -> str:
     """How the interval is made."""
-    tail = f"{50 - 50 * parts.question.level:.10g}%"
-    return f" by jackknife+, {tail} of the rows' own errors beyond each end" if parts.ordered else " for normal errors"
+    return " by jackknife+ (errors as seen, none assumed normal)" if parts.ordered else " for normal errors"
 
 
 def _limits(parts: Parts) -> str:
@@ -212,17 +201,17 @@ def _targets(parts: Parts) -> str:
 def _new_row(parts: Parts) -> list[str]:
     """eta, low and high for further rows at the design N."""
     first, last = parts.ranks
-    eta = f"N @ {_b(parts)}"
+    eta, tail = f"N @ {_b(parts)}", f"{50 - 50 * parts.question.level:.10g}% lie beyond each end"
     if not parts.ordered:
         half = f"{parts.t_name} * np.sqrt(s2 * (1 + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
         lines = [f"    eta, half = {eta}, {half}"]
         ends = "np.array([eta - half, eta + half])"
     elif parts.many:
-        lines = [f"    eta, spread = {eta}, np.sort(out)[[{first}, {last}]]"]
+        lines = noted(f"    eta, spread = {eta}, np.sort(out)[[{first}, {last}]]", tail)
         ends = "np.add.outer(spread, eta)"
     else:
         without = "without[:, :-1]" if parts.power else "without"
-        lines = [f"    eta, ends = {eta}, [np.sort({without} @ row + out)[[{first}, {last}]] for row in N]"]
+        lines = noted(f"    eta, ends = {eta}, [np.sort({without} @ row + out)[[{first}, {last}]] for row in N]", tail)
         ends = "np.transpose(ends)"
     back = undo(parts, ends)
     falls = parts.est.remedy.left.family == "reciprocal"

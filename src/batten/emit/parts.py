@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -21,6 +22,9 @@ from batten.frame.problem import Problem
 
 __all__ = ["Parts", "read_parts"]
 
+#: a letter that no script uses
+PLACE = "\ua66e"
+
 _RESPONSES = {"y": "y", "log y": "log_y", "sqrt y": "root_y", "1/y": "inverse_y", "y^2": "square_y"}
 
 
@@ -37,6 +41,11 @@ class Parts:
     numbers: Numbers
     x: str
     y: str
+
+    @property
+    def frame(self) -> str:
+        """Stands for the user's frame, at its width, until no name of the script can be taken for it."""
+        return PLACE * len(self.problem.frame_name)
 
     @property
     def link(self) -> bool:
@@ -71,6 +80,13 @@ class Parts:
             del left[name]
             found.append(name)
         return tuple(found)
+
+    @cached_property
+    def steps(self) -> tuple[str, ...]:
+        """Steps in the searched constants for numeric slopes, as exponents (e-7)."""
+        low, high = self.est.shape.bounds(self.est.rows.x, self.est.state)
+        sizes = [max(abs(t), 1e-3 * width) for t, width in zip(self.est.theta, high - low, strict=True)]
+        return tuple(f"e{math.floor(math.log10(1e-5 * size))}" for size in sizes[: len(self.searched)])
 
     @property
     def power(self) -> bool:

@@ -7,7 +7,7 @@ from batten.emit.functions import functions
 from batten.emit.parts import Parts, read_parts
 from batten.emit.renaming import without_names
 from batten.emit.span import held_at, span
-from batten.emit.text import FRAME, comment, constant, literal, number, rounded, said, wrapped
+from batten.emit.text import comment, constant, literal, number, rounded, said, wrapped
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
@@ -39,7 +39,7 @@ def _header(parts: Parts) -> list[str]:
     words = remedy.words(parts.y, parts.x)
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
-        f"`{FRAME}`: {_rows_words(parts)} Errors: {parts.question.errors}.",
+        f"`{parts.frame}`: {_rows_words(parts)} Errors: {parts.question.errors}.",
         *parts.covariates.notes,
     ]
     if parts.covariates.external:
@@ -59,7 +59,7 @@ def _rows_words(parts: Parts) -> str:
 
 
 def _imports(parts: Parts) -> list[str]:
-    plain = ["import matplotlib.pyplot as plt", "import numpy as np", "import pandas as pd"]
+    plain = ["import numpy as np", "import pandas as pd"]
     plain += ["import statsmodels.api as sm"] if parts.link else []
     plain += ["import statsmodels.formula.api as smf"]
     plain += [line for line in parts.covariates.imports if line.startswith("import ")]
@@ -129,19 +129,17 @@ def _picture(parts: Parts) -> list[str]:
     p, middle = parts.problem, int(parts.numbers.probes[0])
     every = max(1, parts.est.n // 10_000)
     some = f"[::{every}]" if every > 1 else ""
-    unit_x, unit_y = said(p.unit(p.focus)), said(p.unit(p.response))
-    labels = (f"{parts.x} ({unit_x})" if unit_x else parts.x, f"{parts.y} ({unit_y})" if unit_y else parts.y)
-    x_label, y_label = (literal(label.replace("$", r"\$")) for label in labels)
-    where = f', title="covariates as in row {middle + 1} of those used"' if p.covariates else ""
-    grid = f"used.iloc[[{middle}] * 200].assign({held_at(parts, 'at')})"
+    units = [said(p.unit(p.focus)), said(p.unit(p.response))]
+    names = [f"{name} ({unit})" if unit else name for name, unit in zip((parts.x, parts.y), units, strict=True)]
+    x_label, y_label = (literal(name.replace("$", r"\$")) for name in names)
+    title = f"{parts.percent} of further rows"
+    title += f", covariates as in row {middle + 1} of those used" if p.covariates else " lie between low and high"
     return [
         'at = np.linspace(rows["x"].min(), rows["x"].max(), 200)',
-        *wrapped(f"curve, (figure, ax) = predict({grid}), plt.subplots()"),
-        f'ax.plot(rows["x"]{some}, y{some}, ".", color="0.6", label="rows")',
-        f'ax.fill_between(at, curve["low"], curve["high"], alpha=0.2, label="{parts.percent} of further rows")',
-        'ax.plot(at, curve["mean"], label="mean")',
-        *wrapped(f"ax.set(xlabel={x_label}, ylabel={y_label}{where})"),
-        "ax.legend()",
+        *wrapped(f"curve = predict(used.iloc[[{middle}] * 200].assign({held_at(parts, 'at')})).set_axis(at)"),
+        'ax = curve.plot(y=["mean", "low", "high"], style=["-", ":", ":"], color=["C0", "C1", "C1"])',
+        f'ax.plot(rows["x"]{some}, y{some}, ".", color="0.6", zorder=0)',
+        *wrapped(f'ax.set(xlabel={x_label}, ylabel={y_label}, title="{title}")'),
     ]
 
 
@@ -165,7 +163,7 @@ def _checks(parts: Parts) -> list[str]:
     probes = ", ".join(str(int(i)) for i in n.probes)
     got.append(f"*np.ravel(predict(used.iloc[[{probes}]]))")
     want += [rounded(v) for v in n.predictions.ravel()]
-    message = literal(f"`{FRAME}` differs from the rows this script was written for")
+    message = literal(f"`{parts.frame}` differs from the rows this script was written for")
     return [
         *wrapped(f"got = [{', '.join(got)}]"),
         *wrapped(f"want = [{', '.join(want)}]"),
@@ -179,4 +177,4 @@ def _checks(parts: Parts) -> list[str]:
 def _named(text: str, parts: Parts) -> str:
     """Put in the frame's name; names of the script that it, or a function of the user's, already has are changed."""
     theirs = {parts.problem.frame_name, *parts.covariates.external}
-    return without_names(text, theirs).replace(FRAME, parts.problem.frame_name)
+    return without_names(text, theirs).replace(parts.frame, parts.problem.frame_name)

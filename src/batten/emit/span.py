@@ -10,6 +10,7 @@ import pandas as pd
 
 from batten.emit.functions import design_call, undo
 from batten.emit.parts import Parts
+from batten.emit.powers import difference_by_power
 from batten.emit.text import comment, fstring, literal, said, wrapped
 
 __all__ = ["held_at", "span"]
@@ -85,11 +86,7 @@ def _difference(parts: Parts) -> list[str]:
     if parts.link:
         return [f"    return ({undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}){keep}.mean()"]
     if parts.power:
-        return [
-            "    e = (z + (b[-1] - LAMBDA) * z1 - X @ b[:-1])[keep]",
-            f"    low, high = (mean((N @ b[:-1]){keep}, e, b[-1]) for N in (A, B))",
-            "    return (high - low).mean()",
-        ]
+        return difference_by_power(keep)
     return [
         "    e = (z - X @ b)[keep]",
         f"    return (mean((B @ b){keep}, e) - mean((A @ b){keep}, e)).mean()",

@@ -17,14 +17,11 @@ import numpy as np
 import pandas as pd
 
 __all__ = [
-    "FRAME", "RESERVED", "WIDTH", "comment", "constant", "docstring", "fstring", "literal", "noted", "number",
+    "RESERVED", "WIDTH", "comment", "constant", "docstring", "fstring", "literal", "noted", "number",
     "plain_name", "rounded", "said", "wrapped",
 ]  # fmt: skip
 
 WIDTH = 120
-
-#: stands for the user's frame until the whole script is written
-FRAME = "FRAME_"
 
 #: names that formulas, helpers or the script itself give a meaning
 RESERVED = frozenset((
