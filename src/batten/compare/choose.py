@@ -87,7 +87,9 @@ def choose(candidates: Mapping[str, Candidate], question: Question, folds: int, 
     reasons: list[str] = []
     pool = [k for k in ranked if not candidates[k].turns_inside] or ranked
     if len(pool) < len(ranked):
-        reasons.append(f"{len(ranked) - len(pool)} remedies turn inside the data although {question.expect} was expected.")
+        reasons.append(
+            f"{len(ranked) - len(pool)} remedies turn inside the data although {question.expect} was expected."
+        )
     if question.aim == "effect":
         pool = _without_bend(candidates, pool, reasons)
     head = min(pool, key=lambda k: candidates[k].scores.rmse)
@@ -106,7 +108,9 @@ def choose(candidates: Mapping[str, Candidate], question: Question, folds: int, 
     runner_up = tied[1] if len(tied) > 1 else next((k for k in pool if k != chosen), None)
     if question.planned is not None and question.planned in candidates:
         chosen, runner_up = question.planned, chosen if chosen != question.planned else runner_up
-        reasons = ["Planned in advance: no choosing, no penalty for choosing; the other remedies show how much hangs on it."]
+        reasons = [
+            "Planned in advance: no choosing, no penalty for choosing; the other remedies show how much hangs on it."
+        ]
     everywhere = tuple(k for k in ranked if gap[k].tied)
     return Choice(chosen, runner_up, best, everywhere, tuple(reasons), _otherwise(candidates, chosen), len(candidates))
 
@@ -133,13 +137,20 @@ def _simpler_and_better(candidates: Mapping[str, Candidate], pool: list[str], ch
     better = [
         k
         for k in pool
-        if candidates[k].scores.rmse < mine.scores.rmse and candidates[k].estimate.remedy.order < mine.estimate.remedy.order
+        if candidates[k].scores.rmse < mine.scores.rmse
+        and candidates[k].estimate.remedy.order < mine.estimate.remedy.order
     ]
     return min(better, key=lambda k: candidates[k].estimate.remedy.order, default=chosen)
 
 
 def _tie_words(
-    candidates: Mapping[str, Candidate], gap: Mapping[str, Gap], chosen: str, head: str, tied: int, tried: int, unit: str
+    candidates: Mapping[str, Candidate],
+    gap: Mapping[str, Gap],
+    chosen: str,
+    head: str,
+    tied: int,
+    tried: int,
+    unit: str,
 ) -> str:
     unit = f" {unit}" if unit else ""
     lowest = candidates[head].scores.rmse
@@ -156,7 +167,10 @@ def _otherwise(candidates: Mapping[str, Candidate], chosen: str) -> tuple[tuple[
     """Other yardsticks and what they would choose, where that differs."""
     lists: list[tuple[str, dict[str, float]]] = [
         ("lowest held-out error of the mean", {k: c.scores.rmse for k, c in candidates.items()}),
-        ("lowest absolute error of the median", {k: c.scores.overall(c.scores.absolute) for k, c in candidates.items()}),
+        (
+            "lowest absolute error of the median",
+            {k: c.scores.overall(c.scores.absolute) for k, c in candidates.items()},
+        ),
         (
             "log score of held-out rows",
             {k: -c.scores.overall(c.scores.log_score) for k, c in candidates.items() if c.scores.log_score is not None},

@@ -112,11 +112,11 @@ def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend 
         return None
     own = averaged_means(est, reference.places, jackknife=False)
     gap = reference.curve.value - own.value
-    root = reference.curve.root - own.root
-    error = np.sqrt((root**2).sum(axis=0))
+    covariance = reference.curve.covariance_of_gap(own)
+    error = np.sqrt(np.maximum(np.diagonal(covariance), 0.0))
     # two curves that are the same by algebra differ by rounding alone
     still = error <= 1e-9 * float(np.abs(reference.curve.value).max())
-    width = _critical(root[:, ~still], level, est.df_residual) * np.where(still, 0.0, error)
+    width = _critical(covariance[np.ix_(~still, ~still)], level, est.df_residual) * np.where(still, 0.0, error)
     size = np.abs(gap)
     at = int(np.argmax(size))
     low, high = float(np.maximum(size - width, 0).max()), float((size + width).max())
@@ -125,12 +125,12 @@ def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend 
     return Bend(reference.places, gap, error, float(size[at]), float(reference.places[at]), low, high, t, verdict)
 
 
-def _critical(root: Array, level: float, df: int) -> float:
+def _critical(covariance: Array, level: float, df: int) -> float:
     """Quantile of the largest standardised deviation along the curve, by seeded draws of the limiting process."""
-    if not root.shape[1]:
+    if not len(covariance):
         return 0.0
-    unit = root / np.sqrt((root**2).sum(axis=0))
-    values, vectors = np.linalg.eigh(unit.T @ unit)
+    size = np.sqrt(np.diagonal(covariance))
+    values, vectors = np.linalg.eigh(covariance / np.outer(size, size))
     # directions that carry under a millionth of the variance do not move the largest deviation
     kept = values > 1e-6 * values[-1]
     half = vectors[:, kept] * np.sqrt(values[kept])

@@ -18,7 +18,7 @@ __all__ = ["Factored", "design", "factor", "solve"]
 #: a column is aliased when less than this share of its length is left after the columns before it
 ALIASED = 1e-11
 #: above this many numbers the extended-precision pass costs more than it can give
-REFINE_UP_TO = 4_000_000
+REFINE_UP_TO = 400_000
 
 
 def design(rows: Rows, shape_columns: Array, *, own_level: bool = False) -> Array:

@@ -80,7 +80,9 @@ def best_power(power: Power, y: Array, q: Array, *, start: float | None = None) 
     return best, power.lower + 1e-6 < best < power.upper - 1e-6
 
 
-def fold_powers(power: Power, y: Array, basis: Array, cross: list[Array], held: list[Ints], best: float) -> Array | None:
+def fold_powers(
+    power: Power, y: Array, basis: Array, cross: list[Array], held: list[Ints], best: float
+) -> Array | None:
     """Best lambda of every training set (S,), from the basis (n, p) that all of them share.
 
     cross: inverse cross-product of each training set (p, p); held: its held-out rows. The profile of each training set

@@ -136,7 +136,9 @@ def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precisio
             break
         step, promised = _gauss_newton(model, theta, place)
         if promised <= 1e-9 * place.rss:
-            theta, place = _settle(model, theta, place, e, precision, steps=40 if precision < 1e-10 or len(e) <= FEW_ROWS else 1)
+            theta, place = _settle(
+                model, theta, place, e, precision, steps=40 if precision < 1e-10 or len(e) <= FEW_ROWS else 1
+            )
             break
         fraction, better = 1.0, None
         while fraction > 1e-4:
@@ -209,9 +211,7 @@ def _gauss_newton(model: Searched, theta: Array, place: _Place) -> tuple[Array, 
     return step, float(fall @ fall)
 
 
-def search(
-    model: Searched, z: Array, *, start: Array | None = None, tries: int = 3, precision: float = 1e-13
-) -> Found:
+def search(model: Searched, z: Array, *, start: Array | None = None, tries: int = 3, precision: float = 1e-13) -> Found:
     """Lowest profile over the candidates (and `start`), refined; a finite set is only looked through."""
     every = max(1, len(z) // SCAN_ROWS)
     small, thin_z = (model, z) if every == 1 else (model.part(np.arange(0, len(z), every)), z[::every])

@@ -49,9 +49,7 @@ class _Problem:
 
     def some(self, which: Array) -> _Problem:
         """The same for some of the sets."""
-        return _Problem(
-            self.model, self.mask[which], self.z, self.inverse[which], self.right[which], self.total[which]
-        )
+        return _Problem(self.model, self.mask[which], self.z, self.inverse[which], self.right[which], self.total[which])
 
     def gram(self, u: Array) -> tuple[Array, Array]:
         """Cross-products of columns u (S, n, k) with the fixed ones projected out: u'u (S, k, k) and u'z (S, k)."""

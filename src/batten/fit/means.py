@@ -19,7 +19,7 @@ from batten.families.base import Constants
 from batten.fit.carry import Carried, carried
 from batten.fit.estimate import Estimate
 from batten.fit.medians import middle
-from batten.fit.smear import mean_of
+from batten.fit.smear import mean_of, shares_of_residuals
 
 __all__ = [
     "BLOCK", "Averaged", "Target", "averaged_means", "by_replicate", "interval", "jackknifed", "means_at_rows", "pattern_weights",
@@ -32,6 +32,11 @@ JACKKNIFE_ROWS = 3_000
 JACKKNIFE_GENERAL = 1_000
 #: numbers held at once while replicates are averaged
 BLOCK = 3_000_000
+#: up to this many covariate patterns a row is described by which of them it has
+FEW_PATTERNS = 12
+
+#: row i's share (n, G), or (features (n, r), loads (r, G)) whose product it is
+Share = Array | tuple[Array, Array]
 
 
 @dataclass(frozen=True, eq=False)
@@ -39,25 +44,32 @@ class Averaged:
     """Values (G,) and their uncertainty.
 
     root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
-    spread under constant errors). left_out (n, G): the values without row i, or None beyond the jackknife's reach.
+    spread under constant errors). It is kept as loads (r, G) of few features (N, r), root = features @ loads, since many
+    rows and many places make it large; features None means that loads are the root. left_out (n, G): the values without
+    row i, or None beyond the jackknife's reach.
     """
 
     value: Array
-    root: Array
+    loads: Array
     left_out: Array | None
     df: int
+    features: Array | None = None
+
+    @property
+    def root(self) -> Array:
+        return self.loads if self.features is None else self.features @ self.loads
 
     def combine(self, weights: Array) -> Averaged:
         """Linear combinations: weights (G, H)."""
         left = None if self.left_out is None else self.left_out @ weights
-        return Averaged(self.value @ weights, self.root @ weights, left, self.df)
+        return Averaged(self.value @ weights, self.loads @ weights, left, self.df, self.features)
 
     def log(self) -> Averaged:
         """Logarithms of positive values (NaN elsewhere)."""
         with np.errstate(invalid="ignore", divide="ignore"):
             value = np.log(self.value)
             if self.left_out is None:
-                return Averaged(value, self.root / self.value, None, self.df)
+                return Averaged(value, self.loads / self.value, None, self.df, self.features)
             left = np.log(self.left_out)
         return Averaged(value, _jackknife_root(left), left, self.df)
 
@@ -65,6 +77,15 @@ class Averaged:
     def error(self) -> Array:
         """Standard errors (G,)."""
         return np.asarray(np.sqrt((self.root**2).sum(axis=0)))
+
+    def covariance_of_gap(self, other: Averaged) -> Array:
+        """Covariance (G, G) of self minus other, whose roots belong to the same rows."""
+        mine, theirs = self.features, other.features
+        if mine is None or theirs is None:
+            root = self.root - other.root
+            return np.asarray(root.T @ root)
+        both, loads = np.hstack([mine, theirs]), np.vstack([self.loads, -other.loads])
+        return np.asarray(loads.T @ (both.T @ both) @ loads)
 
 
 def _jackknife_root(left: Array) -> Array:
@@ -189,7 +210,7 @@ def _with_errors(
     def values(move: Array, keep: Array | None) -> Array:
         return _values(est, tar, share, of, move, keep)
 
-    def own_shares(value: Array) -> list[Array]:
+    def own_shares(value: Array) -> list[Share]:
         return [part for part in _direct_parts(est, tar, share, of, value) if part is not None]
 
     return with_errors(
@@ -200,7 +221,7 @@ def _with_errors(
 def with_errors(
     est: Estimate,
     values: Callable[[Array, Array | None], Array],
-    own_shares: Callable[[Array], list[Array]],
+    own_shares: Callable[[Array], list[Share]],
     *,
     parameters: int,
     of: str,
@@ -210,7 +231,8 @@ def with_errors(
     """A functional of the rows with its uncertainty.
 
     values(move (R, P), keep (R, n) or None) -> (R, G): the functional when the parameters have moved and row j counts
-    keep times. own_shares(value (G,)) -> arrays (n, G): row i's own share in each average it enters, minus the value.
+    keep times. own_shares(value (G,)) -> arrays (n, G): row i's own share in each average it enters, minus the value,
+    or (features (n, r), loads (r, G)) whose product that is.
     """
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
@@ -218,13 +240,24 @@ def with_errors(
         # a mean that is infinite without one row has no error
         left = np.where(np.isfinite(left), left, np.nan)
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
-    gradient = _gradient(est, values, parameters)
-    shares = [part / est.n for part in own_shares(value)]
+    moves = est.moves()
+    gradient = _gradient(values, moves)
+    shares = own_shares(value)
     if errors == "constant":
         root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
-        return Averaged(value, np.vstack([root, *shares]), None, est.df_residual)
+        parts = [_whole(part) / est.n for part in shares]
+        return Averaged(value, np.vstack([root, *parts]), None, est.df_residual)
     # moves are what leaving a row out does; its influence points the other way
-    return Averaged(value, sum(shares, -est.moves() @ gradient), None, est.df_residual)
+    features, loads = [moves], [-gradient]
+    for part in shares:
+        feature, load = part if isinstance(part, tuple) else (part, np.eye(len(value)))
+        features.append(feature)
+        loads.append(load / est.n)
+    return Averaged(value, np.vstack(loads), None, est.df_residual, np.hstack(features))
+
+
+def _whole(part: Share) -> Array:
+    return part[0] @ part[1] if isinstance(part, tuple) else part
 
 
 def jackknifed(est: Estimate, of: str = "mean") -> bool:
@@ -241,12 +274,12 @@ def jackknifed(est: Estimate, of: str = "mean") -> bool:
     return est.n <= (JACKKNIFE_ROWS if closed else JACKKNIFE_GENERAL)
 
 
-def _gradient(est: Estimate, values: Callable[[Array, Array | None], Array], parameters: int) -> Array:
+def _gradient(values: Callable[[Array, Array | None], Array], moves: Array) -> Array:
     """d values / d parameters (P, G), by central differences a small part of each parameter's own error wide."""
-    width = 1e-4 * np.sqrt(np.maximum(np.diagonal(est.covariance("robust")), 1e-300))
-    steps = np.diag(width[:parameters])
+    width = 1e-4 * np.sqrt(np.maximum((moves**2).sum(axis=0), 1e-300))
+    steps = np.diag(width)
     both = values(np.vstack([steps, -steps]), None)
-    return np.asarray((both[:parameters] - both[parameters:]) / (2 * width[:, None]))
+    return np.asarray((both[: len(steps)] - both[len(steps) :]) / (2 * width[:, None]))
 
 
 def _values(est: Estimate, tar: Target, share: Array, of: str, move: Array, keep: Array | None) -> Array:
@@ -305,18 +338,19 @@ def by_replicate(undo: Callable[[Array, Constants], Array], own: Carried, eta: A
     return np.stack([undo(row, c) for row, c in zip(eta, own.c, strict=True)])
 
 
-def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Array | None, Array | None]:
-    """Row i's own share in the average over residuals and in the average over covariates, minus the value (n, G)."""
-    by_residual = None
+def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Share | None, Share | None]:
+    """Row i's own share in the average over residuals and in the average over covariates, minus the value."""
+    by_residual: Share | None = None
     if of == "median":
-        by_residual = middle(est).influence[:, None] * _lean(est, tar, share)
+        by_residual = middle(est).influence[:, None], _lean(est, tar, share)[None]
     elif est.link is None and est.scale.closed != "identity":
         by_residual = _residual_part(est, tar, share, value)
-    by_covariate = None
+    by_covariate: Share | None = None
     if tar.pattern is not None and len(share) > 1:
         still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
-        back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1)
-        by_covariate = back[tar.pattern] - value
+        back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1) - value
+        few = len(share) <= FEW_PATTERNS
+        by_covariate = ((tar.pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[tar.pattern]
     return by_residual, by_covariate
 
 
@@ -327,14 +361,11 @@ def _lean(est: Estimate, tar: Target, share: Array) -> Array:
     return np.asarray(share @ est.scale.inverse_slope(tar.eta + middle(est).value, est.c))
 
 
-def _residual_part(est: Estimate, tar: Target, share: Array, value: Array) -> Array:
+def _residual_part(est: Estimate, tar: Target, share: Array, value: Array) -> Share:
     e = est.residual
-    out = np.empty((est.n, tar.eta.shape[1]))
-    for g in range(tar.eta.shape[1]):
-        # the average over covariates of g(eta_c + e_i) is the smearing routine with the two swapped
-        eta = tar.eta[:, g]
-        if est.scale.closed == "exp":
-            out[:, g] = np.exp(e) * (np.exp(eta) @ share)
-        else:
-            out[:, g] = mean_of(est.scale, [est.c], e[None], eta[None], share[None])[0]
-    return out - value
+    if est.scale.closed == "exp":
+        each = np.column_stack([np.exp(e), np.ones(est.n)])
+        return each, np.vstack([share @ np.exp(tar.eta), -value])
+    features, loads = shares_of_residuals(lambda z: est.scale.inverse(z, est.c), e, tar.eta, share)
+    loads[0] -= value  # the first polynomial is one
+    return features, loads

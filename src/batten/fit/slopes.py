@@ -14,7 +14,7 @@ import numpy as np
 from batten.engine.rows import Array, Ints
 from batten.fit.carry import carried
 from batten.fit.estimate import Estimate
-from batten.fit.means import BLOCK, Averaged, by_replicate, pattern_weights, patterns, with_errors
+from batten.fit.means import BLOCK, Averaged, Share, by_replicate, pattern_weights, patterns, with_errors
 from batten.fit.medians import middle
 from batten.fit.smear import mean_of
 
@@ -109,8 +109,8 @@ def _averaged(
                 out[start : start + block, g] = np.einsum("ru,ru->r", slope, weights)
         return out
 
-    def own_shares(value: Array) -> list[Array]:
-        parts = []
+    def own_shares(value: Array) -> list[Share]:
+        parts: list[Share] = []
         if pattern is not None and len(share) > 1:
             back = _slope_back(est, of, np.zeros((1, places[0].eta_pull.shape[1])), None)
             still = np.column_stack([back(at.eta[None])[0] * at.steep for at in places])
