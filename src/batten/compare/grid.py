@@ -17,7 +17,7 @@ from batten.engine.threads import one_thread
 from batten.errors import Refusal
 from batten.errors.compare import nothing_fits
 from batten.families.remedy import Remedy, parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Designs, Estimate, estimate
 from batten.fit.means import averaged_means
 from batten.fit.question import Question
 
@@ -111,10 +111,11 @@ def _run(
     steps = len(remedies) + 2
     estimates: dict[str, Estimate] = {}
     refused: dict[str, Refusal] = {}
+    designs: Designs = {}
     for done, remedy in enumerate(remedies):
         if progress:
             progress(done, steps, remedy.key)
-        result = estimate(rows, remedy)
+        result = estimate(rows, remedy, designs=designs)
         if isinstance(result, Refusal):
             refused[remedy.key] = result
         else:

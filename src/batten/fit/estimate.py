@@ -16,8 +16,12 @@ from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
 from batten.fit.guard import domain_trouble, meets_constant, not_offered, too_few
+from batten.fit.powers import likelihood_moves, own_units, pivot
 
-__all__ = ["Estimate", "estimate", "own_units", "scale_power", "searched_model"]
+#: (shape's key, theta) -> design and its QR, on one set of rows
+Designs = dict[tuple[str, Constants], tuple[Array, Factored]]
+
+__all__ = ["Designs", "Estimate", "estimate", "scale_power", "searched_model"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -159,7 +163,7 @@ class Estimate:
     @cached_property
     def pivot(self) -> tuple[float, float]:
         """Value and slope of the scale at the median of y (the value is 0 where no constant can take it up)."""
-        return _pivot(self, self.c[0])
+        return pivot(self, self.c[0])
 
     def moves(self, *, leave_out: bool = True) -> Array:
         """Change of (coef, theta, c) when row i is left out, (n, P); exact for linear remedies, else one step.
@@ -168,7 +172,7 @@ class Estimate:
         """
         weight = 1.0 / (1.0 - self.leverage) if leave_out else np.ones(self.n)
         if self.remedy.left.searched:
-            return -self._without_drift(_likelihood_moves(self)) * weight[:, None]
+            return -self._without_drift(likelihood_moves(self)) * weight[:, None]
         score = self.residual if self.link is None else self._link_score()
         return -self.factored.rows_of_inverse() * (score * weight)[:, None]
 
@@ -197,55 +201,17 @@ class Estimate:
         return np.asarray(self.factored.inverse_cross * self.sigma**2)
 
 
-def _pivot(est: Estimate, lam: float) -> tuple[float, float]:
-    middle = np.array([np.median(est.rows.y)])
-    value = float(est.scale.forward(middle, (lam,))[0]) if est.rows.intercept is not None else 0.0
-    return value, float(np.exp(est.scale.log_jacobian(middle, (lam,))[0]))
-
-
-def own_units(est: Estimate, lam: float) -> tuple[float, float]:
-    """Place and length of the scale at lambda: z(lambda) = place + length * (z - pivot), to first order near median y.
-
-    A power of y stretches the whole scale as lambda moves, and the coefficients with it; in these units both stand
-    almost still, so that one step in (coefficients, lambda) is a good one (the scaling of Box and Cox 1964, with the
-    median in the place of the geometric mean).
-    """
-    value, slope = _pivot(est, lam)
-    return value, slope / est.pivot[1]
-
-
-def _likelihood_moves(est: Estimate) -> Array:
-    """Influence of each row on (coef, theta, lambda) from the full likelihood with sigma, (n, P).
-
-    The scores of Box and Cox's likelihood: coef x e/s2; lambda -e z'/s2 + d log|T'|/d lambda; s2 (e2/s2 - 1)/(2 s2).
-    """
-    y, e, h = est.rows.y, est.residual, 1e-4
-    s2 = float(e @ e) / est.n
-    lam = est.c[0]
-    up, mid, down = (est.scale.forward(y, (lam + d,)) for d in (h, 0.0, -h))
-    z1, z2 = (up - down) / (2 * h), (up - 2 * mid + down) / h**2
-    j_up, j_mid, j_down = (est.scale.log_jacobian(y, (lam + d,)) for d in (h, 0.0, -h))
-    j1, j2 = (j_up - j_down) / (2 * h), (j_up - 2 * j_mid + j_down) / h**2
-    x = est.jacobian_at(est.rows.x, est.rows.base, est.rows.modifier)[:, :-1]
-    length = est.factored.length
-    unit = x / length  # scaled columns keep the information matrix well conditioned
-    score = np.column_stack([unit * (e / s2)[:, None], -e * z1 / s2 + j1, (e * e / s2 - 1) / (2 * s2)])
-    p = unit.shape[1]
-    information = np.zeros((p + 2, p + 2))
-    information[:p, :p] = unit.T @ unit / s2
-    information[:p, p] = information[p, :p] = -(unit.T @ z1) / s2
-    information[p, p] = (z1 @ z1 + e @ z2) / s2 - j2.sum()
-    information[p, p + 1] = information[p + 1, p] = -(e @ z1) / s2**2
-    information[p + 1, p + 1] = est.n / (2 * s2**2)
-    moved = np.linalg.solve(information, score.T).T
-    return np.asarray(np.column_stack([moved[:, :p] / length, moved[:, p]]))
-
-
 def estimate(
-    rows: Rows, remedy: Remedy, *, theta: Constants | None = None, c: Constants | None = None
+    rows: Rows,
+    remedy: Remedy,
+    *,
+    theta: Constants | None = None,
+    c: Constants | None = None,
+    designs: Designs | None = None,
 ) -> Estimate | Refusal:
     """Fit a remedy; a remedy that cannot be used on these rows comes back as a Refusal.
 
+    designs: designs and their factors on these rows, shared by the remedies of one shape; filled along the way.
     theta, c: constants set by hand (a profile, a dragged lambda); learned from the rows when None.
     """
     refusal = not_offered(remedy) or remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
@@ -254,7 +220,7 @@ def estimate(
     state = remedy.shape.learn(rows.x, constant=meets_constant(rows, remedy.shape))
     if isinstance(remedy.left, Link):
         return _fit_link(rows, remedy, state, theta)
-    return _fit_scale(rows, remedy, state, theta, c)
+    return _fit_scale(rows, remedy, state, theta, c, {} if designs is None else designs)
 
 
 def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
@@ -281,7 +247,12 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
 
 
 def _fit_scale(
-    rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None, c: Constants | None
+    rows: Rows,
+    remedy: Remedy,
+    state: Constants,
+    theta: Constants | None,
+    c: Constants | None,
+    designs: Designs,
 ) -> Estimate | Refusal:
     scale, shape = remedy.left, remedy.shape
     assert isinstance(scale, Scale)
@@ -290,11 +261,12 @@ def _fit_scale(
     if isinstance(constants, Refusal):
         return constants
     t, c = constants
-    columns = shape.columns(rows.x, state, t)
-    x = design(rows, columns, own_level=shape.own_level)
-    if not np.isfinite(x).all():
-        return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
-    linear = factor(x)
+    if (shape.key, t) not in designs:
+        x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
+        if not np.isfinite(x).all():
+            return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
+        designs[shape.key, t] = x, factor(x)
+    x, linear = designs[shape.key, t]
     if linear.aliased:
         return _aliased(remedy, linear.aliased, x.shape[1])
     z = scale.forward(rows.y, c)

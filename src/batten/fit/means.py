@@ -10,15 +10,16 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from scipy.stats import t as student
 
 from batten.engine.rows import Array, Ints
 from batten.families.base import Constants
-from batten.fit.carry import Carried, carried
 from batten.fit.estimate import Estimate
 from batten.fit.medians import middle
+from batten.fit.own_scale import OwnScale, on_own_scale
 from batten.fit.smear import mean_of, shares_of_residuals
 
 __all__ = [
@@ -44,7 +45,7 @@ class Averaged:
     """Values (G,) and their uncertainty.
 
     root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
-    spread under constant errors). It is kept as loads (r, G) of few features (N, r), root = features @ loads, since many
+    spread under constant errors). It is kept as loads (r, G) of few features (N, r in all), root = features @ loads, since many
     rows and many places make it large; features None means that loads are the root. left_out (n, G): the values without
     row i, or None beyond the jackknife's reach.
     """
@@ -53,11 +54,16 @@ class Averaged:
     loads: Array
     left_out: Array | None
     df: int
-    features: Array | None = None
+    features: tuple[Array, ...] | None = None
 
     @property
     def root(self) -> Array:
-        return self.loads if self.features is None else self.features @ self.loads
+        return self.loads if self.features is None else np.hstack(self.features) @ self.loads
+
+    @cached_property
+    def _cross(self) -> Array:
+        """Cross-product of the features (r, r)."""
+        return _products(self.features or (), self.features or ())
 
     def combine(self, weights: Array) -> Averaged:
         """Linear combinations: weights (G, H)."""
@@ -80,12 +86,17 @@ class Averaged:
 
     def covariance_of_gap(self, other: Averaged) -> Array:
         """Covariance (G, G) of self minus other, whose roots belong to the same rows."""
-        mine, theirs = self.features, other.features
-        if mine is None or theirs is None:
+        if self.features is None or other.features is None:
             root = self.root - other.root
             return np.asarray(root.T @ root)
-        both, loads = np.hstack([mine, theirs]), np.vstack([self.loads, -other.loads])
-        return np.asarray(loads.T @ (both.T @ both) @ loads)
+        between = self.loads.T @ _products(self.features, other.features) @ other.loads
+        own = (a.loads.T @ a._cross @ a.loads for a in (self, other))
+        return np.asarray(sum(own) - between - between.T)
+
+
+def _products(one: tuple[Array, ...], two: tuple[Array, ...]) -> Array:
+    """Cross-products of two stacks of columns, without copying them side by side."""
+    return np.block([[a.T @ b for b in two] for a in one])
 
 
 def _jackknife_root(left: Array) -> Array:
@@ -253,7 +264,7 @@ def with_errors(
         feature, load = part if isinstance(part, tuple) else (part, np.eye(len(value)))
         features.append(feature)
         loads.append(load / est.n)
-    return Averaged(value, np.vstack(loads), None, est.df_residual, np.hstack(features))
+    return Averaged(value, np.vstack(loads), None, est.df_residual, tuple(features))
 
 
 def _whole(part: Share) -> Array:
@@ -323,7 +334,7 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
     scale = est.scale
     if of == "mean" and scale.closed == "identity":
         return lambda eta: eta
-    own = carried(est, move)
+    own = on_own_scale(est, move)
     if of == "mean":
         residual = own.residual(est.residual - move @ est.residual_jacobian.T)
         return lambda eta: mean_of(scale, own.c, own.eta(eta), residual, keep)
@@ -331,7 +342,7 @@ def _bring_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
     return lambda eta: by_replicate(scale.inverse, own, own.eta(eta + shift))
 
 
-def by_replicate(undo: Callable[[Array, Constants], Array], own: Carried, eta: Array) -> Array:
+def by_replicate(undo: Callable[[Array, Constants], Array], own: OwnScale, eta: Array) -> Array:
     """The scale's inverse (or its slope) at (R, k), each replicate with its own constants."""
     if all(c == own.c[0] for c in own.c):
         return undo(eta, own.c[0])

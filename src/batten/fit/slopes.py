@@ -12,10 +12,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from batten.engine.rows import Array, Ints
-from batten.fit.carry import carried
 from batten.fit.estimate import Estimate
 from batten.fit.means import BLOCK, Averaged, Share, by_replicate, pattern_weights, patterns, with_errors
 from batten.fit.medians import middle
+from batten.fit.own_scale import on_own_scale
 from batten.fit.smear import mean_of
 
 __all__ = ["average_slope", "averaged_slopes"]
@@ -137,7 +137,7 @@ def _slope_back(est: Estimate, of: str, move: Array, keep: Array | None) -> Call
     scale = est.scale
     if scale.closed == "identity":
         return np.ones_like
-    own = carried(est, move)
+    own = on_own_scale(est, move)
     length = own.length[:, None]
     if of == "mean":
         residual = own.residual(est.residual - move @ est.residual_jacobian.T)

@@ -8,13 +8,14 @@ import numpy as np
 
 from batten.engine.rows import Array
 from batten.families.base import Constants
-from batten.fit.estimate import Estimate, own_units
+from batten.fit.estimate import Estimate
+from batten.fit.powers import own_units
 
-__all__ = ["Carried", "carried"]
+__all__ = ["OwnScale", "on_own_scale"]
 
 
 @dataclass(frozen=True, eq=False)
-class Carried:
+class OwnScale:
     """The scale's constants in each replicate, and the way from the estimate's own units (R, k) to the replicate's."""
 
     c: list[Constants]
@@ -31,11 +32,11 @@ class Carried:
         return residual * self.length[:, None]
 
 
-def carried(est: Estimate, move: Array) -> Carried:
+def on_own_scale(est: Estimate, move: Array) -> OwnScale:
     """For moves (R, P) of (coef, theta, lambda); nothing moves where no constant of the scale was searched."""
     if not est.scale.searched:
         one = np.ones(len(move))
-        return Carried([est.c] * len(move), 0 * one, one, 0.0)
+        return OwnScale([est.c] * len(move), 0 * one, one, 0.0)
     lam = est.c[0] + move[:, -1]
     units = np.array([own_units(est, float(v)) for v in lam])
-    return Carried([(float(v),) for v in lam], units[:, 0], units[:, 1], est.pivot[0])
+    return OwnScale([(float(v),) for v in lam], units[:, 0], units[:, 1], est.pivot[0])
