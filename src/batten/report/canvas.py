@@ -15,9 +15,12 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.axis import Axis
 from matplotlib.backends.backend_agg import FigureCanvasAgg
+from matplotlib.collections import Collection
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
+from matplotlib.patches import Patch
 from matplotlib.text import Text
-from matplotlib.ticker import FixedFormatter, FixedLocator, MaxNLocator, NullLocator
+from matplotlib.ticker import FixedFormatter, FixedLocator, NullLocator
 from PIL import Image
 
 from batten.engine.rows import Array
@@ -80,12 +83,20 @@ def scale_ticks(axis: Axis, low: float, high: float, *, most: int = 6) -> str:
 
     Set after the limits. The ticks are fixed, since the axis's own formatter follows the user's settings.
     """
-    places = np.asarray(MaxNLocator(nbins=most, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high))
-    places = places[(places >= low - 1e-9 * (high - low)) & (places <= high + 1e-9 * (high - low))]
+    places = round_places(low, high, most=most)
     power, word = _large(float(np.abs(places).max()) if len(places) else 0.0)
     axis.set_major_locator(FixedLocator(places))  # type: ignore[arg-type]
     axis.set_major_formatter(FixedFormatter(_labels(places / power)))
     return word
+
+
+def round_places(low: float, high: float, *, most: int) -> Array:
+    """At most `most` + 1 multiples of 1, 2, 2.5 or 5 times a power of ten inside low to high."""
+    at_least = (high - low) / most
+    unit = float(10.0 ** math.floor(math.log10(at_least)))
+    step = unit * next(m for m in (1, 2, 2.5, 5, 10) if m * unit >= at_least * (1 - 1e-9))
+    first, last = math.ceil(low / step - 1e-9), math.floor(high / step + 1e-9)
+    return np.arange(first, last + 1, dtype=np.float64) * step
 
 
 _WORDS = (
@@ -118,9 +129,16 @@ def settle(figure: Picture, words: Sequence[str]) -> Picture:
     for artist in figure.findobj():
         artist.set_sketch_params(None)
         artist.set_path_effects([])
-        artist.set_snap(None)
         if isinstance(artist, Text):
             artist.set(usetex=False, parse_math=False, fontfamily=list(families()), antialiased=True)
+        elif isinstance(artist, Line2D):
+            artist.set(antialiased=True, fillstyle="full", solid_capstyle="butt", dash_capstyle="butt")
+        elif isinstance(artist, Patch | Collection):
+            artist.set_antialiased(True)
+    for ax in figure.axes:
+        for axis, ha, va in ((ax.xaxis, "center", "top"), (ax.yaxis, "right", "center_baseline")):
+            for label in axis.get_ticklabels():
+                label.set(fontweight="normal", ha=ha, va=va)
     return figure
 
 

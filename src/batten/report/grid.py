@@ -18,7 +18,7 @@ LEAST = 13
 
 @dataclass(frozen=True)
 class Column:
-    """head: what the column holds, with its unit. kind: "number", "key" or "" for words."""
+    """head: what the column holds, with its unit. kind: "number", "key", "words" (long ones) or "" (short ones)."""
 
     head: str
     kind: str = ""
@@ -53,7 +53,7 @@ def as_text(grid: Grid, *, width: int = 100) -> str:
     """Aligned text of `width` letters a line where the numbers allow it: words break onto further lines."""
     cells = [[plain(cell) for cell in row] for row in grid.rows]
     widths = [_needed(column, [row[j] for row in cells]) for j, column in enumerate(grid.columns)]
-    words = [j for j, column in enumerate(grid.columns) if not column.kind]
+    words = [j for j, column in enumerate(grid.columns) if column.kind in ("", "words")]
     while sum(widths) + 2 * (len(widths) - 1) > width and any(widths[j] > LEAST for j in words):
         widths[max(words, key=lambda j: widths[j])] -= 1
     heads = [_lines(c.head, w) for c, w in zip(grid.columns, widths, strict=True)]

@@ -109,8 +109,10 @@ def _pieces(word: str, inches: float, size: float, bold: bool) -> list[str]:
 
 @cache
 def _advance(letter: str, bold: bool) -> float:
-    """Width of a letter as a share of the type size."""
-    font = _font_of(letter, bold) or _fonts(bold)[0]
+    """Width of a letter, or of the box drawn for it, as a share of the type size."""
+    font = _font_of(letter, bold)
+    if font is None:
+        return 1.0 if letter == _MISSING else _advance(_MISSING, bold)
     font.set_size(_MEASURED, 72)
     return font.load_char(ord(letter), flags=LoadFlags.NO_HINTING).linearHoriAdvance / 65536 / _MEASURED
 

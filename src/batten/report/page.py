@@ -39,7 +39,7 @@ def page(exam: Examination) -> str:
     problem, fit = exam.problem, exam.chosen
     title = f"{plain(problem.response)} on {plain(problem.focus)}"
     body = "\n".join([
-        *_first_screen(exam),
+        *_first_screen(exam, title="h1", part="h2"),
         part(f"The choice: {plain(fit.words)}", _choice(exam)),
         part("What is left", _figure(left_figure(fit, exam[STRAIGHT])) + _checks(exam)),
         part("All that were tried", _tried(exam, figures=True)),
@@ -57,9 +57,12 @@ def page(exam: Examination) -> str:
 
 
 def static_html(exam: Examination) -> str:
-    """What a notebook keeps for readers without a kernel: the first screen, and the rest behind clicks."""
+    """What a notebook keeps for readers without a kernel: the first screen, and the rest behind clicks.
+
+    Without headings, which would stand in the notebook's own table of contents.
+    """
     body = "\n".join([
-        *_first_screen(exam),
+        *_first_screen(exam, title="p", part="p"),
         details(f"All {len(exam)} tried", _tried(exam, figures=False)),
         details("How this was computed", _list(how_computed(exam)) + paragraph(CARE, "quiet")),
         details(f"The chosen remedy as a script: {exam.choice.key}", _script(exam)),
@@ -74,22 +77,22 @@ def save_page(exam: Examination, path: str | Path) -> None:
 
 #: only for the page by itself; a notebook brings its own ground
 _PAGE_CSS = """
-body { background: #fff; margin: 2.5em auto; max-width: 62em; padding: 0 1.5em; }
+body { background: #fff; margin: 2.5em auto; max-width: 68em; padding: 0 1.5em; }
 """
 
 
-def _first_screen(exam: Examination) -> list[str]:
-    """Verdict, figure, rows, span, reasons, cautions."""
+def _first_screen(exam: Examination, *, title: str, part: str) -> list[str]:
+    """Verdict, figure, rows, span, reasons, cautions. title, part: tags of the headline and of the reasons' heading."""
     rows = f"{exam.problem.rows.n:,} rows. {left_out_words(exam.problem)}".strip()
     span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
     return [
-        f'<h1 class="batten-headline">{esc(headline(exam))}</h1>',
+        f'<{title} class="batten-headline"><strong>{esc(headline(exam))}</strong></{title}>',
         paragraph(f"{trial_words(exam)} {rows}"),
         _figure(line_against_choice(exam)),
         f'<div class="batten-span">\n{span}\n</div>',
         shortlist_table(exam),
         *(f'<div class="batten-caution">{paragraph(words)}</div>' for words in cautions(exam)),
-        f"<h2>Why {esc(choice_words(exam))}</h2>",
+        f'<{part} class="batten-title"><strong>Why {esc(choice_words(exam))}</strong></{part}>',
         _list([*exam.choice.reasons, otherwise(exam), *exam.problem.announcements]),
     ]
 

@@ -64,7 +64,7 @@ def _residuals(ax: Axes, fit: Fit, color: str) -> str:
     some = parts.shown_rows(x)
     parts.scatter(ax, x[some], left[some])
     parts.rug(ax, x[some])
-    ax.axhline(0, color=style.INK, linewidth=0.8, linestyle="solid", zorder=3, alpha=1.0)
+    ax.axhline(0, color=style.INK, linewidth=0.8, linestyle="solid", zorder=3, marker="None", alpha=1.0)
     places, middle = running_median(x, left)
     ax.plot(places, middle, color=color, linewidth=2.0, linestyle="solid", zorder=4, marker="None", alpha=1.0,
             solid_joinstyle="round", antialiased=True)  # fmt: skip

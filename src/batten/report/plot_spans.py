@@ -84,9 +84,10 @@ def _guides(ax: Axes, chosen: Entry) -> None:
     """Zero, and the choice's estimate all the way down."""
     low, high = ax.get_xlim()
     if low < 0 < high:
-        ax.axvline(0, color=style.RULE, linewidth=0.9, linestyle="solid", zorder=1, alpha=1.0)
+        ax.axvline(0, color=style.RULE, linewidth=0.9, linestyle="solid", zorder=1, marker="None", alpha=1.0)
     if chosen.defined:
-        ax.axvline(chosen.difference, color=style.CHOICE, linewidth=0.8, linestyle=(0, (1, 2)), zorder=1, alpha=1.0)
+        ax.axvline(chosen.difference, color=style.CHOICE, linewidth=0.8, linestyle=(0, (1, 2)), zorder=1, alpha=1.0,
+                   marker="None")  # fmt: skip
 
 
 def _color(key: str, choice: str) -> str:

@@ -44,11 +44,11 @@ CSS = """
   --batten-rule: var(--jp-border-color1, #b3bdc4); --batten-faint: var(--jp-border-color2, #e7ebee);
   --batten-choice: #0b5688; --batten-line: #a8520a;
   color: var(--batten-ink); font-family: var(--jp-ui-font-family, system-ui, -apple-system, "Segoe UI", sans-serif);
-  font-size: var(--jp-content-font-size1, 14px); line-height: 1.5; max-width: 60em;
+  font-size: var(--jp-content-font-size1, 14px); line-height: 1.5; max-width: 66em;
 }
 body[data-jp-theme-light="false"] .batten-report { --batten-choice: #7cbce6; --batten-line: #e8a25c; }
 .batten-report .batten-headline { font-size: 1.2em; font-weight: 600; margin: 0 0 .35em; }
-.batten-report h2 { font-size: 1.05em; margin: 1.5em 0 .4em; }
+.batten-report h2, .batten-report .batten-title { font-size: 1.05em; margin: 1.5em 0 .4em; }
 .batten-report p { margin: .4em 0; }
 .batten-report .batten-span { border-left: 4px solid var(--batten-choice); padding-left: .7em; margin: .8em 0; }
 .batten-report .batten-quiet { color: var(--batten-quiet); font-size: .92em; }
@@ -68,6 +68,7 @@ body[data-jp-theme-light="false"] .batten-report { --batten-choice: #7cbce6; --b
 }
 .batten-report .batten-table .batten-number { text-align: right; font-variant-numeric: tabular-nums; }
 .batten-report .batten-table td.batten-number { white-space: nowrap; }
+.batten-report .batten-table .batten-words { min-width: 11em; }
 .batten-report .batten-table tbody tr, .batten-report .batten-table tbody tr:nth-child(odd) { background: transparent; }
 .batten-report .batten-table tr.batten-choice th { box-shadow: inset 4px 0 var(--batten-choice); }
 .batten-report .batten-table tr.batten-line th { box-shadow: inset 4px 0 var(--batten-line); }

@@ -10,7 +10,7 @@ from batten.frame.problem import Problem
 from batten.report import numerals
 from batten.report.entries import Entry, Refused, entries, lowest, refused
 from batten.report.grid import Column, Grid, as_html, as_text
-from batten.report.naming import remedy_words
+from batten.report.naming import brief
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
@@ -20,6 +20,8 @@ __all__ = [
 ]  # fmt: skip
 
 REMEDY = "remedy"
+#: letters of a column's name inside a cell
+NAME = 40
 
 
 def shortlist_table(exam: Examination) -> str:
@@ -49,16 +51,17 @@ def shortlist_grid(exam: Examination) -> Grid:
     """The rows of the first screen."""
     rows, roles = entries(exam), shortlist(exam.comparison)
     columns = (Column("role"), *_columns(exam))
-    cells = [(role, *_cells(rows[key], lowest(rows))) for role, key in roles]
+    cells = [(role, *_cells(exam, rows[key], lowest(rows))) for role, key in roles]
     return Grid(columns, tuple(cells), tuple(_mark(key, exam) for _, key in roles))
 
 
 def full_grid(exam: Examination) -> Grid:
     """All rows, with two more columns."""
     rows = entries(exam)
-    more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note")
+    more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", "words")
+    best = lowest(rows)
     cells = [
-        (*_cells(e, lowest(rows)), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()
+        (*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()
     ]
     return Grid((*_columns(exam), *more), tuple(cells), tuple(_mark(key, exam) for key in rows))
 
@@ -67,13 +70,13 @@ def refused_grid(exam: Examination) -> Grid:
     """Refused remedies in plain words."""
     problem = exam.problem
     heads = ("what is wrong", "what was seen", "instead")
-    columns = (Column(REMEDY), Column("key", "key"), *(Column(head) for head in heads))
+    columns = Column(REMEDY, "words"), Column("key", "key"), *(Column(head, "words") for head in heads)
     cells = [_refusal(problem, r) for r in refused(exam)]
     return Grid(columns, tuple(cells), ("",) * len(cells))
 
 
 def _refusal(problem: Problem, r: Refused) -> tuple[str, ...]:
-    return remedy_words(problem, r.key), r.key, r.wrong, r.seen, r.instead
+    return brief(problem, r.key, NAME), r.key, r.wrong, r.seen, r.instead
 
 
 def _columns(exam: Examination) -> tuple[Column, ...]:
@@ -84,7 +87,7 @@ def _columns(exam: Examination) -> tuple[Column, ...]:
     span = numerals.span_words(*exam.question.span, problem.unit(problem.focus))
     joint = ", " if unit else " "
     return (
-        Column(REMEDY),
+        Column(REMEDY, "words"),
         Column("key", "key"),
         Column(f"held-out error{joint}{mean}", "number"),
         Column(f"behind the lowest{joint}{unit}".rstrip(), "number"),
@@ -93,11 +96,11 @@ def _columns(exam: Examination) -> tuple[Column, ...]:
     )
 
 
-def _cells(entry: Entry, best: float) -> tuple[str, ...]:
+def _cells(exam: Examination, entry: Entry, best: float) -> tuple[str, ...]:
     tied = " (tied)" if entry.tied else ""
     gap = "lowest" if entry.gap == 0 else f"{numerals.behind(entry.gap, best)}{tied}"
     return (
-        entry.words, entry.key, numerals.error(entry.rmse, best), gap,
+        brief(exam.problem, entry.key, NAME), entry.key, numerals.error(entry.rmse, best), gap,
         entry.difference_words() if entry.defined else "no number", entry.leftover,
     )  # fmt: skip
 

@@ -31,7 +31,7 @@ def verdict(exam: Examination) -> str:
     if math.isnan(trial.gap):  # nothing can bend
         return words
     gap = show(trial.gap, problem.unit(problem.response))
-    return f"{words} (its mean is off by up to {gap})"
+    return f"{words} (the line's mean is off by up to {gap})"
 
 
 def trial_words(exam: Examination) -> str:

@@ -9,7 +9,7 @@ import math
 from typing import TYPE_CHECKING
 
 from batten.compare.grid import STRAIGHT
-from batten.effects.numbers import show, show_interval
+from batten.effects.numbers import show
 from batten.report import how, numerals
 from batten.report.cautions import SUBTITLE, left_out_words
 from batten.report.entries import entries, lowest
@@ -119,11 +119,12 @@ def _line(exam: Examination) -> str:
     if not trial.knots:
         return plain(trial.words)
     unit = p.unit(p.response)
-    width = trial.gap_high - trial.gap_low
+    width = (trial.gap_high - trial.gap_low) / 10
+    limits = f"{show(trial.gap_low, width=width)} to {show(trial.gap_high, unit, width=width)}"
     test = f"robust F({trial.df[0]}, {trial.df[1]}) = {show(trial.f)}, {how.p_words(trial.p)}"
     return (
-        f"The straight line's mean lay up to {show(trial.gap, unit, width=width)} (limits "
-        f"{show_interval(trial.gap_low, trial.gap_high, unit)}) from the flexible curve ({test}): {trial.verdict}."
+        f"The straight line's mean lay up to {show(trial.gap, unit, width=width)} (limits {limits}) from the flexible "
+        f"curve ({test}): {trial.verdict}."
     )
 
 
