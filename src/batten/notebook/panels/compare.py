@@ -43,17 +43,18 @@ class FirstLook:
     def __init__(self, desk: Desk, span: SpanFields) -> None:
         self._desk = desk
         self.picture, self.table, self.reasons = sheet(), sheet(""), sheet("")
-        self.aim = widgets.ToggleButtons(options=list(AIMS), value=desk.exam.question.aim)
-        self.aim_words = widgets.Label()
+        self.aim = widgets.ToggleButtons(options=list(AIMS), value=desk.exam.question.aim, tooltips=list(AIMS.values()))
         self.aim.observe(weakly(self._chosen), "value")
-        row = widgets.HBox([widgets.Label("Choose for:"), self.aim, self.aim_words])
+        aim = widgets.HBox([widgets.Label("Choose for"), self.aim])
+        aim.add_class("batten-field")
+        row = widgets.HBox([span.box, aim])
         row.add_class("batten-row")
-        self.box = widgets.VBox([self.picture, span.box, row, self.table, self.reasons])
+        self.box = widgets.VBox([self.picture, row, self.table, self.reasons])
 
     def draw(self, exam: Examination) -> None:
         self.picture.value = figure(line_against_choice(exam)) + span_block(exam)
-        self.aim_words.value = AIMS[exam.question.aim]
-        self.table.value = shortlist_table(exam) + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
+        mind = paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
+        self.table.value = f'<div class="batten-short">{shortlist_table(exam)}</div>{mind}'
         why = details(f"Why {choice_words(exam)}", bullets([*exam.choice.reasons, otherwise(exam)]))
         self.reasons.value = "".join(paragraph(words, "caution") for words in cautions(exam)) + why
 
@@ -98,7 +99,7 @@ class Tried:
 
     def draw(self, exam: Examination) -> None:
         head = f"All {len(exam)} tried, lowest held-out error first. The lowest of so many flatters."
-        self.box.value = paragraph(head) + full_table(exam)
+        self.box.value = f'{paragraph(head)}<div class="batten-tall">{full_table(exam)}</div>'
 
 
 class Refused:

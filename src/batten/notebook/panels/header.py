@@ -18,7 +18,7 @@ NAMED = 12
 def header(exam: Examination) -> str:
     """HTML: one sentence of verdict and choice; formula; rows used, and why others were not."""
     problem = exam.problem
-    said = details(_rows(problem), _why(problem) + bullets(problem.announcements) + paragraph(trial_words(exam)))
+    said = details(_rows(problem), bullets(problem.announcements) + _why(problem) + paragraph(trial_words(exam)))
     return (
         f'<h2 class="batten-headline">{esc(headline(exam))}</h2>'
         f'<p class="batten-quiet"><code>{esc(plain(problem.formula))}</code> on '
@@ -40,4 +40,4 @@ def _why(problem: Problem) -> str:
         labels = [shortened(label, 30) for label in rows.index[:NAMED]]
         more = f" and {len(rows) - NAMED:,} more" if len(rows) > NAMED else ""
         told.append(f"{plain(why)}: row{'s' if len(rows) > 1 else ''} {', '.join(labels)}{more}")
-    return bullets(told)
+    return paragraph("Rows left out, by the frame's index:") + bullets(told) if told else ""

@@ -26,6 +26,8 @@ class Pages:
         self.message = Message()
         self.buttons = widgets.ToggleButtons(options=[panel.name for panel in self.panels])
         self.buttons.add_class("batten-pages")
+        for panel in self.panels:
+            panel.box.layout.width = "100%"  # a stack lets its panels shrink
         self.stack = widgets.Stack([panel.box for panel in self.panels], selected_index=0)
         desk.loose.append(widgets.jsdlink((self.buttons, "index"), (self.stack, "selected_index")))
         self.buttons.observe(weakly(self._switched), "index")

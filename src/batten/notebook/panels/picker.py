@@ -34,7 +34,7 @@ class Picker:
         self.field.observe(weakly(self._typed), "value")
         self.button.on_click(weakly(self._pressed))
         row = widgets.HBox([widgets.Label("Open another remedy:"), self.field, self.button])
-        row.add_class("batten-row")
+        row.add_class("batten-field")
         self.box = widgets.VBox([row, self.message.box])
 
     def draw(self, exam: Examination, *, shown: tuple[str, ...]) -> None:

@@ -25,8 +25,8 @@ class RemedyTab:
         self.key = key
         self._heading = sheet()
         self.tried = TryValue(desk, key)
-        panels = (FitOf(key), LeftOf(key), EffectOf(key, span), self.tried, CodeOf(key, cell_id=desk.cell_id), HowOf(key))
-        self.pages = Pages(desk, panels)
+        code = CodeOf(key, cell_id=desk.cell_id)
+        self.pages = Pages(desk, (FitOf(key), LeftOf(key), EffectOf(key, span), self.tried, code, HowOf(key)))
         self.box = widgets.VBox([self._heading, self.pages.box])
 
     def draw(self, exam: Examination) -> None:
@@ -37,5 +37,5 @@ class RemedyTab:
         role = next((role for role, key in shortlist(exam.comparison) if key == self.key), "")
         tail = f' <span class="batten-quiet">{esc(role)}</span>' if role else ""
         name = plain(exam[self.key].words)
-        head = f'<h3>{esc(name)} <span class="batten-key">{esc(self.key)}</span>{tail}</h3>'
+        head = f'<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>'
         return head + "".join(paragraph(words, "caution") for words in cautions(exam, self.key))

@@ -44,7 +44,7 @@ class LeftOf:
 
     def draw(self, exam: Examination) -> None:
         fit = exam[self._key]
-        self.box.value = figure(left_figure(fit, _line(exam))) + checks_table(fit)
+        self.box.value = figure(left_figure(fit, _line(exam))) + checks_table(fit, named=False)
 
 
 class EffectOf:
@@ -101,7 +101,8 @@ class HowOf:
     def draw(self, exam: Examination) -> None:
         told = bullets(how_computed(exam, self._key))
         if self._key is not None:
-            told += coefficients_table(exam[self._key]) + constants_table(exam[self._key])
+            fit = exam[self._key]
+            told += coefficients_table(fit) + constants_table(fit) + checks_table(fit, named=True)
         self.box.value = told + paragraph(CARE, "quiet")
 
 
@@ -111,4 +112,4 @@ def span_block(exam: Examination, key: str | None = None) -> str:
 
 
 def _line(exam: Examination) -> Fit | None:
-    return exam[STRAIGHT] if STRAIGHT in exam else None
+    return exam.get(STRAIGHT)

@@ -24,12 +24,13 @@ class SpanFields:
         name = shortened(plain(problem.focus), 40)
         self.low = Numbers(problem.focus, a, label=f"Span: {name} from")
         self.high = Numbers(problem.focus, b, label="to", unit=problem.unit(problem.focus))
-        self.back = widgets.Button(description="Back to the first span", layout=widgets.Layout(width="auto"))
+        self.back = widgets.Button(description="Back", tooltip="Back to the first span")
+        self.back.layout.width = "auto"
         for field in (self.low, self.high):
             field.on_change(weakly(self._changed))
         self.back.on_click(weakly(self._restored))
         row = widgets.HBox([self.low.box, self.high.box, self.back])
-        row.add_class("batten-row")
+        row.add_class("batten-field")
         self.box = widgets.VBox([row, self.message.box])
         self._show(desk.exam)
 
@@ -55,4 +56,4 @@ class SpanFields:
         for field, value in zip((self.low, self.high), exam.question.span, strict=True):
             field.set(value)
         self._writing = False
-        self.back.disabled = exam.question.span == self.first
+        self.back.layout.display = "none" if exam.question.span == self.first else ""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Sequence
 
 import pandas as pd
@@ -16,6 +17,9 @@ from batten.report.numerals import difference, span_words
 
 __all__ = ["checks_table", "coefficients_table", "constants_table", "effect_table", "predictions_table"]
 
+#: the name of a method, in brackets at the end of a question
+_METHOD = re.compile(r" \([^()]*\)(?=\?$)")
+
 
 def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
     """The span's effects side by side, of the mean and of the median."""
@@ -23,8 +27,9 @@ def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
     y_unit, x_unit = problem.unit(problem.response), problem.unit(problem.focus)
     first = effects[0]
     ends = span_words(first.a, first.b, x_unit)
-    per = f"{y_unit or plain(problem.response)} per {x_unit or f'unit of {plain(problem.focus)}'}"
-    heads = [Column(f"{plain(problem.focus)} {ends}"), *(Column(f"{e.of} of {plain(problem.response)}") for e in effects)]
+    y = plain(problem.response)
+    per = f"{y_unit or y} per {x_unit or f'unit of {plain(problem.focus)}'}"
+    heads = [Column(f"{plain(problem.focus)} {ends}"), *(Column(f"{e.of} of {y}") for e in effects)]
     rows = [
         (_with_unit("difference", y_unit), *(difference(*_ends(e.difference)) for e in effects)),
         ("ratio", *(_ratio(e) for e in effects)),
@@ -44,11 +49,11 @@ def predictions_table(fit: Fit, mean: pd.DataFrame, median: pd.DataFrame, new: p
     return _html(heads, rows)
 
 
-def checks_table(fit: Fit) -> str:
-    """What was checked, and what was found."""
+def checks_table(fit: Fit, *, named: bool) -> str:
+    """What was checked, and what was found. named: with the names of the tests."""
     table = fit.checks()
     rows = [
-        (plain(name), plain(asked), plain(reading))
+        (plain(name), plain(asked) if named else _METHOD.sub("", plain(asked)), plain(reading))
         for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
     ]
     return _html([Column("check"), Column("asked"), Column("found")], rows)

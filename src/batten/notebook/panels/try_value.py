@@ -106,10 +106,8 @@ def _field(problem: Problem, slots: list[Slot], values: pd.Series[Any]) -> Field
 def _question(problem: Problem, wanted: widgets.Text) -> widgets.HBox:
     """The same asked backwards."""
     y, x = (shortened(plain(name), 40) for name in (problem.response, problem.focus))
-    alike = ", covariates as in the rows" if problem.covariates else ""
-    box = widgets.HBox([
-        widgets.Label(f"Backwards: at which {x} is the mean of {y}"), wanted,
-        widgets.Label(f"{shortened(problem.unit(problem.response), 20)}?{alike}".strip()),
-    ])  # fmt: skip
-    box.add_class("batten-row")
+    alike = " (covariates as in the rows)" if problem.covariates else ""
+    ask = f"Backwards: at which {x}{alike} is the mean of {y}"
+    box = widgets.HBox([widgets.Label(ask), wanted, widgets.Label(shortened(problem.unit(problem.response), 20))])
+    box.add_class("batten-field")
     return box
