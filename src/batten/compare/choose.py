@@ -124,7 +124,8 @@ def _without_bend(candidates: Mapping[str, Candidate], pool: list[str], reasons:
             reasons.append(f"{count} of {len(pool)} remedies leave a bend that matters and were set aside.")
         return straight
     reasons.append("Every remedy leaves a bend that matters; the choice is the least bad, not a good one.")
-    least = min(pool, key=lambda k: b.largest if (b := candidates[k].bend) else 0.0)
+    sizes = {k: 0.0 if (b := candidates[k].bend) is None else b.largest for k in pool}
+    least = min(pool, key=lambda k: sizes[k])
     return [least]
 
 

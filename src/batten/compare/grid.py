@@ -133,10 +133,10 @@ def _run(
         progress(steps - 1, steps, "left-over bend")
     bends = {key: bend_of(reference, est, level=question.level) for key, est in estimates.items()}
     turns = {key: _turns(est, question.expect) for key, est in estimates.items()}
-    done = _assemble(rows, question, splits, reference, estimates, scores, bends, turns, refused, unit=unit)
+    found = _assemble(rows, question, splits, reference, estimates, scores, bends, turns, refused, unit=unit)
     if progress:
         progress(steps, steps, "done")
-    return done
+    return found
 
 
 def _assemble(

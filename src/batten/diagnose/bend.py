@@ -1,4 +1,4 @@
-"""Does the bend matter? The gap between a remedy's curve and a flexible one, in units of y, with a band for the whole curve.
+"""Does the bend matter? The gap between a remedy's curve and a flexible one, in units of y, with a band for all of it.
 
 The flexible curve is a restricted cubic spline of y itself whose knots are fixed by the number of rows alone, so the
 verdict on the straight line is one test that was not chosen by the data. The same comparison with a remedy in the
@@ -73,7 +73,7 @@ def knots_for(n: int) -> int:
 
 
 def flexible(rows: Rows, *, tolerance: float | None, level: float = 0.95) -> Flexible:
-    """Fit the reference curve. tolerance: smallest gap that matters, units of y; None for a quarter of its residual SD."""
+    """Fit the reference curve. tolerance: smallest gap that matters, units of y; None: a quarter of its residual SD."""
     low, high = np.quantile(rows.x, [0.05, 0.95])
     places = np.linspace(low, high, PLACES)
     for knots in range(knots_for(rows.n), 2, -1):

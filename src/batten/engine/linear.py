@@ -53,7 +53,7 @@ class Factored:
     def aliased(self) -> int:
         """How many columns are (numerically) combinations of the columns before them."""
         left = np.abs(np.diagonal(self.r))
-        return self.r.shape[1] - len(left) + int((left < ALIASED).sum())
+        return int(self.r.shape[1] - len(left) + (left < ALIASED).sum())
 
     @cached_property
     def root(self) -> Array:

@@ -56,11 +56,10 @@ class Rows:
     def take(self, which: Ints | npt.NDArray[np.bool_]) -> Rows:
         """The same analysis on a subset (or repeated selection) of its rows."""
 
-        def pick(a: npt.NDArray[np.generic] | None) -> npt.NDArray[np.generic] | None:
-            return None if a is None else a[which]
-
         return Rows(
             y=self.y[which], x=self.x[which], base=self.base[which], modifier=self.modifier[which],
-            intercept=self.intercept, constant=self.constant, weights=pick(self.weights),
-            weights_kind=self.weights_kind, cluster=pick(self.cluster), offset=pick(self.offset),
+            intercept=self.intercept, constant=self.constant, weights_kind=self.weights_kind,
+            weights=None if self.weights is None else self.weights[which],
+            cluster=None if self.cluster is None else self.cluster[which],
+            offset=None if self.offset is None else self.offset[which],
         )  # fmt: skip

@@ -26,8 +26,9 @@ FEW_ROWS = 5_000
 class Searched:
     """A model with constants inside: columns(theta) -> (n, k) with slopes (q, n, k), beside fixed columns (n, p).
 
-    rebuild: the same on some of the rows. candidates (K, q): the grid; finite: there is nothing between its points. lower, upper (q,): limits of theta.
-    corners: sorted places where the profile of a single theta has a corner, at which Gauss-Newton can stop short.
+    rebuild: the same on some of the rows. candidates (K, q): the grid; finite: there is nothing between its points.
+    lower, upper (q,): limits of theta. corners: sorted places where the profile of a single theta has a corner, at which
+    Gauss-Newton can stop short.
     """
 
     fixed: Array
@@ -229,7 +230,7 @@ def search(model: Searched, z: Array, *, start: Array | None = None, tries: int 
     return min(found, refine(model, model.candidates[order[0]], z, precision=precision), key=lambda f: f.rss)
 
 
-def _apart(model: Searched, order: Array, profile: Array, tries: int) -> list[int]:
+def _apart(model: Searched, order: Ints, profile: Array, tries: int) -> list[int]:
     """The best candidate and the next best local minima of a one-dimensional grid (the best few in more)."""
     if model.candidates.shape[1] > 1:
         return [int(k) for k in order[:tries]]

@@ -1,4 +1,4 @@
-"""All training sets at once: searched constants and mean models refitted in every set by one batch of small products.
+"""All training sets at once: searched constants and mean models refitted by batches of small products.
 
 At a few hundred rows the cost of refitting is the number of Python calls, not arithmetic, so the sets are stacked: every
 array has a leading axis S, and `mask` (S, n) holds which rows each set trains on.
@@ -9,6 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
 
 from batten.engine.irls import Mean
 from batten.engine.rows import Array, Ints
@@ -47,7 +48,7 @@ class _Problem:
         inverse, right = np.linalg.inv(cross), (mask * z) @ q
         return cls(model, mask, z, inverse, right, mask @ z**2 - np.einsum("sp,spr,sr->s", right, inverse, right))
 
-    def some(self, which: Array) -> _Problem:
+    def some(self, which: Ints) -> _Problem:
         """The same for some of the sets."""
         return _Problem(self.model, self.mask[which], self.z, self.inverse[which], self.right[which], self.total[which])
 
@@ -85,7 +86,7 @@ def _gain(square: Array, right: Array) -> tuple[Array, Array]:
 
 
 def search_sets(model: Searched, z: Array, mask: Array, start: Array, *, steps: int = 40) -> Array:
-    """Best theta of every training set (S, q): from `start` (q,) or the grid's better place, then Gauss-Newton steps."""
+    """Best theta of every training set (S, q): from `start` (q,) or a better place of the grid, by Gauss-Newton."""
     problem = _Problem.of(model, z, mask)
     theta, rss = _starts(problem, np.tile(start, (len(mask), 1)))
     if model.finite:
@@ -147,10 +148,10 @@ def _steps(problem: _Problem, theta: Array) -> tuple[Array, Array]:
 def _inverses(square: Array) -> Array:
     if square.shape[1] == 1:
         return np.asarray(1 / square)
-    return np.linalg.pinv(square, rcond=1e-12, hermitian=True)
+    return np.asarray(np.linalg.pinv(square, rcond=1e-12, hermitian=True))
 
 
-def _descend(problem: _Problem, theta: Array, rss: Array, step: Array, place: Ints) -> Array:
+def _descend(problem: _Problem, theta: Array, rss: Array, step: Array, place: Ints) -> npt.NDArray[np.bool_]:
     """Step the sets at `place`, each step shortened until its RSS falls; theta and rss are changed there.
 
     Returns which of them improved.
@@ -204,9 +205,9 @@ class TrainedMeans:
 def solve_means(
     model: Mean, x: Array, y: Array, mask: Array, start: Array, *, offset: Array | None = None, steps: int = 30
 ) -> TrainedMeans:
-    """Iteratively reweighted least squares in every training set. x (n, p), or (S, n, p) with columns of each set's own.
+    """Iteratively reweighted least squares in every training set.
 
-    start (p,) or (S, p): coefficients to start from.
+    x (n, p), or (S, n, p) where sets have columns of their own. start (p,) or (S, p): coefficients to start from.
     """
     count, n = mask.shape
     length = np.sqrt((x * x).sum(axis=-2, keepdims=True))

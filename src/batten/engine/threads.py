@@ -1,8 +1,8 @@
 """One BLAS thread inside our own work.
 
-The matrices here are tall and narrow or tiny; several threads on each of thousands of small products cost more than they
-bring, and far more where other programs share the processors. Fixed threads also fix the order of additions, so printed
-digits do not depend on the number of processors.
+The matrices here are tall and narrow or tiny: several threads on each of thousands of small products cost more than
+they bring, and far more where other programs share the processors. A fixed number of threads also fixes the order of
+additions, so printed digits do not depend on the number of processors.
 """
 
 from __future__ import annotations

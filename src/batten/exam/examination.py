@@ -213,7 +213,9 @@ def examine(
 
     Raises InputError or UnknownNameError, with what is wrong, what was seen and what to do.
     """
-    _check_options(aim=aim, level=level, tolerance=tolerance, expect=expect, error_kind=errors, folds=folds, repeats=repeats)
+    _check_options(
+        aim=aim, level=level, tolerance=tolerance, expect=expect, error_kind=errors, folds=folds, repeats=repeats
+    )
     _not_yet(weights=weights, cluster=cluster, exposure=exposure, by=by)
     problem = read(
         formula, data, focus=focus, rows=rows, weights=weights, weights_kind=weights_kind, cluster=cluster,

@@ -241,8 +241,8 @@ def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
     return Searched(
         fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
         candidates=shape.candidates(rows.x, state),
-        rebuild=lambda which: searched_model(rows.take(which), shape, state), lower=lower, upper=upper, finite=shape.finite,
-        corners=np.unique(rows.x) if shape.corners else None,
+        rebuild=lambda which: searched_model(rows.take(which), shape, state), lower=lower, upper=upper,
+        finite=shape.finite, corners=np.unique(rows.x) if shape.corners else None,
     )  # fmt: skip
 
 
@@ -281,7 +281,8 @@ def _fit_scale(
         remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
         factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
         log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c)),
-        parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0), notes=("constant set by hand; not ranked",) if by_hand else (),
+        parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0),
+        notes=("constant set by hand; not ranked",) if by_hand else (),
     )  # fmt: skip
     if not est.moving:
         return est

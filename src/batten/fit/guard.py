@@ -60,7 +60,7 @@ def domain_trouble(scale: Scale, c: Constants, eta: Array, residual: Array) -> R
         worst = eta.min() if np.isfinite(low) else eta.max()
         return Refusal(
             wrong=f"Fitted values leave what {scale.key} can undo.",
-            seen=f"{outside} of {len(eta)} fitted values cannot be brought back to y ({worst:.4g} on the fitted scale).",
+            seen=f"{outside} of {len(eta)} fitted values have no y to go back to ({worst:.4g} on the fitted scale).",
             instead="log y or a log link, whose fitted values can always be brought back.",
         )
     passed = [low] if eta.min() + residual.min() <= low else []

@@ -23,8 +23,8 @@ from batten.fit.own_scale import OwnScale, on_own_scale
 from batten.fit.smear import mean_of, shares_of_residuals
 
 __all__ = [
-    "BLOCK", "Averaged", "Target", "averaged_means", "by_replicate", "interval", "jackknifed", "means_at_rows", "pattern_weights",
-    "patterns", "target", "with_errors",
+    "BLOCK", "Averaged", "Target", "averaged_means", "by_replicate", "interval", "jackknifed", "means_at_rows",
+    "pattern_weights", "patterns", "target", "with_errors",
 ]  # fmt: skip
 
 #: up to this many rows intervals of retransformed means leave out each row in turn
@@ -45,9 +45,9 @@ class Averaged:
     """Values (G,) and their uncertainty.
 
     root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
-    spread under constant errors). It is kept as loads (r, G) of few features (N, r in all), root = features @ loads, since many
-    rows and many places make it large; features None means that loads are the root. left_out (n, G): the values without
-    row i, or None beyond the jackknife's reach.
+    spread under constant errors). Many rows and many places make it large, so it is kept as loads (r, G) of few
+    features (N, r in all), root = features @ loads; features None means that loads are the root. left_out (n, G): the values
+    without row i, or None beyond the jackknife's reach.
     """
 
     value: Array

@@ -37,7 +37,7 @@ def keep_weights(keep: Array | None, count: int) -> Array | None:
 
 def _average(values: Array, weights: Array | None) -> Array:
     """Average over the last axis, (R, n) -> (R,)."""
-    return values.mean(axis=-1) if weights is None else np.einsum("rn,rn->r", values, weights)
+    return np.asarray(values.mean(axis=-1) if weights is None else np.einsum("rn,rn->r", values, weights))
 
 
 def mean_factor(residual: Array, keep: Array | None = None) -> Array:
@@ -142,7 +142,7 @@ def shares_of_residuals(undo: Undo, residual: Array, eta: Array, share: Array) -
         error = np.abs(chebyshev.chebvander((probe - low) * 2 / span - 1, degree) @ loads - exact)
         if (error <= 1e-10 * np.abs(exact).max()).all():
             break
-    return chebyshev.chebvander((residual - low) * 2 / span - 1, degree), loads
+    return np.asarray(chebyshev.chebvander((residual - low) * 2 / span - 1, degree), dtype=np.float64), loads
 
 
 def row_means(undo: Undo, eta: Array, residual: Array, weights: Array | None = None) -> Array:
@@ -163,7 +163,7 @@ def _pool(residual: Array, weights: Array | None) -> tuple[Array, Array]:
     low, high = float(residual.min()), float(residual.max())
     place = np.minimum(((residual - low) * (POOLED / (high - low))).astype(np.intp), POOLED - 1)
     share = np.full(residual.size, 1.0 / residual.size) if weights is None else weights
-    total = np.bincount(place, share, POOLED)
+    total: Array = np.bincount(place, share, POOLED).astype(np.float64)
     full = total > 0
     centre = np.bincount(place, share * residual, POOLED)[full] / total[full]
     return centre, total[full]
