@@ -59,6 +59,15 @@ class HeldOut:
 
 
 @dataclass(frozen=True, eq=False)
+class _Split:
+    """Training rows, held-out rows, and the training rows' x in rising order."""
+
+    train: Ints
+    test: Ints
+    sorted_x: Array
+
+
+@dataclass(frozen=True, eq=False)
 class _Trained:
     """One training set's fit: linear predictor of all rows (n,), the scale's constants, and v = x0'(X'X)^-1 x0 of the
     held-out rows."""
@@ -71,8 +80,12 @@ class _Trained:
 
 def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusal]:
     """Scores of every estimate on the same splits, in the order given."""
+    if not estimates:
+        return []
     out: list[HeldOut | Refusal | None] = [None] * len(estimates)
-    sets = splits.sets
+    x = estimates[0].rows.x
+    # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
+    sets = [_Split(train, test, np.sort(x[train])) for train, test in splits.sets]
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
         if est.link is not None:
@@ -88,18 +101,18 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     return [r for r in out if r is not None]
 
 
-def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[HeldOut | Refusal]:
+def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Refusal]:
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
     precondition = group[0].factored.root
-    states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in sets]
+    states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
     width = len(precondition)
     trained: list[list[_Trained]] = [[] for _ in group]
     z_fixed = np.column_stack([np.zeros(rows.count) if est.scale.searched else est.z for est in group])
     bases, inverses = [], []
-    for s, (_, test) in enumerate(sets):
+    for s, test in enumerate(split.test for split in sets):
         basis = whole
         if basis is None:
             columns = shape.columns(rows.x, states[s])
@@ -123,12 +136,13 @@ def _score_group(group: list[Estimate], sets: list[tuple[Ints, Ints]]) -> list[H
 
 
 def _with_powers(
-    est: Estimate, sets: list[tuple[Ints, Ints]], fits: list[_Trained], bases: list[Array], inverses: list[Array]
+    est: Estimate, sets: list[_Split], fits: list[_Trained], bases: list[Array], inverses: list[Array]
 ) -> Iterator[_Trained | Refusal]:
     """The power of y learned again in every training set, and the fit at it."""
     y, power, shared = est.rows.y, scale_power(est.scale), bases[0] is bases[-1]
-    found = fold_powers(power, y, bases[0], inverses, [test for _, test in sets], est.c[0]) if shared else None
-    for s, ((train, _), fit) in enumerate(zip(sets, fits, strict=True)):
+    found = fold_powers(power, y, bases[0], inverses, [split.test for split in sets], est.c[0]) if shared else None
+    for s, (split, fit) in enumerate(zip(sets, fits, strict=True)):
+        train = split.train
         if found is not None:
             c, inside = float(found[s]), True
         else:
@@ -145,17 +159,18 @@ def _with_powers(
         yield _Trained(eta, (c,), fit.v, fit.columns)
 
 
-def _searched_fits(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Iterator[_Trained | Refusal]:
+def _searched_fits(est: Estimate, sets: list[_Split]) -> Iterator[_Trained | Refusal]:
     """Shapes with constants of their own, searched again in each training set."""
     rows, shape = est.rows, est.shape
-    states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in sets]
+    states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
     if all(state == est.state for state in states) and not est.scale.searched:
         thetas = _shared_search(est, sets)
     else:
         thetas = None
     p = len(est.coef)
     root = est.factored.root[:p, :p]  # the coefficients come first, so this is the triangle of the columns alone
-    for s, (train, test) in enumerate(sets):
+    for s, split in enumerate(sets):
+        train, test = split.train, split.test
         theta, c = (thetas[s], est.c) if thetas is not None else _own_search(est, rows.take(train), states[s])
         x = design(rows, shape.columns(rows.x, states[s], tuple(theta)), own_level=shape.own_level)
         fitted = _least_squares(x, est.z if c == est.c else est.scale.forward(rows.y, c), root, test)
@@ -165,9 +180,9 @@ def _searched_fits(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Iterator[_Tr
         yield _Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
 
 
-def _shared_search(est: Estimate, sets: list[tuple[Ints, Ints]]) -> Array:
+def _shared_search(est: Estimate, sets: list[_Split]) -> Array:
     """Best constants of every training set (S, q), all sets at once as far as memory allows."""
-    held = [test for _, test in sets]
+    held = [split.test for split in sets]
     if est.n > ONE_STEP_ROWS and est.moving:
         return _one_step(est, held)
     model = searched_model(est.rows, est.shape, est.state)
@@ -223,11 +238,12 @@ def _least_squares(x: Array, z: Array, root: Array, test: Ints) -> tuple[Array, 
     return eta, np.einsum("ij,jk,ik->i", held, inverse, held)
 
 
-def _score(est: Estimate, sets: list[tuple[Ints, Ints]], fits: Iterator[_Trained | Refusal]) -> HeldOut | Refusal:
+def _score(est: Estimate, sets: list[_Split], fits: Iterator[_Trained | Refusal]) -> HeldOut | Refusal:
     """Losses of one remedy on a transformed (or plain) response."""
     scale, y = est.scale, est.rows.y
     out = np.empty((4, len(sets)))
-    for s, ((train, test), fit) in enumerate(zip(sets, fits, strict=False)):
+    for s, (split, fit) in enumerate(zip(sets, fits, strict=False)):
+        train, test = split.train, split.test
         if isinstance(fit, Refusal):
             return fit
         z = est.z if fit.c == est.c else scale.forward(y, fit.c)
@@ -245,7 +261,7 @@ def _score(est: Estimate, sets: list[tuple[Ints, Ints]], fits: Iterator[_Trained
         jacobian = scale.log_jacobian(y[test], fit.c)
         out[:3, s] = _losses(y[test], mean, median)
         out[3, s] = (_log_t(z[test] - eta, residual, fit.v, df) + jacobian).mean()
-    return HeldOut(out[0], out[1], out[2], out[3], np.array([len(test) for _, test in sets]))
+    return HeldOut(out[0], out[1], out[2], out[3], np.array([len(split.test) for split in sets]))
 
 
 def _sound(scale: Scale, c: Constants, eta: Array, residual: Array) -> bool:
@@ -272,7 +288,7 @@ def _log_t(error: Array, residual: Array, v: Array, df: int) -> Array:
     )  # fmt: skip
 
 
-def _score_link(est: Estimate, sets: list[tuple[Ints, Ints]]) -> HeldOut | Refusal:
+def _score_link(est: Estimate, sets: list[_Split]) -> HeldOut | Refusal:
     """Losses of a mean model; its median is the mean times the median of y / mu."""
     rows, shape, link = est.rows, est.shape, est.link
     assert isinstance(link, Link)
@@ -282,7 +298,7 @@ def _score_link(est: Estimate, sets: list[tuple[Ints, Ints]]) -> HeldOut | Refus
     block = max(1, BLOCK // (rows.count * len(est.coef)))
     for first in range(0, len(sets), block):
         some = sets[first : first + block]
-        states = [shape.learn(rows.x[train], constant=meets_constant(rows, shape)) for train, _ in some]
+        states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in some]
         if any(len(state) != len(est.state) for state in states):
             return _fewer(shape.key)
         shared = all(state == est.state for state in states)
@@ -290,17 +306,18 @@ def _score_link(est: Estimate, sets: list[tuple[Ints, Ints]]) -> HeldOut | Refus
             design(rows, shape.columns(rows.x, state, est.theta), own_level=shape.own_level)
             for state in (states[:1] if shared else states)
         ])  # fmt: skip
-        mask = masks(rows.count, [test for _, test in some])
+        mask = masks(rows.count, [split.test for split in some])
         done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, offset=rows.offset, steps=steps)
         if (steps > 1 and not done.settled.all()) or not np.isfinite(done.eta).all():
             return _rank(shape.key)
         mu = link.mean(done.eta)
         if not np.isfinite(mu).all():
             return _unsafe(est)
-        for s, (train, test) in enumerate(some):
+        for s, split in enumerate(some):
+            train, test = split.train, split.test
             median = float(np.median(rows.y[train] / mu[s, train]))
             out[:, first + s] = _losses(rows.y[test], mu[s, test], mu[s, test] * median)
-    return HeldOut(out[0], out[1], out[2], None, np.array([len(test) for _, test in sets]))
+    return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
 
 
 def _inverse(cross: Array) -> Array | None:

@@ -221,8 +221,10 @@ def search(model: Searched, z: Array, *, start: Array | None = None, tries: int 
     if model.finite:
         return Found(model.candidates[order[0]], float(profile[order[0]]), settled=bool(np.isfinite(profile[order[0]])))
     if start is None:
-        starts = _apart(model, order, profile, tries)
-        return min((refine(model, model.candidates[k], z, precision=precision) for k in starts), key=lambda f: f.rss)
+        starts = [model.candidates[k] for k in _apart(model, order, profile, tries)]
+        if every > 1:  # the part of the rows tells which start is best, and where it leads to within its own error
+            starts = [min((refine(small, k, thin_z, precision=1e-6) for k in starts), key=lambda f: f.rss).theta]
+        return min((refine(model, k, z, precision=precision) for k in starts), key=lambda f: f.rss)
     found = refine(model, start, z, precision=precision)
     # a warm start saves the other starts unless the grid knows a clearly lower cell
     if found.settled and found.rss * len(thin_z) / len(z) <= profile[order[0]] * (1 if every == 1 else 1.02):
