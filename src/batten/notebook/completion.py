@@ -117,7 +117,8 @@ def _called_q(name: str) -> str:
 
 
 def _columns(line: str, variables: Mapping[str, Any]) -> list[str]:
-    frame, _, _ = _read(_words(line)[0])
+    words, at_end = _words(line)
+    frame, _, _ = _read([*words, at_end])
     return column_names(variables.get(frame)) or []
 
 

@@ -19,7 +19,7 @@ def fit_html(fit: Fit) -> str:
     """Title, figure and sentences."""
     said = "\n".join(f"<li>{esc(sentence)}</li>" for sentence in _sentences(fit))
     return (
-        f'<div class="batten-report">\n<style>{CSS}</style>\n<h2>{esc(_title(fit))}</h2>\n'
+        f'<div class="batten-report">\n<style>{CSS}</style>\n<h2 class="batten-headline">{esc(_title(fit))}</h2>\n'
         f'<figure class="batten-figure">{img_html(fit_figure(fit))}</figure>\n<ul>\n{said}\n</ul>\n'
         f"{paragraph(MORE, 'quiet')}\n</div>"
     )

@@ -9,6 +9,7 @@ from typing import Any
 
 from batten.errors import magic as errors
 from batten.exam import Examination
+from batten.families import parse
 from batten.notebook.display import show_table
 from batten.notebook.insertion import put_in_next_cell
 from batten.notebook.variables import frame_names
@@ -36,9 +37,11 @@ def _unquoted(text: str) -> str:
 
 
 def _code(exam: Examination, key: str, shell: Any) -> None:
-    fit = exam[key] if key else exam.chosen
+    name = parse(key).key if key else exam.choice.key
+    untried = name not in exam and name not in exam.refused.index
+    fit = (exam.with_remedy(name) if untried else exam)[name]
     put_in_next_cell(fit.code())
-    print(f"In the next cell: {fit.label}.")
+    print(f"In the next cell: {fit.label}{'; it was not among those tried' if untried else ''}.")
 
 
 def _table(exam: Examination, rest: str, shell: Any) -> None:

@@ -80,7 +80,7 @@ def _pair(option: Option, text: str) -> tuple[str, str]:
 _TABLE = (
     Option("--focus", ("NAME",), "predictor in question (the first plain numeric one)", _text, "columns"),
     Option("--aim", ("effect|prediction",), "what the model is for (effect)", _text, ("effect", "prediction")),
-    Option("--span", ("A", "B"), "two values of that predictor to compare (its quartiles, rounded)", _number),
+    Option("--span", ("A", "B"), "two values of it to compare (its quartiles, rounded)", _number),
     Option("--level", ("LEVEL",), "level of the intervals (0.95)", _number),
     Option("--tolerance", ("T",), "smallest gap that matters, in units of the response", _number),
     Option("--expect", ("rising|falling",), "which way the mean must go", _text, ("rising", "falling")),
