@@ -147,7 +147,7 @@ def _mean_of_pairs(parts: Parts) -> list[str]:
         "    if len(eta) <= 200:",
         f"        return {exact}",
         "    ends = [np.nanmin(eta) - 1e-9, np.nanmax(eta) + 1e-9]  # many eta by a polynomial right to ten digits",
-        f"    return np.polynomial.Chebyshev.interpolate(mean, 100, ends, args={args})(eta)",
+        f"    return np.polynomial.Chebyshev.interpolate(mean, 60, ends, args={args})(eta)",
     ]
 
 

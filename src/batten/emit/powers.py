@@ -40,14 +40,14 @@ def power_moves(parts: Parts) -> list[str]:
     held = " - z1[-1] - g * (z - e - held(LAMBDA)[0])" if parts.covariates.intercept else " - g * (z - e)"
     return [
         "# LAMBDA was estimated too: a Newton step of the whole likelihood (Box and Cox 1964) leaves out each row",
-        f"m, s2, g = np.median(y), e @ e / len(e), {_drift(parts, 'np.median(y)')}",
+        f"m, var, g = np.median(y), e @ e / len(e), {_drift(parts, 'np.median(y)')}",
         f"five = np.array([{_forward(parts, 'np.append(y, m)')} for v in LAMBDA + 1e-3 * np.arange(-2, 3)])",
         "z1, z2 = [1, -8, 0, 8, -1] @ five / 12e-3, [-1, 16, -30, 16, -1] @ five / 12e-6  # slopes of z in LAMBDA",
         f"w = z1[:-1]{held}",
         "pull = np.linalg.solve(R, Q.T @ w)",
-        "own, k = w - X @ pull, e @ w / s2 / len(e)",
-        f"score = {_drift(parts, 'y')} - e * own / s2 + k * (e * e / s2 - 1)",
-        "power = LAMBDA - score / ((own @ own + e @ z2[:-1]) / s2 - 2 * len(e) * k**2) / (1 - h)",
+        "own, k = w - X @ pull, e @ w / var / len(e)",
+        f"score = {_drift(parts, 'y')} - e * own / var + k * (e * e / var - 1)",
+        "power = LAMBDA - score / ((own @ own + e @ z2[:-1]) / var - 2 * len(e) * k**2) / (1 - h)",
         "without = b - np.linalg.solve(R, Q.T * out).T - np.outer(LAMBDA - power, pull)",
         "b, without, slope = np.append(b, LAMBDA), np.column_stack([without, power]), w - g * e",
     ]

@@ -132,14 +132,14 @@ def _picture(parts: Parts) -> list[str]:
     units = [said(p.unit(p.focus)), said(p.unit(p.response))]
     names = [f"{name} ({unit})" if unit else name for name, unit in zip((parts.x, parts.y), units, strict=True)]
     x_label, y_label = (literal(name.replace("$", r"\$")) for name in names)
+    labels = f"xlabel={x_label}, ylabel={y_label}"
     title = f"{parts.percent} of further rows"
     title += f", covariates as in row {middle + 1} of those used" if p.covariates else " lie between low and high"
     return [
         'at = np.linspace(rows["x"].min(), rows["x"].max(), 200)',
         *wrapped(f"curve = predict(used.iloc[[{middle}] * 200].assign({held_at(parts, 'at')})).set_axis(at)"),
-        'ax = curve.plot(y=["mean", "low", "high"], style=["-", ":", ":"], color=["C0", "C1", "C1"])',
+        *wrapped(f'ax = curve[["mean", "low", "high"]].plot(style=["C0-", "C1:", "C1:"], {labels}, title="{title}")'),
         f'ax.plot(rows["x"]{some}, y{some}, ".", color="0.6", zorder=0)',
-        *wrapped(f'ax.set(xlabel={x_label}, ylabel={y_label}, title="{title}")'),
     ]
 
 

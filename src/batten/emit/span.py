@@ -70,9 +70,8 @@ def _deleted(parts: Parts) -> list[str]:
     return [
         "def difference(b, keep):",
         *_difference(parts),
-        "effect = difference(b, slice(None))",
         "each = [difference(w, np.arange(len(y)) != i) for i, w in enumerate(without)]",
-        f"half = {parts.t_name} * np.sqrt((len(y) - 1) * np.var(each))",
+        f"effect, half = difference(b, slice(None)), {parts.t_name} * np.sqrt((len(y) - 1) * np.var(each))",
     ]
 
 

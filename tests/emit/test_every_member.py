@@ -1,0 +1,50 @@
+"""Every member of the families, in every kind of design: its script runs under both engines and gives its numbers."""
+
+from __future__ import annotations
+
+import pytest
+from batten.families import curves, links, scales, shapes
+from cases import agrees, foundry, write
+
+DESIGNS = {
+    "alone": "{y} ~ mass_kg",
+    "beside a factor": "{y} ~ mass_kg + C(alloy) + depth",
+    "crossed with a factor": "{y} ~ mass_kg * C(alloy)",
+    "within a factor": "{y} ~ C(alloy) + mass_kg:C(alloy) - 1",
+    "crossed with a number": "{y} ~ mass_kg * depth",
+    "through zero": "{y} ~ mass_kg + depth - 1",
+}
+
+#: the response that suits a member
+RESPONSES = {
+    "share y": "scrap", "logit(0, 1) y": "scrap", "1/y": "rate", "y^2": "rooted", "level-exp x": "levelled",
+    "level-hyp x": "levelled", "s-curve x": "grown", "gompertz x": "grown", "hinge x": "kinked", "hinge2 x": "kinked",
+}  # fmt: skip
+
+LEFTS = [m.key for m in (*scales(), *links())] + ["boxcox(0.3) y", "yeojohnson(0.5) y"]
+RIGHTS = [m.key for m in shapes()] + ["poly3 x", "bins(20, 40) x", "spline(10, 30, 50) x", "hinge(25) x", "x^0.3"]
+NOT_OFFERED = {"smooth x"}
+
+#: a searched power of y: fit and script take slopes in it by different finite differences, good to eight digits
+SEARCHED_POWER = {"boxcox y", "yeojohnson y"}
+
+
+def _pairs() -> list[tuple[str, str]]:
+    """Every left side with x, every right side with y, every curve, each in turn through the designs."""
+    names = list(DESIGNS)
+    keys = [f"{left} ~ x" for left in LEFTS]
+    keys += [f"y ~ {right}" for right in RIGHTS if right not in NOT_OFFERED]
+    keys += [f"log y ~ {right}" for right in RIGHTS if right not in NOT_OFFERED | {"x"}]
+    one = [(key, names[i % len(names)]) for i, key in enumerate(keys)]
+    # curves bring their own level, which only means something beside covariates or alone
+    return one + [(f"y ~ {c.key}", name) for c in curves() for name in ("alone", "beside a factor")]
+
+
+@pytest.mark.parametrize(("key", "design"), _pairs())
+def test_script_gives_the_numbers_of_the_fit(key: str, design: str) -> None:
+    left, right = key.split(" ~ ")
+    response = RESPONSES.get(left) or (RESPONSES.get(right) if left == "y" else None) or "minutes"
+    data = foundry()
+    written = write(key, DESIGNS[design].format(y=response), data)
+    assert max(map(len, written.lines)) <= 120
+    agrees(written, data, rtol=1e-6 if left in SEARCHED_POWER else 1e-9)
