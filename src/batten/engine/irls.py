@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from batten.engine.linear import factor
 from batten.engine.rows import Array
 
 __all__ = ["Mean", "Solved", "iterate"]
@@ -46,13 +47,11 @@ def iterate(
 ) -> Solved:
     """Fit from a starting eta (n,) or coef (p,); each step is halved until the deviance falls."""
     off = np.zeros_like(y) if offset is None else offset
-    length = np.sqrt((x * x).sum(axis=0))
-    unit = x / length
-    if coef is None:
-        assert eta is not None
-        b = np.linalg.lstsq(unit, eta - off, rcond=None)[0]
-    else:
-        b = coef * length
+    # in an orthonormal basis the weighted cross-products of every step stay well conditioned
+    whole = factor(x)
+    unit = whole.q
+    start = eta - off if coef is None and eta is not None else x @ coef
+    b = unit.T @ start
 
     def deviance(b: Array) -> float:
         with np.errstate(over="ignore", invalid="ignore"):
@@ -64,11 +63,12 @@ def iterate(
         eta = off + unit @ b
         mu, slope = model.mean(eta), model.slope(eta)
         variance = model.variance(mu)
-        root = slope / np.sqrt(variance)
-        q, r = np.linalg.qr(unit * root[:, None])
-        if np.abs(np.diagonal(r)).min() < 1e-12 * np.abs(np.diagonal(r)).max():
+        weight = slope / variance
+        cross = unit.T @ (unit * (weight * slope)[:, None])
+        values = np.linalg.eigvalsh(cross)
+        if not values[0] > 1e-13 * values[-1]:
             break
-        step = np.linalg.solve(r, q.T @ ((y - mu) / np.sqrt(variance)))
+        step = np.linalg.solve(cross, unit.T @ (weight * (y - mu)))
         fraction = 1.0
         while fraction > 1e-6 and not deviance(b + fraction * step) <= now * (1 + 1e-12) + 1e-300:
             fraction *= 0.5
@@ -80,4 +80,4 @@ def iterate(
     eta = off + unit @ b
     mu, slope = model.mean(eta), model.slope(eta)
     variance = model.variance(mu)
-    return Solved(b / length, eta, mu, slope**2 / variance, (y - mu) * slope / variance, settled)
+    return Solved(whole.root @ b, eta, mu, slope**2 / variance, (y - mu) * slope / variance, settled)
