@@ -111,7 +111,8 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
     width = len(precondition)
     trained: list[list[_Trained]] = [[] for _ in group]
     z_fixed = np.column_stack([np.zeros(rows.count) if est.scale.searched else est.z for est in group])
-    bases, inverses = [], []
+    bases, inverses, powers = [], [], any(est.scale.searched for est in group)
+    cross = right = np.empty((0, 0))
     for s, test in enumerate(split.test for split in sets):
         basis = whole
         if basis is None:
@@ -120,14 +121,16 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
                 return [_fewer(shape.key)] * len(group)
             basis = design(rows, columns) @ precondition
         held = basis[test]
-        inverse = _inverse(basis.T @ basis - held.T @ held)
+        if whole is None or not len(cross):
+            cross, right = basis.T @ basis, basis.T @ z_fixed
+        inverse = _inverse(cross - held.T @ held)
         if inverse is None:
             return [_rank(shape.key)] * len(group)
-        eta = basis @ (inverse @ (basis.T @ z_fixed - held.T @ z_fixed[test]))
+        eta = basis @ (inverse @ (right - held.T @ z_fixed[test]))
         v = np.einsum("ij,jk,ik->i", held, inverse, held)
         for j, est in enumerate(group):
             trained[j].append(_Trained(eta[:, j], est.c, v, width))
-        bases.append(basis)
+        bases += [basis] if powers else []
         inverses.append(inverse)
     return [
         _score(est, sets, iter(fits) if not est.scale.searched else _with_powers(est, sets, fits, bases, inverses))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import numpy.typing as npt
@@ -52,6 +53,19 @@ class Rows:
         if self.weights is not None and self.weights_kind == "frequency":
             return int(self.weights.sum())
         return len(self.y)
+
+    @cached_property
+    def patterns(self) -> tuple[Ints, Array, Ints]:
+        """Distinct covariate rows: where each first stands (u,), how many rows have it (u,), which each row has (n,)."""
+        both = np.hstack([self.base, self.modifier])
+        if both.shape[1] == 2 and (both == both[0]).all():
+            return np.zeros(1, dtype=np.intp), np.array([float(self.count)]), np.zeros(self.count, dtype=np.intp)
+        # equal rows give equal sums in a fixed order of additions, so one sort of numbers replaces a sort of rows
+        mark = np.zeros(self.count)
+        for column, weight in zip(both.T, np.random.default_rng(1).normal(size=(both.shape[1],)), strict=True):
+            mark = mark + column * weight
+        _, first, pattern, count = np.unique(mark, return_index=True, return_inverse=True, return_counts=True)
+        return first.astype(np.intp), count.astype(float), pattern.astype(np.intp)
 
     def take(self, which: Ints | npt.NDArray[np.bool_]) -> Rows:
         """The same analysis on a subset (or repeated selection) of its rows."""

@@ -46,7 +46,7 @@ class Averaged:
 
     root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
     spread under constant errors). Many rows and many places make it large, so it is kept as loads (r, G) of few
-    features (N, r in all), root = features @ loads; features None means that loads are the root. left_out (n, G): the values
+    features (N, r in all), root = features @ loads; None means that loads are the root. left_out (n, G): the values
     without row i, or None beyond the jackknife's reach.
     """
 
@@ -144,17 +144,8 @@ def target(est: Estimate, xs: Array, *, base: Array | None = None, modifier: Arr
 
 def patterns(est: Estimate) -> tuple[Array, Array, Array, Ints]:
     """Distinct covariate rows: base (u, q), modifier (u, m), count (u,), pattern of each row (n,)."""
-    rows = est.rows
-    both = np.hstack([rows.base, rows.modifier])
-    if both.shape[1] == 2 and (both == both[0]).all():
-        return rows.base[:1], rows.modifier[:1], np.array([float(rows.count)]), np.zeros(rows.count, dtype=np.intp)
-    # equal rows give equal sums in a fixed order of additions, so one sort of numbers replaces a sort of rows
-    mark = np.zeros(rows.count)
-    draw: Array = np.random.default_rng(1).normal(size=(both.shape[1],))
-    for column, w in zip(both.T, draw, strict=True):
-        mark = mark + column * w
-    _, first, pattern, count = np.unique(mark, return_index=True, return_inverse=True, return_counts=True)
-    return rows.base[first], rows.modifier[first], count.astype(float), pattern.astype(np.intp)
+    first, count, pattern = est.rows.patterns
+    return est.rows.base[first], est.rows.modifier[first], count, pattern
 
 
 def averaged_means(
