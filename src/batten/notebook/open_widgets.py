@@ -34,7 +34,7 @@ def register(widget: widgets.Widget, cell_id: str | None) -> None:
 def close_all(root: widgets.Widget) -> None:
     """Close a widget with everything in it: closing a box leaves its children, layouts and styles behind."""
     for part in dict.fromkeys(_parts(root)):
-        part.comm is not None and widgets.Widget.close(part)
+        widgets.Widget.close(part)  # not its own close, which may be what calls this
 
 
 def _parts(root: widgets.Widget) -> Iterator[widgets.Widget]:

@@ -94,7 +94,7 @@ class ExamWidget:
     def close(self) -> None:
         """Close every widget made here, also those that are not in a tab now."""
         with self.desk.lock:
-            for root in (*self.box.children, *(tab.box for tab in self.remedies.values()), *self.desk.loose):
+            for root in (self.box, *(tab.box for tab in self.remedies.values()), *self.desk.loose):
                 close_all(root)
 
     def _lay_out(self) -> None:

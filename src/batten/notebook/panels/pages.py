@@ -36,11 +36,10 @@ class Pages:
     def draw(self, exam: Examination) -> None:
         """Draw the panel that is selected now, unless it shows this examination already."""
         place = self.buttons.index
-        if self._drawn[place] is exam:
-            return
-        with told_in(self.message):
-            self.panels[place].draw(exam)
-            self._drawn[place] = exam
+        with told_in(self.message):  # also clears what another panel has left there
+            if self._drawn[place] is not exam:
+                self.panels[place].draw(exam)
+                self._drawn[place] = exam
 
     def _switched(self, _change: object) -> None:
         with self._desk.lock:
