@@ -8,6 +8,8 @@ from typing import Any
 
 import numpy as np
 import pandas as pd
+from runner import ENGINES, Ran, run_script
+
 from batten.effects.span import round_span
 from batten.emit.numbers import numbers
 from batten.emit.script import script
@@ -16,7 +18,6 @@ from batten.fit.estimate import Estimate, estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
 from batten.frame.read import read
-from runner import ENGINES, Ran, run_script
 
 __all__ = ["Written", "agrees", "foundry", "write"]
 

@@ -83,12 +83,25 @@ def _receive(stream: IO[bytes]) -> Any:
     return pickle.loads(stream.read(struct.unpack("<Q", size)[0]))
 
 
+_FIRST = """
+import matplotlib.pyplot as plt
+import pandas as pd
+import statsmodels.formula.api as smf
+rows = pd.DataFrame({"x": [1.0, 2, 3, 5], "y": [1.0, 3, 2, 5], "g": pd.Categorical(["a", "b", "a", "b"])})
+smf.ols("y ~ x + C(g)", rows).fit(cov_type="HC3", use_t=True)
+rows[["x", "y"]].plot()
+plt.close("all")
+"""
+
+
 # --- the server -------------------------------------------------------------------------------------------------------
 
 
 def _serve() -> None:
     for library in ("matplotlib.pyplot", "scipy.interpolate", "statsmodels.api", "statsmodels.formula.api"):
         import_module(library)  # once, for all children
+    for engine in ENGINES:
+        _execute(_FIRST, {}, engine, "")  # what libraries load at first use
     sys.modules["batten"] = None  # type: ignore[assignment]  # a script must never need it
     channel = os.fdopen(os.dup(1), "wb")
     os.dup2(2, 1)  # what anything prints must not get between the answers

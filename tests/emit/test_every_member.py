@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import pytest
-from batten.families import curves, links, scales, shapes
 from cases import agrees, foundry, write
+
+from batten.families import curves, links, scales, shapes
 
 DESIGNS = {
     "alone": "{y} ~ mass_kg",
@@ -34,7 +35,7 @@ def _pairs() -> list[tuple[str, str]]:
     names = list(DESIGNS)
     keys = [f"{left} ~ x" for left in LEFTS]
     keys += [f"y ~ {right}" for right in RIGHTS if right not in NOT_OFFERED]
-    keys += [f"log y ~ {right}" for right in RIGHTS if right not in NOT_OFFERED | {"x"}]
+    keys += [f"log y ~ {right}" for right in ("log x", "hinge x", "spline4 x", "bins5 x", "x^p", "fp2 x")]
     one = [(key, names[i % len(names)]) for i, key in enumerate(keys)]
     # curves bring their own level, which only means something beside covariates or alone
     return one + [(f"y ~ {c.key}", name) for c in curves() for name in ("alone", "beside a factor")]

@@ -129,6 +129,8 @@ class _Writer:
             name = self._name(slot.column)
             self.variables[slot_name] = name
             self.out.lines.append(f"{name} = {source}.reset_index(drop=True)")
+            # in the table too, so that a row is missing where it is: a comparison would not say so
+            self.out.entries.append((name, name))
         return self.variables[slot_name]
 
     # --- by terms: the formula as the user wrote it, with plain names -------------------------------------------------

@@ -153,9 +153,8 @@ def _numeric_slopes(parts: Parts) -> tuple[list[str], list[str]]:
 def _told(parts: Parts) -> list[str]:
     a, b = (f"{end:.6g}" for end in parts.question.span)
     unit, x_unit = parts.problem.unit(parts.problem.response), parts.problem.unit(parts.problem.focus)
-    text = (
-        f"{parts.y}, mean at {parts.x} {b}{' ' + said(x_unit) if x_unit else ''} against {a}: "
-        f"{{effect}}{' ' + said(unit) if unit else ''} ({parts.percent} {{low}} to {{high}})"
-    )
-    values = {"effect": "effect:+.4g", "low": "effect - half:.4g", "high": "effect + half:.4g"}
-    return wrapped(f"print({fstring(text, values)})")
+    where = f"{parts.y}, mean at {parts.x} {b}{' ' + said(x_unit) if x_unit else ''} against {a}: "
+    unit = f" {said(unit)}" if unit else ""
+    low, high = ("effect - half:.4g",), ("effect + half:.4g",)
+    told = fstring(where, ("effect:+.4g",), f"{unit} ({parts.percent} ", low, " to ", high, ")")
+    return wrapped(f"print({told})")

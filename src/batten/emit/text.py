@@ -10,7 +10,7 @@ import re
 import textwrap
 import tokenize
 import unicodedata
-from collections.abc import Collection, Mapping
+from collections.abc import Collection
 from typing import Any
 
 import numpy as np
@@ -76,13 +76,10 @@ def rounded(value: float) -> str:
     return number(float(f"{value:.9g}")) if math.isfinite(value) else number(value)
 
 
-def fstring(text: str, values: Mapping[str, str]) -> str:
-    """An f-string literal: `text` with {name} for each value's expression (with its format), all else as it stands."""
-    parts = re.split(r"\{(\w+)\}", text)
-    pieces = [
-        p.replace("{", "{{").replace("}", "}}") if i % 2 == 0 else f"{{{values[p]}}}" for i, p in enumerate(parts)
-    ]
-    return "f" + _quoted("".join(pieces))
+def fstring(*pieces: str | tuple[str]) -> str:
+    """An f-string literal of texts as they stand and (expression,) tuples."""
+    body = "".join(f"{{{p[0]}}}" if isinstance(p, tuple) else p.replace("{", "{{").replace("}", "}}") for p in pieces)
+    return "f" + _quoted(body)
 
 
 def comment(text: str) -> list[str]:
