@@ -136,3 +136,18 @@ def test_the_band_uses_the_t_quantile_of_the_residual_degrees_of_freedom():
     found = averaged_means(est, np.array(narrow), errors="constant")
     reach = student.ppf(0.9, 10) * found.error
     np.testing.assert_allclose(np.abs(found.value - 20), reach, rtol=1e-7)
+
+
+@pytest.mark.parametrize("key", ["log y ~ x", "y ~ spline4 x", "sqrt y ~ x"])
+def test_many_covariate_rows_are_pooled_without_moving_the_answer(key):
+    rng = np.random.default_rng(7)
+    x, c, d = rng.uniform(1, 20, 4000), rng.normal(size=4000), rng.integers(0, 3, 4000).astype(float)
+    rows = rows_of(x, np.exp(0.1 * x + 0.3 * c + 0.1 * d + rng.normal(0, 0.3, 4000)), c, d)
+    est = fitted(key, rows)
+    found = x_for(est, 3)
+    ends = averaged_means(est, np.array([*found.estimates, *found.pieces[0]]), jackknife=False)
+    band = interval(ends, 0.95, positive=key != "y ~ spline4 x")
+    # the widest classes hold the most extreme covariates
+    assert ends.value[0] == pytest.approx(3, rel=5e-5)
+    # the covariates' own share in the error is taken as independent of the rest
+    assert (band[1][1], band[0][2]) == pytest.approx((3, 3), rel=2e-3)

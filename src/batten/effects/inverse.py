@@ -9,10 +9,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from scipy.optimize import brentq
+from scipy.stats import t as student
 
+from batten.effects.classes import Classes, covariate_classes
 from batten.effects.contrast import reach_trouble
 from batten.effects.numbers import about, place, show, show_interval
 from batten.engine.rows import Array
@@ -23,10 +26,12 @@ from batten.fit.predict import positive_by_nature
 
 __all__ = ["Inverse", "x_for"]
 
-#: places at which the band is looked at before its ends are found
-GRID = 101
+#: places at which the band is looked at before its ends are found; the second where rows are many
+GRID, COARSE = 101, 41
 #: beyond this many numbers the band takes first-order errors rather than left-out rows
 LEFT_OUT = 50_000_000
+#: places asked at once where rows are many
+AT_ONCE = 8
 
 
 Piece = tuple[float, float]
@@ -71,22 +76,25 @@ def x_for(
 
     base (u, q), modifier (u, m): covariate rows to average over instead of the rows' own. unit, y_unit: for the words.
     """
+    pooled = covariate_classes(est, base, modifier)
+    if pooled is not None:
+        base, modifier = pooled.base, pooled.modifier
     low, high = float(est.rows.x.min()), float(est.rows.x.max())
-    xs = np.unique(np.concatenate([np.linspace(low, high, GRID), _steps(est, low, high)]))
+    xs = np.unique(np.concatenate([np.linspace(low, high, GRID if pooled is None else COARSE), _steps(est, low, high)]))
     usable = [x for x in xs if not reach_trouble(est, np.array([x]), of=of, base=base, modifier=modifier)]
     xs = np.array(usable, dtype=float)
     if not len(xs):
         return Inverse(y, of, level, (), (), (), (), f"the {of} cannot be had anywhere inside the data")
-    band = _Band(est, y, of, level, errors, base, modifier)
+    band = _Band(est, y, of, level, errors, base, modifier, pooled)
+    estimates = _passes(band, xs, np.array([band.gap(float(x)) for x in xs]))
     carried = no_mean_interval(est) if of == "mean" else ""
     if carried:
-        passes = _passes(band, xs, np.array([band.gap(x) for x in xs]))
-        return Inverse(y, of, level, passes, (), (), (), carried)
+        return Inverse(y, of, level, estimates, (), (), (), carried)
+    # a set narrower than the grid is found around the place itself
+    xs = np.union1d(xs, estimates)
     curve, lower, upper = band.gaps(xs)
-    estimates = _passes(band, xs, curve)
     holds = _pieces(lambda x: max(band.at(x)[1], -band.at(x)[2]), xs, np.maximum(lower, -upper))
-    below = _pieces(lambda x: band.at(x)[2], xs, upper)
-    above = _pieces(lambda x: -band.at(x)[1], xs, -lower)
+    below, above = _sure(xs, holds, lower, upper, estimates)
     words = _Words(of, level, unit, y_unit, low, high, leaps=est.shape.steps)
     return Inverse(y, of, level, estimates, holds, below, above, words.reading(y, estimates, holds, curve + y))
 
@@ -102,16 +110,20 @@ class _Band:
     errors: str
     base: Array | None
     modifier: Array | None
+    pooled: Classes | None
 
     def gap(self, x: float) -> float:
         """The curve alone at x, less y."""
         found = averaged_means(
-            self.est, np.array([x]), of=self.of, base=self.base, modifier=self.modifier, root=False
+            self.est, np.array([x]), of=self.of, base=self.base, modifier=self.modifier, root=False,
+            weights=None if self.pooled is None else self.pooled.weights,
         )  # fmt: skip
         return float(found.value[0]) - self.y
 
     def gaps(self, xs: Array) -> tuple[Array, Array, Array]:
         """Curve, low end and high end at xs (G,), each less y."""
+        if self.pooled is not None:
+            return self._pooled_gaps(xs, self.pooled)
         covariates = self.est.n if self.base is None else len(self.base)
         found = averaged_means(
             self.est, xs, of=self.of, base=self.base, modifier=self.modifier, errors=self.errors,
@@ -119,6 +131,24 @@ class _Band:
         )  # fmt: skip
         low, high = interval(found, self.level, positive=positive_by_nature(self.est, found))
         return found.value - self.y, low - self.y, high - self.y
+
+    def _pooled_gaps(self, xs: Array, pooled: Classes) -> tuple[Array, Array, Array]:
+        """The same at many rows, a few places at a time, with first-order errors."""
+        value, error = np.empty(len(xs)), np.empty(len(xs))
+        positive = True
+        for start in range(0, len(xs), AT_ONCE):
+            some = slice(start, start + AT_ONCE)
+            found = averaged_means(
+                self.est, xs[some], of=self.of, base=pooled.base, modifier=pooled.modifier, errors=self.errors,
+                jackknife=False, weights=pooled.weights,
+            )  # fmt: skip
+            value[some] = found.value
+            error[some] = np.sqrt(found.error**2 + pooled.spread(self.est, xs[some], of=self.of))
+            positive = positive and positive_by_nature(self.est, found)
+        reach = float(student.ppf(0.5 + self.level / 2, self.est.df_residual)) * error
+        if positive:
+            return value - self.y, value * np.exp(-reach / value) - self.y, value * np.exp(reach / value) - self.y
+        return value - self.y, value - reach - self.y, value + reach - self.y
 
     def at(self, x: float) -> tuple[float, float, float]:
         """The same at one place."""
@@ -152,6 +182,25 @@ def _pieces(margin: Callable[[float], float], xs: Array, at_grid: Array) -> tupl
         for k in edges.tolist()
     ]
     return tuple(zip(ends[::2], ends[1::2], strict=True))
+
+
+def _sure(
+    xs: Array, holds: tuple[Piece, ...], lower: Array, upper: Array, passes: tuple[float, ...]
+) -> tuple[tuple[Piece, ...], tuple[Piece, ...]]:
+    """What is left between the pieces, by the side of y on which the whole band lies; a leap over y parts it."""
+    ends = [float(xs[0]), *(end for piece in holds for end in piece), float(xs[-1])]
+    gaps = [(low, high) for low, high in zip(ends[::2], ends[1::2], strict=True) if high > low]
+    below: list[Piece] = []
+    above: list[Piece] = []
+    for low, high in gaps:
+        leaps = [low, *(x for x in passes if low < x < high), high]
+        for start, stop in pairwise(leaps):
+            inside = (xs >= start) & (xs <= stop)
+            if (inside & (upper < 0)).sum() > (inside & (lower > 0)).sum():
+                below.append((start, stop))
+            elif (inside & (lower > 0)).any():
+                above.append((start, stop))
+    return tuple(below), tuple(above)
 
 
 def _near(xs: Array) -> float:

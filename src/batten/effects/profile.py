@@ -66,7 +66,9 @@ def profile_of_power(est: Estimate, *, level: float = 0.95) -> Profile:
     def loss(lam: float, part: Estimate) -> float:
         if part.moving:
             return best_given(part, part.c)[0] - best_given(part, (lam,))[0]
-        q = bases.setdefault(part.n, _basis(part, part.theta))
+        if part.n not in bases:
+            bases[part.n] = _basis(part, part.theta)
+        q = bases[part.n]
         here, best = (profile_likelihood(scale_power(part.scale), part.rows.y, q, v) for v in (lam, part.c[0]))
         return best - here
 
@@ -85,7 +87,14 @@ def profile_of_shape(est: Estimate, which: int = 0, *, level: float = 0.95) -> P
     if est.shape.finite:
         return _listed(est, which, allowed)
 
+    plain = len(est.theta) == 1 and not est.remedy.left.searched
+    around: dict[int, Callable[[float], float]] = {}
+
     def loss(value: float, part: Estimate) -> float:
+        if plain:
+            if part.n not in around:
+                around[part.n] = _rss_loss(part)
+            return around[part.n](value)
         return best_given(part, None)[0] - best_given(part, None, fixed=(which, value))[0]
 
     lower, upper = (float(end[which]) for end in est.shape.bounds(est.rows.x, est.state))
@@ -97,6 +106,26 @@ def profile_of_shape(est: Estimate, which: int = 0, *, level: float = 0.95) -> P
             grid = np.concatenate([x, (x[1:] + x[:-1]) / 2])
     grid = np.concatenate([grid[(grid > lower) & (grid < upper)], [lower, upper]])
     return _profile(est, loss, best, _local(est, len(est.coef) + which), grid, allowed)
+
+
+def _rss_loss(est: Estimate) -> Callable[[float], float]:
+    """Loss of a single searched constant with the other columns projected out once."""
+    model = searched_model(est.rows, est.shape, est.state)
+    q = model.basis
+    e = est.z - q @ (q.T @ est.z)
+
+    def rss(value: float) -> float:
+        block = model.columns(np.array([value]))
+        block = block - q @ (q.T @ block)
+        length = np.sqrt(np.einsum("nk,nk->k", block, block))
+        if not (np.isfinite(length).all() and length.min() > 0):
+            return np.inf
+        basis = np.linalg.qr(block / length)[0]
+        left = e - basis @ (basis.T @ e)
+        return float(left @ left)
+
+    best = rss(est.theta[0])
+    return lambda value: est.n / 2 * float(np.log(rss(value) / best))
 
 
 def best_given(
@@ -135,12 +164,12 @@ def _basis(est: Estimate, theta: Constants) -> Array:
 
 def _theta_given(est: Estimate, z: Array, fixed: tuple[int, float] | None) -> Constants:
     """The shape's constants with the lowest RSS for z (n,) when one of them is held."""
+    if fixed is not None and len(est.theta) == 1:
+        return (fixed[1],)
     model = searched_model(est.rows, est.shape, est.state)
     if fixed is None:
         return tuple(float(v) for v in search(model, z, start=np.array(est.theta)).theta)
     which, value = fixed
-    if len(est.theta) == 1:
-        return (value,)
     rest = _without(model, which, value, joined=isinstance(est.shape, Hinge))
     start = np.clip(np.delete(np.array(est.theta), which), rest.lower, rest.upper)
     found = refine(rest, start, z)

@@ -17,6 +17,8 @@ from batten.fit.estimate import Estimate, estimate
 
 __all__ = ["Rounding", "roundest", "roundings"]
 
+#: candidates that are priced although the data rule them out
+NEAREST = 3
 #: powers of y that have names (Box and Cox 1964), and those of x
 _OF_Y = {
     -1.0: "the reciprocal of {}", -0.5: "the reciprocal root of {}", 0.0: "the log of {}",
@@ -49,7 +51,7 @@ def roundings(
 ) -> tuple[Rounding, ...]:
     """Candidates in order, each with its price; empty where no value can be named or nothing was searched.
 
-    x, y: names for the words.
+    Those the data do not rule out, and the nearest others. x, y: names for the words.
     """
     if constant.profile is None or not constant.named or constant.kind == "listed":
         return ()
@@ -60,8 +62,11 @@ def roundings(
     inside = [v for v in names if constant.profile.holds(v)]
     advised = min(inside, key=lambda v: abs(v - constant.estimate), default=None)
     now = span_difference(est, span)
+    near = sorted(names, key=lambda v: abs(v - constant.estimate))[:NEAREST]
     out = []
     for value, words in sorted(names.items()):
+        if value not in near and value not in inside:
+            continue
         loss, difference = _price(est, constant, value, span)
         told = words.format(y if constant.kind == "power of y" else x)
         out.append(Rounding(value, told, loss, value in inside, difference, difference - now, value == advised))

@@ -218,31 +218,17 @@ def _of_breaks(est: Estimate, asked: _Asked, *, base: Array | None, modifier: Ar
         for k, place_ in enumerate(places)
         if rights[k].slope.estimate * rights[k + 1].slope.estimate < 0
     ]  # fmt: skip
-    sets = {k: _break_set(est, k, asked) for k, _ in turns}
-    pieces = _merged([piece for found in sets.values() for piece in found] + flat)
+    searched = [profile_of_shape(est, k, level=asked.level) for k, _ in turns] if est.theta else []
+    given = [] if est.theta else [(p, p) for _, p in turns]
+    pieces = _merged([piece for found in searched for piece in found.pieces] + given + flat)
     estimates = tuple(p for _, p in turns)
     form: Form = ""
     if len(turns) == 1:
         form = "lowest" if rights[turns[0][0]].slope.estimate < 0 else "highest"
     located = len(turns) == 1 and len(pieces) == 1 and not flat and asked.inside(pieces[0])
-    located = located and not any(_runs_out(est, k) for k, _ in turns)
+    located = located and not any(found.open_low or found.open_high for found in searched)
     words = _curve_words(estimates, pieces, located, form, asked)
     return Turn(estimates[0] if len(estimates) == 1 else math.nan, estimates, pieces, located, form, words)
-
-
-def _break_set(est: Estimate, k: int, asked: _Asked) -> tuple[Piece, ...]:
-    """The profile set of a searched break; a given one is itself."""
-    if not est.theta:
-        return ((est.state[k], est.state[k]),)
-    return profile_of_shape(est, k, level=asked.level).pieces
-
-
-def _runs_out(est: Estimate, k: int) -> bool:
-    """Whether a searched break's set has no end on one side."""
-    if not est.theta:
-        return False
-    found = profile_of_shape(est, k)
-    return found.open_low or found.open_high
 
 
 def _merged(pieces: list[Piece]) -> tuple[Piece, ...]:

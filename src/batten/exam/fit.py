@@ -112,16 +112,14 @@ class Fit:
         Searched constants with their profile sets (no low or high where the set has no end), a curve's own levels, and
         facts fixed beforehand (knots, edges, centres), which have no interval.
         """
-        found = self.learned
         rows = []
-        for constant in found:
+        for constant, nice in self._advised:
             ends = (end if math.isfinite(end) else math.nan for end in (constant.low, constant.high))
-            nice = next((r for r in self.roundings(constant) if r.advised), None)
             price = "" if nice is None else f"{nice.words} costs {nice.loss:.2f} in log-likelihood"
             rows.append((constant.estimate, *ends, _joined(constant.note, price)))
         return pd.DataFrame(
             rows, columns=["estimate", "low", "high", "note"],
-            index=pd.Index([constant.name for constant in found], name="constant"),
+            index=pd.Index([constant.name for constant in self.learned], name="constant"),
         )  # fmt: skip
 
     @cached_property
@@ -129,6 +127,11 @@ class Fit:
         """The same as values, with their profiles."""
         p = self.problem
         return learned_constants(self.estimate, x=p.focus, y=p.response, level=self.question.level)
+
+    @cached_property
+    def _advised(self) -> tuple[tuple[Constant, Rounding | None], ...]:
+        """Each constant with the nicer value advised for it."""
+        return tuple((c, next((r for r in self.roundings(c) if r.advised), None)) for c in self.learned)
 
     def roundings(self, constant: Constant) -> tuple[Rounding, ...]:
         """What each nicer value of a constant costs in log-likelihood and in the span effect."""
@@ -277,12 +280,11 @@ class Fit:
     def sentences(self, of: str = "mean") -> tuple[Sentence, ...]:
         """What this fit says, the standing question first; each sentence knows its numbers."""
         base, modifier = self._covariates()
-        nice = tuple((c, next((r for r in self.roundings(c) if r.advised), None)) for c in self.learned)
         q = self.question
         groups = groups_by(self.problem, q.by) if q.by else interaction_groups(self.problem)
         return sentences(
             self.estimate, self.names, q.span, of=_target(of), errors=q.errors, groups=groups, base=base,
-            modifier=modifier, learned=nice, turn=self.turning_point(),
+            modifier=modifier, learned=self._advised, turn=self.turning_point(),
         )  # fmt: skip
 
     def checks(self) -> pd.DataFrame:
