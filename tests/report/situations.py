@@ -21,7 +21,8 @@ HOSTILE = {
 }
 #: a few remedies of every kind
 QUICK = (
-    "y ~ x", "log y ~ log x", "sqrt y ~ x", "y ~ poly2 x", "1/y ~ x", "y ~ bins5 x", "log y ~ spline4 x", "loglink y ~ x",
+    "y ~ x", "log y ~ log x", "sqrt y ~ x", "y ~ poly2 x", "1/y ~ x", "y ~ bins5 x", "log y ~ spline4 x",
+    "loglink y ~ x",
 )  # fmt: skip
 
 

@@ -115,6 +115,19 @@ def test_the_curve_does_not_depend_on_how_many_places_fit_the_memory(monkeypatch
     np.testing.assert_allclose(part.high, whole.high, rtol=1e-12)
 
 
+def test_at_many_rows_the_band_between_its_places_is_that_of_the_places(monkeypatch: pytest.MonkeyPatch) -> None:
+    est = examined("bowl", 300, "log y ~ spline4 x").comparison.estimates["log y ~ spline4 x"]
+    xs = places_along(est)
+    every = curve_of(est, xs)
+    monkeypatch.setattr(curves, "MANY_ROWS", 100)
+    some = curve_of(est, xs)
+    np.testing.assert_array_equal(some.value, every.value)
+    inside = (xs >= est.rows.x.min()) & (xs <= est.rows.x.max())
+    # a straight line between places a seventieth of the axis apart misses a smooth width by a few percent
+    np.testing.assert_allclose((some.high - some.low)[inside], (every.high - every.low)[inside], rtol=0.1)
+    assert not np.array_equal(some.high, every.high)
+
+
 def test_most_rows_lie_in_the_band_of_new_rows() -> None:
     fit = examined("fan", 300, "log y ~ log x")["log y ~ log x"]
     rows = fit.problem.rows

@@ -13,7 +13,7 @@ import numpy as np
 
 from batten.effects.contrast import same_group
 from batten.effects.value import Effect, effect_of, undefined
-from batten.engine.rows import Array
+from batten.engine.rows import Array, Ints
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.means import Averaged, averaged_means, interval, jackknifed, patterns
@@ -24,12 +24,14 @@ __all__ = ["Curve", "Ground", "SpanEnds", "beyond", "curve_of", "places_along", 
 
 #: the jackknife of a whole curve stays under a tenth of a second up to here
 JACKKNIFE_ROWS = 150
+#: rows beyond which the band is computed at fewer places
+MANY_ROWS = 20_000
 #: different covariate rows averaged over, beyond which an even sample of AVERAGED of them serves
 COVARIATES, AVERAGED = 3_000, 1_000
 #: numbers held at once
 BLOCK = 4_000_000
 #: places of a curve, and how far it goes beyond the data, as a share of their range
-EVEN, BY_ROWS, MARGIN = 44, 20, 0.06
+EVEN, BY_ROWS, MARGIN = 56, 20, 0.06
 
 Covariates = tuple[Array, Array] | None
 
@@ -108,11 +110,15 @@ def curve_of(
     out = Curve(xs, nothing.copy(), nothing.copy(), nothing.copy(), "", sampled)
     asked = np.flatnonzero(_reachable(est, xs, covariates))
     for some in _blocks(est, asked, covariates):
-        averaged = _averaged(est, xs[some], of, errors, covariates, jackknife)
-        out.value[some] = averaged.value
-        if band and not trouble:
+        out.value[some] = _averaged(est, xs[some], of, errors, covariates, root=False).value
+    if band and not trouble:
+        at = _band_places(est, asked)
+        for some in _blocks(est, at, covariates):
+            averaged = _averaged(est, xs[some], of, errors, covariates, jackknife=jackknife)
             ends = interval(averaged, level, positive=positive_by_nature(est, averaged))
             out.low[some], out.high[some] = ends
+        for end in (out.low, out.high) if len(at) else ():
+            end[asked] = out.value[asked] + np.interp(xs[asked], xs[at], end[at] - out.value[at])
     return replace(out, how=trouble or _how(est, of, errors, jackknife)) if band else out
 
 
@@ -139,7 +145,7 @@ def span_ends(
     if same_group(est, *span) or not _reachable(est, xs, covariates).all():
         return SpanEnds(*span, none, none, none)
     trouble = no_mean_interval(est)
-    both = _averaged(est, xs, "mean", errors, covariates, est.n <= JACKKNIFE_ROWS)
+    both = _averaged(est, xs, "mean", errors, covariates, jackknife=est.n <= JACKKNIFE_ROWS)
     if trouble:
         a, b = (Effect(float(v), np.nan, np.nan, trouble) for v in both.value)
         return SpanEnds(*span, a, b, Effect(b.estimate - a.estimate, np.nan, np.nan, trouble))
@@ -149,11 +155,23 @@ def span_ends(
     return SpanEnds(*span, effect_of(both.value, limits, 0), effect_of(both.value, limits, 1), difference)
 
 
-def _averaged(est: Estimate, xs: Array, of: str, errors: str, covariates: Covariates, jackknife: bool) -> Averaged:
+def _band_places(est: Estimate, asked: Ints) -> Ints:
+    """Where the band is computed; with many rows at every fourth place only, its width drawn straight between."""
+    if est.n <= MANY_ROWS or est.shape.steps or len(asked) < 9:
+        return asked
+    return np.unique(np.append(asked[::4], asked[-1]))
+
+
+def _averaged(
+    est: Estimate, xs: Array, of: str, errors: str, covariates: Covariates, *, root: bool = True,
+    jackknife: bool = False,
+) -> Averaged:  # fmt: skip
     base, modifier = covariates or (None, None)
     # the median of a few rows, or a deletion that leaves the scale, may give no number: drawn as a gap
     with np.errstate(all="ignore"):
-        return averaged_means(est, xs, of=of, errors=errors, base=base, modifier=modifier, jackknife=jackknife)
+        return averaged_means(
+            est, xs, of=of, errors=errors, base=base, modifier=modifier, jackknife=jackknife, root=root
+        )
 
 
 def _covariates(est: Estimate, profile: Covariates) -> tuple[Covariates, int]:
@@ -168,7 +186,7 @@ def _covariates(est: Estimate, profile: Covariates) -> tuple[Covariates, int]:
     return (base[even], modifier[even]), AVERAGED
 
 
-def _blocks(est: Estimate, asked: np.ndarray[tuple[int], np.dtype[np.intp]], covariates: Covariates) -> list[Array]:
+def _blocks(est: Estimate, asked: Ints, covariates: Covariates) -> list[Ints]:
     """The asked places in parts that fit the memory."""
     rows = len(covariates[0]) if covariates else min(est.n, COVARIATES)
     most = max(1, BLOCK // (est.n + rows * (len(est.coef) + 2)))

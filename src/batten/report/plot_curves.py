@@ -29,7 +29,7 @@ __all__ = ["fit_figure", "line_against_choice"]
 HEIGHT, LEFT, RIGHT, BOTTOM, TOP = 4.3, 0.62, 1.78, 0.88, 0.4
 #: room above the rows for the span, and below them for the rug, as shares of their range
 ABOVE, BELOW = 0.17, 0.05
-GROUND = "Tinted ground: the outer tenth of the rows. Darker ground: no rows, so the dotted curve is a guess."
+GROUND = "Tinted: the outer tenth of the rows. Darker: no rows, so the dotted curve is a guess."
 
 
 def line_against_choice(exam: Examination) -> Picture:
@@ -82,7 +82,7 @@ def fit_figure(fit: Fit, straight: Fit | None = None) -> Picture:
         parts.drawn_of(len(problem.rows.x)),
         _band_words("Blue band", mean, asked),
         f"Grey band: where {asked.level:.0%} of new rows are expected.",
-        "" if apart else "Mean and median are too close to draw apart.",
+        "" if apart else "Mean and median lie too close to draw both.",
         _averaged(problem, mean), GROUND,
     ]  # fmt: skip
     parts.caption(figure, notes, left=0.14)
@@ -214,7 +214,7 @@ def _averaged(problem: Problem, curve: Curve) -> str:
     if not problem.covariates:
         return ""
     over = f"{curve.averaged:,} of the rows" if curve.averaged else "the rows"
-    return f"Curves are averaged over the covariates of {over}."
+    return f"Averaged over the covariates of {over}."
 
 
 def _apart(mean: Curve, median: Curve, y: Array) -> bool:

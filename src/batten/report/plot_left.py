@@ -109,7 +109,8 @@ def running_median(x: Array, values: Array) -> tuple[Array, Array]:
     """Medians of x and values (m,) over windows of neighbours along x, each overlapping the next by half."""
     order = np.argsort(x, kind="stable")
     n = len(order)
-    width = min(n, max(7, n // 7))
+    # wide enough to be calm, narrow enough to reach the ends
+    width = min(n, max(7, int(n**0.65)))
     starts = np.unique(np.append(np.arange(0, n - width + 1, max(1, width // 2)), n - width))
     groups = [order[s : s + width] for s in starts]
     return np.array([np.median(x[g]) for g in groups]), np.array([np.median(values[g]) for g in groups])
