@@ -190,7 +190,7 @@ MISTAKES = {
         "alloys is not a data frame. It is one column (a Series). Data frames here: castings. Name one of them."
     ),
     "%%batten castings.head(20)\ny ~ x": (
-        "The data frame is given by the name of a variable. Seen: castings.head(20) Give it a name in a cell "
+        "The data frame is given by the name of a variable. Seen: castings.head(20). Give it a name in a cell "
         "before this one; --rows chooses among its rows."
     ),
     "%%batten castings --focs wall\nminutes ~ mass_kg": (

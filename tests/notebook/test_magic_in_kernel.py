@@ -92,7 +92,7 @@ def test_plain_is_text_only(run: Run) -> None:
     [output], errors, _ = run(CELL.replace("castings", "castings --plain", 1))
     assert errors == ""
     assert list(output) == ["text/plain"]
-    assert output["text/plain"].endswith("%batten report FILE.\n")
+    assert output["text/plain"].endswith("--keep exam binds it to a variable.\n")
 
 
 def test_an_interrupted_examination_leaves_no_line_behind_and_the_kernel_goes_on(run: Run) -> None:

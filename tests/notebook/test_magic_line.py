@@ -91,7 +91,8 @@ def test_a_report_overwrites_no_data(run: Run, examined: Any, tmp_path: Path) ->
     data.write_text("mass_kg\n1\n")
     _, errors = run(f"%batten report {data}")
     assert errors == (
-        f"UsageError: The report is a web page: its file's name ends in .html. Seen: {data} Nothing has been written.\n"
+        "UsageError: The report is a web page: its file's name ends in .html. "
+        f"Seen: {data}. Nothing has been written.\n"
     )
     assert data.read_text() == "mass_kg\n1\n"
 
@@ -103,7 +104,7 @@ MISTAKES = {
         "%batten castings does nothing with a data frame. One percent sign works on the last examination. "
         "To examine it, begin a cell with two: %%batten castings"
     ),
-    "%batten table all": "%batten table takes nothing more. Seen: all Write just %batten table.",
+    "%batten table all": "%batten table takes nothing more. Seen: all. Write just %batten table.",
     "%batten report": "%batten report needs the name of a file. Such as %batten report castings.html",
     "%batten report /no/such/place/a.html": (
         "The report cannot be written to /no/such/place/a.html. No such file or directory. Choose another place."

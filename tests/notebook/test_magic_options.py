@@ -62,22 +62,22 @@ SLIPS = {
     "t --foc x": "There is no option --foc. Did you mean '--focus' or '--folds'? %%batten? lists the options.",
     "t -span 1 2": "There is no option -span. Did you mean '--span' or '--plain'? %%batten? lists the options.",
     "t --zzz": "There is no option --zzz. %%batten? lists the options.",
-    "t --span 1": "A value is missing: --span A B. Seen: --span 1 Add it behind the option.",
-    "t --focus --aim effect": "A value is missing: --focus NAME. Seen: --focus Add it behind the option.",
-    "t --keep": "A value is missing: --keep NAME. Seen: --keep Add it behind the option.",
-    "t --span 1 x": "--span A B takes a plain number. Seen: x Write it like 2.5.",
-    "t --tolerance 2,5": "--tolerance T takes a plain number. Seen: 2,5 Write it like 2.5.",
-    "t --tolerance inf": "--tolerance T takes a plain number. Seen: inf Write it like 2.5.",
-    "t --folds 2.5": "--folds K takes a whole number. Seen: 2.5 Write it like 10.",
+    "t --span 1": "A value is missing: --span A B. Seen: --span 1. Add it behind the option.",
+    "t --focus --aim effect": "A value is missing: --focus NAME. Seen: --focus. Add it behind the option.",
+    "t --keep": "A value is missing: --keep NAME. Seen: --keep. Add it behind the option.",
+    "t --span 1 x": "--span A B takes a plain number. Seen: x. Write it like 2.5.",
+    "t --tolerance 2,5": "--tolerance T takes a plain number. Seen: 2,5. Write it like 2.5.",
+    "t --tolerance inf": "--tolerance T takes a plain number. Seen: inf. Write it like 2.5.",
+    "t --folds 2.5": "--folds K takes a whole number. Seen: 2.5. Write it like 10.",
     "t --at steel": (
-        "--at NAME=VALUE takes a column's name, the sign = and a value. Seen: steel "
+        "--at NAME=VALUE takes a column's name, the sign = and a value. Seen: steel. "
         'Write them without spaces, or in quotes: "bed age=3".'
     ),
     "t --units =kg": (
-        "--units NAME=UNIT takes a column's name, the sign = and a value. Seen: =kg "
+        "--units NAME=UNIT takes a column's name, the sign = and a value. Seen: =kg. "
         'Write them without spaces, or in quotes: "bed age=3".'
     ),
-    "t --plain=yes": "--plain takes no value. Seen: --plain=yes Write just --plain.",
+    "t --plain=yes": "--plain takes no value. Seen: --plain=yes. Write just --plain.",
     "t --aim effect --aim effect": "--aim is given twice. Keep one of them.",
     "t --at a=1 --at a=2": "--at a is given twice. Keep one of them.",
     "t --keep 2x": (
@@ -88,16 +88,16 @@ SLIPS = {
     ),
     "t --keep t": "--keep cannot bind the name t. It is the data frame's own. Choose another name, such as exam.",
     "t minutes ~ mass": (
-        "Only the name of the data frame stands on the %%batten line beside the options. Seen too: minutes ~ mass "
+        "Only the name of the data frame stands on the %%batten line beside the options. Seen too: minutes ~ mass. "
         "Write the formula on the lines below."
     ),
     "t --focus daily light": (
-        "Only the name of the data frame stands on the %%batten line beside the options. Seen too: light "
-        'Put a name with spaces or quotes between quotes, such as --focus "daily light".'
+        "Only the name of the data frame stands on the %%batten line beside the options. Seen too: light. "
+        'Names and expressions with spaces go between quotes, such as --focus "daily light".'
     ),
     "t --focus it's": (
-        "A quotation mark on the %%batten line is never closed. Seen: t --focus it's "
-        'Put a name with spaces or quotes between quotes, such as --focus "daily light".'
+        "A quotation mark on the %%batten line is never closed. Seen: t --focus it's. "
+        'Names and expressions with spaces go between quotes, such as --focus "daily light".'
     ),
 }  # fmt: skip
 

@@ -13,14 +13,14 @@ __all__ = [
 ]  # fmt: skip
 
 _USAGE = "%%batten FRAME, then options; below it a formula, such as minutes ~ mass_kg + C(alloy). %%batten? lists them."
-_QUOTES = 'Put a name with spaces or quotes between quotes, such as --focus "daily light".'
+_QUOTES = 'Names and expressions with spaces go between quotes, such as --focus "daily light".'
 
 
 # --- the line of %%batten ---------------------------------------------------------------------------------------------
 
 
 def open_quote(line: str) -> InputError:
-    return InputError("A quotation mark on the %%batten line is never closed.", f"Seen: {line.strip()}", _QUOTES)
+    return InputError("A quotation mark on the %%batten line is never closed.", f"Seen: {line.strip()}.", _QUOTES)
 
 
 def no_frame_name(frames: Sequence[str]) -> InputError:
@@ -36,7 +36,7 @@ def extra_words(words: Sequence[str]) -> InputError:
     formula = any("~" in word for word in words)
     return InputError(
         "Only the name of the data frame stands on the %%batten line beside the options.",
-        "Seen too: " + " ".join(words),
+        f"Seen too: {' '.join(words)}.",
         "Write the formula on the lines below." if formula else _QUOTES,
     )
 
@@ -54,22 +54,22 @@ def given_twice(what: str) -> InputError:
 def missing_value(form: str, seen: Sequence[str]) -> InputError:
     """form: the option as it is written, "--span A B". seen: the values that are there."""
     written = " ".join((form.split()[0], *seen))
-    return InputError(f"A value is missing: {form}.", f"Seen: {written}", "Add it behind the option.")
+    return InputError(f"A value is missing: {form}.", f"Seen: {written}.", "Add it behind the option.")
 
 
 def takes_no_value(name: str, value: str) -> InputError:
-    return InputError(f"{name} takes no value.", f"Seen: {name}={value}", f"Write just {name}.")
+    return InputError(f"{name} takes no value.", f"Seen: {name}={value}.", f"Write just {name}.")
 
 
 def bad_number(form: str, seen: str, *, whole: bool) -> InputError:
     what, such = ("a whole number", "10") if whole else ("a plain number", "2.5")
-    return InputError(f"{form} takes {what}.", f"Seen: {seen}", f"Write it like {such}.")
+    return InputError(f"{form} takes {what}.", f"Seen: {seen}.", f"Write it like {such}.")
 
 
 def bad_pair(form: str, seen: str) -> InputError:
     """A NAME=VALUE without its sign, its name or its value."""
     return InputError(
-        f"{form} takes a column's name, the sign = and a value.", f"Seen: {seen}",
+        f"{form} takes a column's name, the sign = and a value.", f"Seen: {seen}.",
         'Write them without spaces, or in quotes: "bed age=3".',
     )  # fmt: skip
 
@@ -84,7 +84,7 @@ def bad_keep(name: str, why: str) -> InputError:
 def not_a_name(text: str) -> InputError:
     """An expression where a variable should stand."""
     return InputError(
-        "The data frame is given by the name of a variable.", f"Seen: {text}",
+        "The data frame is given by the name of a variable.", f"Seen: {text}.",
         "Give it a name in a cell before this one; --rows chooses among its rows.",
     )  # fmt: skip
 
@@ -130,7 +130,7 @@ def unknown_subcommand(word: str, options: Sequence[str], *, is_frame: bool) -> 
 
 
 def takes_nothing(word: str, rest: str) -> InputError:
-    return InputError(f"%batten {word} takes nothing more.", f"Seen: {rest}", f"Write just %batten {word}.")
+    return InputError(f"%batten {word} takes nothing more.", f"Seen: {rest}.", f"Write just %batten {word}.")
 
 
 def no_file() -> InputError:
@@ -140,7 +140,7 @@ def no_file() -> InputError:
 def not_a_page(file: str) -> InputError:
     """Only pages are written, so that a slip of the hand overwrites no data."""
     return InputError(
-        "The report is a web page: its file's name ends in .html.", f"Seen: {file}", "Nothing has been written."
+        "The report is a web page: its file's name ends in .html.", f"Seen: {file}.", "Nothing has been written."
     )
 
 

@@ -193,7 +193,7 @@ def _in_rows(typed: str, quote: str, columns: list[str]) -> Offer:
 
 def _quoted(text: str, quote: str) -> str:
     """A value as the line takes it, in quotes where it needs them or they are opened already."""
-    if not quote and not re.search(r"[\s\"'\\]", text):
+    if not quote and re.fullmatch(r"[^\s\"'\\]+", text):
         return text
     if quote == "'" and "'" not in text:
         return f"'{text}'"
@@ -202,7 +202,8 @@ def _quoted(text: str, quote: str) -> str:
 
 def _opened(name: str, quote: str) -> str:
     """A column with = behind it; quotes that it needs stay open for the value."""
-    return _quoted(name + "=", quote).rstrip("\"'") if quote or " " in name else _quoted(name + "=", quote)
+    text = _quoted(f"{name}=", quote)
+    return text[:-1] if text[0] in "\"'" else text
 
 
 # --- on the line of %batten -------------------------------------------------------------------------------------------

@@ -21,7 +21,10 @@ from batten.report.text import headline, text_summary
 
 __all__ = ["add_formatters", "in_kernel", "remove_formatters", "show", "show_table"]
 
-NEXT = "This examination also answers to %batten table, %batten code KEY and %batten report FILE."
+NEXT = (
+    "%batten table, %batten code KEY and %batten report FILE work on this examination;\n"
+    "--keep exam binds it to a variable."
+)
 #: letters on a line, fewer where a terminal has fewer
 WIDTH = 100
 
