@@ -50,6 +50,19 @@ def test_a_row_that_carries_the_correction_is_named_by_its_label() -> None:
     assert "Read the median." in found[0]
 
 
+def test_a_row_that_decides_its_own_fitted_value_is_named_with_its_leverage() -> None:
+    exam = examined("fan", 40, *QUICK)
+    fit = exam["y ~ poly2 x"]
+    frame = fan(40).frame
+    alloys = pd.get_dummies(frame["alloy"]).iloc[:, 1:]
+    X = np.column_stack([np.ones(40), frame["mass_kg"], frame["mass_kg"] ** 2, alloys])
+    h = np.diag(X @ np.linalg.pinv(X))
+    row = int(h.argmax())
+    assert h[row] > 0.5
+    wanted = f"Row {row} (mass_kg {frame['mass_kg'][row]:g} kg) decides {100 * h[row]:.0f}% of its own fitted value"
+    assert any(words.startswith(wanted) for words in cautions(exam, fit.key))
+
+
 def test_rows_that_err_like_their_neighbours_are_pointed_out() -> None:
     rng = np.random.default_rng(2)
     x = rng.uniform(1, 9, 200)

@@ -30,6 +30,8 @@ MOST = 2
 FEW, PER_CONSTANT = 30, 10
 #: rows beyond an end of the span, fewer than which that end hangs on them
 BEYOND_END = 5
+#: leverage from which a row decides most of its own fitted value
+OWNED = 0.5
 #: share of rows left out that is worth a caution
 LEFT_OUT = 0.05
 #: correlation of neighbouring errors worth a caution, where chance explains it poorly
@@ -41,8 +43,8 @@ def cautions(exam: Examination, key: str | None = None) -> tuple[str, ...]:
     name = key or exam.choice.key
     est = exam.comparison.estimates[name]
     every = (
-        *_bend_left(exam, name), *_carried(exam.problem, est), *_outside(exam), *_few(exam.problem, est),
-        *_thin_ends(exam), *_neighbours(est), *_left_out(exam.problem),
+        *_bend_left(exam, name), *_carried(exam.problem, est), *_outside(exam), *_owned(exam.problem, est),
+        *_few(exam.problem, est),        *_thin_ends(exam), *_neighbours(est), *_left_out(exam.problem),
     )  # fmt: skip
     return every[:MOST]
 
@@ -90,6 +92,17 @@ def _outside(exam: Examination) -> Iterator[str]:
         yield (
             f"{plain(p.focus)} of {' and '.join(out)} lies outside the rows ({place(low)} to {place(high, unit)}): "
             "there every curve is a guess, and its interval does not know it."
+        )
+
+
+def _owned(problem: Problem, est: Estimate) -> Iterator[str]:
+    row = int(est.leverage.argmax())
+    share = float(est.leverage[row])
+    if share > OWNED:
+        x = place(float(est.rows.x[row]), problem.unit(problem.focus))
+        yield (
+            f"Row {shortened(problem.index[row], 30)} ({plain(problem.focus)} {x}) decides {percent(share)} of its own "
+            "fitted value: near it the curve says little beyond that row."
         )
 
 
