@@ -44,7 +44,7 @@ def cautions(exam: Examination, key: str | None = None) -> tuple[str, ...]:
     est = exam.comparison.estimates[name]
     every = (
         *_bend_left(exam, name), *_carried(exam.problem, est), *_outside(exam), *_owned(exam.problem, est),
-        *_few(exam.problem, est),        *_thin_ends(exam), *_neighbours(est), *_left_out(exam.problem),
+        *_few(exam.problem, est), *_thin_ends(exam), *_neighbours(est), *_left_out(exam.problem),
     )  # fmt: skip
     return every[:MOST]
 
