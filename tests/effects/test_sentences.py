@@ -66,7 +66,7 @@ def everything():
     out = []
     for k, rows in enumerate(samples()):
         for key in KEYS:
-            for of in ("mean", "median"):
+            for of in ("mean", "median") if k in (0, 3) else ("mean",):
                 out += [(k, key, of, sentence) for sentence in told(key, rows, of=of)]
     return out
 
@@ -196,7 +196,7 @@ def test_a_hinge_tells_both_slopes_and_the_breaks_interval():
     assert texts[1].startswith("Below 5.90 kg, each further kg goes with 0.96 min less (95% interval ")
     assert texts[2].startswith("Above 5.90 kg, each further kg goes with 1.26 min more (95% interval ")
     assert texts[3].startswith("The break in mass is 5.90 kg (95% interval 5.61 to 6.27 kg); 6 kg instead costs ")
-    assert texts[4] == "The mean of minutes is lowest at 5.90 kg (95% interval 5.61 to 6.27 kg)."
+    assert texts[4].startswith("The mean of minutes is lowest at 5.90 kg (95% interval 5.61 to 6.27 kg); there it is ")
 
 
 def test_groups_are_told_step_by_step_and_a_span_within_one_group_is_refused():

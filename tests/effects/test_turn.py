@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from data import A_X, A_Y, B_X, B_Y, fitted, rows_of
+from scipy.stats import t as student
 
 from batten.effects.profile import profile_of_shape
 from batten.effects.turn import NOT_LOCATED, turning_point
@@ -28,6 +29,8 @@ def test_the_vertex_of_a_quadratic_and_its_exact_set():
     assert found.ends.p == pytest.approx(3.667e-8, rel=1e-3)
     assert found.located
     assert found.reading == "lowest at 5.50 kg (95% interval 5.22 to 5.75 kg)"
+    assert found.height.estimate == pytest.approx(5.254578, abs=5e-7)
+    assert (found.height.high - found.height.estimate) / student.ppf(0.975, 13) == pytest.approx(0.207219, abs=1e-6)
 
 
 def test_the_hardwood_maximum_lies_where_the_published_fit_puts_it():

@@ -293,7 +293,11 @@ def turn_sentence(turn: Turn, names: Names, *, of: str) -> Sentence:
         told.numbers.update({f"from_{k}": low, f"to_{k}": high})
     told.numbers.update({"level": round(100 * names.level, 6), "x_lowest": turn.data[0], "x_highest": turn.data[1]})
     if turn.located:
-        return told.sentence("turn", f"The {of} of {names.y} is {turn.reading}.")
+        text = f"The {of} of {names.y} is {turn.reading}"
+        if turn.height is not None and of == "mean":
+            there = told.estimate("there", turn.height, names.y_unit)
+            text += f"; there it is {there}, which flatters since the place was chosen for it"
+        return told.sentence("turn", f"{text}.")
     return told.sentence("turn", f"Turning point of {names.y}: {turn.reading}.")
 
 

@@ -15,14 +15,18 @@ from typing import Literal
 import numpy as np
 from scipy.stats import t as student
 
+from batten.effects.contrast import no_interval
 from batten.effects.numbers import about, place, show, show_interval
 from batten.effects.profile import profile_of_shape
 from batten.effects.slopes import breaks, slopes_along
 from batten.effects.turning import UShape, delta_std_error, fieller, flat_set, u_shape
+from batten.effects.value import Effect, effect_of
 from batten.engine.rows import Array
 from batten.engine.simultaneous import critical
 from batten.families.shapes.polynomial import Polynomial
 from batten.fit.estimate import Estimate
+from batten.fit.means import averaged_means, interval
+from batten.fit.predict import positive_by_nature
 from batten.fit.slopes import averaged_slopes
 
 __all__ = ["Turn", "turning_point"]
@@ -39,7 +43,8 @@ class Turn:
     there is none or several. estimates: all of them. pieces: every x that cannot be excluded; infinite ends for a
     quadratic. located: one interval inside the data. form: what y is there. std_error: by the delta method, for
     comparison only. ends: slopes at the lowest and highest x against zero (quadratics and smooth curves). data: the
-    lowest and the highest x.
+    lowest and the highest x. height: the mean of y there when it lies inside the data, with its interval as if the
+    place were known; chosen as the best place, so it flatters.
     """
 
     estimate: float
@@ -51,6 +56,7 @@ class Turn:
     std_error: float = math.nan
     ends: UShape | None = None
     data: Piece = (math.nan, math.nan)
+    height: Effect | None = None
 
 
 @dataclass(frozen=True)
@@ -94,7 +100,14 @@ def turning_point(
     base (u, q), modifier (u, m): covariate rows to average over under interactions instead of the rows' own.
     """
     found = _turn(est, level=level, errors=errors, unit=unit, base=base, modifier=modifier)
-    return replace(found, data=(float(est.rows.x.min()), float(est.rows.x.max())))
+    data = float(est.rows.x.min()), float(est.rows.x.max())
+    height = None
+    if data[0] <= found.estimate <= data[1]:
+        at = averaged_means(est, np.array([found.estimate]), base=base, modifier=modifier, errors=errors)
+        height = effect_of(at.value, interval(at, level, positive=positive_by_nature(est, at)))
+        why = no_interval(est, height, of="mean")
+        height = height.without_interval(why) if why else height
+    return replace(found, data=data, height=height)
 
 
 def _turn(
