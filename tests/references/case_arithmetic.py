@@ -70,7 +70,7 @@ def _whole_numbers(column: np.ndarray) -> np.ndarray:
     times = int(np.lcm.reduce([p.denominator for p in parts]))
     np.testing.assert_allclose([float(p) for p in parts], share, atol=1e-9)
     whole = np.array([float(p * times) for p in parts])
-    return whole / np.gcd.reduce(whole.astype(int))
+    return np.asarray(whole / np.gcd.reduce(whole.astype(int)))
 
 
 def _smearing(case: Case) -> dict[str, float]:

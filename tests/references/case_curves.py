@@ -92,7 +92,7 @@ def in_letters(written: Written, fitted: Array) -> Array:
 def certified(written: Written, y: Array, starts: list[Array]) -> CurveFit:
     """The published curve by batten's search with its own columns, from each start; the lowest is kept."""
     best: tuple[float, Array] | None = None
-    for start in starts or [None]:
+    for start in starts or (None,):
         layout = Layout.of(written, start)
         candidates = _grid(layout) if start is None else layout.theta(start)[None]
         found, coef = _best(layout, y, candidates)

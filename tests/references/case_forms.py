@@ -70,7 +70,7 @@ class Form:
 
     def with_key(self, left: str, right: str, **changes: Any) -> Form:
         """Another remedy on the same table, its terms named as one would type them."""
-        usual = {"terms": usual_terms(self.focus, right), "factor": 1.0, "shift": 0.0, "centre": 0.0}
+        usual: dict[str, Any] = {"terms": usual_terms(self.focus, right), "factor": 1.0, "shift": 0.0, "centre": 0.0}
         return replace(self, left=left, right=right, **usual, **changes)
 
 
@@ -140,6 +140,8 @@ def _response(case: Case, form: Form, left: str) -> Form:
     function, power = re.fullmatch(rf"(\w+)\({y}\)", bare), re.fullmatch(rf"{y}\*\*\(?(-?[\d.]+)\)?", bare)
     if bare == form.response:
         return form
+    if bare in (f"log({form.response}+1)", f"log1p({form.response})"):
+        return replace(form, left="log1p y")
     if bare == f"1/{form.response}":
         return replace(form, left="1/y")
     if function and function[1] in _LEFT:

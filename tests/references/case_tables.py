@@ -34,7 +34,8 @@ def table(case: Case, *, rounded: bool = True) -> pd.DataFrame:
     for name, body in definitions(case).items():
         places = rounding(body)
         text = body if places is None else _ROUNDED.fullmatch(body)["body"]  # type: ignore[index]
-        values = pd.Series(eval(text, {"__builtins__": {}, **_FUNCTIONS}, dict(frame.items())), index=frame.index)
+        columns = {str(c): frame[c] for c in frame}
+        values = pd.Series(eval(text, {"__builtins__": {}, **_FUNCTIONS}, columns), index=frame.index)
         frame = frame.assign(**{name: values if places is None or not rounded else values.round(places)})
     return frame.reset_index(drop=True)
 

@@ -60,7 +60,7 @@ class Weights:
     def _columns(self) -> int:
         """Columns of the shape, for each column it is multiplied with."""
         est = self.fit.estimate
-        return est.shape.columns(est.rows.x[:1], est.state, est.theta).shape[1]
+        return int(est.shape.columns(est.rows.x[:1], est.state, est.theta).shape[1])
 
     @property
     def _first(self) -> int:

@@ -8,6 +8,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import combinations
+from types import CodeType
 
 import numpy as np
 from case_tables import NotDelivered
@@ -54,7 +55,7 @@ class Written:
         return np.broadcast_to(out, next(iter(self.data.values())).shape)
 
     @cached_property
-    def _code(self) -> object:
+    def _code(self) -> CodeType:
         return compile(self.text, "curve", "eval")
 
     def jacobian(self, b: Array) -> Array:

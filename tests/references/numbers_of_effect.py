@@ -22,14 +22,14 @@ def _ratio(a: Asked, term: str) -> float:
     """exp(b): for the focal predictor, the ratio of means one unit apart."""
     if term in ("", a.form.focus) and a.form.percent is None and a.form.key == "log y ~ x":
         low = float(a.fitted.x.mean())
-        return float(a.fitted.fit.contrast(low, low + 1).loc["ratio", "estimate"])
+        return float(a.fitted.fit.contrast(low, low + 1)["estimate"]["ratio"])
     return math.exp(_log_units(a, term))
 
 
 def _times(a: Asked, factor: float, effect: str) -> float:
     """Rows with `factor` times as much x against rows with x, as `effect` of the mean."""
     low = float(np.median(a.fitted.x[a.fitted.x > 0]))
-    return float(a.fitted.fit.contrast(low, factor * low).loc[effect, "estimate"])
+    return float(a.fitted.fit.contrast(low, factor * low)["estimate"][effect])
 
 
 def _relative(a: Asked, factor: float) -> float:
@@ -69,7 +69,7 @@ def _slope_percent(a: Asked, at: str) -> float:
     """Slope of log y in percent: that of the mean over the mean, which a contrast of two places gives."""
     low, high = float(at), float(a.fitted.x.max())
     found = a.fitted.fit.contrast(low, high)["estimate"]
-    return 100 * _slope(a, low) * (found["ratio"] - 1) / found["difference"]
+    return float(100 * _slope(a, low) * (found["ratio"] - 1) / found["difference"])
 
 
 def _break(a: Asked) -> float:
@@ -77,7 +77,7 @@ def _break(a: Asked) -> float:
     places = [name for name in table.index if name.startswith("break")]
     if not places:
         raise NotDelivered(f"{a.form.key} has no break")
-    return float(table.loc[places[0], "estimate"])
+    return float(table["estimate"][places[0]])
 
 
 def _break_error(a: Asked) -> float:

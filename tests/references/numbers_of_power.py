@@ -26,7 +26,7 @@ def _power_form(a: Asked) -> Form:
 
 def _power_of_y(a: Asked, column: str) -> float:
     fit = Fitted(_power_form(a), a.fitted.level).fit
-    return float(fit.constants.loc[f"power of {fit.problem.response}", column])
+    return float(fit.constants[column][f"power of {fit.problem.response}"])
 
 
 def _scaled_rss(a: Asked, power: str) -> float:
@@ -46,7 +46,7 @@ def _constant(f: Fitted, start: str) -> float:
     found = [name for name in table.index if name.startswith(start)]
     if not found:
         raise NotDelivered(f"{f.form.key} learns no {start}")
-    return float(table.loc[found[0], "estimate"])
+    return float(table["estimate"][found[0]])
 
 
 def _box_tidwell(a: Asked, steps: int) -> float:
