@@ -19,7 +19,6 @@ class Entry:
     """One remedy: errors, gap and difference in units of y."""
 
     key: str
-    words: str
     rmse: float
     gap: float
     tied: bool
@@ -62,7 +61,7 @@ def entries(exam: Examination) -> dict[str, Entry]:
 
 def _entry(key: str, row: dict[str, Any]) -> Entry:
     return Entry(
-        key=key, words=str(row["words"]), rmse=float(row["rmse"]), gap=float(row["rmse_gap"]), tied=bool(row["tied"]),
+        key=key, rmse=float(row["rmse"]), gap=float(row["rmse_gap"]), tied=bool(row["tied"]),
         within_10=float(row["within_10"]), leftover=str(row["leftover"]), parameters=int(row["parameters"]),
         difference=float(row["difference"]), low=float(row["difference_low"]), high=float(row["difference_high"]),
         note=str(row["note"]),
