@@ -168,8 +168,8 @@ _HELPER = '''
 def bend(x, j):
     """Column j of a restricted cubic spline: cubic between the knots, straight beyond the outer two."""
     k, c, d = KNOTS[j], KNOTS[-2], KNOTS[-1]
-    cube = lambda knot: np.maximum(x - knot, 0) ** 3
-    return (cube(k) - cube(c) * (d - k) / (d - c) + cube(d) * (c - k) / (d - c)) / (d - KNOTS[0]) ** 2
+    own, before, last = (np.maximum(x - knot, 0) ** 3 for knot in (k, c, d))
+    return (own - before * (d - k) / (d - c) + last * (c - k) / (d - c)) / (d - KNOTS[0]) ** 2
 '''
 
 FAMILY = Spline()
