@@ -96,11 +96,19 @@ def test_a_pseudo_likelihood_has_no_log_score() -> None:
     assert got.log_score is None
 
 
-def test_a_training_set_that_loses_a_level_is_refused_in_words() -> None:
+def test_a_level_with_a_single_row_empties_no_table() -> None:
     data = rows()
     lone = np.zeros(90)
     lone[7] = 1
     thin = Rows(data.y, data.x, np.column_stack([data.base, lone]), data.modifier)
     for got in held_out([fitted(thin, "y ~ x"), fitted(thin, "y ~ hinge x")], deal(thin, folds=5, repeats=1, seed=1)):
-        assert isinstance(got, Refusal)
-        assert "training set" in got.wrong
+        assert isinstance(got, HeldOut)
+        assert got.rows.sum() == 89
+
+
+def test_a_training_set_that_loses_a_group_is_refused_in_words() -> None:
+    data = rows()
+    far = Rows(data.y, np.where(np.arange(90) == 7, 40.0, data.x), data.base, data.modifier)
+    (got,) = held_out([fitted(far, "y ~ bins(30) x")], deal(far, folds=5, repeats=1, seed=1))
+    assert isinstance(got, Refusal)
+    assert "training set" in got.wrong

@@ -56,3 +56,32 @@ def test_another_seed_deals_other_folds() -> None:
     x = np.arange(50.0)
     one, two = (deal(rows_of(x, x), folds=5, repeats=1, seed=s).fold for s in (0, 1))
     assert (one != two).any()
+
+
+def test_the_only_row_of_a_level_always_trains() -> None:
+    rng = np.random.default_rng(0)
+    x, level = rng.normal(size=40), np.zeros(40)
+    level[7] = 1
+    rows = Rows(rng.normal(size=40), x, np.column_stack([np.ones(40), level]), np.ones((40, 1)))
+    fold = deal(rows, folds=5, repeats=3, seed=0).fold
+    assert (fold[:, 7] == -1).all()
+    assert (np.delete(fold, 7, axis=1) >= 0).all()
+
+
+def test_two_rows_of_a_level_train_together_only_where_they_would_be_held_out_together() -> None:
+    rng = np.random.default_rng(0)
+    x, level = rng.normal(size=40), np.zeros(40)
+    level[[3, 30]] = 1
+    rows = Rows(rng.normal(size=40), x, np.column_stack([np.ones(40), level]), np.ones((40, 1)))
+    fold = deal(rows, folds=2, repeats=30, seed=0).fold[:, [3, 30]]
+    assert ((fold[:, 0] == -1) == (fold[:, 1] == -1)).all()
+    assert 0 < (fold[:, 0] == -1).sum() < 30
+    assert (fold[fold[:, 0] >= 0, 0] != fold[fold[:, 0] >= 0, 1]).all()
+
+
+def test_the_row_that_owns_the_slope_always_trains() -> None:
+    """Anscombe 1973, set IV: x is 8 in ten rows and 19 in one."""
+    x = np.array([8.0] * 7 + [19.0] + [8.0] * 3)
+    y = np.array([6.58, 5.76, 7.71, 8.84, 8.47, 7.04, 5.25, 12.50, 5.56, 7.91, 6.89])
+    fold = deal(rows_of(x, y), folds=10, repeats=2, seed=0).fold
+    assert (fold[:, 7] == -1).all()

@@ -131,7 +131,14 @@ def _run(
             scores[key] = score
     if progress:
         progress(steps - 1, steps, "left-over bend")
-    bends = {key: bend_of(reference, est, level=question.level) for key, est in estimates.items()}
+    bends: dict[str, Bend | None] = {}
+    for key, est in list(estimates.items()):
+        bend = bend_of(reference, est, level=question.level)
+        if isinstance(bend, Refusal):
+            refused[key] = bend
+            del estimates[key], scores[key]
+        else:
+            bends[key] = bend
     turns = {key: _turns(est, question.expect) for key, est in estimates.items()}
     found = _assemble(rows, question, splits, reference, estimates, scores, bends, turns, refused, unit=unit)
     if progress:

@@ -106,12 +106,22 @@ def _add_on(est: Estimate) -> tuple[float, float, tuple[int, int]]:
     return f, float(fisher.sf(f, *df)), df
 
 
-def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend | None:
-    """How far the estimate's mean curve lies from the flexible one, or None where nothing can bend."""
+def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend | Refusal | None:
+    """How far the estimate's mean curve lies from the flexible one, or None where nothing can bend.
+
+    A Refusal where the remedy has no mean somewhere in the central 90% of x.
+    """
     if reference.curve is None:
         return None
     own = averaged_means(est, reference.places, jackknife=False)
     gap = reference.curve.value - own.value
+    lost = ~np.isfinite(own.value)
+    if lost.any():
+        return Refusal(
+            wrong="The mean curve has gaps inside the data.",
+            seen=f"{est.remedy.key} has no mean at {int(lost.sum())} of {len(lost)} places in the central 90% of x.",
+            instead="log y or a log link, whose mean always exists.",
+        )
     covariance = reference.curve.covariance_of_gap(own)
     error = np.sqrt(np.maximum(np.diagonal(covariance), 0.0))
     # two curves that are the same by algebra differ by rounding alone

@@ -10,14 +10,19 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from batten.engine.linear import design, factor
 from batten.engine.rows import Array, Ints, Rows
 
 __all__ = ["Splits", "deal", "default_repeats"]
 
 
+#: a training set has lost a direction when less than this share of its squared length is left
+LOST = 1e-9
+
+
 @dataclass(frozen=True, eq=False)
 class Splits:
-    """fold (repeats, n): the fold in which each row is held out. k: number of folds."""
+    """fold (repeats, n): the fold in which each row is held out, -1 for a row that always trains. k: number of folds."""
 
     fold: Ints
     k: int
@@ -49,11 +54,29 @@ def deal(rows: Rows, *, folds: int, repeats: int, seed: int) -> Splits:
     k = min(folds, int(unit.max()) + 1)
     runs = -(-(int(unit.max()) + 1) // k)
     rng = np.random.default_rng(seed)
+    basis = factor(design(rows, rows.x[:, None])).q
     out = np.empty((repeats, rows.count), dtype=np.intp)
     for r in range(repeats):
         dealt = rng.permuted(np.tile(np.arange(k), (runs, 1)), axis=1).ravel()
         out[r, order] = dealt[unit]
+        _keep_owners(out[r], basis, k)
     return Splits(out, k)
+
+
+def _keep_owners(fold: Ints, basis: Array, k: int) -> None:
+    """Rows without which a training set could not fit the straight line always train: the only rows of a level, say.
+
+    Held out they could be predicted by no remedy. Along a direction that a training set loses, all length lies in the
+    held-out rows; those that carry it are set to -1.
+    """
+    for number in range(k):
+        for _ in range(basis.shape[1]):
+            held = np.flatnonzero(fold == number)
+            values, vectors = np.linalg.eigh(basis[held].T @ basis[held])
+            if values[-1] < 1 - LOST:
+                break
+            share = (basis[held] @ vectors[:, -1]) ** 2
+            fold[held[share > 1e-6 * share.max()]] = -1
 
 
 def _sorted_rows(rows: Rows) -> Ints:

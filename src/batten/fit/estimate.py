@@ -24,6 +24,10 @@ Designs = dict[tuple[str, Constants], tuple[Array, Factored]]
 __all__ = ["Designs", "Estimate", "estimate", "scale_power", "searched_model"]
 
 
+#: leverage from which a row is taken to own a coefficient
+OWNS = 1 - 1e-8
+
+
 @dataclass(frozen=True, eq=False)
 class Estimate:
     """Frozen result of one fit; everything shown, predicted or emitted reads it.
@@ -170,7 +174,9 @@ class Estimate:
 
         leave_out=False gives the first-order influence (HC0-type) instead, with the same sign.
         """
-        weight = 1.0 / (1.0 - self.leverage) if leave_out else np.ones(self.n)
+        h = self.leverage
+        # a row that owns a coefficient cannot be left out: its residual is zero, and it moves nothing else
+        weight = np.where(h < OWNS, 1.0 / (1.0 - h), 0.0) if leave_out else np.ones(self.n)
         if self.remedy.left.searched:
             return -self._without_drift(likelihood_moves(self)) * weight[:, None]
         score = self.residual if self.link is None else self._link_score()
