@@ -84,7 +84,7 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
         [shown.rows],
         np.column_stack([shown.coef, shown.error]).ravel(),
         [] if shown.smear is None else [shown.smear],
-        [] if shown.span.note else [span.estimate, (span.high - span.low) / 2],
+        [v for v in (span.estimate, (span.high - span.low) / 2) if np.isfinite(v)],
         shown.predictions.ravel(),
     ])  # fmt: skip
 

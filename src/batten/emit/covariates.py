@@ -66,7 +66,7 @@ def as_levels(values, levels):
 _TABLE = '''
 def coded(values, table, j):
     """Column j of the levels' table; a level that is not in it becomes missing."""
-    return values.astype(object).map({level: row[j] for level, row in table.items()}).astype(float)
+    return values.astype(object).map({level: row[j] for level, row in table.items()}).to_numpy(float)
 '''
 
 

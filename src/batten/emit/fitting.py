@@ -57,7 +57,7 @@ def _rows(parts: Parts) -> list[str]:
 def _ols(parts: Parts) -> list[str]:
     source = parts.left.columns[0][1]
     response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
-    simple = parts.robust and not parts.searched
+    simple = parts.robust and not parts.searched and not parts.alone
     fit = f"fit = smf.ols(MODEL, rows{response})"
     if simple:
         lines = noted(f'{fit}.fit(cov_type="HC3", use_t=True)', "HC3: errors may be of uneven size")
@@ -74,11 +74,11 @@ def _ols(parts: Parts) -> list[str]:
     if parts.needs_s2:
         lines.append(f"s2 = e @ e / {parts.est.df_residual}")
     if parts.power:
-        lines += ["h = (Q**2).sum(axis=1)", "out = e / (1 - h)  # each row's error around the fit without it"]
+        lines += [f"h = {parts.leverages}", "out = e / (1 - h)  # each row's error around the fit without it"]
         return [*lines, *power_moves(parts)]
     if not parts.robust:
         return lines
-    lines.append("out = e / (1 - (Q**2).sum(axis=1))  # each row's error around the fit without it")
+    lines.append(f"out = e / (1 - {parts.leverages})  # each row's error around the fit without it")
     return [*lines, "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out"]
 
 
@@ -97,7 +97,7 @@ def _glm(parts: Parts) -> list[str]:
         f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})",
         f"score = {score}",
         "# GLM's own HC1 to HC3 are all HC0: leave out each row instead, by one Newton step",
-        "without = b - np.linalg.solve(R, Q.T * (score / (1 - (Q**2).sum(axis=1)))).T",
+        f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T",
         f"out = y {'-' if parts.kind == 'share' else '/'} {undo(parts, '(X * without).sum(axis=1)')}"
         "  # each row against the mean without it",
     ]

@@ -94,7 +94,7 @@ def _jacobian(parts: Parts) -> list[list[str]]:
     text = f"The design, then how the fitted value moves with {names}, estimated as the coefficients are."
     lines, moves = ["def jacobian(frame):", *docstring(text)], []
     for name, step in zip(parts.searched, parts.steps, strict=True):
-        if parts.est.shape.family == "hinge":
+        if parts.est.shape.corners:
             moves.append(f"(design(frame, {name}={name} + STEP) - design(frame)) @ fit.params / STEP")
             continue
         pair = f"[design(frame, {name}={name} + d) @ fit.params for d in (1{step}, -1{step})]"
@@ -200,7 +200,7 @@ def _targets(parts: Parts) -> str:
 
 def _new_row(parts: Parts) -> list[str]:
     """eta, low and high for further rows at the design N."""
-    first, last = parts.ranks
+    first, last = parts.rank, -1 - parts.rank
     eta, tail = f"N @ {_b(parts)}", f"{50 - 50 * parts.question.level:.10g}% lie beyond each end"
     if not parts.ordered:
         half = f"{parts.t_name} * np.sqrt(s2 * (1 + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
@@ -214,13 +214,13 @@ def _new_row(parts: Parts) -> list[str]:
         lines = noted(f"    eta, ends = {eta}, [np.sort({without} @ row + out)[[{first}, {last}]] for row in N]", tail)
         ends = "np.transpose(ends)"
     back = undo(parts, ends)
-    falls = parts.est.remedy.left.family == "reciprocal"
+    falls = bool((parts.est.scale.inverse_slope(parts.est.eta[:1], parts.est.c) < 0).all())
     return [*lines, *wrapped(f"    low, high = {f'np.sort({back}, axis=0)' if falls else back}", 4)]
 
 
 def _new_row_of_link(parts: Parts) -> list[str]:
     """Ratios to the fit without the row itself; for shares differences, kept between 0 and 1."""
-    first, last = parts.ranks
+    first, last = parts.rank, -1 - parts.rank
     share = parts.kind == "share"
     mean = f"    mean = {undo(parts, 'N @ b')}"
     if parts.many:

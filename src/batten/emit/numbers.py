@@ -21,8 +21,8 @@ __all__ = ["Numbers", "numbers"]
 class Numbers:
     """rows: how many the fit uses. coef, error (k,): the shape's own columns and searched constants, with standard
     errors; empty where the focal predictor stands in interactions only. smear: factor from median to mean on the log
-    scale, else None. span: the standing question's answer. probes: rows (positions among those used) with the
-    middle and the highest x. predictions (2, 4): median, mean, low, high of one further row like each probe.
+    scale, else None. span: the standing question's answer. predictions (2, 4): median, mean, low, high of one further
+    row like the first and like the last of those used.
     """
 
     rows: int
@@ -30,7 +30,6 @@ class Numbers:
     error: Array
     smear: float | None
     span: SpanEffect
-    probes: Ints
     predictions: Array
 
 
@@ -39,8 +38,6 @@ def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
     shown = coefficients(est, level=question.level, errors=question.errors)
     own = _own_columns(problem, est)
     base, modifier = problem.profile or (None, None)
-    order = np.argsort(est.rows.x, kind="stable")
-    probes = order[[len(order) // 2, -1]]
     return Numbers(
         rows=est.n,
         coef=shown.estimate[own],
@@ -49,8 +46,7 @@ def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
         span=span_effect(
             est, question.span, level=question.level, errors=question.errors, base=base, modifier=modifier
         ),
-        probes=probes,
-        predictions=_predictions(est, question, probes),
+        predictions=_predictions(est, question, np.array([0, est.n - 1])),
     )
 
 

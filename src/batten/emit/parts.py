@@ -113,12 +113,11 @@ class Parts:
         return self.est.n > DELETIONS_ROWS
 
     @cached_property
-    def ranks(self) -> tuple[int, int]:
-        """Places of the interval's ends among n ordered values, from zero."""
+    def rank(self) -> int:
+        """Place of an interval's end among the ordered values, counted from either side, from zero."""
         n, level = self.est.n, self.question.level
         level = min(level, 1 - 2 / (n + 1)) if self.link else level
-        first = int(np.floor((1 - level) / 2 * (n + 1) + 1e-9)) - 1
-        return first, n - 1 - first
+        return int(np.floor((1 - level) / 2 * (n + 1) + 1e-9)) - 1
 
     @cached_property
     def t_quantile(self) -> float:
@@ -137,7 +136,22 @@ class Parts:
     @property
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
-        return self.link or bool(self.searched) or self.power
+        return self.link or bool(self.searched) or self.power or self.alone
+
+    @property
+    def alone(self) -> bool:
+        """Whether a row owns a coefficient, so that it cannot be left out (its leverage is 1)."""
+        return float(self.est.leverage.max()) > 1 - 1e-7
+
+    @property
+    def leverages(self) -> str:
+        """Source of the leverages, below 1."""
+        return "np.minimum((Q**2).sum(axis=1), 1 - 1e-9)" if self.alone else "(Q**2).sum(axis=1)"
+
+    @property
+    def bounded(self) -> bool:
+        """Whether the effect over the span has an interval."""
+        return math.isfinite(self.numbers.span.difference.high - self.numbers.span.difference.low)
 
     @property
     def percent(self) -> str:

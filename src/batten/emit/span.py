@@ -21,6 +21,10 @@ def span(parts: Parts) -> list[str]:
     note = parts.numbers.span.note
     if note:
         return comment(f"No effect over the span: {said(note, 200)}.")
+    if not parts.bounded:
+        why = comment(f"Change of the mean over SPAN; {said(parts.numbers.span.difference.note, 200)}.")
+        alone = ["def difference(b, keep=slice(None)):", *_difference(parts), "effect = difference(b)"]
+        return [*why, *_ends(parts), *alone, *_told(parts)]
     how = _deleted(parts) if parts.deletes else _linearised(parts)
     return [*comment(_introduction(parts)), *_ends(parts), *how, *_told(parts)]
 
@@ -155,6 +159,8 @@ def _told(parts: Parts) -> list[str]:
     unit, x_unit = parts.problem.unit(parts.problem.response), parts.problem.unit(parts.problem.focus)
     where = f"{parts.y}, mean at {parts.x} {b}{' ' + said(x_unit) if x_unit else ''} against {a}: "
     unit = f" {said(unit)}" if unit else ""
+    if not parts.bounded:
+        return wrapped(f"print({fstring(where, ('effect:+.4g',), unit)})")
     low, high = ("effect - half:.4g",), ("effect + half:.4g",)
     told = fstring(where, ("effect:+.4g",), f"{unit} ({parts.percent} ", low, " to ", high, ")")
     return wrapped(f"print({told})")
