@@ -13,7 +13,6 @@ CASES = sorted(walk.FOLDER.glob("*.json"))
 
 #: published numbers that batten refuses or does not offer, by the beginning of the reason it gives
 NOT_OFFERED = {
-    ("anscombe-quartet", "set4:"): "refused: No remedy can be fitted to these rows.",
     ("mn-clotting-lot1", "inverse:"): "no link 1/mean is offered",
 }
 #: numbers of other definitions

@@ -48,6 +48,9 @@ class Fit:
     question: Question
     estimate: Estimate
 
+    def __repr__(self) -> str:
+        return f"<Fit of {self.problem.formula!r} by {self.key!r}: {self.rows} rows>"
+
     @property
     def remedy(self) -> Remedy:
         return self.estimate.remedy

@@ -40,9 +40,14 @@ def groups_by(problem: Problem, column: str) -> tuple[Group, ...]:
         return tuple(_at_value(problem, column, float(np.quantile(values, q))) for q in QUANTILES)
     rows = problem.rows
     return tuple(
-        Group(f"{column} {level}", rows.base[mask], rows.modifier[mask])
+        Group(f"{column} {_said(level)}", rows.base[mask], rows.modifier[mask])
         for level, mask in masks_by(problem, column).items()
     )
+
+
+def _said(level: Any) -> str:
+    """A level as people write it: numbers that stand for groups are read as floats, and 5.0 is 5."""
+    return f"{level:g}" if isinstance(level, float) else str(level)
 
 
 def masks_by(problem: Problem, column: str) -> dict[Any, np.ndarray[Any, np.dtype[np.bool_]]]:
