@@ -67,7 +67,7 @@ def test_the_first_screen_has_a_verdict_a_figure_a_sentence_and_at_most_five_rem
     head = words(shown.head)
     assert head.startswith("The straight line bends, and it matters (")
     assert f"{FORMULA} on pumps" in head
-    first = shown.compare.pages.panels[0]
+    first = shown.compare.first
     (image,) = [attributes for tag, attributes in tags("\n".join(all_html(first.box))) if tag == "img"]
     assert str(image["src"]).startswith("data:image/png;base64,")
     assert str(image["alt"]).startswith("energy (kWh/m3) against flow (m3/h): ")
@@ -142,7 +142,7 @@ def test_a_panel_switches_in_the_page_without_the_kernel(shown: ExamWidget) -> N
 def test_another_aim_chooses_again_from_the_same_fits(shown: ExamWidget, pumps: Examination) -> None:
     other = pumps.with_aim("prediction")
     assert other.choice.key != pumps.choice.key
-    first = shown.compare.pages.panels[0]
+    first = shown.compare.first
     first.aim.value = "prediction"
     assert shown.desk.exam.choice.key == other.choice.key
     assert all(shown.desk.exam[key].estimate is pumps[key].estimate for key in pumps)
@@ -166,10 +166,10 @@ def test_another_span_reaches_every_part_that_tells_it(shown: ExamWidget, pumps:
     show_panel(shown, key, CODE)
     assert "SPAN = (60.5, 90.0)" in words(code.box)
     shown.tabs.selected_index = 0
-    assert sentence in words(shown.compare.pages.panels[0].box)
+    assert sentence in words(shown.compare.first.box)
     shown.span.back.click()
     assert shown.desk.exam.question.span == pumps.question.span
-    assert str(pumps[key].sentences()[0]) in words(shown.compare.pages.panels[0].box)
+    assert str(pumps[key].sentences()[0]) in words(shown.compare.first.box)
 
 
 @pytest.mark.parametrize(
@@ -184,7 +184,7 @@ def test_another_span_reaches_every_part_that_tells_it(shown: ExamWidget, pumps:
 def test_a_span_that_cannot_be_read_is_told_in_a_line_and_nothing_is_lost(
     shown: ExamWidget, pumps: Examination, typed: str, said: str
 ) -> None:
-    first = shown.compare.pages.panels[0]
+    first = shown.compare.first
     before = first.picture.value, first.table.value
     shown.span.low.text.value = typed
     assert words(shown.span.message.box).startswith(said)
@@ -284,7 +284,7 @@ def test_a_remedy_that_cannot_be_opened_says_why_and_the_text_stays(
 
 def test_an_opened_remedy_keeps_its_tab_under_another_aim(shown: ExamWidget) -> None:
     shown.picker.field.value = "log y ~ x"
-    shown.compare.pages.panels[0].aim.value = "prediction"
+    shown.compare.first.aim.value = "prediction"
     assert shown.keys.count("log y ~ x") == 1
     assert shown.tabs.children[shown.tabs.selected_index] is shown.remedies["log y ~ x"].box
 
@@ -367,7 +367,7 @@ def test_running_a_cell_again_closes_its_former_widgets_only(
 
 def test_a_closed_widgets_callbacks_do_nothing(pumps: Examination, quick: None) -> None:
     box = widget_for(pumps, cell_id=None, token="t")
-    tabs, aim = box.parts.tabs, box.parts.compare.pages.panels[0].aim
+    tabs, aim = parts_of(box).tabs, parts_of(box).compare.first.aim
     box.close()
     gc.collect()
     tabs.selected_index, aim.value = 1, "prediction"
@@ -375,7 +375,7 @@ def test_a_closed_widgets_callbacks_do_nothing(pumps: Examination, quick: None) 
 
 
 def test_callbacks_on_many_threads_end_in_one_consistent_state(shown: ExamWidget, pumps: Examination) -> None:
-    aim, span = shown.compare.pages.panels[0].aim, shown.span
+    aim, span = shown.compare.first.aim, shown.span
 
     def switch() -> None:
         for index in (1, 2, 0, 3, 2):
@@ -394,7 +394,7 @@ def test_callbacks_on_many_threads_end_in_one_consistent_state(shown: ExamWidget
     assert (exam.question.aim, exam.question.span[0]) == ("prediction", 62.0)
     assert [box.value for box in (shown.message.box, span.message.box)] == ["", ""]
     shown.tabs.selected_index = 0
-    assert str(exam.chosen.sentences()[0]) in words(shown.compare.pages.panels[0].box)
+    assert str(exam.chosen.sentences()[0]) in words(shown.compare.first.box)
 
 
 def together(calls: list[Callable[[], None]]) -> None:
@@ -428,7 +428,7 @@ def test_method_names_stay_in_how_this_was_computed_and_cautions_are_few(shown: 
                 assert methods.search(words(panel.box)) is None, panel.name
     for tab in shown.remedies.values():
         assert "".join(all_html(tab.box.children[0])).count("batten-caution") <= 2
-    assert "".join(all_html(shown.compare.pages.panels[0].reasons)).count("batten-caution") <= 2
+    assert "".join(all_html(shown.compare.first.reasons)).count("batten-caution") <= 2
 
 
 def test_hostile_names_are_text_everywhere() -> None:

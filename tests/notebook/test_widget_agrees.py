@@ -53,7 +53,7 @@ def shown(exam: Examination) -> Iterator[ExamWidget]:
 
 def test_every_remedy_has_a_tab_and_none_changed_the_examination(shown: ExamWidget, exam: Examination) -> None:
     assert set(shown.keys) == set(exam)
-    assert len(exam) >= 18
+    assert len(exam) >= 15
     assert shown.desk.exam is exam
 
 
@@ -70,7 +70,7 @@ def test_effect_panels_agree_with_the_table_and_with_the_sentences(shown: ExamWi
             name = f"difference, {unit}" if unit else "difference"
             assert printed(rf"^{name} {INTERVAL}", said) == agreeing(*row)
             told += 1
-    assert told >= 18
+    assert told >= 15
 
 
 def test_code_panels_assert_the_difference_that_the_effect_panels_show(shown: ExamWidget, exam: Examination) -> None:
@@ -85,7 +85,7 @@ def test_code_panels_assert_the_difference_that_the_effect_panels_show(shown: Ex
             numbers = [float(number) for number in wanted[1].split(",")]
             assert any(Rounded(number) == shown_difference[1] for number in numbers), key
             compared += 1
-    assert compared >= 18
+    assert compared >= 15
 
 
 def test_a_typed_row_agrees_with_predict_for_every_remedy(shown: ExamWidget, exam: Examination) -> None:

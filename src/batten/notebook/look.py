@@ -28,7 +28,10 @@ _OWN = """
 .jupyter-widgets.widget-tab.batten-tabs > .lm-TabBar .lm-TabBar-tab { flex: 0 0 auto; min-width: 0; max-width: none; }
 .batten-widget .batten-row, .batten-widget .batten-field { flex-wrap: wrap; align-items: center; gap: .2em .5em; }
 .batten-widget .batten-row { gap: .2em 2em; }
-.batten-widget .widget-label { width: auto; min-width: 0; }
+.batten-widget .widget-label { width: auto; min-width: 0; max-width: none; margin-right: .5em; }
+.batten-widget .widget-text > input { flex: 0 0 auto; width: 8em; }
+.batten-widget .batten-picker > input { width: 28em; max-width: 100%; }
+.batten-widget .batten-field .widget-toggle-buttons { display: flex; flex-flow: row nowrap; align-items: center; }
 .batten-widget .widget-toggle-buttons .widget-toggle-button { width: auto; min-width: 0; }
 /* panels are chosen by words with a rule below: lighter than the tabs above them */
 .batten-widget .batten-pages .widget-toggle-button {

@@ -7,6 +7,7 @@ import ipywidgets as widgets
 from batten.exam.examination import Examination
 from batten.notebook.callbacks import weakly
 from batten.notebook.panels.desk import Desk, bullets, figure, sheet
+from batten.notebook.panels.fields import labelled
 from batten.notebook.panels.pages import Pages
 from batten.notebook.panels.remedy_panels import HowOf, span_block
 from batten.notebook.panels.span import SpanFields
@@ -28,11 +29,12 @@ class Compare:
     """A tab: first look, ladder, spans, all that were tried, what cannot be used, how."""
 
     def __init__(self, desk: Desk, span: SpanFields) -> None:
-        panels = (FirstLook(desk, span), Ladder(), Spans(), Tried(), Refused(), HowOf())
-        self._pages = Pages(desk, panels)
-        self.box = self._pages.box
-        self.draw = self._pages.draw
-        self.pages = self._pages
+        self.first = FirstLook(desk, span)
+        self.pages = Pages(desk, (self.first, Ladder(), Spans(), Tried(), Refused(), HowOf()))
+        self.box = self.pages.box
+
+    def draw(self, exam: Examination) -> None:
+        self.pages.draw(exam)
 
 
 class FirstLook:
@@ -45,9 +47,7 @@ class FirstLook:
         self.picture, self.table, self.reasons = sheet(), sheet(""), sheet("")
         self.aim = widgets.ToggleButtons(options=list(AIMS), value=desk.exam.question.aim, tooltips=list(AIMS.values()))
         self.aim.observe(weakly(self._chosen), "value")
-        aim = widgets.HBox([widgets.Label("Choose for"), self.aim])
-        aim.add_class("batten-field")
-        row = widgets.HBox([span.box, aim])
+        row = widgets.HBox([span.box, labelled("Choose for", self.aim)])
         row.add_class("batten-row")
         self.box = widgets.VBox([self.picture, row, self.table, self.reasons])
 

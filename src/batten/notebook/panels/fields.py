@@ -14,7 +14,7 @@ from batten.errors.widget import not_a_date, not_a_number
 from batten.frame.columns import word
 from batten.report.lettering import plain, shortened
 
-__all__ = ["Choices", "Dates", "Field", "Numbers", "number_in"]
+__all__ = ["Choices", "Dates", "Field", "Numbers", "labelled", "number_in"]
 
 #: up to this many choices stand side by side as buttons
 BUTTONS = 6
@@ -36,8 +36,8 @@ class Numbers:
 
     def __init__(self, name: str, value: float, *, unit: str = "", label: str = "") -> None:
         self.name = name
-        self.text = widgets.Text(continuous_update=False, layout=widgets.Layout(width="7.5em"))
-        self.box = _labelled(label or plain(name), self.text, unit)
+        self.text = widgets.Text(continuous_update=False)
+        self.box = labelled(label or plain(name), self.text, unit)
         self.set(value)
 
     def set(self, value: float) -> None:
@@ -57,8 +57,8 @@ class Dates:
 
     def __init__(self, name: str, value: pd.Timestamp) -> None:
         self.name = name
-        self.text = widgets.Text(word(value), continuous_update=False, layout=widgets.Layout(width="11em"))
-        self.box = _labelled(plain(name), self.text, "")
+        self.text = widgets.Text(word(value), continuous_update=False)
+        self.box = labelled(plain(name), self.text)
 
     def read(self) -> pd.Timestamp:
         try:
@@ -81,7 +81,7 @@ class Choices:
         texts = _apart([plain(word(level)) for level in levels])
         kind = widgets.ToggleButtons if len(levels) <= BUTTONS else widgets.Dropdown
         self.choice = kind(options=texts, index=levels.index(value))
-        self.box = _labelled(plain(name), self.choice, "")
+        self.box = labelled(plain(name), self.choice)
 
     def read(self) -> Any:
         return self._levels[self.choice.index]
@@ -116,10 +116,11 @@ def _apart(texts: list[str]) -> list[str]:
     return [f"{text} ({i + 1})" if texts.count(text) > 1 else text for i, text in enumerate(texts)]
 
 
-def _labelled(name: str, control: widgets.Widget, unit: str) -> widgets.HBox:
-    label = widgets.Label(shortened(name, 60))
-    label.add_class("batten-label")
-    parts = [label, control, widgets.Label(shortened(unit, 20))] if unit else [label, control]
-    box = widgets.HBox(parts)
+def labelled(label: str, control: widgets.Widget, unit: str = "") -> widgets.HBox:
+    """A control with its label before it, which the page ties to it, and a unit behind."""
+    control.description = shortened(label, 120)
+    control.style.description_width = "initial"
+    control.layout.width = "auto"
+    box = widgets.HBox([control, widgets.Label(shortened(unit, 20))] if unit else [control])
     box.add_class("batten-field")
     return box

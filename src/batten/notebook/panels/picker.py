@@ -12,6 +12,7 @@ from batten.exam.examination import Examination
 from batten.families import parse
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk
+from batten.notebook.panels.fields import labelled
 from batten.report.naming import remedy_words
 
 __all__ = ["Picker"]
@@ -27,13 +28,13 @@ class Picker:
         self._desk, self._show = desk, WeakMethod(show)
         self.message = Message()
         self.field = widgets.Combobox(
-            placeholder="choose, or type a key such as y ~ poly4 x", continuous_update=False,
-            layout=widgets.Layout(width="28em"),
-        )  # fmt: skip
+            placeholder="choose, or type a key such as y ~ poly4 x", continuous_update=False
+        )
+        self.field.add_class("batten-picker")
         self.button = widgets.Button(description="Open", layout=widgets.Layout(width="auto"))
         self.field.observe(weakly(self._typed), "value")
         self.button.on_click(weakly(self._pressed))
-        row = widgets.HBox([widgets.Label("Open another remedy:"), self.field, self.button])
+        row = widgets.HBox([labelled("Open another remedy", self.field), self.button])
         row.add_class("batten-field")
         self.box = widgets.VBox([row, self.message.box])
 

@@ -13,7 +13,7 @@ from batten.frame.problem import Problem
 from batten.frame.slots import Slot
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk, sheet
-from batten.notebook.panels.fields import Choices, Dates, Field, Numbers, number_in
+from batten.notebook.panels.fields import Choices, Dates, Field, Numbers, labelled, number_in
 from batten.notebook.panels.tables import predictions_table
 from batten.report.lettering import plain, shortened
 from batten.report.markup import paragraph
@@ -33,9 +33,7 @@ class TryValue:
         self._desk, self._key = desk, key
         problem = desk.exam.problem
         self.fields = fields_for(problem)
-        self.wanted = widgets.Text(
-            continuous_update=False, placeholder="a number", layout=widgets.Layout(width="7.5em")
-        )  # fmt: skip
+        self.wanted = widgets.Text(continuous_update=False, placeholder="a number")
         self.message, self.backwards = Message(), Message()
         self.shown, self.reached = sheet(), sheet("")
         for field in self.fields:
@@ -108,6 +106,4 @@ def _question(problem: Problem, wanted: widgets.Text) -> widgets.HBox:
     y, x = (shortened(plain(name), 40) for name in (problem.response, problem.focus))
     alike = " (covariates as in the rows)" if problem.covariates else ""
     ask = f"Backwards: at which {x}{alike} is the mean of {y}"
-    box = widgets.HBox([widgets.Label(ask), wanted, widgets.Label(shortened(problem.unit(problem.response), 20))])
-    box.add_class("batten-field")
-    return box
+    return labelled(ask, wanted, problem.unit(problem.response))
