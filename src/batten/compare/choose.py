@@ -9,6 +9,7 @@ import numpy as np
 
 from batten.compare.heldout import HeldOut
 from batten.diagnose.bend import Bend
+from batten.effects.numbers import show
 from batten.engine.paired import corrected_se
 from batten.families.base import Link
 from batten.fit.estimate import Estimate
@@ -153,15 +154,15 @@ def _tie_words(
     tried: int,
     unit: str,
 ) -> str:
-    unit = f" {unit}" if unit else ""
     lowest = candidates[head].scores.rmse
-    opening = f"Lowest held-out error of {tried} tried, so flattering: {lowest:.4g}{unit} ({head})."
+    width = min(c.scores.rmse for c in candidates.values()) / 100  # the digits of the table
+    opening = f"Lowest held-out error of {tried} tried, so flattering: {show(lowest, unit, width=width)} ({head})."
     if tied == 1:
         return f"{opening} Nothing simpler comes within one standard error of it."
     if chosen == head:
         return f"{opening} {tied - 1} more cannot be told from it; it is the simplest of them."
-    behind = candidates[chosen].scores.rmse - lowest
-    return f"{opening} {tied - 1} more cannot be told from it; {chosen} is the simplest, {behind:.3g}{unit} behind."
+    behind = show(candidates[chosen].scores.rmse - lowest, unit, width=width)
+    return f"{opening} {tied - 1} more cannot be told from it; {chosen} is the simplest, {behind} behind."
 
 
 def _otherwise(candidates: Mapping[str, Candidate], chosen: str) -> tuple[tuple[str, str], ...]:
