@@ -16,7 +16,7 @@ from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
 from batten.fit.guard import domain_trouble, meets_constant, not_offered, too_few
-from batten.fit.powers import likelihood_moves, own_units, pivot
+from batten.fit.powers import in_lambda, likelihood_moves, own_units, pivot
 
 #: (shape's key, theta) -> design and its QR, on one set of rows
 Designs = dict[tuple[str, Constants], tuple[Array, Factored]]
@@ -155,14 +155,13 @@ class Estimate:
         return out
 
     def _scale_slope(self) -> Array:
-        """d z / d lambda (n,) beyond what `own_units` takes out, by a central difference."""
-        h = 1e-5
-        own = [own_units(self, self.c[0] + d) for d in (h, -h)]
-        up, down = (
-            self.pivot[0] + (self.scale.forward(self.rows.y, (self.c[0] + d,)) - shift) / stretch
-            for d, (shift, stretch) in zip((h, -h), own, strict=True)
-        )
-        return np.asarray((up - down) / (2 * h))
+        """d z / d lambda (n,) beyond what `own_units` takes out."""
+
+        def own(lam: float) -> Array:
+            shift, stretch = own_units(self, lam)
+            return (self.scale.forward(self.rows.y, (lam,)) - shift) / stretch
+
+        return in_lambda(own, self.c[0])[0]
 
     @cached_property
     def pivot(self) -> tuple[float, float]:
@@ -184,9 +183,7 @@ class Estimate:
 
     def _without_drift(self, moved: Array) -> Array:
         """Coefficient moves less the part that only follows the scale's own change of place and length with lambda."""
-        h = 1e-5
-        (up, up_stretch), (down, down_stretch) = (own_units(self, self.c[0] + d) for d in (h, -h))
-        place, length = (up - down) / (2 * h), (up_stretch - down_stretch) / (2 * h)
+        place, length = in_lambda(lambda v: np.array(own_units(self, v)), self.c[0])[0]
         drift = length * self.coef
         if self.rows.intercept is not None:
             drift[self.rows.intercept] += place - length * self.pivot[0]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -11,7 +12,17 @@ from batten.engine.rows import Array
 if TYPE_CHECKING:
     from batten.fit.estimate import Estimate
 
-__all__ = ["likelihood_moves", "own_units", "pivot"]
+__all__ = ["in_lambda", "likelihood_moves", "own_units", "pivot"]
+
+#: step of five-point slopes in lambda: truncation and rounding both stay near 1e-10 for y over ten decades
+STEP = 1e-3
+
+
+def in_lambda(of: Callable[[float], Array], lam: float) -> tuple[Array, Array]:
+    """First and second slope at lam of a smooth function of lambda."""
+    far_left, left, here, right, far_right = (of(lam + k * STEP) for k in (-2, -1, 0, 1, 2))
+    first = (8 * (right - left) - (far_right - far_left)) / (12 * STEP)
+    return first, (16 * (right + left) - 30 * here - (far_right + far_left)) / (12 * STEP**2)
 
 
 def pivot(est: Estimate, lam: float) -> tuple[float, float]:
@@ -36,13 +47,10 @@ def likelihood_moves(est: Estimate) -> Array:
 
     The scores of Box and Cox's likelihood: coef x e/s2; lambda -e z'/s2 + d log|T'|/d lambda; s2 (e2/s2 - 1)/(2 s2).
     """
-    y, e, h = est.rows.y, est.residual, 1e-4
+    y, e = est.rows.y, est.residual
     s2 = float(e @ e) / est.n
-    lam = est.c[0]
-    up, mid, down = (est.scale.forward(y, (lam + d,)) for d in (h, 0.0, -h))
-    z1, z2 = (up - down) / (2 * h), (up - 2 * mid + down) / h**2
-    j_up, j_mid, j_down = (est.scale.log_jacobian(y, (lam + d,)) for d in (h, 0.0, -h))
-    j1, j2 = (j_up - j_down) / (2 * h), (j_up - 2 * j_mid + j_down) / h**2
+    z1, z2 = in_lambda(lambda v: est.scale.forward(y, (v,)), est.c[0])
+    j1, j2 = in_lambda(lambda v: est.scale.log_jacobian(y, (v,)), est.c[0])
     x = est.jacobian_at(est.rows.x, est.rows.base, est.rows.modifier)[:, :-1]
     length = est.factored.length
     unit = x / length  # scaled columns keep the information matrix well conditioned
