@@ -242,52 +242,89 @@ def _least_squares(x: Array, z: Array, root: Array, test: Ints) -> tuple[Array, 
 
 
 def _score(est: Estimate, sets: list[_Split], fits: Iterator[_Trained | Refusal]) -> HeldOut | Refusal:
-    """Losses of one remedy on a transformed (or plain) response."""
-    scale, y = est.scale, est.rows.y
+    """Losses of one remedy on a transformed (or plain) response; sets of equal size are scored together."""
     out = np.empty((4, len(sets)))
-    for s, (split, fit) in enumerate(zip(sets, fits, strict=False)):
-        train, test = split.train, split.test
-        if isinstance(fit, Refusal):
-            return fit
-        z = est.z if fit.c == est.c else scale.forward(y, fit.c)
-        eta = fit.eta[test]
-        residual = z[train] - fit.eta[train]
-        low, high = scale.limits(fit.c)
-        with np.errstate(all="ignore"):
-            mean = mean_of(scale, [fit.c], eta[None], residual[None])[0]
-            median = scale.inverse(eta + float(np.median(residual)), fit.c)
-        if not (
-            np.isfinite(mean).all() and eta.min() > low and eta.max() < high and _sound(scale, fit.c, eta, residual)
-        ):
-            return _unsafe(est)
-        df = len(train) - fit.columns
-        jacobian = scale.log_jacobian(y[test], fit.c)
-        out[:3, s] = _losses(y[test], mean, median)
-        out[3, s] = (_log_t(z[test] - eta, residual, fit.v, df) + jacobian).mean()
+    for members in _alike(sets, est.n):
+        trained = [next(fits) for _ in members] if len(members) < len(sets) else list(fits)
+        refusal = next((fit for fit in trained if isinstance(fit, Refusal)), None)
+        if refusal is not None:
+            return refusal
+        some = [(place, fit) for place, fit in zip(members, trained, strict=True) if isinstance(fit, _Trained)]
+        for size in {len(sets[place].test) for place in members}:
+            same = [(place, fit) for place, fit in some if len(sets[place].test) == size]
+            losses = _losses_together(est, [sets[place] for place, _ in same], [fit for _, fit in same])
+            if losses is None:
+                return _unsafe(est)
+            out[:, [place for place, _ in same]] = losses
     return HeldOut(out[0], out[1], out[2], out[3], np.array([len(split.test) for split in sets]))
 
 
-def _sound(scale: Scale, c: Constants, eta: Array, residual: Array) -> bool:
-    """Whether every pair eta + e can be brought back (closed boundaries are kept to, open ones must not be reached)."""
-    low, high = scale.limits(c)
-    edges = [low] if eta.min() + residual.min() <= low else []
-    edges += [high] if eta.max() + residual.max() >= high else []
+def _alike(sets: list[_Split], n: int) -> list[list[int]]:
+    """Which sets are held in memory together: all of them at small n, else one by one."""
+    everything = list(range(len(sets)))
+    return [everything] if n * len(sets) <= BLOCK else [[place] for place in everything]
+
+
+def _losses_together(est: Estimate, sets: list[_Split], fits: list[_Trained]) -> Array | None:
+    """Squared and absolute error, share within 10% and log score of sets of one size (4, S), or None where one of them
+    has no finite mean."""
+    scale, y = est.scale, est.rows.y
+    train, test = np.stack([split.train for split in sets]), np.stack([split.test for split in sets])
+    c = [fit.c for fit in fits]
+    moved = any(constants != est.c for constants in c)
+    z = np.stack([scale.forward(y, constants) for constants in c]) if moved else est.z[None]
+    z = np.broadcast_to(z, (len(sets), est.n))
+    every = np.stack([fit.eta for fit in fits])
+    eta = np.take_along_axis(every, test, axis=1)
+    residual = np.take_along_axis(z, train, axis=1) - np.take_along_axis(every, train, axis=1)
+    if not _sound(scale, c, eta, residual):
+        return None
+    middle = eta + np.median(residual, axis=1)[:, None]
     with np.errstate(all="ignore"):
-        return all(bool(np.isfinite(scale.inverse(np.array([edge]), c)[0])) for edge in edges)
+        mean = mean_of(scale, c, eta, residual)
+        median = np.stack([scale.inverse(row, k) for row, k in zip(middle, c, strict=True)])
+    if not np.isfinite(mean).all():
+        return None
+    df = train.shape[1] - np.array([fit.columns for fit in fits])
+    jacobian = np.stack([scale.log_jacobian(y[rows], k) for rows, k in zip(test, c, strict=True)])
+    score = _log_t(np.take_along_axis(z, test, axis=1) - eta, residual, np.stack([fit.v for fit in fits]), df)
+    return np.vstack([_losses(y[test], mean, median), (score + jacobian).mean(axis=1)])
+
+
+def _sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
+    """Whether every eta, and every pair eta + e, can be brought back in every set.
+
+    A closed boundary is kept to; an open one, where the inverse is infinite, must not be reached.
+    """
+    for k, low_eta, high_eta, low_e, high_e in zip(
+        c, eta.min(axis=1), eta.max(axis=1), residual.min(axis=1), residual.max(axis=1), strict=True
+    ):
+        low, high = scale.limits(k)
+        if not low_eta > low or not high_eta < high:
+            return False
+        edges = [low] if low_eta + low_e <= low else []
+        edges += [high] if high_eta + high_e >= high else []
+        with np.errstate(all="ignore"):
+            if not all(np.isfinite(scale.inverse(np.array([edge]), k)[0]) for edge in edges):
+                return False
+    return True
 
 
 def _losses(y: Array, mean: Array, median: Array) -> Array:
+    """Mean losses over the last axis: (..., n) -> (3, ...)."""
     return np.array([
-        ((y - mean) ** 2).mean(), np.abs(y - median).mean(), (np.abs(y - mean) <= 0.1 * np.abs(y)).mean(),
+        ((y - mean) ** 2).mean(axis=-1), np.abs(y - median).mean(axis=-1),
+        (np.abs(y - mean) <= 0.1 * np.abs(y)).mean(axis=-1),
     ])  # fmt: skip
 
 
-def _log_t(error: Array, residual: Array, v: Array, df: int) -> Array:
-    """Log density of held-out z under the t predictive distribution with estimated coefficients and variance."""
-    variance = float(residual @ residual) / df * (1 + v)
+def _log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
+    """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance."""
+    d = df[:, None]
+    variance = ((residual**2).sum(axis=1) / df)[:, None] * (1 + v)
     return np.asarray(
-        gammaln((df + 1) / 2) - gammaln(df / 2) - 0.5 * np.log(df * np.pi * variance)
-        - (df + 1) / 2 * np.log1p(error**2 / (variance * df))
+        gammaln((d + 1) / 2) - gammaln(d / 2) - 0.5 * np.log(d * np.pi * variance)
+        - (d + 1) / 2 * np.log1p(error**2 / (variance * d))
     )  # fmt: skip
 
 
