@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from functools import cached_property
+
 import ipywidgets as widgets
 
 from batten.compare.shortlist import shortlist
@@ -19,18 +21,27 @@ __all__ = ["RemedyTab"]
 
 
 class RemedyTab:
-    """Its name and cautions, and the panels fit, what is left, effect, try a value, code."""
+    """Its name and cautions, and the panels fit, what is left, effect, try a value, code.
+
+    The panels are made when the tab is first opened: some forty models, which the page would have to make as well.
+    """
 
     def __init__(self, desk: Desk, key: str, span: SpanFields) -> None:
-        self.key = key
-        self._heading = sheet()
-        self.tried = TryValue(desk, key)
-        code = CodeOf(key, cell_id=desk.cell_id)
-        self.pages = Pages(desk, (FitOf(key), LeftOf(key), EffectOf(key, span), self.tried, code, HowOf(key)))
-        self.box = widgets.VBox([self._heading, self.pages.box])
+        self.key, self._desk, self._span = key, desk, span
+        self.heading = sheet()
+        self.box = widgets.VBox([self.heading])
+
+    @cached_property
+    def pages(self) -> Pages:
+        """The panels."""
+        desk, key = self._desk, self.key
+        effect, code = EffectOf(key, self._span), CodeOf(key, cell_id=desk.cell_id)
+        made = Pages(desk, (FitOf(key), LeftOf(key), effect, TryValue(desk, key), code, HowOf(key)))
+        self.box.children = [self.heading, made.box]
+        return made
 
     def draw(self, exam: Examination) -> None:
-        self._heading.value = self._words(exam)
+        self.heading.value = self._words(exam)
         self.pages.draw(exam)
 
     def _words(self, exam: Examination) -> str:
