@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from batten.diagnose.bend import bend_of, flexible, knots_for
+from batten.diagnose.bend import Bend, bend_of, flexible, knots_for
 from batten.diagnose.trial import try_line
 from batten.engine.rows import Rows
 from batten.families import parse
@@ -85,3 +85,20 @@ def test_the_simultaneous_band_holds_its_level_for_straight_truths() -> None:
 @pytest.mark.parametrize(("n", "knots"), [(12, 3), (29, 3), (30, 4), (100, 4), (101, 5)])
 def test_knots_depend_on_the_number_of_rows_alone(n: int, knots: int) -> None:
     assert knots_for(n) == knots
+
+
+def test_the_band_from_part_of_the_rows_is_within_two_percent_of_the_whole(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Standard errors from 20,000 of 60,000 rows have a relative error near 1/sqrt(40,000), half a percent."""
+    rng = np.random.default_rng(5)
+    x = rng.lognormal(1, 0.5, 60_000)
+    y = np.exp(0.3 * np.log(x) + rng.normal(0, 0.3, 60_000))
+    rows = Rows(y, x, np.ones((60_000, 1)), np.ones((60_000, 1)))
+    log = estimate(rows, parse("log y ~ log x"))
+    assert isinstance(log, Estimate)
+    some = bend_of(flexible(rows, tolerance=None), log)
+    monkeypatch.setattr("batten.diagnose.bend.PART", 100_000)
+    whole = bend_of(flexible(rows, tolerance=None), log)
+    assert isinstance(some, Bend)
+    assert isinstance(whole, Bend)
+    np.testing.assert_array_equal(some.gap, whole.gap)
+    np.testing.assert_allclose(some.error, whole.error, rtol=0.02)

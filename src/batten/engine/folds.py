@@ -22,7 +22,7 @@ LOST = 1e-9
 
 @dataclass(frozen=True, eq=False)
 class Splits:
-    """fold (repeats, n): the fold in which each row is held out, -1 for a row that always trains. k: number of folds."""
+    """fold (repeats, n): where each row is held out, -1 for a row that always trains. k: number of folds."""
 
     fold: Ints
     k: int

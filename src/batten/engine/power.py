@@ -97,33 +97,33 @@ def fold_powers(
     z = z - z.mean(axis=0) if _holds_constant(basis) else z
     jacobian = np.column_stack([power.jacobian(y, float(v)) for v in places])
     square, right, jump = (z * z).sum(axis=0), basis.T @ z, jacobian.sum(axis=0)
-    out = np.empty(len(held))
+    likelihood = np.empty((count, len(held)))
     for s, (inverse, rows) in enumerate(zip(cross, held, strict=True)):
         left = right - basis[rows].T @ z[rows]
         rss = square - (z[rows] ** 2).sum(axis=0) - np.einsum("pm,pq,qm->m", left, inverse, left)
         n = len(y) - len(rows)
         if not (rss > 0).all():
             return None
-        likelihood = -0.5 * n * np.log(rss / n) + jump - jacobian[rows].sum(axis=0)
-        fitted = chebyshev.Chebyshev(_coefficients(likelihood - likelihood.max()))
-        slope, bend = fitted.deriv(), fitted.deriv(2)
-        at = float(nodes[np.argmax(likelihood)])
-        for _ in range(30):
-            step = float(slope(at) / bend(at))
-            at -= step
-            if abs(step) < 1e-12 or not abs(at) < 1:
-                break
-        if not abs(at) < 1 or not bend(at) < 0:
+        likelihood[:, s] = -0.5 * n * np.log(rss / n) + jump - jacobian[rows].sum(axis=0)
+    at = _peaks(likelihood, nodes)
+    return None if at is None else low + (at + 1) * (high - low) / 2
+
+
+def _peaks(values: Array, nodes: Array) -> Array | None:
+    """Where the Chebyshev interpolants of values (nodes, S) peak, (S,) in -1..1; None where one has no peak inside."""
+    fitted = dct(values - values.max(axis=0), type=2, axis=0) / len(values)
+    fitted[0] /= 2
+    slope, bend = chebyshev.chebder(fitted), chebyshev.chebder(fitted, 2)
+    at: Array = nodes[np.argmax(values, axis=0)]
+    for _ in range(30):
+        with np.errstate(all="ignore"):
+            step = chebyshev.chebval(at, slope, tensor=False) / chebyshev.chebval(at, bend, tensor=False)
+        at = at - step
+        if not (np.abs(at) < 1).all():
             return None
-        out[s] = low + (at + 1) * (high - low) / 2
-    return out
-
-
-def _coefficients(values: Array) -> Array:
-    """Chebyshev coefficients from values at the nodes."""
-    out = dct(values, type=2) / len(values)
-    out[0] /= 2
-    return np.asarray(out)
+        if np.abs(step).max() < 1e-12:
+            break
+    return at if (chebyshev.chebval(at, bend, tensor=False) < 0).all() else None
 
 
 def _width(power: Power, y: Array, q: Array, best: float) -> float:

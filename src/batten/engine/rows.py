@@ -56,7 +56,7 @@ class Rows:
 
     @cached_property
     def patterns(self) -> tuple[Ints, Array, Ints]:
-        """Distinct covariate rows: where each first stands (u,), how many rows have it (u,), which each row has (n,)."""
+        """Distinct covariate rows: where each first stands (u,), how many rows have it (u,), each row's own (n,)."""
         both = np.hstack([self.base, self.modifier])
         if both.shape[1] == 2 and (both == both[0]).all():
             return np.zeros(1, dtype=np.intp), np.array([float(self.count)]), np.zeros(self.count, dtype=np.intp)

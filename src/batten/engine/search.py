@@ -27,7 +27,7 @@ class Searched:
     """A model with constants inside: columns(theta) -> (n, k) with slopes (q, n, k), beside fixed columns (n, p).
 
     rebuild: the same on some of the rows. candidates (K, q): the grid; finite: there is nothing between its points.
-    lower, upper (q,): limits of theta. corners: sorted places where the profile of a single theta has a corner, at which
+    lower, upper (q,): limits of theta. corners: sorted places where the profile of a single theta has a corner, where
     Gauss-Newton can stop short.
     """
 

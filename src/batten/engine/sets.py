@@ -1,6 +1,6 @@
 """All training sets at once: searched constants and mean models refitted by batches of small products.
 
-At a few hundred rows the cost of refitting is the number of Python calls, not arithmetic, so the sets are stacked: every
+At a few hundred rows the cost of refitting is the number of Python calls, not arithmetic, so sets are stacked: every
 array has a leading axis S, and `mask` (S, n) holds which rows each set trains on.
 """
 

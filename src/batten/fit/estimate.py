@@ -10,7 +10,7 @@ import numpy as np
 from batten.engine.irls import Mean, iterate
 from batten.engine.linear import Factored, design, factor, solve
 from batten.engine.power import Power, best_power
-from batten.engine.rows import Array, Rows
+from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import Searched, search
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
@@ -168,8 +168,10 @@ class Estimate:
         """Value and slope of the scale at the median of y (the value is 0 where no constant can take it up)."""
         return pivot(self, self.c[0])
 
-    def moves(self, *, leave_out: bool = True) -> Array:
+    def moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
         """Change of (coef, theta, c) when row i is left out, (n, P); exact for linear remedies, else one step.
+
+        rows: only these.
 
         leave_out=False gives the first-order influence (HC0-type) instead, with the same sign.
         """
@@ -177,9 +179,9 @@ class Estimate:
         # a row that owns a coefficient cannot be left out: its residual is zero, and it moves nothing else
         weight = np.where(h < OWNS, 1.0 / (1.0 - h), 0.0) if leave_out else np.ones(self.n)
         if self.remedy.left.searched:
-            return -self._without_drift(likelihood_moves(self)) * weight[:, None]
+            return (-self._without_drift(likelihood_moves(self)) * weight[:, None])[rows]
         score = self.residual if self.link is None else self._link_score()
-        return -self.factored.rows_of_inverse() * (score * weight)[:, None]
+        return -(self.factored.q[rows] @ self.factored.root.T) * (score * weight)[rows, None]
 
     def _without_drift(self, moved: Array) -> Array:
         """Coefficient moves less the part that only follows the scale's own change of place and length with lambda."""

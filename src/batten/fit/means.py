@@ -159,17 +159,19 @@ def averaged_means(
     jackknife: bool = True,
     weights: Array | None = None,
     root: bool = True,
+    rows: Ints | None = None,
 ) -> Averaged:
     """Mean (or "median") of y at each x of xs (G,), averaged over covariate rows.
 
     base (u, q), modifier (u, m): covariate rows to average over instead of the rows' own, taken as fixed.
     weights (u,): their weights, summing to one; equal when None. root=False leaves the uncertainty out.
+    rows: have the uncertainty from an even part of the rows (see `with_errors`).
     """
     tar = target(est, np.asarray(xs, dtype=float), base=base, modifier=modifier)
     share = tar.count / tar.count.sum() if weights is None else weights
     if not root:
         return _plain(est, tar, share, of)
-    return _with_errors(est, tar, share, of, errors=errors, jackknife=jackknife)
+    return _with_errors(est, tar, share, of, errors=errors, jackknife=jackknife, rows=rows)
 
 
 def means_at_rows(
@@ -208,33 +210,36 @@ def _with_errors(
     *,
     errors: str,
     jackknife: bool = True,
+    rows: Ints | None = None,
 ) -> Averaged:
     def values(move: Array, keep: Array | None) -> Array:
         return _values(est, tar, share, of, move, keep)
 
-    def own_shares(value: Array) -> list[Share]:
-        return [part for part in _direct_parts(est, tar, share, of, value) if part is not None]
+    def own_shares(value: Array, some: Ints | slice) -> list[Share]:
+        return [part for part in _direct_parts(est, tar, share, of, value, some) if part is not None]
 
     return with_errors(
-        est, values, own_shares, parameters=tar.jacobian.shape[2], of=of, errors=errors, jackknife=jackknife
+        est, values, own_shares, parameters=tar.jacobian.shape[2], of=of, errors=errors, jackknife=jackknife, rows=rows
     )
 
 
 def with_errors(
     est: Estimate,
     values: Callable[[Array, Array | None], Array],
-    own_shares: Callable[[Array], list[Share]],
+    own_shares: Callable[[Array, Ints | slice], list[Share]],
     *,
     parameters: int,
     of: str,
     errors: str,
     jackknife: bool = True,
+    rows: Ints | None = None,
 ) -> Averaged:
     """A functional of the rows with its uncertainty.
 
     values(move (R, P), keep (R, n) or None) -> (R, G): the functional when the parameters have moved and row j counts
-    keep times. own_shares(value (G,)) -> arrays (n, G): row i's own share in each average it enters, minus the value,
-    or (features (n, r), loads (r, G)) whose product that is.
+    keep times. own_shares(value (G,), rows) -> arrays (n, G): row i's share in each average it enters, minus the value,
+    or (features (n, r), loads (r, G)) whose product that is. rows: the uncertainty from these rows alone, an even part
+    of all, stretched to stand for all.
     """
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
@@ -242,9 +247,13 @@ def with_errors(
         # a mean that is infinite without one row has no error
         left = np.where(np.isfinite(left), left, np.nan)
         return Averaged(value, _jackknife_root(left), left, est.df_residual)
-    moves = est.moves()
+    some: Ints | slice = slice(None) if rows is None else rows
+    moves = est.moves(rows=some)
     gradient = _gradient(values, moves)
-    shares = own_shares(value)
+    shares = own_shares(value, some)
+    if rows is not None:
+        moves, stretch = moves * np.sqrt(est.n / len(rows)), np.sqrt(est.n / len(rows))
+        shares = [(part[0] * stretch, part[1]) if isinstance(part, tuple) else part * stretch for part in shares]
     if errors == "constant":
         root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
         parts = [_whole(part) / est.n for part in shares]
@@ -340,19 +349,22 @@ def by_replicate(undo: Callable[[Array, Constants], Array], own: OwnScale, eta: 
     return np.stack([undo(row, c) for row, c in zip(eta, own.c, strict=True)])
 
 
-def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Share | None, Share | None]:
+def _direct_parts(
+    est: Estimate, tar: Target, share: Array, of: str, value: Array, rows: Ints | slice
+) -> tuple[Share | None, Share | None]:
     """Row i's own share in the average over residuals and in the average over covariates, minus the value."""
     by_residual: Share | None = None
     if of == "median":
-        by_residual = middle(est).influence[:, None], _lean(est, tar, share)[None]
+        by_residual = middle(est).influence[rows, None], _lean(est, tar, share)[None]
     elif est.link is None and est.scale.closed != "identity":
-        by_residual = _residual_part(est, tar, share, value)
+        by_residual = _residual_part(est, tar, share, value, rows)
     by_covariate: Share | None = None
     if tar.pattern is not None and len(share) > 1:
         still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
         back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1) - value
         few = len(share) <= FEW_PATTERNS
-        by_covariate = ((tar.pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[tar.pattern]
+        pattern = tar.pattern[rows]
+        by_covariate = ((pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[pattern]
     return by_residual, by_covariate
 
 
@@ -363,10 +375,10 @@ def _lean(est: Estimate, tar: Target, share: Array) -> Array:
     return np.asarray(share @ est.scale.inverse_slope(tar.eta + middle(est).value, est.c))
 
 
-def _residual_part(est: Estimate, tar: Target, share: Array, value: Array) -> Share:
-    e = est.residual
+def _residual_part(est: Estimate, tar: Target, share: Array, value: Array, rows: Ints | slice) -> Share:
+    e = est.residual[rows]
     if est.scale.closed == "exp":
-        each = np.column_stack([np.exp(e), np.ones(est.n)])
+        each = np.column_stack([np.exp(e), np.ones(len(e))])
         return each, np.vstack([share @ np.exp(tar.eta), -value])
     features, loads = shares_of_residuals(lambda z: est.scale.inverse(z, est.c), e, tar.eta, share)
     loads[0] -= value  # the first polynomial is one
