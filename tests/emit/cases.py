@@ -82,7 +82,7 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
     span = shown.span.difference
     return np.concatenate([
         [shown.rows],
-        np.column_stack([shown.coef, shown.error]).ravel(),
+        [] if np.linalg.cond(est.factored.r) > 1e8 else np.column_stack([shown.coef, shown.error]).ravel(),
         [] if shown.smear is None else [shown.smear],
         [v for v in (span.estimate, (span.high - span.low) / 2) if np.isfinite(v)],
         shown.predictions.ravel(),

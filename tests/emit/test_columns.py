@@ -180,6 +180,21 @@ def test_what_the_notebook_defines_is_asked_for() -> None:
     agrees(type(written)(source, written.problem, written.question, written.estimate, written.want), data)
 
 
+def test_names_that_the_script_uses_do_not_collide() -> None:
+    data = foundry(60).assign(
+        Alloy=lambda d: d["alloy"].str.upper(), bend=lambda d: d["depth"], log_y=1.0 * np.arange(60)
+    )
+    data["X"], data["mean"] = data["depth"] ** 2, np.arange(60) % 7
+    formula = "minutes ~ mass_kg + C(alloy) + C(Alloy):X + np.log(bend) + log_y + Q('mean')"
+    agrees(write("log y ~ spline3 x", formula, data), data)
+    written = write("sqrt y ~ spline3 x", "minutes ~ mass_kg + bend(depth) + rows(depth)", data,
+                    env={"bend": np.log, "rows": np.sqrt})  # fmt: skip
+    defined = "bend, rows = np.log, np.sqrt\n"
+    at = written.source.index("import statsmodels")
+    source = written.source[:at] + defined + written.source[at:]
+    agrees(type(written)(source, written.problem, written.question, written.estimate, written.want), data)
+
+
 def test_columns_that_repeat_others_are_left_out_as_in_the_analysis() -> None:
     data = foundry(60).assign(grams=lambda d: 1000 * d["depth"])
     data["cell"] = np.where(data["alloy"] == "steel", "s", "other")

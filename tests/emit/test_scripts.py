@@ -188,7 +188,10 @@ def test_comments_say_which_rows_and_errors() -> None:
     data.loc[3, "mass_kg"], data.loc[[4, 5], "depth"] = np.nan, np.inf
     first, second = write("log y ~ x", FORMULA, data).lines[:2]
     assert first == '# minutes ~ mass_kg + C(alloy) + depth, remedy "log y ~ x": log of minutes on mass_kg.'
-    assert second == "# `castings`: 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. Errors: robust."
+    assert second == (
+        "# `castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. "
+        "Errors: robust (HC3)."
+    )
 
 
 def test_predictions_keep_the_index_of_what_is_asked() -> None:

@@ -163,12 +163,15 @@ class _Writer:
         return said(self.design.labels[code])
 
     def _group(self, code: str) -> list[str]:
-        name, levels = self._name(self._called(code)), self._constant_for(code)
+        name = self._name(self._called(code))
+        levels = f"{name.upper().strip('_')}_LEVELS"
+        meaning = f"levels of {self._label(code)}; the first is the reference"
+        self.out.constants.append((levels, literal(list(self._levels(code))), meaning))
         if self.groups > 1:
-            self.out.entries.append((name, f"as_levels({self._values(code)}, {levels})"))
+            self.out.entries.append((name, f"as_levels({self._values(code, name)}, {levels})"))
             self._needs(_LEVELS)
             return [f"C({name})"]
-        values = self._values(code)
+        values = self._values(code, name)
         entry = f"pd.Categorical({values}.astype(object).where({values}.isin({levels})), {levels})"
         if len(name) + len(entry) > 105:
             self.out.lines.append(f"{name} = {values}.astype(object)")
@@ -176,25 +179,16 @@ class _Writer:
         self.out.entries.append((name, entry))
         return [f"C({name})"]
 
-    def _constant_for(self, code: str) -> str:
-        constant = f"{self.factors_name(code)}_LEVELS"
-        meaning = f"levels of {self._label(code)}; the first is the reference"
-        self.out.constants.append((constant, literal(list(self._levels(code))), meaning))
-        return constant
-
-    def factors_name(self, code: str) -> str:
-        return plain_name(self._called(code), (), "covariate").upper().strip("_")
-
     def _called(self, code: str) -> str:
         slot = self.design.slots.get(code)
         return slot.column if slot is not None else _brief(self.design.labels[code])
 
-    def _values(self, code: str) -> str:
+    def _values(self, code: str, name: str) -> str:
         """A series with a group's values."""
         slot = self.design.slots.get(code)
         if slot is not None:
             return f"frame[{literal(slot.column)}]"
-        return f"pd.Series({self._expression(code, self.factors_name(code)).source})"
+        return f"pd.Series({self._expression(code, name).source})"
 
     def _numeric(self, code: str) -> list[str]:
         slot = self.design.slots.get(code)
@@ -273,9 +267,9 @@ class _Writer:
                 for i, level in enumerate(self._levels(code))
             }
             body = ", ".join(f"{literal(level)}: {literal(row)}" for level, row in table.items())
-            constant = f"{self.factors_name(code)}_TABLE"
+            constant = f"{name.upper().strip('_')}_TABLE"
             self.out.constants.append((constant, f"{{{body}}}", f"columns of {self._label(code)} by level"))
-            values = self._values(code)
+            values = self._values(code, name)
             self.out.entries += [(f"{name}_{j + 1}", f"coded({values}, {constant}, {j})") for j in range(len(columns))]
             self._needs(_TABLE)
 

@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from batten.emit.text import literal, number
+from batten.emit.text import PLACE, literal, number
 from batten.frame.formula import Recipe
 
 __all__ = ["Written", "write_expression"]
@@ -68,6 +68,7 @@ class _Writer(ast.NodeTransformer):
             return _parsed(literal(value))
         elif value is not getattr(builtins, node.id, self):
             self.out.external.append(node.id)
+            return ast.Name(PLACE + node.id)
         return node
 
     def _import(self, name: str, path: str) -> None:

@@ -57,9 +57,10 @@ def _rows(parts: Parts) -> list[str]:
 def _ols(parts: Parts) -> list[str]:
     source = parts.left.columns[0][1]
     response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
-    simple = parts.robust and not parts.searched and not parts.alone
     fit = f"fit = smf.ols(MODEL, rows{response})"
-    if simple:
+    if parts.uneven:
+        lines = noted(f'{fit}.fit(method="qr")', "columns differ much in size: QR keeps their digits")
+    elif parts.robust and not parts.own_table:
         lines = noted(f'{fit}.fit(cov_type="HC3", use_t=True)', "HC3: errors may be of uneven size")
     else:
         lines = [f"{fit}.fit()"]

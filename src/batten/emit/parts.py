@@ -11,7 +11,7 @@ from scipy.stats import t as student
 
 from batten.emit.covariates import Covariates, write_covariates
 from batten.emit.numbers import Numbers, numbers
-from batten.emit.text import said
+from batten.emit.text import PLACE, said
 from batten.families.base import Code
 from batten.families.numbers import plain
 from batten.fit.estimate import Estimate
@@ -21,9 +21,6 @@ from batten.fit.question import Question
 from batten.frame.problem import Problem
 
 __all__ = ["Parts", "read_parts"]
-
-#: a letter that no script uses
-PLACE = "\ua66e"
 
 _RESPONSES = {"y": "y", "log y": "log_y", "sqrt y": "root_y", "1/y": "inverse_y", "y^2": "square_y"}
 
@@ -136,7 +133,19 @@ class Parts:
     @property
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
-        return self.link or bool(self.searched) or self.power or self.alone
+        return self.link or bool(self.searched) or self.power or self.alone or self.uneven
+
+    @cached_property
+    def uneven(self) -> bool:
+        """Whether columns differ so much in size that a pseudo-inverse (statsmodels' default) loses digits."""
+        p = len(self.est.coef)
+        raw = self.est.factored.r[:p, :p] * self.est.factored.length[:p]
+        return not self.link and bool(np.linalg.cond(raw) > 1e6)
+
+    @cached_property
+    def delicate(self) -> bool:
+        """Whether single coefficients hang on the last digits, so that only what they add up to can be checked."""
+        return bool(np.linalg.cond(self.est.factored.r) > 1e8)
 
     @property
     def alone(self) -> bool:

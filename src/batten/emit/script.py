@@ -9,7 +9,7 @@ from batten.emit.functions import functions
 from batten.emit.parts import Parts, read_parts
 from batten.emit.renaming import without_names
 from batten.emit.span import held_at, span
-from batten.emit.text import comment, constant, literal, number, rounded, said, wrapped
+from batten.emit.text import PLACE, comment, constant, literal, number, rounded, said, wrapped
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
@@ -39,9 +39,10 @@ def script(problem: Problem, question: Question, estimate: Estimate) -> str:
 def _header(parts: Parts) -> list[str]:
     p, remedy = parts.problem, parts.est.remedy
     words = remedy.words(parts.y, parts.x)
+    kind = "robust (HC3)" if parts.robust else "of one size for all rows"
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
-        f"`{parts.frame}`: {_rows_words(parts)} Errors: {parts.question.errors}.",
+        f"`{parts.frame}` (pandas): {_rows_words(parts)} Errors: {kind}.",
         *parts.covariates.notes,
     ]
     if parts.covariates.external:
@@ -151,7 +152,7 @@ def _picture(parts: Parts) -> list[str]:
 def _checks(parts: Parts) -> list[str]:
     n = parts.numbers
     got, want = ["len(rows)"], [str(n.rows)]
-    if len(n.coef):
+    if len(n.coef) and not parts.delicate:
         names = [*(parts.columns if len(n.coef) > len(parts.searched) else ()), *parts.searched]
         chosen = ", ".join(f'"{name}"' for name in names)
         got.append(f"*np.ravel(table.loc[[{chosen}]])")
@@ -186,6 +187,9 @@ def _floor(parts: Parts) -> str:
 
 
 def _named(text: str, parts: Parts) -> str:
-    """Put in the frame's name; names of the script that it, or a function of the user's, already has are changed."""
-    theirs = {parts.problem.frame_name, *parts.covariates.external}
-    return without_names(text, theirs).replace(parts.frame, parts.problem.frame_name)
+    """Put in the user's names; those of the script that the frame or a function of the user's already has change."""
+    external = parts.covariates.external
+    text = without_names(text, {parts.problem.frame_name, *external})
+    for name in external:
+        text = text.replace(PLACE + name, name)
+    return text.replace(parts.frame, parts.problem.frame_name)

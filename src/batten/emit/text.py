@@ -17,7 +17,7 @@ import numpy as np
 import pandas as pd
 
 __all__ = [
-    "RESERVED", "WIDTH", "comment", "constant", "docstring", "fstring", "literal", "noted", "number",
+    "PLACE", "RESERVED", "WIDTH", "comment", "constant", "docstring", "fstring", "literal", "noted", "number",
     "plain_name", "rounded", "said", "wrapped",
 ]  # fmt: skip
 
@@ -25,9 +25,14 @@ WIDTH = 120
 
 #: names that formulas, helpers or the script itself give a meaning
 RESERVED = frozenset((
-    "C", "Q", "I", "np", "pd", "plt", "smf", "sm", "x", "y", "z", "e", "b", "bs", "cr", "cc", "te", "poly", "center",
-    "standardize", "scale", "log", "exp", "sqrt", "lag", "hashed", "contr", "one", "gap", "group", "frame", "rows",
+    "C", "Q", "I", "np", "pd", "smf", "sm", "x", "y", "z", "e", "b", "bs", "cr", "cc", "te", "poly", "center",
+    "standardize", "scale", "log", "exp", "sqrt", "lag", "hashed", "contr", "one", "gap", "frame", "rows", "new",
+    "bend", "group", "coded", "as_levels", "natural", "undo", "bent", "mean", "held", "columns", "design",
+    "log_y", "root_y", "inverse_y", "square_y",
 ))  # fmt: skip
+
+#: a letter that no script uses: marks names that belong to the user until the script's own are settled
+PLACE = "\ua66e"
 
 
 def said(text: object, limit: int = 60) -> str:
