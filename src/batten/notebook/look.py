@@ -29,6 +29,10 @@ _OWN = """
 .batten-widget .batten-row, .batten-widget .batten-field { flex-wrap: wrap; align-items: center; gap: .2em .5em; }
 .batten-widget .batten-row { gap: .2em 2em; }
 .batten-widget .widget-label { width: auto; min-width: 0; max-width: none; margin-right: .5em; }
+.batten-widget .widget-text, .batten-widget .widget-dropdown { height: auto; flex-wrap: wrap; align-items: center; }
+.batten-widget .batten-field .widget-inline-hbox > .widget-label {
+  white-space: normal; height: auto; line-height: 1.4; flex: 0 1 auto; overflow-wrap: anywhere; text-align: left;
+}
 .batten-widget .widget-text > input { flex: 0 0 auto; width: 8em; }
 .batten-widget .batten-picker > input { width: 28em; max-width: 100%; }
 .batten-widget .batten-field .widget-toggle-buttons { display: flex; flex-flow: row nowrap; align-items: center; }

@@ -6,7 +6,7 @@ import ipywidgets as widgets
 
 from batten.compare.shortlist import shortlist
 from batten.exam.examination import Examination
-from batten.notebook.callbacks import Message, told_in, weakly
+from batten.notebook.callbacks import told_in, weakly
 from batten.notebook.insertion import KEYS_CLASS
 from batten.notebook.look import style_sheet
 from batten.notebook.open_widgets import close_all, register
@@ -51,7 +51,7 @@ class ExamWidget:
 
     def __init__(self, exam: Examination, *, cell_id: str | None, token: str) -> None:
         self.desk = Desk(exam, cell_id=cell_id)
-        self.head, self.message = sheet(""), Message()
+        self.head, self.message = sheet(""), self.desk.message
         self.span = SpanFields(self.desk)
         self.compare = Compare(self.desk, self.span)
         self.remedies: dict[str, RemedyTab] = {}

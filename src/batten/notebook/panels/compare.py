@@ -5,7 +5,7 @@ from __future__ import annotations
 import ipywidgets as widgets
 
 from batten.exam.examination import Examination
-from batten.notebook.callbacks import weakly
+from batten.notebook.callbacks import told_in, weakly
 from batten.notebook.panels.desk import Desk, bullets, figure, sheet
 from batten.notebook.panels.fields import labelled
 from batten.notebook.panels.pages import Pages
@@ -60,7 +60,7 @@ class FirstLook:
 
     def _chosen(self, _change: object) -> None:
         aim = self.aim.value
-        with self._desk.lock:
+        with self._desk.lock, told_in(self._desk.message):
             if aim != self._desk.exam.question.aim:
                 self._desk.change(lambda exam: exam.with_aim(aim))
 

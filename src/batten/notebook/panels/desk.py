@@ -10,6 +10,7 @@ from weakref import WeakMethod
 import ipywidgets as widgets
 
 from batten.exam.examination import Examination
+from batten.notebook.callbacks import Message
 from batten.report.figures import Picture, img_html
 from batten.report.lettering import plain
 from batten.report.markup import esc
@@ -40,6 +41,7 @@ class Desk:
 
     def __init__(self, exam: Examination, *, cell_id: str | None) -> None:
         self.exam, self.cell_id, self.lock = exam, cell_id, threading.RLock()
+        self.message = Message()  # for what belongs to no panel
         self.loose: list[widgets.Widget] = []  # made here, and in no box
         self._followers: list[WeakMethod[Callable[[], None]]] = []
 

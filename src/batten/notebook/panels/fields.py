@@ -18,6 +18,8 @@ __all__ = ["Choices", "Dates", "Field", "Numbers", "labelled", "number_in"]
 
 #: up to this many choices stand side by side as buttons
 BUTTONS = 6
+#: letters of a column's name that a label keeps
+NAME = 50
 
 
 class Field(Protocol):
@@ -37,7 +39,7 @@ class Numbers:
     def __init__(self, name: str, value: float, *, unit: str = "", label: str = "") -> None:
         self.name = name
         self.text = widgets.Text(continuous_update=False)
-        self.box = labelled(label or plain(name), self.text, unit)
+        self.box = labelled(label or shortened(name, NAME), self.text, unit)
         self.set(value)
 
     def set(self, value: float) -> None:
@@ -58,7 +60,7 @@ class Dates:
     def __init__(self, name: str, value: pd.Timestamp) -> None:
         self.name = name
         self.text = widgets.Text(word(value), continuous_update=False)
-        self.box = labelled(plain(name), self.text)
+        self.box = labelled(shortened(name, NAME), self.text)
 
     def read(self) -> pd.Timestamp:
         try:
@@ -81,7 +83,7 @@ class Choices:
         texts = _apart([plain(word(level)) for level in levels])
         kind = widgets.ToggleButtons if len(levels) <= BUTTONS else widgets.Dropdown
         self.choice = kind(options=texts, index=levels.index(value))
-        self.box = labelled(plain(name), self.choice)
+        self.box = labelled(shortened(name, NAME), self.choice)
 
     def read(self) -> Any:
         return self._levels[self.choice.index]
@@ -118,7 +120,7 @@ def _apart(texts: list[str]) -> list[str]:
 
 def labelled(label: str, control: widgets.Widget, unit: str = "") -> widgets.HBox:
     """A control with its label before it, which the page ties to it, and a unit behind."""
-    control.description = shortened(label, 120)
+    control.description = label
     control.style.description_width = "initial"
     control.layout.width = "auto"
     box = widgets.HBox([control, widgets.Label(shortened(unit, 20))] if unit else [control])

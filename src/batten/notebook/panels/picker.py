@@ -44,23 +44,21 @@ class Picker:
 
     def _typed(self, _change: object) -> None:
         if self.field.value.strip():
-            self._open()
+            self._pressed()
 
-    def _pressed(self, _button: object) -> None:
-        with told_in(self.message):
+    def _pressed(self, _button: object = None) -> None:
+        with self._desk.lock, told_in(self.message):
             if not self.field.value.strip():
                 raise no_remedy_named()
-            self._open()
-
-    def _open(self) -> None:
-        with self._desk.lock, told_in(self.message):
-            key = parse(self.field.value.partition(GAP)[0]).key
-            if key not in self._desk.exam:
-                self._desk.change(lambda exam: _with(exam, key))
-            show = self._show()
-            if show is not None:
-                show(key)
+            self._open(parse(self.field.value.partition(GAP)[0]).key)
             self.field.value = ""
+
+    def _open(self, key: str) -> None:
+        if key not in self._desk.exam:
+            self._desk.change(lambda exam: _with(exam, key))
+        show = self._show()
+        if show is not None:
+            show(key)
 
 
 def _with(exam: Examination, key: str) -> Examination:

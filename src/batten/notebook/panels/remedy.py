@@ -46,7 +46,7 @@ class RemedyTab:
 
     def _words(self, exam: Examination) -> str:
         role = next((role for role, key in shortlist(exam.comparison) if key == self.key), "")
-        tail = f' <span class="batten-quiet">{esc(role)}</span>' if role else ""
         name = plain(exam[self.key].words)
+        tail = f' <span class="batten-quiet">{esc(role)}</span>' if role not in ("", name) else ""
         head = f'<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>'
         return head + "".join(paragraph(words, "caution") for words in cautions(exam, self.key))

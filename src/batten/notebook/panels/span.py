@@ -7,8 +7,8 @@ import ipywidgets as widgets
 from batten.exam.examination import Examination
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk
-from batten.notebook.panels.fields import Numbers
-from batten.report.lettering import plain, shortened
+from batten.notebook.panels.fields import NAME, Numbers
+from batten.report.lettering import shortened
 
 __all__ = ["SpanFields"]
 
@@ -21,7 +21,7 @@ class SpanFields:
         self.first = desk.exam.question.span
         self.message, self._writing = Message(), False
         a, b = self.first
-        name = shortened(plain(problem.focus), 40)
+        name = shortened(problem.focus, NAME)
         self.low = Numbers(problem.focus, a, label=f"Span: {name} from")
         self.high = Numbers(problem.focus, b, label="to", unit=problem.unit(problem.focus))
         self.back = widgets.Button(description="Back", tooltip="Back to the first span")

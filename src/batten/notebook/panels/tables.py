@@ -11,8 +11,9 @@ import pandas as pd
 from batten.effects.contrast import SpanEffect
 from batten.effects.numbers import show, show_interval
 from batten.exam.fit import Fit
+from batten.notebook.panels.fields import NAME
 from batten.report.grid import Column, Grid, as_html
-from batten.report.lettering import plain
+from batten.report.lettering import plain, shortened
 from batten.report.numerals import difference, span_words
 
 __all__ = ["checks_table", "coefficients_table", "constants_table", "effect_table", "predictions_table"]
@@ -27,9 +28,9 @@ def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
     y_unit, x_unit = problem.unit(problem.response), problem.unit(problem.focus)
     first = effects[0]
     ends = span_words(first.a, first.b, x_unit)
-    y = plain(problem.response)
-    per = f"{y_unit or y} per {x_unit or f'unit of {plain(problem.focus)}'}"
-    heads = [Column(f"{plain(problem.focus)} {ends}"), *(Column(f"{e.of} of {y}") for e in effects)]
+    y, x = shortened(problem.response, NAME), shortened(problem.focus, NAME)
+    per = f"{y_unit or y} per {x_unit or f'unit of {x}'}"
+    heads = [Column(f"{x} {ends}"), *(Column(f"{e.of} of {y}") for e in effects)]
     rows = [
         (_with_unit("difference", y_unit), *(difference(*_ends(e.difference)) for e in effects)),
         ("ratio", *(_ratio(e) for e in effects)),

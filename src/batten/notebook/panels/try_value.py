@@ -13,7 +13,7 @@ from batten.frame.problem import Problem
 from batten.frame.slots import Slot
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk, sheet
-from batten.notebook.panels.fields import Choices, Dates, Field, Numbers, labelled, number_in
+from batten.notebook.panels.fields import NAME, Choices, Dates, Field, Numbers, labelled, number_in
 from batten.notebook.panels.tables import predictions_table
 from batten.report.lettering import plain, shortened
 from batten.report.markup import paragraph
@@ -91,10 +91,12 @@ def _field(problem: Problem, slots: list[Slot], values: pd.Series[Any]) -> Field
     """Levels where the column is ever used as groups; else a date, a number, or one of its values."""
     name = slots[0].column
     levels = next((list(slot.levels) for slot in slots if slot.use == "groups"), None)
+    if levels is None and slots[0].kind == "yes/no":
+        levels = [False, True]
     if levels is None and slots[0].kind == "dates":
         return Dates(name, values.sort_values().iloc[len(values) // 2])
     if levels is None and any(slot.numeric for slot in slots):
-        return Numbers(name, float(f"{float(values.median()):.{DIGITS}g}"), unit=problem.unit(name))
+        return Numbers(name, float(f"{float(values.astype(float).median()):.{DIGITS}g}"), unit=problem.unit(name))
     if levels is None:
         levels = sorted(values.unique().tolist(), key=str)
     usual = next((value for value in values.value_counts().index if value in levels), levels[0])
@@ -103,7 +105,7 @@ def _field(problem: Problem, slots: list[Slot], values: pd.Series[Any]) -> Field
 
 def _question(problem: Problem, wanted: widgets.Text) -> widgets.HBox:
     """The same asked backwards."""
-    y, x = (shortened(plain(name), 40) for name in (problem.response, problem.focus))
+    y, x = (shortened(name, NAME) for name in (problem.response, problem.focus))
     alike = " (covariates as in the rows)" if problem.covariates else ""
     ask = f"Backwards: at which {x}{alike} is the mean of {y}"
     return labelled(ask, wanted, problem.unit(problem.response))
