@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, fields, replace
+from functools import partial
 from types import MappingProxyType
 
 import numpy as np
@@ -13,7 +14,7 @@ from batten.compare.heldout import HeldOut, held_out
 from batten.diagnose.bend import Bend, Flexible, bend_of, flexible
 from batten.engine.folds import Splits, deal, default_repeats
 from batten.engine.rows import Rows
-from batten.engine.threads import one_thread
+from batten.engine.threads import one_thread, side_by_side
 from batten.errors import Refusal
 from batten.errors.compare import nothing_fits
 from batten.families.remedy import Remedy, parse
@@ -112,10 +113,14 @@ def _run(
     estimates: dict[str, Estimate] = {}
     refused: dict[str, Refusal] = {}
     designs: Designs = {}
-    for done, remedy in enumerate(remedies):
+
+    def tell(place: int) -> None:
         if progress:
-            progress(done, steps, remedy.key)
-        result = estimate(rows, remedy, designs=designs)
+            progress(place, steps, remedies[place].key)
+
+    tasks = [partial(estimate, rows, remedy, designs=designs) for remedy in remedies]
+    results = side_by_side(tasks, rows=rows.count, before=tell)
+    for remedy, result in zip(remedies, results, strict=True):
         if isinstance(result, Refusal):
             refused[remedy.key] = result
         else:
@@ -132,8 +137,11 @@ def _run(
     if progress:
         progress(steps - 1, steps, "left-over bend")
     bends: dict[str, Bend | None] = {}
-    for key, est in list(estimates.items()):
-        bend = bend_of(reference, est, level=question.level)
+    keys = list(estimates)
+    found_bends = side_by_side(
+        [partial(bend_of, reference, estimates[key], level=question.level) for key in keys], rows=rows.count
+    )
+    for key, bend in zip(keys, found_bends, strict=True):
         if isinstance(bend, Refusal):
             refused[key] = bend
             del estimates[key], scores[key]

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from scipy.special import gammaln
@@ -21,6 +22,7 @@ from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
 from batten.engine.sets import BLOCK, masks, search_sets, solve_means
+from batten.engine.threads import side_by_side
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale
 from batten.fit.estimate import Estimate, scale_power, searched_model
@@ -82,23 +84,28 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     """Scores of every estimate on the same splits, in the order given."""
     if not estimates:
         return []
-    out: list[HeldOut | Refusal | None] = [None] * len(estimates)
-    x = estimates[0].rows.x
+    rows = estimates[0].rows
     # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
-    sets = [_Split(train, test, np.sort(x[train])) for train, test in splits.sets]
+    sets = [_Split(train, test, np.sort(rows.x[train])) for train, test in splits.sets]
+    members: list[list[int]] = []
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
-        if est.link is not None:
-            out[i] = _score_link(est, sets)
-        elif est.shape.searched:
-            out[i] = _score(est, sets, _searched_fits(est, sets))
-        else:
+        if est.link is None and not est.shape.searched:
             shapes.setdefault(est.shape.key, []).append(i)
-    for members in shapes.values():
-        group = [estimates[i] for i in members]
-        for i, result in zip(members, _score_group(group, sets), strict=True):
-            out[i] = result
-    return [r for r in out if r is not None]
+        else:
+            members.append([i])
+    members += shapes.values()
+
+    def scored(group: list[Estimate]) -> list[HeldOut | Refusal]:
+        if group[0].link is not None:
+            return [_score_link(group[0], sets)]
+        if group[0].shape.searched:
+            return [_score(group[0], sets, _searched_fits(group[0], sets))]
+        return _score_group(group, sets)
+
+    results = side_by_side([partial(scored, [estimates[i] for i in some]) for some in members], rows=rows.count)
+    found = {i: one for some, many in zip(members, results, strict=True) for i, one in zip(some, many, strict=True)}
+    return [found[i] for i in range(len(estimates))]
 
 
 def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Refusal]:

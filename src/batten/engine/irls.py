@@ -50,7 +50,7 @@ def iterate(
     # in an orthonormal basis the weighted cross-products of every step stay well conditioned
     whole = factor(x)
     unit = whole.q
-    start = eta - off if coef is None and eta is not None else x @ coef
+    start = x @ coef if coef is not None else (np.zeros_like(y) if eta is None else eta - off)
     b = unit.T @ start
 
     def deviance(b: Array) -> float:

@@ -12,6 +12,7 @@ from batten.engine.linear import Factored, design, factor, solve
 from batten.engine.power import Power, best_power
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import Searched, search
+from batten.engine.threads import MANY_ROWS
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
@@ -311,7 +312,10 @@ def _constants(
     for turn in range(40 if search_t and search_c else 1):
         before = (*t, *c)
         if model is not None:
-            found = search(model, scale.forward(rows.y, c), start=np.array(t) if turn else None)
+            found = search(
+                model, scale.forward(rows.y, c), start=np.array(t) if turn else None,
+                precision=1e-13 if rows.count <= MANY_ROWS else 1e-10,
+            )  # fmt: skip
             if not found.settled:
                 return _not_settled(shape)
             t = tuple(float(v) for v in found.theta)
