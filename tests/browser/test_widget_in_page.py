@@ -106,11 +106,17 @@ def test_two_widgets_answer_each_for_itself(front_end: FrontEnd) -> None:
     seen(front_end, 1, re.compile("^Rows with mass_kg of 30 kg against"))
 
 
-def test_it_works_after_a_restart_and_a_second_run_leaves_one_widget(front_end: FrontEnd) -> None:
-    front_end.open([LOAD, CASTINGS]).run_all()
-    seen(front_end, 1, re.compile("^The straight line bends"))
+def test_it_works_after_a_restart_and_another_run_leaves_no_models_behind(front_end: FrontEnd) -> None:
+    count = "from ipywidgets.widgets import widget\nprint('models:', len(widget._instances))"
+    front_end.open([LOAD, CASTINGS, count])
     front_end.restart_and_run_all()
-    front_end.run_cell(1)
+    seen(front_end, 1, re.compile("^The straight line bends"))
+    models = front_end.output_text(2)
+    assert re.search(r"models: \d\d", models)
+
+    for cell in (1, 2):
+        front_end.run_cell(cell)
+    assert front_end.output_text(2) == models
     expect(widget(front_end, 1)).to_have_count(1)
     open_tab(front_end, 1, "straight line")
     seen(front_end, 1, re.compile("^Rows with mass_kg of 30 kg against"))
