@@ -118,7 +118,9 @@ def _run(
         if progress:
             progress(place, steps, remedies[place].key)
 
-    tasks = [partial(estimate, rows, remedy, designs=designs) for remedy in remedies]
+    tasks: list[Callable[[], Estimate | Refusal]] = [
+        partial(estimate, rows, remedy, designs=designs) for remedy in remedies
+    ]
     results = side_by_side(tasks, rows=rows.count, before=tell)
     for remedy, result in zip(remedies, results, strict=True):
         if isinstance(result, Refusal):
