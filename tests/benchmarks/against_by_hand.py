@@ -2,8 +2,8 @@
 
     python tests/benchmarks/against_by_hand.py [ROWS ...]
 
-By hand: 14 remedies of `y ~ x + C(g)` (g text with four levels) through statsmodels' formula interface, each fitted to all
-rows and in ten folds, brought back by smearing. Up to 100,000 rows it runs as written; beyond, only single fits are timed.
+By hand: 14 remedies of `y ~ x + C(g)` (g text with four levels) through statsmodels' formula interface, each fitted to
+all rows and in ten folds, brought back by smearing. Beyond 100,000 rows only a single fit is timed beside ours.
 Medians of REPEATS runs; quote ratios, since absolute times move with the machine.
 """
 
