@@ -15,7 +15,10 @@ from batten.fit.question import Question
 
 SMALL = tuple(
     parse(k)
-    for k in ("y ~ log x", "log y ~ x", "log y ~ log x", "y ~ poly2 x", "boxcox y ~ x", "y ~ spline4 x", "y ~ hinge x", "loglink y ~ log x")
+    for k in (
+        "y ~ log x", "log y ~ x", "log y ~ log x", "y ~ poly2 x", "boxcox y ~ x", "y ~ spline4 x", "y ~ hinge x",
+        "loglink y ~ log x",
+    )
 )  # fmt: skip
 
 

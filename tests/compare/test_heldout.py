@@ -35,7 +35,7 @@ def fitted(data: Rows, key: str) -> Estimate:
 
 
 def brute(data: Rows, key: str, splits: Splits) -> tuple[np.ndarray, np.ndarray]:
-    """Mean squared error of the mean and mean absolute error of the median of every split, each refitted from nothing."""
+    """Mean squared error of the mean and absolute error of the median of every split, each refitted from nothing."""
     out = []
     for train, test in splits.sets:
         est = fitted(data.take(train), key)

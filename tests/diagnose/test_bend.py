@@ -6,13 +6,13 @@ import numpy as np
 import pytest
 
 from batten.diagnose.bend import Bend, bend_of, flexible, knots_for
-from batten.diagnose.trial import try_line
+from batten.diagnose.trial import Trial, try_line
 from batten.engine.rows import Rows
 from batten.families import parse
 from batten.fit.estimate import Estimate, estimate
 
 
-def trial(x: np.ndarray, y: np.ndarray, tolerance: float | None = None):  # noqa: ANN201 (a small local helper)
+def trial(x: np.ndarray, y: np.ndarray, tolerance: float | None = None) -> Trial:
     rows = Rows(y, x, np.ones((len(x), 1)), np.ones((len(x), 1)))
     line = estimate(rows, parse("y ~ x"))
     assert isinstance(line, Estimate)

@@ -230,9 +230,7 @@ def test_an_estimated_power_runs_through_the_logarithm_smoothly() -> None:
     at_zero = power.columns(x, state, (0.0,))
     np.testing.assert_allclose(at_zero[:, 0], np.log(x / state[1]), rtol=1e-12)
     np.testing.assert_allclose(power.columns(x, state, (1e-13,)), at_zero, rtol=1e-11)
-    np.testing.assert_allclose(
-        power.theta_slopes(x, state, (0.0,))[0, :, 0], np.log(x / state[1]) ** 2 / 2, rtol=1e-12
-    )
+    np.testing.assert_allclose(power.theta_slopes(x, state, (0.0,))[0, :, 0], np.log(x / state[1]) ** 2 / 2, rtol=1e-12)
 
 
 def test_without_a_constant_an_estimated_power_passes_through_zero() -> None:

@@ -55,7 +55,9 @@ def test_a_share_link_agrees_with_a_fractional_logit() -> None:
     np.testing.assert_allclose(done.coef, [-2.912374, 0.413695], atol=1e-6)
 
 
-@pytest.mark.parametrize("key", ["y ~ x", "log y ~ x", "sqrt y ~ sqrt x", "y ~ poly3 x", "log y ~ spline3 x", "y ~ bins3 x"])
+@pytest.mark.parametrize(
+    "key", ["y ~ x", "log y ~ x", "sqrt y ~ sqrt x", "y ~ poly3 x", "log y ~ spline3 x", "y ~ bins3 x"]
+)
 def test_coefficients_and_both_error_kinds_agree_with_statsmodels(key: str) -> None:
     rng = np.random.default_rng(5)
     x = rng.uniform(1, 9, 120)
@@ -118,7 +120,7 @@ def test_moves_equal_refits_without_the_row(key: str) -> None:
 
 @pytest.mark.parametrize("key", ["boxcox y ~ x", "y ~ x^p", "y ~ level-hyp x"])
 def test_moves_of_searched_constants_are_the_derivative_of_a_weighted_fit(key: str) -> None:
-    """The one-step move without leverage is minus the derivative with respect to the row's weight: doubled rows show it."""
+    """The one-step move without leverage is minus the derivative by the row's weight: doubled rows show it."""
     rng = np.random.default_rng(2)
     x = np.sort(rng.uniform(1, 10, 400))
     y = 3 + 8 * x / (x + 4) + rng.normal(0, 0.3, 400)

@@ -15,7 +15,7 @@ __all__ = ["HOSTILE", "QUICK", "Situation", "bowl", "examined", "fan", "hostile"
 
 #: names that break careless HTML, mathematics in text, and layouts
 HOSTILE = {
-    "response": "_<b>cost</b> & \"fuss\" $\\bad{$ of every single casting poured on a Tuesday in the old hall",
+    "response": '_<b>cost</b> & "fuss" $\\bad{$ of every single casting poured on a Tuesday in the old hall',
     "focus": "_mass $x$ <img src=x onerror=alert(1)> 'net' of the runner,\nthe riser and the sprue Ω 質量",
     "covariate": "<script>alloy</script>",
 }

@@ -212,9 +212,7 @@ def test_the_spans_figure_has_an_interval_for_every_remedy_that_has_an_answer() 
     low, high = ax.get_xlim()
     wanted = {float(v) for v in table["difference"].dropna() if low <= v <= high}
     assert drawn == wanted
-    filled = sum(
-        line.get_marker() == "o" and line.get_markerfacecolor() != "#ffffff" for line in ax.get_lines()
-    )
+    filled = sum(line.get_marker() == "o" and line.get_markerfacecolor() != "#ffffff" for line in ax.get_lines())
     assert filled == int((table["tied"] & table["difference"].between(low, high)).sum())
     assert f"{len(exam.refused)} that cannot be used" in figures.describe(made)
 

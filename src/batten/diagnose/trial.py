@@ -106,7 +106,5 @@ def _words(
     if verdict in ("straight enough", "too small to matter"):
         return size
     unit = f" {x_unit}".rstrip()
-    where = "; ".join(
-        f"{s.side} by up to {y(s.size)} from {s.low:.4g} to {s.high:.4g}{unit}" for s in stretches
-    )
+    where = "; ".join(f"{s.side} by up to {y(s.size)} from {s.low:.4g} to {s.high:.4g}{unit}" for s in stretches)
     return f"{size} The line is {where}."

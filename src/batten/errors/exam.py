@@ -9,9 +9,7 @@ __all__ = ["bad_number", "later", "one_of", "same_ends", "unknown_key"]
 
 def one_of(option: str, seen: object, choices: tuple[str, ...]) -> InputError:
     """An option with a fixed set of words."""
-    return InputError(
-        f"{option} takes one of {', '.join(choices)}.", f"Seen: {seen!r}.", closest(str(seen), choices)
-    )
+    return InputError(f"{option} takes one of {', '.join(choices)}.", f"Seen: {seen!r}.", closest(str(seen), choices))
 
 
 def bad_number(option: str, seen: object, wanted: str) -> InputError:

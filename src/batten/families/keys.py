@@ -63,7 +63,7 @@ def _tidy(side: str) -> str:
 
 
 def _word(part: str, variable: str, text: str) -> tuple[str, Constants | None]:
-    """"bins(10, 20) x" -> ("bins", (10.0, 20.0)); "log x" -> ("log", None); "1/x" -> ("1/x", None)."""
+    """ "bins(10, 20) x" -> ("bins", (10.0, 20.0)); "log x" -> ("log", None); "1/x" -> ("1/x", None)."""
     body = part.removesuffix(f" {variable}")
     bracket = _BRACKET.fullmatch(body)
     if not bracket or body == part:

@@ -75,9 +75,7 @@ def _needed(column: Column, cells: Sequence[str]) -> int:
 def _block(cells: Sequence[Sequence[str]], widths: Sequence[int], columns: Sequence[Column]) -> list[str]:
     """One row of the table, as many lines as its tallest cell has."""
     tall = max(len(cell) for cell in cells)
-    return [
-        _line([cell[i] if i < len(cell) else "" for cell in cells], widths, columns) for i in range(tall)
-    ]
+    return [_line([cell[i] if i < len(cell) else "" for cell in cells], widths, columns) for i in range(tall)]
 
 
 def _kind(column: Column) -> str:
@@ -106,6 +104,4 @@ def _lines(words: str, width: int) -> list[str]:
 
 def _wide(text: str) -> int:
     """Columns a terminal needs: wide East Asian letters take two, combining marks none."""
-    return sum(
-        0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1 for c in text
-    )
+    return sum(0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1 for c in text)

@@ -114,4 +114,3 @@ def running_median(x: Array, values: Array) -> tuple[Array, Array]:
     starts = np.unique(np.append(np.arange(0, n - width + 1, max(1, width // 2)), n - width))
     groups = [order[s : s + width] for s in starts]
     return np.array([np.median(x[g]) for g in groups]), np.array([np.median(values[g]) for g in groups])
-

@@ -98,9 +98,7 @@ def _one(ax: Axes, place: int, entry: Entry, color: str, problem: Problem) -> No
     """The name, interval and point of one remedy."""
     main = color != style.QUIET
     role = "choice: " if color == style.CHOICE else ""
-    name = fitted(
-        lambda limit: f"{role}{brief(problem, entry.key, limit)}", LEFT - 0.2, size=style.SMALL, bold=main
-    )
+    name = fitted(lambda limit: f"{role}{brief(problem, entry.key, limit)}", LEFT - 0.2, size=style.SMALL, bold=main)
     letters(
         ax, -0.1 / parts.inches(ax)[0], place, name, ha="right", va="center",
         transform=ax.get_yaxis_transform(), color=color if main else style.INK, size=style.SMALL, bold=main,
@@ -110,8 +108,9 @@ def _one(ax: Axes, place: int, entry: Entry, color: str, problem: Problem) -> No
         at = left + 0.01 * (right - left)
         letters(ax, at, place, shortened(entry.note, 60), va="center", color=style.QUIET, size=style.SMALL)
         return
-    low, high = (max(entry.low, left) if np.isfinite(entry.low) else left), (
-        min(entry.high, right) if np.isfinite(entry.high) else right
+    low, high = (
+        (max(entry.low, left) if np.isfinite(entry.low) else left),
+        (min(entry.high, right) if np.isfinite(entry.high) else right),
     )
     if low < high:
         ax.plot([low, high], [place, place], color=color, linewidth=2.2 if main else 1.2, linestyle="solid", zorder=3,

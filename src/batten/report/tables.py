@@ -60,9 +60,7 @@ def full_grid(exam: Examination) -> Grid:
     rows = entries(exam)
     more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", "words")
     best = lowest(rows)
-    cells = [
-        (*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()
-    ]
+    cells = [(*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()]
     return Grid((*_columns(exam), *more), tuple(cells), tuple(_mark(key, exam) for key in rows))
 
 

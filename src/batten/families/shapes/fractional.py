@@ -131,8 +131,7 @@ class Fractional(Shape):
         chosen = self.powers or theta
         once = [f"np.log({u})" if p == 0 else f"({u})**{plain(p)}" for p in chosen]
         columns = [
-            f"{c} * np.log({u})" if p in chosen[:j] else c
-            for j, (p, c) in enumerate(zip(chosen, once, strict=True))
+            f"{c} * np.log({u})" if p in chosen[:j] else c for j, (p, c) in enumerate(zip(chosen, once, strict=True))
         ]
         shift = (
             ("SHIFT", plain(state[0]), f"added to {x}, so that logs and negative powers exist"),
