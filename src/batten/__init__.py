@@ -1,7 +1,8 @@
 """batten: for regressions that bend.
 
 `examine` fits a grid of remedies, compares them fairly in the response's own units and chooses; the `%%batten` cell
-magic does the same in a notebook and shows a widget. Importing the package loads no notebook, widget or drawing library.
+magic does the same in a notebook and shows a widget. Importing the package loads no notebook, widget or drawing
+library.
 """
 
 from __future__ import annotations
