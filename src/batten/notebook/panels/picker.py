@@ -27,9 +27,7 @@ class Picker:
     def __init__(self, desk: Desk, show: Callable[[str], None]) -> None:
         self._desk, self._show = desk, WeakMethod(show)
         self.message = Message()
-        self.field = widgets.Combobox(
-            placeholder="choose, or type a key such as y ~ poly4 x", continuous_update=False
-        )
+        self.field = widgets.Combobox(placeholder="choose, or type a key such as y ~ poly4 x", continuous_update=False)
         self.field.add_class("batten-picker")
         self.button = widgets.Button(description="Open", layout=widgets.Layout(width="auto"))
         self.field.observe(weakly(self._typed), "value")

@@ -48,5 +48,5 @@ class RemedyTab:
         role = next((role for role, key in shortlist(exam.comparison) if key == self.key), "")
         name = plain(exam[self.key].words)
         tail = f' <span class="batten-quiet">{esc(role)}</span>' if role not in ("", name) else ""
-        head = f'<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>'
+        head = f"<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>"
         return head + "".join(paragraph(words, "caution") for words in cautions(exam, self.key))
