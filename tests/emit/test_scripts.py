@@ -12,6 +12,8 @@ import pytest
 from cases import agrees, foundry, write
 from runner import ENGINES, run_script
 
+import batten
+
 FORMULA = "minutes ~ mass_kg + C(alloy) + depth"
 
 
@@ -186,12 +188,14 @@ def test_scripts_pass_a_linter(tmp_path: Path) -> None:
 def test_comments_say_which_rows_and_errors() -> None:
     data = foundry(60)
     data.loc[3, "mass_kg"], data.loc[[4, 5], "depth"] = np.nan, np.inf
-    first, second = write("log y ~ x", FORMULA, data).lines[:2]
+    first, *more = write("log y ~ x", FORMULA, data).lines[:3]
     assert first == '# minutes ~ mass_kg + C(alloy) + depth, remedy "log y ~ x": log of minutes on mass_kg.'
-    assert second == (
-        "# `castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. "
-        "Errors: robust (HC3)."
+    assert " ".join(line.removeprefix("#").strip() for line in more) == (
+        "`castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. "
+        "Errors: robust (HC3), as if this remedy had been fixed in advance."
     )
+    planned = write("log y ~ x", FORMULA, foundry(60), planned="log y ~ x").lines[1]
+    assert planned == "# `castings` (pandas): all 60 rows used. Errors: robust (HC3)."
 
 
 def test_predictions_keep_the_index_of_what_is_asked() -> None:
@@ -205,3 +209,14 @@ def test_predictions_keep_the_index_of_what_is_asked() -> None:
     table: pd.DataFrame = ran.names["q"]
     assert (table["low"] < table["median"]).all()
     assert (table["median"] < table["high"]).all()
+
+
+def test_an_examination_writes_the_script_of_any_of_its_fits() -> None:
+    data = batten.sample("castings")
+    exam = batten.examine("minutes ~ mass_kg + C(alloy)", data, frame_name="castings", only=["ladder", "y ~ spline4 x"])
+    for key in ("y ~ x", "log y ~ log x", "y ~ spline4 x"):
+        for engine in ENGINES:
+            ran = run_script(exam.code(key), {"castings": data}, engine)
+            assert not ran.error, ran.error
+        assert ran.names["effect"] == pytest.approx(exam[key].contrast().loc["difference", "estimate"], rel=1e-12)
+    assert exam.code() == exam[exam.choice.key].code()

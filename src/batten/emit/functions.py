@@ -52,7 +52,7 @@ def _columns(parts: Parts) -> list[str]:
     lines = ['@np.errstate(all="ignore")  # what a column cannot take becomes missing'] if guarded else []
     lines += [
         f"def columns(frame{arguments}):",
-        *docstring("The model's columns under plain names; a missing value or an unknown level stays missing."),
+        *docstring("The model's columns under plain names; an unknown level is missing, not the reference level."),
         *wrapped(f"    x = {focus}", 4),
     ]
     if parts.shape.check is not None:
@@ -81,7 +81,10 @@ def _design(parts: Parts) -> list[str]:
         f"def design(frame{more}):",
         *docstring("The design at the rows of `frame`, by the model's own formula; missing where a column is."),
         f"    new = columns(frame{given}).replace([np.inf, -np.inf], np.nan)",
-        f"    X = smf.ols(MODEL, new.fillna(rows.iloc[0]).assign({parts.response}=0.0)).exog",
+        *noted(
+            f"    X = smf.ols(MODEL, new.fillna(rows.iloc[0]).assign({parts.response}=0.0)).exog",
+            "gaps keep their place",
+        ),
         "    return np.where(new.notna().all(axis=1).to_numpy()[:, None], X, np.nan)",
     ]
 

@@ -40,6 +40,7 @@ def _header(parts: Parts) -> list[str]:
     p, remedy = parts.problem, parts.est.remedy
     words = remedy.words(parts.y, parts.x)
     kind = "robust (HC3)" if parts.robust else "of one size for all rows"
+    kind += "" if parts.question.planned == remedy.key else ", as if this remedy had been fixed in advance"
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
         f"`{parts.frame}` (pandas): {_rows_words(parts)} Errors: {kind}.",
@@ -106,8 +107,12 @@ def _uses_t(parts: Parts) -> bool:
 def _model(parts: Parts) -> list[str]:
     c = parts.covariates
     shape = parts.columns[0] if len(parts.columns) == 1 else f"({' + '.join(parts.columns)})"
-    terms = [f"{shape}:{m}" if m else " + ".join(parts.columns) for m in c.modifiers]
-    right = " + ".join([*(() if c.intercept else ("0",)), *terms, *c.terms])
+    crossed = [m for m in c.modifiers if m]
+    if c.modifiers == ["", *crossed] and len(crossed) == 1 and crossed[0] in c.terms:
+        terms = [f"{shape} * {crossed[0]}", *(t for t in c.terms if t != crossed[0])]
+    else:
+        terms = [f"{shape}:{m}" if m else " + ".join(parts.columns) for m in c.modifiers] + c.terms
+    right = " + ".join([*(() if c.intercept else ("0",)), *terms])
     return _long_string("MODEL", f"{parts.response} ~ {right}")
 
 
