@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 import pytest
 from cases import agrees, foundry, write
+from runner import run_script
 
 HOSTILE = ["melt temperature", "<b>bold</b>", 'say "hi"', "it's", "C", "Q", "I", "np", "x", "y", "class", "μ", "a\nb",
            "\\path", "$cost$", "lambda", "rows", "{brace}", "1st", "  ", "T95", "größe", "log", "e"]  # fmt: skip
@@ -132,6 +133,7 @@ EXPRESSIONS = {
     "b-splines with all columns": "bs(depth, df=5, include_intercept=True)",
     "natural splines": "cr(depth, df=3)",
     "centred natural splines": "cr(depth, df=4, constraints='center')",
+    "cyclic splines": "cc(depth, df=4)",
     "a crossed expression": "np.log(depth) * alloy",
     "a reference level": "C(alloy, Treatment('steel'))",
     "levels in an order": "C(alloy, levels=['steel', 'bronze', 'grey iron'])",
@@ -155,6 +157,17 @@ def test_covariates_may_be_expressions(what: str) -> None:
     new = written.problem.new_rows(beyond)
     known = np.isfinite(new.base).all(axis=1)
     assert (ran.names["beyond"]["mean"].notna() == known).all()
+
+
+def test_an_expression_without_a_literal_form_is_said() -> None:
+    data = foundry(80)
+    surface = "te(cr(depth, df=3), cr(scrap, df=3), constraints='center')"
+    written = write("log y ~ x", f"minutes ~ mass_kg + {surface}", data)
+    told = written.source.replace("\n#   ", " ")
+    assert "learns from the rows it is given, so this script predicts no further rows" in told
+    ran = run_script(written.source, {"castings": data})  # formulaic has no te()
+    assert not ran.error, ran.error
+    np.testing.assert_allclose(ran.names["got"], written.want[: len(ran.names["got"])], rtol=1e-9)
 
 
 def test_the_focal_predictor_may_be_crossed_with_expressions() -> None:

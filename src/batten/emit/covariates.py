@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from batten.emit.expressions import Written, write_expression
+from batten.emit.expressions import Written, has_literal, write_expression
 from batten.emit.text import literal, plain_name, said
 from batten.engine.rows import Array
 from batten.frame.columns import look
@@ -28,7 +28,8 @@ class Covariates:
     focus: expression for the focal predictor's numbers. lines: statements before the model's columns are put together.
     entries: (plain name, expression) of covariates' columns. terms: formula terms without the focal predictor.
     modifiers: what the focal predictor is multiplied with, "" for itself. intercept: whether the formula has one.
-    helpers: functions called. notes: comments. guarded: some expression may meet values it cannot take.
+    helpers: functions called. guarded: some expression may meet values it cannot take. unwritten: labels of expressions
+    that have no literal form and stand in the formula as they are.
     """
 
     focus: str = ""
@@ -41,7 +42,7 @@ class Covariates:
     intercept: bool = True
     helpers: list[str] = field(default_factory=list)
     imports: list[str] = field(default_factory=list)
-    notes: list[str] = field(default_factory=list)
+    unwritten: list[str] = field(default_factory=list)
     external: list[str] = field(default_factory=list)
     guarded: bool = False
 
@@ -80,7 +81,9 @@ class _Writer:
         self.groups = len({code for block in design.blocks for code, contrast in block.factors if contrast is not None})
         self.out.intercept = design.has_intercept and not own_level
         odd = any(not _usual(contrast) for block in design.blocks for _, contrast in block.factors)
-        self.by_column = bool(self._dropped()) or odd or (self.groups > 0 and own_level and design.has_intercept)
+        level_gone = self.groups > 0 and own_level and design.has_intercept
+        # what has no literal form can only stand in a formula
+        self.by_column = (self._dropped() or odd or level_gone) and all(map(has_literal, design.recipes.values()))
 
     def write(self) -> Covariates:
         self._focus()
@@ -204,6 +207,8 @@ class _Writer:
 
     def _from_expression(self, code: str, name: str) -> list[str]:
         written = self._expression(code, name)
+        if not written.source:
+            return [self._as_typed(code)]
         width = self.design.recipes[code].width
         if width == 1:
             self.out.entries.append((name, written.source))
@@ -225,6 +230,13 @@ class _Writer:
         if written.helper:
             self._needs(written.helper)
         return written
+
+    def _as_typed(self, code: str) -> str:
+        """An expression in the formula's own words, with plain names; it learns anew from the rows it is given."""
+        self.out.unwritten.append(self._label(code))
+        factors = {f.label: f for term in self.design.terms for f in term.factors}
+        names = {slot.column: self.variables[s] for s, slot in self.design.slots.items() if s in self.variables}
+        return factors[self.design.labels[code]].written(names)
 
     def _needs(self, helper: str) -> None:
         if helper not in self.out.helpers:

@@ -14,7 +14,7 @@ import numpy as np
 from batten.emit.text import PLACE, literal, number
 from batten.frame.formula import Recipe
 
-__all__ = ["Written", "write_expression"]
+__all__ = ["Written", "has_literal", "write_expression"]
 
 _NATURAL = '''
 def natural(z, knots, heights):
@@ -48,6 +48,11 @@ def write_expression(recipe: Recipe, variables: Mapping[str, str], *, name: str,
     except _CannotBeWritten:
         return Written()
     return out
+
+
+def has_literal(recipe: Recipe) -> bool:
+    """Whether everything the recipe learned can be written as numbers (tensor products cannot)."""
+    return not any(type(v).__module__.startswith("patsy.") and type(v).__name__ == "TE" for v in recipe.names.values())
 
 
 class _CannotBeWritten(Exception):
@@ -100,8 +105,8 @@ class _Writer(ast.NodeTransformer):
             return _affine(learned, argument, options)
         if kind == "BS":
             return self._b_splines(learned, argument)
-        if kind == "CR":
-            return self._natural_splines(learned, argument)
+        if kind in ("CR", "CC"):
+            return self._cubic_splines(learned, argument, cyclic=kind == "CC")
         raise _CannotBeWritten(kind)
 
     def _b_splines(self, learned: Any, argument: str) -> str:
@@ -111,16 +116,19 @@ class _Writer(ast.NodeTransformer):
         first = "" if count == self.recipe.width else "[:, 1:]"
         return f"BSpline({name}, np.eye({count}), {degree}, extrapolate=False)({argument}){first}"
 
-    def _natural_splines(self, learned: Any, argument: str) -> str:
-        """A natural cubic spline is settled by its heights at the knots, whatever was centred or left out."""
+    def _cubic_splines(self, learned: Any, argument: str, *, cyclic: bool) -> str:
+        """Such splines are settled by their heights at the knots, whatever was centred or left out."""
         knots = np.asarray(learned._all_knots, dtype=float)
         heights = np.asarray(learned.transform(knots), dtype=float)
+        heights[-1] = heights[0] if cyclic else heights[-1]  # equal but for rounding
         rows = ", ".join(f"({', '.join(map(number, row))},)" for row in heights)
-        name = self._knots(knots)
-        self.out.constants.append((f"{self.name}_HEIGHTS", f"({rows})", f"columns of {self.label} at these knots"))
+        name, high = self._knots(knots), f"{self.name}_HEIGHTS"
+        self.out.constants.append((high, f"({rows})", f"columns of {self.label} at these knots"))
         self.out.imports.append("from scipy.interpolate import CubicSpline")
+        if cyclic:
+            return f'CubicSpline({name}, {high}, bc_type="periodic")({argument})'
         self.out.helper = _NATURAL
-        return f"natural({argument}, {name}, {self.name}_HEIGHTS)"
+        return f"natural({argument}, {name}, {high})"
 
     def _knots(self, knots: Any) -> str:
         name = f"{self.name}_KNOTS"

@@ -13,7 +13,8 @@ __all__ = ["design_call", "functions", "undo"]
 
 def functions(parts: Parts) -> list[str]:
     """All functions, a blank line between them."""
-    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_jacobian(parts), *_means(parts), _predict(parts)]
+    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_jacobian(parts), *_means(parts)]
+    blocks += [] if parts.covariates.unwritten else [_predict(parts)]
     return [line for block in blocks for line in ["", *block]][1:]
 
 

@@ -29,7 +29,7 @@ def script(problem: Problem, question: Question, estimate: Estimate) -> str:
         functions(parts),
         fitting(parts),
         span(parts),
-        _picture(parts),
+        [] if parts.covariates.unwritten else _picture(parts),
         _checks(parts),
     ]
     text = "\n\n".join("\n".join(lines) for lines in sections if lines) + "\n"
@@ -44,8 +44,9 @@ def _header(parts: Parts) -> list[str]:
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
         f"`{parts.frame}` (pandas): {_rows_words(parts)} Errors: {kind}.",
-        *parts.covariates.notes,
     ]
+    for label in parts.covariates.unwritten:
+        lines.append(f"{label} learns from the rows it is given, so this script predicts no further rows.")
     if parts.covariates.external:
         lines.append(f"Needs {', '.join(parts.covariates.external)} as defined where the formula was written.")
     return [line for text in lines for line in comment(text)]
@@ -171,8 +172,9 @@ def _checks(parts: Parts) -> list[str]:
     if parts.bounded:
         got.append("half")
         want.append(rounded((n.span.difference.high - n.span.difference.low) / 2))
-    got.append("*np.ravel(predict(used.iloc[[0, -1]]))")
-    want += [rounded(v) for v in n.predictions.ravel()]
+    if not parts.covariates.unwritten:
+        got.append("*np.ravel(predict(used.iloc[[0, -1]]))")
+        want += [rounded(v) for v in n.predictions.ravel()]
     message = literal(f"`{parts.frame}` differs from the rows this script was written for")
     return [
         *wrapped(f"got = [{', '.join(got)}]"),
