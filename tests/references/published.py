@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 from decimal import Decimal
 from typing import Any
 
-from cases import compute
+from check_cases import compute
 
 __all__ = ["Published"]
 

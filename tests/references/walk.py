@@ -16,7 +16,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from cases import compute
+from check_cases import compute
 
 __all__ = ["FOLDER", "Judged", "judge", "walk"]
 
