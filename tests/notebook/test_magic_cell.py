@@ -149,7 +149,8 @@ def test_other_tables_and_dicts_of_columns_are_taken(
 
 def test_in_a_terminal_the_result_is_text_with_the_guess_announced_and_what_to_do_next(run: Run, last: Any) -> None:
     printed, _ = run(CELL.replace("mass_kg", "mass_kg + wall"))
-    assert "Focal predictor: mass_kg, the first plain numeric predictor; others it could be: wall." in printed
+    said = " ".join(printed.split())  # lines are as wide as the terminal
+    assert "Focal predictor: mass_kg, the first plain numeric predictor; others it could be: wall." in said
     assert printed.endswith(f"\n\n{NEXT}\n")
     assert max(map(len, printed.splitlines())) <= 110
     assert run("%%batten castings --plain " + CELL.removeprefix("%%batten castings "))[0].endswith(f"\n\n{NEXT}\n")
