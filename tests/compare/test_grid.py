@@ -140,3 +140,11 @@ def test_progress_is_reported_to_the_end() -> None:
     compare(multiplicative(60), SMALL, Question(span=(5.0, 12.0)), progress=lambda *a: seen.append(a))
     assert seen[-1][0] == seen[-1][1]
     assert [s[0] for s in seen] == sorted(s[0] for s in seen)
+
+
+@pytest.mark.parametrize(("power", "wanted"), [(1, "y ~ x"), (2, "y ~ poly2 x")])
+def test_an_exact_curve_is_found_whatever_the_rounding(power: int, wanted: str) -> None:
+    x = np.random.default_rng(0).uniform(1, 9, 120)
+    rows = Rows(3 + 2 * x**power, x, np.ones((120, 1)), np.ones((120, 1)))
+    done = run(rows, (parse("y ~ poly2 x"), parse("y ~ spline5 x"), parse("y ~ poly3 x"), parse("log y ~ x")))
+    assert done.choice.key == wanted

@@ -15,10 +15,12 @@ from batten.families.base import Link
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 
-__all__ = ["Candidate", "Choice", "Gap", "choose", "gaps"]
+__all__ = ["ROUNDING", "Candidate", "Choice", "Gap", "choose", "gaps"]
 
 #: gaps under this share of the best error are ties whatever their standard error
 NEAR = 0.01
+#: errors under this share of the SD of y are rounding
+ROUNDING = 1e-9
 #: gaps over this share of the best error are never ties: where one row makes both the gap and its standard error huge,
 #: the corrected rule alone would call an error ten times the best "tied"
 FAR = 0.5
@@ -68,6 +70,8 @@ def gaps(candidates: Mapping[str, Candidate], folds: int) -> dict[str, Gap]:
     """Gap of each remedy to the best, from the same splits (Nadeau and Bengio 2003)."""
     best = min(candidates.values(), key=lambda c: c.scores.rmse)
     low = best.scores.rmse
+    # perfect fits differ by rounding alone
+    nothing = ROUNDING * float(np.std(best.estimate.rows.y))
     out = {}
     for key, c in candidates.items():
         behind = c.scores.rmse - low
@@ -75,7 +79,7 @@ def gaps(candidates: Mapping[str, Candidate], folds: int) -> dict[str, Gap]:
         both = c.scores.rmse + low
         # a mean squared difference d is (rmse - low)(rmse + low): the same division brings its error to units of y
         error = corrected_se(d, folds) / both if both > 0 and key != best.key else 0.0
-        close = behind <= NEAR * low or (behind <= error and behind <= FAR * low)
+        close = behind <= max(NEAR * low, nothing) or (behind <= error and behind <= FAR * low)
         out[key] = Gap(behind, error, bool(close or key == best.key))
     return out
 
