@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -89,10 +89,15 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
     ])  # fmt: skip
 
 
-def agrees(written: Written, data: pd.DataFrame, *, rtol: float = 1e-9, after: str = "") -> Ran:
-    """Run the script under both formula engines; its numbers are the estimate's, and the frame is left alone."""
-    for engine in ENGINES:
-        ran = run_script(written.source, {written.problem.frame_name: data}, engine, after=after)
+def agrees(
+    written: Written, data: pd.DataFrame, *, rtol: float = 1e-9, after: str = "", engines: Sequence[str] = ENGINES
+) -> Ran:
+    """Run the script under the formula engines; its numbers are the estimate's, and the frame is left alone.
+
+    The picture is drawn once.
+    """
+    for i, engine in enumerate(engines):
+        ran = run_script(written.source, {written.problem.frame_name: data}, engine, after=after, draw=i == 0)
         assert not ran.error, f"{engine}\n{written.source}\n{ran.error}"
         assert not ran.changed, ran.changed
         np.testing.assert_allclose(ran.names["got"], written.want, rtol=rtol, err_msg=written.source)

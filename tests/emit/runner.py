@@ -35,15 +35,18 @@ class Ran:
     changed: tuple[str, ...] = ()
 
 
-def run_script(source: str, frames: Mapping[str, Any], engine: str = "patsy", *, after: str = "") -> Ran:
+def run_script(
+    source: str, frames: Mapping[str, Any], engine: str = "patsy", *, after: str = "", draw: bool = True
+) -> Ran:
     """Execute a script where `frames` exist by name, under one of statsmodels' formula engines.
 
-    after: further code for the script's namespace, to ask its functions something.
+    after: further code for the script's namespace, to ask its functions something. draw: whether pictures are really
+    drawn, which takes half of the time.
     """
     server = _server()
     assert server.stdin is not None
     assert server.stdout is not None
-    _send(server.stdin, (source, dict(frames), engine, after))
+    _send(server.stdin, (source, dict(frames), engine, after, draw))
     return Ran(**_receive(server.stdout))
 
 
@@ -101,7 +104,7 @@ def _serve() -> None:
     for library in ("matplotlib.pyplot", "scipy.interpolate", "statsmodels.api", "statsmodels.formula.api"):
         import_module(library)  # once, for all children
     for engine in ENGINES:
-        _execute(_FIRST, {}, engine, "")  # what libraries load at first use
+        _execute(_FIRST, {}, engine, "", True)  # what libraries load at first use
     sys.modules["batten"] = None  # type: ignore[assignment]  # a script must never need it
     channel = os.fdopen(os.dup(1), "wb")
     os.dup2(2, 1)  # what anything prints must not get between the answers
@@ -127,7 +130,7 @@ def _serve() -> None:
         _send(channel, result)
 
 
-def _execute(source: str, frames: dict[str, Any], engine: str, after: str) -> dict[str, Any]:
+def _execute(source: str, frames: dict[str, Any], engine: str, after: str, draw: bool) -> dict[str, Any]:
     import contextlib
     import io
     import traceback
@@ -136,6 +139,8 @@ def _execute(source: str, frames: dict[str, Any], engine: str, after: str) -> di
     import statsmodels.formula
 
     statsmodels.formula.options.formula_engine = engine
+    if not draw:
+        _draw_nothing()
     before = {name: pickle.dumps(frame) for name, frame in frames.items()}
     space: dict[str, Any] = {"__name__": "__main__", **frames}
     printed, error = io.StringIO(), ""
@@ -149,6 +154,15 @@ def _execute(source: str, frames: dict[str, Any], engine: str, after: str) -> di
     changed = tuple(name for name, old in before.items() if pickle.dumps(frames[name]) != old)
     moved = tuple(name for name in frames if space.get(name) is not frames[name])
     return {"error": error, "names": _plain(space), "printed": printed.getvalue(), "changed": changed + moved}
+
+
+def _draw_nothing() -> None:
+    """In this process, pictures take any call and stay empty."""
+    from unittest.mock import MagicMock
+
+    import pandas as pd
+
+    pd.DataFrame.plot = MagicMock()  # type: ignore[assignment,method-assign]
 
 
 def _plain(space: dict[str, Any]) -> dict[str, Any]:

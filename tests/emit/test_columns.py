@@ -9,17 +9,28 @@ import numpy as np
 import pandas as pd
 import pytest
 from cases import agrees, foundry, write
-from runner import run_script
+from runner import ENGINES, run_script
 
 HOSTILE = ["melt temperature", "<b>bold</b>", 'say "hi"', "it's", "C", "Q", "I", "np", "x", "y", "class", "μ", "a\nb",
            "\\path", "$cost$", "lambda", "rows", "{brace}", "1st", "  ", "T95", "größe", "log", "e"]  # fmt: skip
 
 
-@pytest.mark.parametrize("name", HOSTILE)
-def test_a_column_may_have_any_name(name: str) -> None:
+@pytest.mark.parametrize(
+    "name", ["melt temperature", 'say "hi"', "C", "np", "μ", "a\nb", "\\path", "$cost$", "{brace}"]
+)
+def test_the_focal_predictor_may_have_any_name(name: str) -> None:
     data = foundry(50).rename(columns={"mass_kg": name})
     written = write("log y ~ log x", f"minutes ~ Q({name!r}) + alloy", data, focus=name)
-    agrees(written, data)
+    agrees(written, data, engines=_one(name))
+
+
+def test_covariates_may_have_any_name() -> None:
+    data, rng = foundry(60), np.random.default_rng(5)
+    for name in HOSTILE:
+        data[name] = rng.normal(size=60)
+    data["group"] = data["alloy"]
+    formula = "minutes ~ mass_kg + group + " + " + ".join(f"Q({name!r})" for name in HOSTILE)
+    agrees(write("log y ~ poly2 x", formula, data), data)
 
 
 @pytest.mark.parametrize("name", ["C", "np", "two words", "columns", "μ", "a\nb"])
@@ -29,12 +40,17 @@ def test_response_and_group_may_have_any_name(name: str) -> None:
     agrees(written, data)
 
 
+def _one(what: object) -> tuple[str, ...]:
+    """One of the engines, by turns, where the engine is not the point."""
+    return (ENGINES[len(str(what)) % 2],)
+
+
 def test_the_frame_may_be_called_like_anything_in_the_script() -> None:
     data = foundry(50)
     for name in ["rows", "fit", "np", "pd", "X", "e", "columns", "x", "SPAN", "effect", "T95", "frame", "K", "at"]:
         written = write("y ~ x^p" if name == "K" else "log y ~ spline4 x", "minutes ~ mass_kg + depth", data,
                         frame_name=name)  # fmt: skip
-        agrees(written, data)
+        agrees(written, data, engines=_one(name))
 
 
 def test_plain_identifiers_stay_readable() -> None:
@@ -67,7 +83,7 @@ def test_numbers_may_be_stored_in_any_way(kind: str) -> None:
         data.loc[[3, 9], "mass_kg"] = [" ", None]
         data.loc[4, "minutes"] = ""
     written = write("log y ~ poly2 x", "minutes ~ mass_kg + depth", data)
-    agrees(written, data)
+    agrees(written, data, engines=_one(kind))
 
 
 @pytest.mark.parametrize("kind", ["text", "categories", "numbers", "halves", "yes/no", "yes/no and missing", "dates"])
@@ -96,8 +112,8 @@ def test_dates_count_in_days_from_the_first() -> None:
         data["day"].astype("datetime64[s]"),
     ):
         frame = data.assign(day=stored)
-        agrees(write("log y ~ poly2 x", "minutes ~ day + alloy", frame, focus="day"), frame)
-        agrees(write("log y ~ x", "minutes ~ mass_kg + day", frame), frame)
+        agrees(write("log y ~ poly2 x", "minutes ~ day + alloy", frame, focus="day"), frame, engines=ENGINES[:1])
+        agrees(write("log y ~ x", "minutes ~ mass_kg + day", frame), frame, engines=ENGINES[1:])
 
 
 def test_a_repeated_index_does_not_mix_rows() -> None:
@@ -218,8 +234,9 @@ def test_columns_that_repeat_others_are_left_out_as_in_the_analysis() -> None:
 def test_covariates_can_be_held_at_values() -> None:
     data = foundry(80).assign(hot=lambda d: d["depth"] > 10)
     for at in ({"alloy": "steel"}, {"alloy": "bronze", "depth": "9.5"}, {"hot": "yes"}):
-        agrees(write("log y ~ spline3 x", "minutes ~ mass_kg * alloy + depth + hot", data, at=at), data)
-        agrees(write("sqrt y ~ x", "minutes ~ mass_kg + alloy + depth + hot", data, at=at, errors="constant"), data)
+        formula = "minutes ~ mass_kg * alloy + depth + hot"
+        agrees(write("log y ~ spline3 x", formula, data, at=at), data, engines=ENGINES[:1])
+        agrees(write("sqrt y ~ x", formula, data, at=at, errors="constant"), data, engines=ENGINES[1:])
 
 
 def test_unseen_levels_and_missing_values_are_predicted_as_missing() -> None:

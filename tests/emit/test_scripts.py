@@ -80,15 +80,15 @@ def test_many_rows_use_influence_and_few_rows_the_t_interval(errors: str) -> Non
         written = write(key, formula, many, errors=errors)
         assert "leaving out each row" not in written.source
         # gradients are central differences in the fit, exact in the script
-        agrees(written, many, rtol=1e-7)
-        agrees(write(key, formula, few, errors=errors), few)
+        agrees(written, many, rtol=1e-7, engines=ENGINES[:1])
+        agrees(write(key, formula, few, errors=errors), few, engines=ENGINES[1:])
 
 
 def test_other_levels() -> None:
     data = foundry(60)
     for level in (0.8, 0.9, 0.99, 0.999):
         for key in ("log y ~ x", "loglink y ~ x"):
-            agrees(write(key, FORMULA, data, level=level), data)
+            agrees(write(key, FORMULA, data, level=level), data, engines=ENGINES[:1])
 
 
 def test_a_row_alone_in_its_group_cannot_be_left_out() -> None:
