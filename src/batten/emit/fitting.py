@@ -8,7 +8,7 @@ from batten.emit.parts import Parts
 from batten.emit.powers import power_moves
 from batten.emit.text import WIDTH, literal, noted, wrapped
 
-__all__ = ["chosen", "fitting"]
+__all__ = ["fitting"]
 
 #: family, square root of the variance, square root of the working weight (in mu)
 _LINKS = {
@@ -19,9 +19,9 @@ _LINKS = {
 }
 
 
-def chosen(parts: Parts) -> str:
+def _chosen(parts: Parts) -> str:
     """The expression given with --rows, or ""."""
-    for why in parts.problem.left_out["why"]:
+    for why in parts.problem.left_out["why"].unique():
         found = str(why).partition("not in --rows ")[2]
         if found:
             return found
@@ -35,13 +35,15 @@ def fitting(parts: Parts) -> list[str]:
 
 def _rows(parts: Parts) -> list[str]:
     response, lines, data = parts.problem.response, [], parts.frame
-    if chosen(parts):
+    if _chosen(parts):
         data = "data"
-        lines = wrapped(f"data = {parts.frame}.query({literal(chosen(parts))})")
+        lines = wrapped(f"data = {parts.frame}.query({literal(_chosen(parts))})")
     text = any(f"{response} (stored as text)" in said for said in parts.problem.announcements)
     source = read_numbers(response, data, text=text)
     made = f"rows = columns({data}).assign(y={source}.to_numpy())"
-    finite = any("finite" in str(why) for why in parts.problem.left_out["why"])  # infinite; not a finite number
+    finite = any(
+        "finite" in str(why) for why in parts.problem.left_out["why"].unique()
+    )  # infinite; not a finite number
     clean = ".replace([np.inf, -np.inf], np.nan).dropna()" if finite else ".dropna()"
     if len(made + clean) <= WIDTH:
         lines.append(made + clean)

@@ -9,7 +9,7 @@ from batten.emit.functions import functions
 from batten.emit.parts import Parts, read_parts
 from batten.emit.renaming import without_names
 from batten.emit.span import held_at, span
-from batten.emit.text import PLACE, comment, constant, literal, number, rounded, said, wrapped
+from batten.emit.text import PLACE, WIDTH, comment, constant, literal, number, rounded, said, wrapped
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
@@ -119,8 +119,8 @@ def _model(parts: Parts) -> list[str]:
 
 def _long_string(name: str, text: str) -> list[str]:
     """A string constant, over several lines where it must."""
-    if len(f'{name} = "{text}"') <= 120:
-        return [f'{name} = "{text}"']
+    if len(f"{name} = {literal(text)}") <= WIDTH:
+        return [f"{name} = {literal(text)}"]
     pieces, line = [], ""
     for word in text.split(" "):
         if len(line) + len(word) > 105:
@@ -128,7 +128,7 @@ def _long_string(name: str, text: str) -> list[str]:
             line = ""
         line += f"{word} "
     pieces.append(line.rstrip())
-    return [f"{name} = (", *(f'    "{piece}"' for piece in pieces), ")"]
+    return [f"{name} = (", *(f"    {literal(piece)}" for piece in pieces), ")"]
 
 
 # --- picture ----------------------------------------------------------------------------------------------------------
@@ -160,8 +160,7 @@ def _checks(parts: Parts) -> list[str]:
     got, want = ["len(rows)"], [str(n.rows)]
     if len(n.coef) and not parts.delicate:
         names = [*(parts.columns if len(n.coef) > len(parts.searched) else ()), *parts.searched]
-        chosen = ", ".join(f'"{name}"' for name in names)
-        got.append(f"*np.ravel(table.loc[[{chosen}]])")
+        got.append(f"*np.ravel(table.loc[{literal(names)}])")
         want += [rounded(v) for pair in zip(n.coef, n.error, strict=True) for v in pair]
     if n.smear is not None:
         got.append("smear")
