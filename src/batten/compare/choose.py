@@ -182,7 +182,7 @@ def _otherwise(candidates: Mapping[str, Candidate], chosen: str) -> tuple[tuple[
             {k: -c.scores.overall(c.scores.log_score) for k, c in candidates.items() if c.scores.log_score is not None},
         ),
         (
-            "AICc in units of y",
+            "likelihood with a charge for each constant",
             {k: c.estimate.aicc for k, c in candidates.items() if not isinstance(c.estimate.remedy.left, Link)},
         ),
     ]
