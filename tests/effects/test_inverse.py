@@ -10,7 +10,8 @@ from scipy.stats import t as student
 
 from batten.effects.inverse import x_for
 from batten.effects.lookup import lookup, round_places
-from batten.fit.means import averaged_means, interval
+from batten.fit.averaged import interval
+from batten.fit.means import averaged_means
 
 A, B = rows_of(A_X, A_Y, A_D), rows_of(B_X, B_Y)
 

@@ -120,7 +120,12 @@ def test_things_with_several_rows_each_are_asked_about() -> None:
     data = DATA.assign(machine=machine, bed_id=np.tile(np.arange(40), 3), count=np.tile(np.arange(40), 3))
     assert said("y ~ x + z", data) == (repeated("machine (12 in 120 rows), bed_id (40 in 120 rows)"),)
     assert said("y ~ x + C(machine)", data[["y", "x", "machine"]]) == (repeated("machine (12 in 120 rows)"),)
-    assert said("y ~ x + z", data, cluster="machine") == ()
+    assert said("y ~ x + z", data, cluster="machine") == (
+        "12 clusters by machine; intervals and folds keep each together.",
+    )
+    assert said("y ~ x + z", data.assign(hall=np.repeat([1, 2], 60)), cluster="hall") == (
+        "2 clusters by hall; intervals and folds keep each together. That is few: intervals by cluster need about 10.",
+    )
     assert said("y ~ x + z", data.assign(machine=machine.repeat(1))[["y", "x", "z", "count"]]) == ()
 
 

@@ -25,16 +25,28 @@ DATA = pd.DataFrame(
 
 
 def test_variance_weights_come_through() -> None:
-    rows = read("y ~ x", DATA, weights="w", weights_kind="variance").rows
-    np.testing.assert_array_equal(rows.weights, DATA["w"])
-    assert (rows.weights_kind, rows.n) == ("variance", N)
+    problem = read("y ~ x", DATA, weights="w", weights_kind="variance")
+    np.testing.assert_allclose(problem.rows.weights, DATA["w"] / DATA["w"].mean(), rtol=1e-15)
+    assert (problem.rows.count, problem.average_weight) == (N, DATA["w"].mean())
+    said = "Weighted by w: errors, spreads and intervals for a new row are those of a row of average weight"
+    assert any(text.startswith(said) for text in problem.announcements)
 
 
 def test_frequency_weights_leave_out_rows_that_count_for_none() -> None:
     problem = read("y ~ x", DATA, weights="times", weights_kind="frequency")
     assert set(problem.left_out["why"]) == {"times is 0"}
-    assert (problem.rows.count, problem.rows.n) == (30, 60)
-    assert np.asarray(problem.rows.weights).min() == 1
+    assert problem.rows.count == len(problem.index) == 60
+    assert problem.rows.weights is None
+    assert "30 stored rows stand for 60 (times)." in problem.announcements
+
+
+def test_frequency_weights_stand_for_repeated_rows() -> None:
+    repeated = DATA.loc[DATA.index.repeat(DATA["times"])]
+    weighted = read("y ~ x + C(g)", DATA, weights="times", weights_kind="frequency")
+    written = read("y ~ x + C(g)", repeated)
+    for name in ("x", "y", "base", "modifier"):
+        np.testing.assert_array_equal(getattr(weighted.rows, name), getattr(written.rows, name))
+    assert list(weighted.index) == list(repeated.index)
 
 
 def test_clusters_are_numbered_in_natural_order_whatever_the_order_of_rows() -> None:
@@ -46,9 +58,12 @@ def test_clusters_are_numbered_in_natural_order_whatever_the_order_of_rows() -> 
     np.testing.assert_array_equal(whole.cluster, DATA["line"] - 1)
 
 
-def test_exposure_becomes_a_log_offset() -> None:
-    rows = read("y ~ x", DATA, exposure="hours").rows
-    np.testing.assert_array_equal(rows.offset, np.log(DATA["hours"]))
+def test_with_an_exposure_the_response_is_a_rate_weighted_by_it() -> None:
+    problem = read("y ~ x", DATA, exposure="hours", units={"y": "stops", "hours": "h"})
+    np.testing.assert_array_equal(problem.rows.y, DATA["y"] / DATA["hours"])
+    np.testing.assert_allclose(problem.rows.weights, DATA["hours"] / DATA["hours"].mean(), rtol=1e-15)
+    assert (problem.response, problem.response_column) == ("y per hours", "y")
+    assert problem.unit("y per hours") == "stops/h"
 
 
 def test_rows_without_them_are_left_out_by_name() -> None:
@@ -56,11 +71,13 @@ def test_rows_without_them_are_left_out_by_name() -> None:
     data.loc["r1", "w"], data.loc["r2", "plant"], data.loc["r3", "hours"], data.loc["r4", "hours"] = (
         np.nan, None, np.nan, np.inf,
     )  # fmt: skip
-    problem = read("y ~ x", data, weights="w", weights_kind="variance", cluster="plant", exposure="hours")
+    problem = read("y ~ x", data, cluster="plant", exposure="hours")
     assert problem.left_out["why"].to_dict() == {
-        "r1": "missing w", "r2": "missing plant", "r3": "missing hours", "r4": "infinite hours",
+        "r2": "missing plant", "r3": "missing hours", "r4": "infinite hours",
     }  # fmt: skip
-    assert problem.rows.count == len(np.asarray(problem.rows.cluster)) == len(np.asarray(problem.rows.offset)) == 36
+    assert problem.rows.count == len(np.asarray(problem.rows.cluster)) == len(np.asarray(problem.rows.weights)) == 37
+    problem = read("y ~ x", data, weights="w", weights_kind="variance")
+    assert problem.left_out["why"].to_dict() == {"r1": "missing w"}
 
 
 REFUSED: dict[str, tuple[dict[str, Any], str]] = {
@@ -108,6 +125,16 @@ REFUSED: dict[str, tuple[dict[str, Any], str]] = {
         "Clusters need at least two.\nAll rows have the same `one`: '7'.\n"
         "Leave the cluster out, or name another column.",
     ),
+    "frequencies beyond memory": (
+        {"weights": "many", "weights_kind": "frequency"},
+        "The frequencies stand for too many rows.\n`many` adds up to 40,000,000; up to 20,000,000 rows can be written "
+        "out.\nDivide the frequencies by a common factor, or use weights_kind='variance'.",
+    ),
+    "two things that weigh": (
+        {"weights": "w", "weights_kind": "variance", "exposure": "hours"},
+        "Weights of variance and an exposure cannot be given together.\n"
+        "weights='w' and exposure='hours': an exposure already weighs the rows.\nLeave one of them out.",
+    ),
     "an exposure of zero": (
         {"exposure": "times"},
         "An exposure must be above zero.\n10 of 40 values of `times` are not (lowest 0).\n"
@@ -120,7 +147,7 @@ REFUSED: dict[str, tuple[dict[str, Any], str]] = {
 def test_refusals_say_what_was_seen_and_what_to_do(case: str) -> None:
     options, message = REFUSED[case]
     with pytest.raises(BattenError) as caught:
-        read("y ~ x", DATA.assign(half=0.5, one=7), **options)
+        read("y ~ x", DATA.assign(half=0.5, one=7, many=1_000_000), **options)
     assert str(caught.value) == message
 
 

@@ -213,7 +213,7 @@ def test_a_name_used_twice_is_refused_only_where_it_is_used() -> None:
 
 def test_frequency_weights_decide_what_too_few_means() -> None:
     data = frame().iloc[[0, 1, 2]].assign(count=[2, 2, 2])
-    assert read("minutes ~ mass_kg", data, weights="count", weights_kind="frequency").rows.n == 6
+    assert read("minutes ~ mass_kg", data, weights="count", weights_kind="frequency").rows.count == 6
 
 
 def test_a_group_with_as_many_levels_as_rows_is_refused_before_memory_runs_out() -> None:

@@ -106,7 +106,7 @@ def test_a_formula_runs_over_lines_with_comments_and_uses_the_user_s_functions(
 def test_rows_are_chosen_by_an_expression_that_may_name_variables(run: Run, last: Any) -> None:
     run(f"%%batten castings {QUICK} --rows \"mass_kg < @limit and alloy == 'steel'\"\nminutes ~ mass_kg")
     problem = last().problem
-    assert 5 <= problem.rows.n < 15
+    assert 5 <= problem.rows.count < 15
     assert problem.rows.x.max() < 30
 
 
@@ -144,7 +144,7 @@ def test_other_tables_and_dicts_of_columns_are_taken(
     shell.user_ns["castings"] = table(columns)
     _, errors = run(CELL)
     assert errors == ""
-    assert last().problem.rows.n == 30
+    assert last().problem.rows.count == 30
 
 
 def test_in_a_terminal_the_result_is_text_with_the_guess_announced_and_what_to_do_next(run: Run, last: Any) -> None:

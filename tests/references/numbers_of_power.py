@@ -13,7 +13,7 @@ from case_tables import NotDelivered
 from numbers_of_fit import gaussian_deviance
 
 from batten.engine.power import profile_likelihood
-from batten.fit.estimate import scale_power
+from batten.fit.searched import scale_power
 
 __all__ = ["PLACED", "RULES"]
 

@@ -25,7 +25,7 @@ def known_numbers(exam: Examination, *more: float) -> np.ndarray:
     out += [trial.gap, trial.gap_low, trial.gap_high, trial.at, trial.tolerance, trial.f, *trial.df, trial.knots]
     out += [end for stretch in trial.stretches for end in (stretch.low, stretch.high, stretch.size)]
     q, p, c = exam.question, exam.problem, exam.choice
-    out += [*q.span, 100 * q.level, q.seed, p.rows.n, len(p.left_out), p.rows.n + len(p.left_out)]
+    out += [*q.span, 100 * q.level, q.seed, p.rows.count, len(p.left_out), p.rows.count + len(p.left_out)]
     out += [c.tried, len(c.tied), len(c.tied) - 1, len(exam), len(exam.refused), exam.comparison.splits.k]
     out += [len(exam.comparison.splits.fold), 90.0, 1.0]  # the central 90%, ties under 1%
     for sentence in exam.chosen.sentences():

@@ -79,7 +79,7 @@ def compare(
 def _compare(
     rows: Rows, remedies: tuple[Remedy, ...], question: Question, *, unit: str, progress: Progress | None
 ) -> Comparison:
-    repeats = question.repeats or default_repeats(rows.n)
+    repeats = question.repeats or default_repeats(rows.count)
     splits = deal(rows, folds=question.folds, repeats=repeats, seed=question.seed)
     reference = flexible(rows, tolerance=question.tolerance, level=question.level)
     wanted = dict.fromkeys([STRAIGHT, *(r.key for r in remedies)])

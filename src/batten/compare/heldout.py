@@ -13,8 +13,8 @@ from dataclasses import dataclass
 from functools import partial
 
 import numpy as np
-from scipy.special import gammaln
 
+from batten.compare.losses import Split, Trained, losses, losses_together
 from batten.engine.folds import Splits
 from batten.engine.irls import Mean
 from batten.engine.linear import design
@@ -24,10 +24,10 @@ from batten.engine.search import search
 from batten.engine.sets import BLOCK, masks, search_sets, solve_means
 from batten.engine.threads import side_by_side
 from batten.errors import Refusal
-from batten.families.base import Constants, Link, Scale
-from batten.fit.estimate import Estimate, scale_power, searched_model
+from batten.families.base import Constants, Link
+from batten.fit.estimate import Estimate
 from batten.fit.guard import meets_constant
-from batten.fit.smear import mean_of
+from batten.fit.searched import scale_power, searched_model, weighted_design
 
 __all__ = ["HeldOut", "held_out"]
 
@@ -41,8 +41,8 @@ ONE_STEP_ROWS = 20_000
 class HeldOut:
     """Mean losses of every split (S,): squared and absolute error in units of y, share within 10%, log score.
 
-    squared belongs to the mean, absolute to the median. log_score is None for a pseudo-likelihood. rows (S,): held-out
-    rows of each split.
+    squared belongs to the mean, absolute to the median; errors are those of a row of average weight, sqrt(w) times the
+    row's own. log_score is None for a pseudo-likelihood. rows (S,): held-out rows of each split.
     """
 
     squared: Array
@@ -60,33 +60,13 @@ class HeldOut:
         return float(np.sqrt(self.overall(self.squared)))
 
 
-@dataclass(frozen=True, eq=False)
-class _Split:
-    """Training rows, held-out rows, and the training rows' x in rising order."""
-
-    train: Ints
-    test: Ints
-    sorted_x: Array
-
-
-@dataclass(frozen=True, eq=False)
-class _Trained:
-    """One training set's fit: linear predictor of all rows (n,), the scale's constants, and v = x0'(X'X)^-1 x0 of the
-    held-out rows."""
-
-    eta: Array
-    c: Constants
-    v: Array
-    columns: int
-
-
 def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusal]:
     """Scores of every estimate on the same splits, in the order given."""
     if not estimates:
         return []
     rows = estimates[0].rows
     # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
-    sets = [_Split(train, test, np.sort(rows.x[train])) for train, test in splits.sets]
+    sets = [Split(train, test, np.sort(rows.x[train])) for train, test in splits.sets]
     members: list[list[int]] = []
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
@@ -108,7 +88,7 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     return [found[i] for i in range(len(estimates))]
 
 
-def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Refusal]:
+def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Refusal]:
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
     precondition = group[0].factored.root
@@ -116,7 +96,7 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
     width = len(precondition)
-    trained: list[list[_Trained]] = [[] for _ in group]
+    trained: list[list[Trained]] = [[] for _ in group]
     z_fixed = np.column_stack([np.zeros(rows.count) if est.scale.searched else est.z for est in group])
     bases, inverses, powers = [], [], any(est.scale.searched for est in group)
     cross = right = np.empty((0, 0))
@@ -126,7 +106,7 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
             columns = shape.columns(rows.x, states[s])
             if columns.shape[1] * rows.modifier.shape[1] + rows.base.shape[1] != width:
                 return [_fewer(shape.key)] * len(group)
-            basis = design(rows, columns) @ precondition
+            basis = rows.weigh(design(rows, columns) @ precondition)
         held = basis[test]
         if whole is None or not len(cross):
             cross, right = basis.T @ basis, basis.T @ z_fixed
@@ -136,7 +116,7 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
         eta = basis @ (inverse @ (right - held.T @ z_fixed[test]))
         v = np.einsum("ij,jk,ik->i", held, inverse, held)
         for j, est in enumerate(group):
-            trained[j].append(_Trained(eta[:, j], est.c, v, width))
+            trained[j].append(Trained(eta[:, j], est.c, v, width))
         bases += [basis] if powers else []
         inverses.append(inverse)
     return [
@@ -146,10 +126,11 @@ def _score_group(group: list[Estimate], sets: list[_Split]) -> list[HeldOut | Re
 
 
 def _with_powers(
-    est: Estimate, sets: list[_Split], fits: list[_Trained], bases: list[Array], inverses: list[Array]
-) -> Iterator[_Trained | Refusal]:
+    est: Estimate, sets: list[Split], fits: list[Trained], bases: list[Array], inverses: list[Array]
+) -> Iterator[Trained | Refusal]:
     """The power of y learned again in every training set, and the fit at it."""
-    y, power, shared = est.rows.y, scale_power(est.scale), bases[0] is bases[-1]
+    rows, shared = est.rows, bases[0] is bases[-1]
+    y, power = rows.y, scale_power(est.scale, rows)
     found = fold_powers(power, y, bases[0], inverses, [split.test for split in sets], est.c[0]) if shared else None
     for s, (split, fit) in enumerate(zip(sets, fits, strict=True)):
         train = split.train
@@ -157,19 +138,20 @@ def _with_powers(
             c, inside = float(found[s]), True
         else:
             root = np.linalg.cholesky(inverses[s])
-            c, inside = best_power(power, y[train], bases[s][train] @ root, start=est.c[0])
+            part = scale_power(est.scale, rows.take(train))
+            c, inside = best_power(part, y[train], bases[s][train] @ root, start=est.c[0])
         if not inside:
             yield Refusal(
                 "The power of y is not settled in every training set.", f"It runs to {c:.3g} in one of them.",
                 "A named scale: log y, sqrt y or 1/y.",
             )  # fmt: skip
             return
-        z = est.scale.forward(y, (c,))
+        z = rows.weigh(est.scale.forward(y, (c,)))
         eta = bases[s] @ (inverses[s] @ (bases[s][train].T @ z[train]))
-        yield _Trained(eta, (c,), fit.v, fit.columns)
+        yield Trained(eta, (c,), fit.v, fit.columns)
 
 
-def _searched_fits(est: Estimate, sets: list[_Split]) -> Iterator[_Trained | Refusal]:
+def _searched_fits(est: Estimate, sets: list[Split]) -> Iterator[Trained | Refusal]:
     """Shapes with constants of their own, searched again in each training set."""
     rows, shape = est.rows, est.shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
@@ -182,15 +164,16 @@ def _searched_fits(est: Estimate, sets: list[_Split]) -> Iterator[_Trained | Ref
     for s, split in enumerate(sets):
         train, test = split.train, split.test
         theta, c = (thetas[s], est.c) if thetas is not None else _own_search(est, rows.take(train), states[s])
-        x = design(rows, shape.columns(rows.x, states[s], tuple(theta)), own_level=shape.own_level)
-        fitted = _least_squares(x, est.z if c == est.c else est.scale.forward(rows.y, c), root, test)
+        x = weighted_design(rows, shape, states[s], tuple(theta))
+        z = est.z if c == est.c else rows.weigh(est.scale.forward(rows.y, c))
+        fitted = _least_squares(x, z, root, test)
         if fitted is None:
             yield _rank(shape.key)
             return
-        yield _Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
+        yield Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
 
 
-def _shared_search(est: Estimate, sets: list[_Split]) -> Array:
+def _shared_search(est: Estimate, sets: list[Split]) -> Array:
     """Best constants of every training set (S, q), all sets at once as far as memory allows."""
     held = [split.test for split in sets]
     if est.n > ONE_STEP_ROWS and est.moving:
@@ -223,12 +206,12 @@ def _own_search(est: Estimate, part: Rows, state: Constants) -> tuple[Array, Con
     model = searched_model(part, est.shape, state)
     c, theta = est.c, np.array(est.theta)
     for _ in range(8 if est.scale.searched else 1):
-        found = search(model, est.scale.forward(part.y, c), start=theta, precision=1e-9)
+        found = search(model, part.weigh(est.scale.forward(part.y, c)), start=theta, precision=1e-9)
         moved, theta = np.abs(found.theta - theta).max(), found.theta
         if not est.scale.searched:
             break
         q = np.linalg.qr(np.hstack([model.fixed, model.columns(theta)]))[0]
-        c = (best_power(scale_power(est.scale), part.y, q, start=c[0])[0],)
+        c = (best_power(scale_power(est.scale, part), part.y, q, start=c[0])[0],)
         if moved < 1e-8 * max(1.0, float(np.abs(theta).max())):
             break
     return theta, c
@@ -248,7 +231,7 @@ def _least_squares(x: Array, z: Array, root: Array, test: Ints) -> tuple[Array, 
     return eta, np.einsum("ij,jk,ik->i", held, inverse, held)
 
 
-def _score(est: Estimate, sets: list[_Split], fits: Iterator[_Trained | Refusal]) -> HeldOut | Refusal:
+def _score(est: Estimate, sets: list[Split], fits: Iterator[Trained | Refusal]) -> HeldOut | Refusal:
     """Losses of one remedy on a transformed (or plain) response; sets of equal size are scored together."""
     out = np.empty((4, len(sets)))
     for members in _alike(sets, est.n):
@@ -256,88 +239,25 @@ def _score(est: Estimate, sets: list[_Split], fits: Iterator[_Trained | Refusal]
         refusal = next((fit for fit in trained if isinstance(fit, Refusal)), None)
         if refusal is not None:
             return refusal
-        some = [(place, fit) for place, fit in zip(members, trained, strict=True) if isinstance(fit, _Trained)]
+        some = [(place, fit) for place, fit in zip(members, trained, strict=True) if isinstance(fit, Trained)]
         for size in {len(sets[place].test) for place in members}:
             same = [(place, fit) for place, fit in some if len(sets[place].test) == size]
-            losses = _losses_together(est, [sets[place] for place, _ in same], [fit for _, fit in same])
+            losses = losses_together(est, [sets[place] for place, _ in same], [fit for _, fit in same])
             if losses is None:
                 return _unsafe(est)
             out[:, [place for place, _ in same]] = losses
     return HeldOut(out[0], out[1], out[2], out[3], np.array([len(split.test) for split in sets]))
 
 
-def _alike(sets: list[_Split], n: int) -> list[list[int]]:
+def _alike(sets: list[Split], n: int) -> list[list[int]]:
     """Which sets are held in memory together: all of them at small n, else one by one."""
     everything = list(range(len(sets)))
     return [everything] if n * len(sets) <= BLOCK else [[place] for place in everything]
 
 
-def _losses_together(est: Estimate, sets: list[_Split], fits: list[_Trained]) -> Array | None:
-    """Squared and absolute error, share within 10% and log score of sets of one size (4, S), or None where one of them
-    has no finite mean."""
-    scale, y = est.scale, est.rows.y
-    train, test = np.stack([split.train for split in sets]), np.stack([split.test for split in sets])
-    c = [fit.c for fit in fits]
-    moved = any(constants != est.c for constants in c)
-    z = np.stack([scale.forward(y, constants) for constants in c]) if moved else est.z[None]
-    z = np.broadcast_to(z, (len(sets), est.n))
-    every = np.stack([fit.eta for fit in fits])
-    eta = np.take_along_axis(every, test, axis=1)
-    residual = np.take_along_axis(z, train, axis=1) - np.take_along_axis(every, train, axis=1)
-    if not _sound(scale, c, eta, residual):
-        return None
-    middle = eta + np.median(residual, axis=1)[:, None]
-    with np.errstate(all="ignore"):
-        mean = mean_of(scale, c, eta, residual)
-        median = np.stack([scale.inverse(row, k) for row, k in zip(middle, c, strict=True)])
-    if not np.isfinite(mean).all():
-        return None
-    df = train.shape[1] - np.array([fit.columns for fit in fits])
-    jacobian = np.stack([scale.log_jacobian(y[rows], k) for rows, k in zip(test, c, strict=True)])
-    score = _log_t(np.take_along_axis(z, test, axis=1) - eta, residual, np.stack([fit.v for fit in fits]), df)
-    return np.vstack([_losses(y[test], mean, median), (score + jacobian).mean(axis=1)])
-
-
-def _sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
-    """Whether every eta, and every pair eta + e, can be brought back in every set.
-
-    A closed boundary is kept to; an open one, where the inverse is infinite, must not be reached.
-    """
-    for k, low_eta, high_eta, low_e, high_e in zip(
-        c, eta.min(axis=1), eta.max(axis=1), residual.min(axis=1), residual.max(axis=1), strict=True
-    ):
-        low, high = scale.limits(k)
-        if not low_eta > low or not high_eta < high:
-            return False
-        edges = [low] if low_eta + low_e <= low else []
-        edges += [high] if high_eta + high_e >= high else []
-        with np.errstate(all="ignore"):
-            if not all(np.isfinite(scale.inverse(np.array([edge]), k)[0]) for edge in edges):
-                return False
-    return True
-
-
-def _losses(y: Array, mean: Array, median: Array) -> Array:
-    """Mean losses over the last axis: (..., n) -> (3, ...)."""
-    return np.array([
-        ((y - mean) ** 2).mean(axis=-1), np.abs(y - median).mean(axis=-1),
-        (np.abs(y - mean) <= 0.1 * np.abs(y)).mean(axis=-1),
-    ])  # fmt: skip
-
-
-def _log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
-    """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance."""
-    d = df[:, None]
-    variance = ((residual**2).sum(axis=1) / df)[:, None] * (1 + v)
-    return np.asarray(
-        gammaln((d + 1) / 2) - gammaln(d / 2) - 0.5 * np.log(d * np.pi * variance)
-        - (d + 1) / 2 * np.log1p(error**2 / (variance * d))
-    )  # fmt: skip
-
-
-def _score_link(est: Estimate, sets: list[_Split]) -> HeldOut | Refusal:
+def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
     """Losses of a mean model; its median is the mean times the median of y / mu."""
-    rows, shape, link = est.rows, est.shape, est.link
+    rows, shape, link, root = est.rows, est.shape, est.link, est.rows.root_weight
     assert isinstance(link, Link)
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     steps = 1 if rows.count > FULL_STEPS_ROWS else 30
@@ -354,7 +274,8 @@ def _score_link(est: Estimate, sets: list[_Split]) -> HeldOut | Refusal:
             for state in (states[:1] if shared else states)
         ])  # fmt: skip
         mask = masks(rows.count, [split.test for split in some])
-        done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, offset=rows.offset, steps=steps)
+        mask = mask if rows.weights is None else mask * rows.weights
+        done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, steps=steps)
         if (steps > 1 and not done.settled.all()) or not np.isfinite(done.eta).all():
             return _rank(shape.key)
         mu = link.mean(done.eta)
@@ -362,8 +283,8 @@ def _score_link(est: Estimate, sets: list[_Split]) -> HeldOut | Refusal:
             return _unsafe(est)
         for s, split in enumerate(some):
             train, test = split.train, split.test
-            median = float(np.median(rows.y[train] / mu[s, train]))
-            out[:, first + s] = _losses(rows.y[test], mu[s, test], mu[s, test] * median)
+            median = float(np.median(1 + root[train] * (rows.y[train] / mu[s, train] - 1)))
+            out[:, first + s] = losses(rows.y[test], mu[s, test], mu[s, test] * median, rows.weights, test)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
 
 

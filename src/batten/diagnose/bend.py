@@ -18,8 +18,9 @@ from batten.errors import Refusal
 from batten.families.remedy import Remedy
 from batten.families.scales.identity import Identity
 from batten.families.shapes.spline import Spline
+from batten.fit.averaged import Averaged
 from batten.fit.estimate import Estimate, estimate
-from batten.fit.means import Averaged, averaged_means
+from batten.fit.means import averaged_means
 
 __all__ = ["Bend", "Flexible", "bend_of", "flexible", "knots_for"]
 
@@ -81,7 +82,7 @@ def flexible(rows: Rows, *, tolerance: float | None, level: float = 0.95) -> Fle
     """Fit the reference curve. tolerance: smallest gap that matters, units of y; None: a quarter of its residual SD."""
     low, high = np.quantile(rows.x, [0.05, 0.95])
     places = np.linspace(low, high, PLACES)
-    for knots in range(knots_for(rows.n), 2, -1):
+    for knots in range(knots_for(rows.count), 2, -1):
         est = estimate(rows, Remedy(Identity(), Spline(knots)))
         if not isinstance(est, Refusal):
             break
@@ -100,17 +101,17 @@ _NO_TEST: tuple[float, float, tuple[int, int]] = (float("nan"), float("nan"), (0
 
 
 def _add_on(est: Estimate) -> tuple[float, float, tuple[int, int]]:
-    """Robust Wald test of the bending columns of every modifier."""
+    """Robust (or cluster) Wald test of the bending columns of every modifier."""
     k, m = len(est.state) - 1, est.rows.modifier.shape[1]
     first = len(est.coef) - k * m
     bending = [first + block * k + j for block in range(m) for j in range(1, k)]
     b = est.coef[bending]
     v = est.covariance("robust")[np.ix_(bending, bending)]
     size = np.sqrt(np.diagonal(v))
-    if not (size > 0).all():
+    if not (size > 0).all() or len(bending) > est.df_error:  # as many clusters as columns leave no test
         return _NO_TEST
     f = float((b / size) @ np.linalg.solve(v / np.outer(size, size), b / size)) / len(bending)
-    df = (len(bending), est.df_residual)
+    df = (len(bending), est.df_error)
     return f, float(fisher.sf(f, *df)), df
 
 
@@ -134,7 +135,7 @@ def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend 
     error = np.sqrt(np.maximum(np.diagonal(covariance), 0.0))
     # two curves that are the same by algebra differ by rounding alone
     still = error <= 1e-9 * float(np.abs(reference.curve.value).max())
-    width = _critical(covariance[np.ix_(~still, ~still)], level, est.df_residual) * np.where(still, 0.0, error)
+    width = _critical(covariance[np.ix_(~still, ~still)], level, est.df_error) * np.where(still, 0.0, error)
     size = np.abs(gap)
     at = int(np.argmax(size))
     low, high = float(np.maximum(size - width, 0).max()), float((size + width).max())

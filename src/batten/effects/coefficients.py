@@ -24,7 +24,7 @@ class Coefficients:
 
 
 def coefficients(est: Estimate, *, level: float = 0.95, errors: str = "robust") -> Coefficients:
-    """Estimates with t intervals on the residual degrees of freedom.
+    """Estimates with t intervals on the residual degrees of freedom, with clusters on their number less one.
 
     A searched constant of the shape (break, power, K) stands beside the coefficients, whose errors count it; powers
     chosen from a list do not. A searched power of y does not either: coefficients have no meaning across powers
@@ -32,7 +32,7 @@ def coefficients(est: Estimate, *, level: float = 0.95, errors: str = "robust") 
     """
     value = np.append(est.coef, est.theta[: est.moving])
     error = np.sqrt(np.diagonal(_covariance(est, errors))[: len(value)])
-    half = float(student.ppf(0.5 + level / 2, est.df_residual)) * error
+    half = float(student.ppf(0.5 + level / 2, est.df_error)) * error
     return Coefficients(value, error, value - half, value + half)
 
 
@@ -41,5 +41,5 @@ def _covariance(est: Estimate, errors: str) -> Array:
         return est.covariance(errors)
     if errors == "constant":
         return np.asarray(est.factored.inverse_cross * est.sigma**2)
-    moves = est.factored.rows_of_inverse() * (est.residual / (1 - est.leverage))[:, None]
+    moves = est.linear_moves() * est.few_clusters
     return np.asarray(moves.T @ moves)

@@ -15,11 +15,12 @@ from scipy.optimize import minimize
 from scipy.stats import f as fisher
 
 from batten.effects.profile import Profile, profile_of_power, profile_of_shape
-from batten.engine.linear import design, factor, solve
+from batten.engine.linear import factor, solve
 from batten.engine.rows import Array
 from batten.families.base import Code, Constants
 from batten.families.shapes.hinge import Hinge
 from batten.fit.estimate import Estimate
+from batten.fit.searched import weighted_design
 
 __all__ = ["Constant", "learned_constants"]
 
@@ -155,8 +156,7 @@ def _reach(est: Estimate, k: int, side: float, limit: float) -> float:
         theta = np.array(est.theta) + step * errors
         if ((theta < lower) | (theta > upper)).any():
             return np.inf
-        columns = est.shape.columns(est.rows.x, est.state, tuple(theta))
-        X = design(est.rows, columns, own_level=est.shape.own_level)
+        X = weighted_design(est.rows, est.shape, est.state, tuple(theta))
         if not np.isfinite(X).all():
             return np.inf
         linear = factor(X)

@@ -15,9 +15,10 @@ import numpy as np
 
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
+from batten.fit.averaged import Averaged, interval
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import Averaged, averaged_means, interval, target
+from batten.fit.means import averaged_means, target
 from batten.fit.predict import positive_by_nature
 
 __all__ = ["NO_ANSWER", "SpanEffect", "no_interval", "reach_trouble", "same_group", "span_difference", "span_effect"]

@@ -13,8 +13,9 @@ import numpy as np
 from batten.effects.contrast import SpanEffect, span_effect
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
+from batten.fit.averaged import Averaged, interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import Averaged, averaged_means, interval
+from batten.fit.means import averaged_means
 
 __all__ = ["Group", "GroupEffect", "group_effects"]
 

@@ -19,9 +19,10 @@ from batten.effects.classes import Classes, covariate_classes
 from batten.effects.contrast import reach_trouble
 from batten.effects.numbers import about, place, show, show_interval
 from batten.engine.rows import Array
+from batten.fit.averaged import interval
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import averaged_means, interval
+from batten.fit.means import averaged_means
 from batten.fit.predict import positive_by_nature
 
 __all__ = ["Inverse", "x_for"]
@@ -145,7 +146,7 @@ class _Band:
             value[some] = found.value
             error[some] = np.sqrt(found.error**2 + pooled.spread(self.est, xs[some], of=self.of))
             positive = positive and positive_by_nature(self.est, found)
-        reach = float(student.ppf(0.5 + self.level / 2, self.est.df_residual)) * error
+        reach = float(student.ppf(0.5 + self.level / 2, self.est.df_error)) * error
         if positive:
             return value - self.y, value * np.exp(-reach / value) - self.y, value * np.exp(reach / value) - self.y
         return value - self.y, value - reach - self.y, value + reach - self.y

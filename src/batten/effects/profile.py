@@ -14,13 +14,14 @@ from scipy.optimize import brentq
 from scipy.stats import chi2
 from scipy.stats import f as fisher
 
-from batten.engine.linear import design, factor
+from batten.engine.linear import factor
 from batten.engine.power import best_power, profile_likelihood
 from batten.engine.rows import Array
 from batten.engine.search import Searched, refine, scan, search
 from batten.families.base import Constants
 from batten.families.shapes.hinge import Hinge
-from batten.fit.estimate import Estimate, scale_power, searched_model
+from batten.fit.estimate import Estimate
+from batten.fit.searched import scale_power, searched_model, weighted_design
 
 __all__ = ["Profile", "best_given", "profile_of_power", "profile_of_shape"]
 
@@ -69,7 +70,9 @@ def profile_of_power(est: Estimate, *, level: float = 0.95) -> Profile:
         if part.n not in bases:
             bases[part.n] = _basis(part, part.theta)
         q = bases[part.n]
-        here, best = (profile_likelihood(scale_power(part.scale), part.rows.y, q, v) for v in (lam, part.c[0]))
+        here, best = (
+            profile_likelihood(scale_power(part.scale, part.rows), part.rows.y, q, v) for v in (lam, part.c[0])
+        )
         return best - here
 
     lower, upper = est.scale.search()
@@ -138,11 +141,11 @@ def best_given(
     """
     scale, y = est.scale, est.rows.y
     free = c is None and bool(scale.searched)
-    power = scale_power(scale) if scale.searched else None
+    power = scale_power(scale, est.rows) if scale.searched else None
     held = est.c if c is None else c
     theta = est.theta
     for _ in range(4 if free and est.moving else 1):
-        z = scale.forward(y, held)
+        z = est.rows.weigh(scale.forward(y, held))
         if est.moving and (fixed is not None or c is not None):
             theta = _theta_given(est, z, fixed)
         if power is not None and free:
@@ -150,7 +153,7 @@ def best_given(
     q = _basis(est, theta)
     if power is not None:
         return profile_likelihood(power, y, q, held[0]), theta, held
-    z = scale.forward(y, held)
+    z = est.rows.weigh(scale.forward(y, held))
     e = z - q @ (q.T @ z)
     rss = float(e @ e)
     level = -0.5 * len(y) * (np.log(2 * np.pi * rss / len(y)) + 1) if rss > 0 else np.inf
@@ -158,8 +161,7 @@ def best_given(
 
 
 def _basis(est: Estimate, theta: Constants) -> Array:
-    columns = est.shape.columns(est.rows.x, est.state, theta)
-    return factor(design(est.rows, columns, own_level=est.shape.own_level)).q
+    return factor(weighted_design(est.rows, est.shape, est.state, theta)).q
 
 
 def _theta_given(est: Estimate, z: Array, fixed: tuple[int, float] | None) -> Constants:
@@ -255,8 +257,7 @@ def _thinned(est: Estimate) -> Estimate:
 def _listed(est: Estimate, which: int, allowed: float) -> Profile:
     """A constant that can take only the listed values; the others are free."""
     model = searched_model(est.rows, est.shape, est.state)
-    z = est.scale.forward(est.rows.y, est.c)
-    loss = est.n / 2 * np.log(scan(model, z[:, None])[:, 0] / (est.residual @ est.residual))
+    loss = est.n / 2 * np.log(scan(model, est.z[:, None])[:, 0] / (est.residual @ est.residual))
     places = np.unique(model.candidates[:, which])
     lost = np.array([loss[model.candidates[:, which] == place].min() for place in places])
     kept = places[lost <= allowed]

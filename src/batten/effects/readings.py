@@ -79,7 +79,7 @@ def hinge_readings(
     pieces = len(est.state) + len(est.theta) + 1
     first = len(est.coef) - pieces
     V = est.covariance(errors)
-    t, step = float(student.ppf(0.5 + level / 2, est.df_residual)), step_of(*span)
+    t, step = float(student.ppf(0.5 + level / 2, est.df_error)), step_of(*span)
     out = []
     for k in range(pieces):
         line = np.zeros(len(V))

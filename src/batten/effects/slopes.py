@@ -15,8 +15,8 @@ import numpy as np
 from batten.effects.contrast import no_interval, reach_trouble
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array
+from batten.fit.averaged import interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import interval
 from batten.fit.slopes import average_slope, averaged_slopes
 
 __all__ = ["NO_SLOPE", "SlopeAt", "average", "breaks", "slopes_along"]

@@ -24,8 +24,9 @@ from batten.effects.value import Effect, effect_of
 from batten.engine.rows import Array
 from batten.engine.simultaneous import critical
 from batten.families.shapes.polynomial import Polynomial
+from batten.fit.averaged import interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import averaged_means, interval
+from batten.fit.means import averaged_means
 from batten.fit.predict import positive_by_nature
 from batten.fit.slopes import averaged_slopes
 
@@ -152,7 +153,7 @@ def _of_quadratic(est: Estimate, asked: _Asked) -> Turn:
     V = est.covariance(asked.errors)
     i, j = len(est.coef) - 2, len(est.coef) - 1
     b1, b2, v = float(est.coef[i]), float(est.coef[j]), (float(V[i, i]), float(V[i, j]), float(V[j, j]))
-    t = float(student.ppf(0.5 + asked.level / 2, est.df_residual))
+    t = float(student.ppf(0.5 + asked.level / 2, est.df_error))
     found = fieller(b1, b2, v11=v[0], v12=v[1], v22=v[2], critical=t, centre=est.state[0])
     error = delta_std_error(b1, b2, v11=v[0], v12=v[1], v22=v[2]) if b2 else math.nan
     form: Form = "lowest" if b2 * _rising(est) > 0 else "highest"
@@ -210,7 +211,7 @@ def _mean_slopes(
 
 def _ends(est: Estimate, slopes: Callable[[Array], tuple[Array, Array]], asked: _Asked) -> UShape:
     (low, high), (se_low, se_high) = slopes(np.array([asked.low, asked.high]))
-    return u_shape(float(low), float(high), se_low=float(se_low), se_high=float(se_high), df=est.df_residual)
+    return u_shape(float(low), float(high), se_low=float(se_low), se_high=float(se_high), df=est.df_error)
 
 
 def _of_breaks(est: Estimate, asked: _Asked, *, base: Array | None, modifier: Array | None) -> Turn:
@@ -263,10 +264,10 @@ def _of_curve(
     places = np.linspace(asked.low, asked.high, 101)
     if alone:
         J = est.slope_jacobian_at(places, np.repeat(est.rows.modifier[:1], len(places), axis=0))
-        c = critical(J, est.covariance(asked.errors), df=est.df_residual, level=asked.level).value
+        c = critical(J, est.covariance(asked.errors), df=est.df_error, level=asked.level).value
     else:
         root = averaged_slopes(est, places, base=base, modifier=modifier, errors=asked.errors, jackknife=False).root
-        c = critical(np.eye(len(places)), root.T @ root, df=est.df_residual, level=asked.level).value
+        c = critical(np.eye(len(places)), root.T @ root, df=est.df_error, level=asked.level).value
     found = flat_set(slopes, (asked.low, asked.high), critical=c, points=201)
     form: Form = ""
     if len(found.estimates) == 1:

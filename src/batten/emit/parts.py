@@ -118,7 +118,7 @@ class Parts:
 
     @cached_property
     def t_quantile(self) -> float:
-        return float(student.ppf(0.5 + self.question.level / 2, self.est.df_residual))
+        return float(student.ppf(0.5 + self.question.level / 2, self.est.df_error))
 
     @property
     def t_name(self) -> str:

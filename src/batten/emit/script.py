@@ -89,7 +89,7 @@ def _constants(parts: Parts) -> list[str]:
         lines += constant(
             "STEP", number(_step(parts)), "no row lies this close above a break, so slopes in it are exact"
         )
-    meaning = f"t quantile for {parts.percent} on {parts.est.df_residual} degrees of freedom"
+    meaning = f"t quantile for {parts.percent} on {parts.est.df_error} degrees of freedom"
     if _uses_t(parts):
         lines += constant(parts.t_name, number(parts.t_quantile), meaning)
     return [*lines, *_model(parts)]

@@ -25,13 +25,12 @@ class Mean:
 
 @dataclass(frozen=True, eq=False)
 class Solved:
-    """coef (p,), eta, mu (n,), working weights (n,), score residual u = (y - mu) slope / V (n,); whether it settled."""
+    """coef (p,), eta, mu (n,), working weights (n,); whether it settled."""
 
     coef: Array
     eta: Array
     mu: Array
     weight: Array
-    score: Array
     settled: bool
 
 
@@ -42,28 +41,30 @@ def iterate(
     *,
     eta: Array | None = None,
     coef: Array | None = None,
-    offset: Array | None = None,
+    prior: Array | None = None,
     steps: int = 60,
 ) -> Solved:
-    """Fit from a starting eta (n,) or coef (p,); each step is halved until the deviance falls."""
-    off = np.zeros_like(y) if offset is None else offset
+    """Fit from a starting eta (n,) or coef (p,); each step is halved until the deviance falls.
+
+    prior (n,): weights of the rows, the variance being V(mu) / weight; ones when None.
+    """
+    prior = np.ones_like(y) if prior is None else prior
     # in an orthonormal basis the weighted cross-products of every step stay well conditioned
     whole = factor(x)
     unit = whole.q
-    start = x @ coef if coef is not None else (np.zeros_like(y) if eta is None else eta - off)
+    start = x @ coef if coef is not None else (np.zeros_like(y) if eta is None else eta)
     b = unit.T @ start
 
     def deviance(b: Array) -> float:
         with np.errstate(over="ignore", invalid="ignore"):
-            return float(model.deviance(y, model.mean(off + unit @ b)).sum())
+            return float(prior @ model.deviance(y, model.mean(unit @ b)))
 
     now = deviance(b)
     settled = False
     for _ in range(steps):
-        eta = off + unit @ b
+        eta = unit @ b
         mu, slope = model.mean(eta), model.slope(eta)
-        variance = model.variance(mu)
-        weight = slope / variance
+        weight = prior * slope / model.variance(mu)
         cross = unit.T @ (unit * (weight * slope)[:, None])
         values = np.linalg.eigvalsh(cross)
         if not values[0] > 1e-13 * values[-1]:
@@ -77,7 +78,6 @@ def iterate(
         if np.abs(fraction * step).max() <= 1e-11 * max(1.0, float(np.abs(b).max())):
             settled = True
             break
-    eta = off + unit @ b
+    eta = unit @ b
     mu, slope = model.mean(eta), model.slope(eta)
-    variance = model.variance(mu)
-    return Solved(whole.root @ b, eta, mu, slope**2 / variance, (y - mu) * slope / variance, settled)
+    return Solved(whole.root @ b, eta, mu, prior * slope**2 / model.variance(mu), settled)

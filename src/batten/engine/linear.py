@@ -65,10 +65,6 @@ class Factored:
         """(X'X)^-1 in raw units (p, p)."""
         return np.asarray(self.root @ self.root.T)
 
-    def rows_of_inverse(self) -> Array:
-        """x_i' (X'X)^-1 for every row, (n, p)."""
-        return np.asarray(self.q @ self.root.T)
-
 
 def factor(x: Array) -> Factored:
     """QR with columns scaled to unit length; ask `aliased` before using it."""

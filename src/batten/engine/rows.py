@@ -27,8 +27,8 @@ class Rows:
     modifier: columns that multiply the focal predictor (n, m).
     intercept: position of the constant column in `base`, or None.
     constant: whether a constant lies in the span of `base` (true for `C(g) - 1` too).
-    weights: (n,) or None; weights_kind "variance" (Var = s2 / w) or "frequency" (whole numbers).
-    cluster: codes 0..G-1 (n,) or None. offset: log exposure (n,) or None, for log links only.
+    weights: (n,) with mean 1, or None: the error variance of a row is s2 / w, s2 that of a row of average weight.
+    cluster: codes 0..G-1 (n,), every code in use, or None.
     """
 
     y: Array
@@ -38,21 +38,23 @@ class Rows:
     intercept: int | None = 0
     constant: bool = True
     weights: Array | None = None
-    weights_kind: str | None = None
     cluster: Ints | None = None
-    offset: Array | None = None
 
     @property
     def count(self) -> int:
-        """Stored rows (frequency weights not counted)."""
+        """How many rows (frequencies have been written out as repeated rows)."""
         return len(self.y)
 
-    @property
-    def n(self) -> int:
-        """Rows the analysis stands for: the sum of frequency weights, else the stored rows."""
-        if self.weights is not None and self.weights_kind == "frequency":
-            return int(self.weights.sum())
-        return len(self.y)
+    @cached_property
+    def root_weight(self) -> Array:
+        """sqrt(w) (n,), ones without weights: rows times it have errors of one variance."""
+        return np.ones(self.count) if self.weights is None else np.sqrt(self.weights)
+
+    def weigh(self, values: Array) -> Array:
+        """values (n, ...) with every row times sqrt(w)."""
+        if self.weights is None:
+            return values
+        return np.asarray(values * self.root_weight.reshape(-1, *[1] * (values.ndim - 1)))
 
     @cached_property
     def patterns(self) -> tuple[Ints, Array, Ints]:
@@ -72,8 +74,7 @@ class Rows:
 
         return Rows(
             y=self.y[which], x=self.x[which], base=self.base[which], modifier=self.modifier[which],
-            intercept=self.intercept, constant=self.constant, weights_kind=self.weights_kind,
+            intercept=self.intercept, constant=self.constant,
             weights=None if self.weights is None else self.weights[which],
             cluster=None if self.cluster is None else self.cluster[which],
-            offset=None if self.offset is None else self.offset[which],
         )  # fmt: skip

@@ -202,21 +202,19 @@ class TrainedMeans:
     settled: Array
 
 
-def solve_means(
-    model: Mean, x: Array, y: Array, mask: Array, start: Array, *, offset: Array | None = None, steps: int = 30
-) -> TrainedMeans:
+def solve_means(model: Mean, x: Array, y: Array, mask: Array, start: Array, *, steps: int = 30) -> TrainedMeans:
     """Iteratively reweighted least squares in every training set.
 
-    x (n, p), or (S, n, p) where sets have columns of their own. start (p,) or (S, p): coefficients to start from.
+    x (n, p), or (S, n, p) where sets have columns of their own. mask (S, n): weights of the rows, 0 where held out.
+    start (p,) or (S, p): coefficients to start from.
     """
     count, n = mask.shape
     length = np.sqrt((x * x).sum(axis=-2, keepdims=True))
     unit = np.broadcast_to(x / length, (count, n, x.shape[-1]))
     b = np.broadcast_to(start, (count, x.shape[-1])) * length.reshape(-1, x.shape[-1])
-    off = 0.0 if offset is None else offset
 
     def deviance(b: Array) -> tuple[Array, Array]:
-        eta = np.matmul(unit, b[:, :, None])[:, :, 0] + off
+        eta = np.matmul(unit, b[:, :, None])[:, :, 0]
         with np.errstate(all="ignore"):
             return eta, (model.deviance(np.broadcast_to(y, eta.shape), model.mean(eta)) * mask).sum(axis=1)
 

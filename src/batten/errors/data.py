@@ -252,6 +252,37 @@ def frequency_not_whole(name: str, count: int, rows: int, example: float) -> Inp
     )
 
 
+def weights_and_exposure(weights: str, exposure: str) -> InputError:
+    return InputError(
+        "Weights of variance and an exposure cannot be given together.",
+        f"weights={weights!r} and exposure={exposure!r}: an exposure already weighs the rows.",
+        "Leave one of them out.",
+    )
+
+
+def too_many_repeats(name: str, total: float, most: int) -> InputError:
+    return InputError(
+        "The frequencies stand for too many rows.",
+        f"`{name}` adds up to {total:,.0f}; up to {most:,} rows can be written out.",
+        "Divide the frequencies by a common factor, or use weights_kind='variance'.",
+    )
+
+
+def exposure_missing(name: str) -> InputError:
+    return InputError(
+        "A total needs the exposure of every row.",
+        f"The frame has no usable `{name}` in each row that can be predicted.",
+        f"Add the column `{name}`, with values above zero.",
+    )
+
+
+def constant_with_clusters(name: str) -> InputError:
+    return InputError(
+        "Constant errors take rows as independent, clusters say that they are not.",
+        f"errors='constant' and cluster={name!r}.", "Leave one of them out.",
+    )  # fmt: skip
+
+
 def exposure_not_positive(name: str, count: int, rows: int, lowest: float) -> InputError:
     return InputError(
         "An exposure must be above zero.",

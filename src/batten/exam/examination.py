@@ -16,6 +16,7 @@ from batten.compare.grid import STRAIGHT, Comparison, Progress, compare, extend
 from batten.diagnose.trial import Trial, try_line
 from batten.effects.contrast import span_effect
 from batten.effects.span import round_span
+from batten.errors import data as data_errors
 from batten.errors import exam as errors
 from batten.exam.fit import Fit
 from batten.exam.tables import comparison_table, effects_table, refusal_table
@@ -61,7 +62,9 @@ class Examination(Mapping[str, Fit]):
 
     def __repr__(self) -> str:
         p = self._problem
-        return f"<Examination of {p.formula!r}: {len(self)} remedies on {p.rows.n} rows, choice {self.choice.key!r}>"
+        return (
+            f"<Examination of {p.formula!r}: {len(self)} remedies on {p.rows.count} rows, choice {self.choice.key!r}>"
+        )
 
     @property
     def problem(self) -> Problem:
@@ -208,7 +211,9 @@ def examine(
     formula: as statsmodels' formula interface takes it, with a plain response and a plain focal predictor. data: a data
     frame (pandas, polars, Arrow). focus: the predictor whose shape is in question (first bare numeric one by default).
     span: the two x values compared (rounded quartiles). tolerance: the smallest gap that matters, units of y.
-    planned: key of a remedy fixed in advance. only: keys or family names. errors: "robust" (HC3) or "constant".
+    planned: key of a remedy fixed in advance. only: keys or family names. errors: "robust" (HC3; by cluster where
+    `cluster` names a column) or "constant". weights: column of weights, weights_kind "variance" (variance is s2 over
+    the weight) or "frequency" (equal rows each stands for). exposure: column that the response is taken per unit of.
     progress(done, total, label) is called along the way. env: names that functions in the formula may use.
 
     Raises InputError or UnknownNameError, with what is wrong, what was seen and what to do.
@@ -216,7 +221,9 @@ def examine(
     _check_options(
         aim=aim, level=level, tolerance=tolerance, expect=expect, error_kind=errors, folds=folds, repeats=repeats
     )
-    _not_yet(weights=weights, cluster=cluster, exposure=exposure, by=by)
+    _not_yet(by=by)
+    if cluster is not None and errors == "constant":
+        raise data_errors.constant_with_clusters(cluster)
     problem = read(
         formula, data, focus=focus, rows=rows, weights=weights, weights_kind=weights_kind, cluster=cluster,
         exposure=exposure, units=dict(units or {}), env=env, frame_name=frame_name, at=at,
@@ -276,9 +283,6 @@ def _check_options(
 def _not_yet(**options: object) -> None:
     """Options of the contract that come with later work are refused in words, never ignored."""
     instead = {
-        "weights": "Leave weights out; for frequency weights repeat the rows.",
-        "cluster": "Leave cluster out, and read the intervals as if the rows were independent.",
-        "exposure": "Divide the response by the exposure, or put its logarithm among the covariates.",
         "by": "Use rows to examine one group at a time, or an interaction in the formula.",
     }
     for name, value in options.items():

@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
 from batten.effects.checks import checks
 from batten.effects.coefficients import coefficients
@@ -27,6 +28,7 @@ from batten.effects.tell import Names, Sentence
 from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
 from batten.errors import ask
+from batten.errors import data as data_errors
 from batten.errors import exam as errors
 from batten.exam.answers import check_table, effect_table, group_table, lookup_table, slope_table
 from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by
@@ -35,7 +37,7 @@ from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.predict import predict, total
 from batten.fit.question import Question
-from batten.frame.problem import Problem
+from batten.frame.problem import NewRows, Problem
 
 __all__ = ["Fit"]
 
@@ -73,7 +75,7 @@ class Fit:
     @property
     def rows(self) -> int:
         """Rows the fit stands for."""
-        return self.estimate.rows.n
+        return self.estimate.rows.count
 
     @property
     def parameters(self) -> int:
@@ -157,7 +159,7 @@ class Fit:
         if whole.any():
             done = predict(
                 self.estimate, new.x[whole], new.base[whole], new.modifier[whole],
-                of=of, kind=interval, level=level, errors=self.question.errors,
+                of=of, kind=interval, level=level, errors=self.question.errors, weight=_some(new.weight, whole),
             )  # fmt: skip
             out[whole] = np.column_stack([done.estimate, done.low, done.high])
             carried = no_mean_interval(self.estimate) if of == "mean" and interval == "estimate" else ""
@@ -172,6 +174,8 @@ class Fit:
     def total(self, frame: pd.DataFrame, level: float | None = None) -> pd.DataFrame:
         """Sum of the means over a frame's rows: estimate, low, high, shared_error, row_error, rows, note.
 
+        With an exposure each row's mean per unit counts times its exposure, which the frame must have.
+
         shared_error: the fit is the same for all rows; row_error: each row's own spread. Units of y. NaN, with a note,
         where a row cannot be predicted.
         """
@@ -180,13 +184,23 @@ class Fit:
         whole, notes = self._complete(new.x, new.base, new.modifier, new.notes)
         numbers, note = [np.nan] * 5, next((n for n in notes if n), "")
         if whole.all():
-            t = total(self.estimate, new.x, new.base, new.modifier, level=level, errors=self.question.errors)
+            amount = self._amount(new)
+            t = total(
+                self.estimate, new.x, new.base, new.modifier,
+                level=level, errors=self.question.errors, amount=amount, weight=_some(new.weight, whole),
+            )  # fmt: skip
             numbers = [t.estimate, t.low, t.high, t.shared_error, t.row_error]
         else:
             note = f"{int((~whole).sum())} of {len(whole)} rows cannot be predicted: {note}"
         names = ["estimate", "low", "high", "shared_error", "row_error"]
         table = pd.DataFrame([numbers], columns=names, index=["total"])
         return table.assign(rows=len(whole), note=note)
+
+    def _amount(self, new: NewRows) -> Array | None:
+        name = self.problem.beside.exposure
+        if name is not None and (new.exposure is None or not np.isfinite(new.exposure).all()):
+            raise data_errors.exposure_missing(name)
+        return new.exposure
 
     def contrast(self, a: float | None = None, b: float | None = None, of: str = "mean") -> pd.DataFrame:
         """Rows at b against rows at a, covariates alike: difference, ratio, span_slope by estimate, low, high, note.
@@ -371,3 +385,8 @@ def _number(name: str, given: Any, focus: str) -> float:
 
 def _joined(first: str, second: str) -> str:
     return "; ".join(part for part in (first, second) if part)
+
+
+def _some(weight: Array | None, rows: NDArray[np.bool_]) -> Array | None:
+    """Weights of some rows; a missing one counts as average."""
+    return None if weight is None else np.where(np.isfinite(weight), weight, 1.0)[rows]

@@ -7,26 +7,32 @@ from functools import cached_property
 
 import numpy as np
 
+from batten.engine.clusters import OWNS, Clusters
 from batten.engine.irls import Mean, iterate
 from batten.engine.linear import Factored, design, factor, solve
-from batten.engine.power import Power, best_power
+from batten.engine.power import best_power
 from batten.engine.rows import Array, Ints, Rows
-from batten.engine.search import Searched, search
+from batten.engine.search import search
 from batten.engine.threads import MANY_ROWS
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
-from batten.fit.guard import domain_trouble, meets_constant, not_offered, too_few
+from batten.fit.guard import (
+    aliased,
+    domain_trouble,
+    edge,
+    meets_constant,
+    not_offered,
+    not_settled,
+    too_few,
+)  # fmt: skip
 from batten.fit.powers import in_lambda, likelihood_moves, own_units, pivot
+from batten.fit.searched import scale_power, searched_model, weighted_design
 
 #: (shape's key, theta) -> design and its QR, on one set of rows
 Designs = dict[tuple[str, Constants], tuple[Array, Factored]]
 
-__all__ = ["Designs", "Estimate", "estimate", "scale_power", "searched_model"]
-
-
-#: leverage from which a row is taken to own a coefficient
-OWNS = 1 - 1e-8
+__all__ = ["Designs", "Estimate", "estimate"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,10 +40,11 @@ class Estimate:
     """Frozen result of one fit; everything shown, predicted or emitted reads it.
 
     state, theta: the shape's constants (fixed by x; searched). c: the scale's constants.
-    coef (p,): raw-unit coefficients of the design [base | focal columns]. z (n,): response on the fitting scale (y for
-    links). eta (n,): linear predictor. residual (n,): z - eta, for links y - mu. factored: QR of the effective design
-    (coefficients, then theta; weighted for links). leverage (n,). sigma: residual SD on the fitting scale.
-    log_likelihood: in units of y, None for a pseudo-likelihood. parameters: counted ones, sigma included.
+    coef (p,): raw-unit coefficients of the design [base | focal columns]. z (n,): response on the fitting scale times
+    sqrt(w) (y for links). eta (n,): linear predictor. residual (n,): z - sqrt(w) eta, so that of a row of average
+    weight; for links y - mu. factored: QR of the effective design (coefficients, then theta), rows times sqrt(w), and
+    times the working weights for links. leverage (n,). sigma: residual SD on the fitting scale, of a row of average
+    weight. log_likelihood: in units of y, None for a pseudo-likelihood. parameters: counted ones, sigma included.
     """
 
     remedy: Remedy
@@ -79,6 +86,16 @@ class Estimate:
         """How many of theta move continuously (powers chosen from a finite set do not)."""
         return 0 if self.shape.finite else len(self.theta)
 
+    @cached_property
+    def clusters(self) -> Clusters | None:
+        """Rows that belong together, or None where every row stands for itself."""
+        return None if self.rows.cluster is None else Clusters(self.rows.cluster)
+
+    @property
+    def df_error(self) -> int:
+        """Degrees of freedom of standard errors: residual ones, or clusters less one."""
+        return self.df_residual if self.clusters is None else self.clusters.count - 1
+
     @property
     def mu(self) -> Array:
         """Fitted means of a link (n,)."""
@@ -95,9 +112,9 @@ class Estimate:
 
     @property
     def aicc(self) -> float:
-        """AICc in units of y (Hurvich and Tsai 1989); NaN for pseudo-likelihoods and where n is too small for it."""
+        """AICc in units of y (Hurvich and Tsai 1989); NaN for pseudo-likelihoods, with clusters, and for few rows."""
         k, n = self.parameters, self.n
-        if self.log_likelihood is None or n - k - 1 <= 0:
+        if self.log_likelihood is None or self.clusters is not None or n - k - 1 <= 0:
             return float("nan")
         return -2 * self.log_likelihood + 2 * k + 2 * k * (k + 1) / (n - k - 1)
 
@@ -153,10 +170,10 @@ class Estimate:
         out = self.jacobian_at(self.rows.x, self.rows.base, self.rows.modifier)
         if self.remedy.left.searched:
             out[:, -1] = -self._scale_slope()
-        return out
+        return out if self.link is not None else self.rows.weigh(out)
 
     def _scale_slope(self) -> Array:
-        """d z / d lambda (n,) beyond what `own_units` takes out."""
+        """d z / d lambda (n,) beyond what `own_units` takes out, weights left aside."""
 
         def own(lam: float) -> Array:
             shift, stretch = own_units(self, lam)
@@ -170,19 +187,42 @@ class Estimate:
         return pivot(self, self.c[0])
 
     def moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
-        """Change of (coef, theta, c) when row i is left out, (n, P); exact for linear remedies, else one step.
+        """Change of (coef, theta, c) when row i, or cluster i, is left out: (n, P) or (G, P).
 
-        rows: only these.
-
+        Exact for linear remedies, else one step. rows: only these (without clusters).
         leave_out=False gives the first-order influence (HC0-type) instead, with the same sign.
         """
-        h = self.leverage
-        # a row that owns a coefficient cannot be left out: its residual is zero, and it moves nothing else
-        weight = np.where(h < OWNS, 1.0 / (1.0 - h), 0.0) if leave_out else np.ones(self.n)
         if self.remedy.left.searched:
-            return (-self._without_drift(likelihood_moves(self)) * weight[:, None])[rows]
-        score = self.residual if self.link is None else self._link_score()
-        return -(self.factored.q[rows] @ self.factored.root.T) * (score * weight)[rows, None]
+            each = -self._without_drift(likelihood_moves(self)) * self._stretch(leave_out)[:, None]
+            return each[rows] if self.clusters is None else self.clusters.sums(each)
+        return self.linear_moves(leave_out=leave_out, rows=rows)
+
+    def linear_moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
+        """`moves` of (coef, theta) with the scale's constants held."""
+        score = self._score()
+        if self.clusters is not None:
+            return -self.clusters.scores(self.factored.q, score, leave_out=leave_out) @ self.factored.root.T
+        return -(self.factored.q[rows] @ self.factored.root.T) * (score * self._stretch(leave_out))[rows, None]
+
+    def _stretch(self, leave_out: bool) -> Array:
+        """What leaving a row out makes of its residual, 1 / (1 - h) (n,); ones to first order.
+
+        A row that owns a coefficient cannot be left out: its residual is zero, and it moves nothing else.
+        """
+        h = self.leverage
+        return np.where(h < OWNS, 1.0 / (1.0 - h), 0.0) if leave_out else np.ones(self.n)
+
+    @cached_property
+    def left_out_residual(self) -> Array:
+        """Residuals (n,) of the fits without the row itself, or without its cluster."""
+        if self.clusters is None:
+            return np.asarray(self.residual / (1 - self.leverage))
+        lost = self.clusters.scores(self.factored.q, self.residual)
+        return np.asarray(self.residual + (self.factored.q * lost[self.clusters.code]).sum(axis=1))
+
+    def row_moves(self) -> Array:
+        """`moves` by row (n, P): that of the row's cluster where there are clusters."""
+        return self.moves() if self.clusters is None else self.moves()[self.clusters.code]
 
     def _without_drift(self, moved: Array) -> Array:
         """Coefficient moves less the part that only follows the scale's own change of place and length with lambda."""
@@ -194,15 +234,24 @@ class Estimate:
         out[:, : len(drift)] -= moved[:, -1:] * drift
         return out
 
-    def _link_score(self) -> Array:
-        """Score residual on the weighted scale: (y - mu) / sqrt V."""
-        assert self.link is not None
-        return np.asarray(self.residual / np.sqrt(self.link.variance(self.mu)))
+    @property
+    def few_clusters(self) -> float:
+        """sqrt((G - 1) / G) for G clusters left out in turn, 1 without clusters."""
+        return 1.0 if self.clusters is None else float(np.sqrt(1 - 1 / self.clusters.count))
+
+    def _score(self) -> Array:
+        """Residual of the weighted least squares whose QR is `factored` (n,): for links sqrt(w) (y - mu) / sqrt V."""
+        if self.link is None:
+            return self.residual
+        return self.rows.weigh(self.residual / np.sqrt(self.link.variance(self.mu)))
 
     def covariance(self, kind: str = "robust") -> Array:
-        """Covariance of (coef, theta, c) (P, P): "robust" is HC3 (MacKinnon and White 1985), "constant" s2 (J'J)^-1."""
+        """Covariance of (coef, theta, c) (P, P).
+
+        "robust" is HC3 (MacKinnon and White 1985), with clusters CR3 (Bell and McCaffrey 2002); "constant" s2 (J'J)^-1.
+        """
         if kind == "robust" or self.remedy.left.searched:
-            d = self.moves()
+            d = self.moves() * self.few_clusters
             return np.asarray(d.T @ d)
         return np.asarray(self.factored.inverse_cross * self.sigma**2)
 
@@ -229,29 +278,6 @@ def estimate(
     return _fit_scale(rows, remedy, state, theta, c, {} if designs is None else designs)
 
 
-def searched_model(rows: Rows, shape: Shape, state: Constants) -> Searched:
-    """The shape's search on these rows, for variable projection."""
-    none = np.empty((rows.count, 0))
-    lower, upper = shape.bounds(rows.x, state)
-    alone = rows.modifier.shape[1] == 1 and bool((rows.modifier == 1).all())
-    bare = Rows(rows.y, rows.x, none, rows.modifier, None, False)
-
-    def columns(t: Array) -> Array:
-        found = shape.columns(rows.x, state, tuple(t))
-        return found if alone else design(bare, found)
-
-    def slopes(t: Array) -> Array:
-        found = shape.theta_slopes(rows.x, state, tuple(t))
-        return found if alone else np.stack([design(bare, s) for s in found])
-
-    return Searched(
-        fixed=design(rows, none, own_level=shape.own_level), columns=columns, slopes=slopes,
-        candidates=shape.candidates(rows.x, state),
-        rebuild=lambda which: searched_model(rows.take(which), shape, state), lower=lower, upper=upper,
-        finite=shape.finite, corners=np.unique(rows.x) if shape.corners else None,
-    )  # fmt: skip
-
-
 def _fit_scale(
     rows: Rows,
     remedy: Remedy,
@@ -268,16 +294,16 @@ def _fit_scale(
         return constants
     t, c = constants
     if (shape.key, t) not in designs:
-        x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
+        x = weighted_design(rows, shape, state, t)
         if not np.isfinite(x).all():
             return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
         designs[shape.key, t] = x, factor(x)
     x, linear = designs[shape.key, t]
     if linear.aliased:
-        return _aliased(remedy, linear.aliased, x.shape[1])
-    z = scale.forward(rows.y, c)
+        return aliased(remedy, linear.aliased, x.shape[1])
+    z = rows.weigh(scale.forward(rows.y, c))
     coef, residual = solve(linear, x, z)
-    eta = z - residual
+    eta = (z - residual) / rows.root_weight
     trouble = domain_trouble(scale, c, eta, residual)
     if trouble:
         return trouble
@@ -286,16 +312,15 @@ def _fit_scale(
     est = Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
         factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
-        log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c)),
+        log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c) + np.log(rows.root_weight)),
         parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0),
         notes=("constant set by hand; not ranked",) if by_hand else (),
     )  # fmt: skip
     if not est.moving:
         return est
     full = est.jacobian_at(rows.x, rows.base, rows.modifier)
-    full = full[:, :-1] if scale.searched else full
-    effective = factor(full)
-    return _not_settled(shape) if effective.aliased else replace(est, factored=effective)
+    effective = factor(rows.weigh(full[:, :-1] if scale.searched else full))
+    return not_settled(shape) if effective.aliased else replace(est, factored=effective)
 
 
 def _constants(
@@ -313,31 +338,26 @@ def _constants(
         before = (*t, *c)
         if model is not None:
             found = search(
-                model, scale.forward(rows.y, c), start=np.array(t) if turn else None,
+                model, rows.weigh(scale.forward(rows.y, c)), start=np.array(t) if turn else None,
                 precision=1e-13 if rows.count <= MANY_ROWS else 1e-10,
             )  # fmt: skip
             if not found.settled:
-                return _not_settled(shape)
+                return not_settled(shape)
             t = tuple(float(v) for v in found.theta)
         if search_c:
-            x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
-            lam, inside = best_power(scale_power(scale), rows.y, factor(x).q, start=c[0] if turn else None)
+            x = weighted_design(rows, shape, state, t)
+            power = scale_power(scale, rows)
+            lam, inside = best_power(power, rows.y, factor(x).q, start=c[0] if turn else None)
             if not inside:
-                return _edge(scale, lam)
+                return edge(scale, lam)
             c = (lam,)
         if turn and max(abs(new - old) for new, old in zip((*t, *c), before, strict=True)) < 1e-9:
             break
     return t, c
 
 
-def scale_power(scale: Scale) -> Power:
-    """The scale seen as a one-constant family, for the likelihood search."""
-    low, high = scale.search()
-    return Power(lambda y, v: scale.forward(y, (v,)), lambda y, v: scale.log_jacobian(y, (v,)), low, high)
-
-
 def _likelihood(rss: float, n: int, log_jacobian: Array) -> float | None:
-    """Gaussian log-likelihood on z plus the log-Jacobian: units of y (Box and Cox 1964). None for a perfect fit."""
+    """Gaussian log-likelihood plus the log-Jacobian of sqrt(w) T, in units of y (Box and Cox 1964). None for RSS 0."""
     if rss <= 0:
         return None
     return float(-0.5 * n * (np.log(2 * np.pi * rss / n) + 1) + log_jacobian.sum())
@@ -353,11 +373,11 @@ def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | N
             "Use a spline under the link, or the same shape on log y.",
         )  # fmt: skip
     x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
-    aliased = factor(x).aliased
-    if aliased:
-        return _aliased(remedy, aliased, x.shape[1])
+    repeated = factor(x).aliased
+    if repeated:
+        return aliased(remedy, repeated, x.shape[1])
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
-    done = iterate(model, x, rows.y, eta=link.start(rows.y), offset=rows.offset)
+    done = iterate(model, x, rows.y, eta=link.start(rows.y), prior=rows.weights)
     if not done.settled or not np.isfinite(done.mu).all():
         return Refusal(
             "The fit of this mean model does not settle.",
@@ -366,34 +386,11 @@ def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | N
         )
     df = rows.count - x.shape[1]
     residual = rows.y - done.mu
-    pearson = float((residual**2 / link.variance(done.mu)).sum())
+    likelihood = link.log_likelihood(rows.y, done.mu) if rows.weights is None else None
+    pearson = float((rows.weigh(residual) ** 2 / link.variance(done.mu)).sum())
     return Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef, z=rows.y, eta=done.eta,
         residual=residual, factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
-        sigma=float(np.sqrt(pearson / df)), log_likelihood=link.log_likelihood(rows.y, done.mu),
+        sigma=float(np.sqrt(pearson / df)), log_likelihood=likelihood,
         parameters=x.shape[1] + 1,
     )  # fmt: skip
-
-
-def _not_settled(shape: Shape) -> Refusal:
-    return Refusal(
-        wrong=f"These rows do not settle the constant of {shape.key}.",
-        seen=f"The best {' and '.join(shape.searched)} lies at the edge of what can be searched.",
-        instead="A spline (spline4 x) follows the same bend without that constant.",
-    )
-
-
-def _edge(scale: Scale, lam: float) -> Refusal:
-    return Refusal(
-        wrong="These rows do not settle the power of y.",
-        seen=f"The likelihood still rises at {lam:.3g}, the edge of the search.",
-        instead="A named scale: log y, sqrt y or 1/y.",
-    )
-
-
-def _aliased(remedy: Remedy, count: int, total: int) -> Refusal:
-    return Refusal(
-        wrong="Some columns of this remedy repeat others on these rows.",
-        seen=f"{count} of {total} columns of {remedy.key} are combinations of the rest.",
-        instead="A simpler shape, or covariates that do not repeat the predictor.",
-    )

@@ -9,7 +9,7 @@ from batten.errors import Refusal
 from batten.families.base import Constants, Scale, Shape
 from batten.families.remedy import Remedy
 
-__all__ = ["domain_trouble", "meets_constant", "not_offered", "too_few"]
+__all__ = ["aliased", "domain_trouble", "edge", "meets_constant", "not_offered", "not_settled", "too_few"]
 
 
 def meets_constant(rows: Rows, shape: Shape) -> bool:
@@ -72,4 +72,31 @@ def domain_trouble(scale: Scale, c: Constants, eta: Array, residual: Array) -> R
         wrong=f"The mean cannot be brought back from {scale.key}.",
         seen="A fitted value plus a residual seen in these rows has no finite value of y: only a median would exist.",
         instead="log y or a log link, whose mean always exists.",
+    )
+
+
+def not_settled(shape: Shape) -> Refusal:
+    """A searched constant of the shape that runs to the edge."""
+    return Refusal(
+        wrong=f"These rows do not settle the constant of {shape.key}.",
+        seen=f"The best {' and '.join(shape.searched)} lies at the edge of what can be searched.",
+        instead="A spline (spline4 x) follows the same bend without that constant.",
+    )
+
+
+def edge(scale: Scale, lam: float) -> Refusal:
+    """A power of y that runs to the edge."""
+    return Refusal(
+        wrong="These rows do not settle the power of y.",
+        seen=f"The likelihood still rises at {lam:.3g}, the edge of the search.",
+        instead="A named scale: log y, sqrt y or 1/y.",
+    )
+
+
+def aliased(remedy: Remedy, count: int, total: int) -> Refusal:
+    """Columns that repeat others."""
+    return Refusal(
+        wrong="Some columns of this remedy repeat others on these rows.",
+        seen=f"{count} of {total} columns of {remedy.key} are combinations of the rest.",
+        instead="A simpler shape, or covariates that do not repeat the predictor.",
     )

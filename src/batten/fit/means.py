@@ -10,21 +10,21 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
-from scipy.stats import t as student
 
+from batten.engine.clusters import Clusters
 from batten.engine.rows import Array, Ints
 from batten.families.base import Constants
+from batten.fit.averaged import Averaged, jackknife_root
 from batten.fit.estimate import Estimate
 from batten.fit.medians import middle
 from batten.fit.own_scale import OwnScale, on_own_scale
 from batten.fit.smear import mean_of, shares_of_residuals
 
 __all__ = [
-    "BLOCK", "Averaged", "Target", "averaged_means", "by_replicate", "interval", "jackknifed", "means_at_rows",
-    "pattern_weights", "patterns", "target", "with_errors",
+    "BLOCK", "Target", "averaged_means", "by_replicate", "jackknifed", "means_at_rows", "pattern_weights", "patterns",
+    "target", "with_errors",
 ]  # fmt: skip
 
 #: up to this many rows intervals of retransformed means leave out each row in turn
@@ -38,81 +38,6 @@ FEW_PATTERNS = 12
 
 #: row i's share (n, G), or (features (n, r), loads (r, G)) whose product it is
 Share = Array | tuple[Array, Array]
-
-
-@dataclass(frozen=True, eq=False)
-class Averaged:
-    """Values (G,) and their uncertainty.
-
-    root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
-    spread under constant errors). Many rows and many places make it large, so it is kept as loads (r, G) of few
-    features (N, r in all), root = features @ loads; None means that loads are the root. left_out (n, G): the values
-    without row i, or None beyond the jackknife's reach.
-    """
-
-    value: Array
-    loads: Array
-    left_out: Array | None
-    df: int
-    features: tuple[Array, ...] | None = None
-
-    @property
-    def root(self) -> Array:
-        return self.loads if self.features is None else np.hstack(self.features) @ self.loads
-
-    @cached_property
-    def _cross(self) -> Array:
-        """Cross-product of the features (r, r)."""
-        return _products(self.features or (), self.features or ())
-
-    def combine(self, weights: Array) -> Averaged:
-        """Linear combinations: weights (G, H)."""
-        left = None if self.left_out is None else self.left_out @ weights
-        return Averaged(self.value @ weights, self.loads @ weights, left, self.df, self.features)
-
-    def log(self) -> Averaged:
-        """Logarithms of positive values (NaN elsewhere)."""
-        with np.errstate(invalid="ignore", divide="ignore"):
-            value = np.log(self.value)
-            if self.left_out is None:
-                return Averaged(value, self.loads / self.value, None, self.df, self.features)
-            left = np.log(self.left_out)
-        return Averaged(value, _jackknife_root(left), left, self.df)
-
-    @property
-    def error(self) -> Array:
-        """Standard errors (G,)."""
-        return np.asarray(np.sqrt((self.root**2).sum(axis=0)))
-
-    def covariance_of_gap(self, other: Averaged) -> Array:
-        """Covariance (G, G) of self minus other, whose roots belong to the same rows."""
-        if self.features is None or other.features is None:
-            root = self.root - other.root
-            return np.asarray(root.T @ root)
-        between = self.loads.T @ _products(self.features, other.features) @ other.loads
-        own = (a.loads.T @ a._cross @ a.loads for a in (self, other))
-        return np.asarray(sum(own) - between - between.T)
-
-
-def _products(one: tuple[Array, ...], two: tuple[Array, ...]) -> Array:
-    """Cross-products of two stacks of columns, without copying them side by side."""
-    return np.block([[a.T @ b for b in two] for a in one])
-
-
-def _jackknife_root(left: Array) -> Array:
-    n = len(left)
-    return np.asarray(np.sqrt((n - 1) / n) * (left - left.mean(axis=0)))
-
-
-def interval(averaged: Averaged, level: float, *, positive: bool = False) -> tuple[Array, Array]:
-    """Lower and upper ends (G,) by the t quantile; on the log scale where the values are positive means."""
-    t = float(student.ppf(0.5 + level / 2, averaged.df))
-    if positive:
-        logs = averaged.log()
-        half = t * logs.error
-        return averaged.value * np.exp(-half), averaged.value * np.exp(half)
-    half = t * averaged.error
-    return averaged.value - half, averaged.value + half
 
 
 @dataclass(frozen=True, eq=False)
@@ -199,7 +124,7 @@ def means_at_rows(
 def _plain(est: Estimate, tar: Target, share: Array, of: str) -> Averaged:
     """Values without their uncertainty."""
     value = _values(est, tar, share, of, np.zeros((1, tar.jacobian.shape[2])), None)[0]
-    return Averaged(value, np.empty((0, len(value))), None, est.df_residual)
+    return Averaged(value, np.empty((0, len(value))), None, est.df_error)
 
 
 def _with_errors(
@@ -239,32 +164,51 @@ def with_errors(
     values(move (R, P), keep (R, n) or None) -> (R, G): the functional when the parameters have moved and row j counts
     keep times. own_shares(value (G,), rows) -> arrays (n, G): row i's share in each average it enters, minus the value,
     or (features (n, r), loads (r, G)) whose product that is. rows: the uncertainty from these rows alone, an even part
-    of all, stretched to stand for all.
+    of all, stretched to stand for all (clusters count in full).
     """
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
-        left = values(est.moves(), 1.0 - np.eye(est.n))
+        left = values(est.moves(), _kept(est))
         # a mean that is infinite without one row has no error
         left = np.where(np.isfinite(left), left, np.nan)
-        return Averaged(value, _jackknife_root(left), left, est.df_residual)
+        return Averaged(value, jackknife_root(left), left, est.df_error)
+    rows = rows if est.clusters is None else None
     some: Ints | slice = slice(None) if rows is None else rows
-    moves = est.moves(rows=some)
+    moves = est.moves(rows=some) * est.few_clusters
     gradient = _gradient(values, moves)
     shares = own_shares(value, some)
+    if est.clusters is not None:
+        shares = [_summed(part, est.clusters) for part in shares]
     if rows is not None:
         moves, stretch = moves * np.sqrt(est.n / len(rows)), np.sqrt(est.n / len(rows))
         shares = [(part[0] * stretch, part[1]) if isinstance(part, tuple) else part * stretch for part in shares]
     if errors == "constant":
         root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
         parts = [_whole(part) / est.n for part in shares]
-        return Averaged(value, np.vstack([root, *parts]), None, est.df_residual)
+        return Averaged(value, np.vstack([root, *parts]), None, est.df_error)
     # moves are what leaving a row out does; its influence points the other way
     features, loads = [moves], [-gradient]
     for part in shares:
         feature, load = part if isinstance(part, tuple) else (part, np.eye(len(value)))
         features.append(feature)
         loads.append(load / est.n)
-    return Averaged(value, np.vstack(loads), None, est.df_residual, tuple(features))
+    return Averaged(value, np.vstack(loads), None, est.df_error, tuple(features))
+
+
+def _kept(est: Estimate) -> Array:
+    """How often each row counts when a row, or a cluster, is left out in turn: (n, n) or (G, n)."""
+    if est.rows.cluster is None:
+        return 1.0 - np.eye(est.n)
+    units = np.arange(int(est.rows.cluster.max()) + 1)
+    return np.where(est.rows.cluster == units[:, None], 0.0, 1.0)
+
+
+def _summed(part: Share, clusters: Clusters) -> Share:
+    """Shares of clusters from those of their rows, with the factor G / (G - 1) of few clusters in the variance."""
+    few = float(np.sqrt(clusters.count / (clusters.count - 1)))
+    if isinstance(part, tuple):
+        return clusters.sums(part[0]) * few, part[1]
+    return clusters.sums(part) * few
 
 
 def _whole(part: Share) -> Array:

@@ -39,8 +39,9 @@ def middle(est: Estimate) -> Middle:
         e, change = est.residual, -pull
     else:
         mu = np.maximum(est.mu, 1e-300)
-        e = est.rows.y / mu
-        change = -(e * est.link.mean_slope(est.eta) / mu)[:, None] * pull
+        ratio = est.rows.y / mu
+        e = 1 + est.rows.weigh(ratio - 1)  # that of a row of average weight
+        change = -est.rows.weigh(ratio * est.link.mean_slope(est.eta) / mu)[:, None] * pull
     value = float(np.median(e))
     spread = float(np.std(e)) or 1.0
     quartiles = float(np.subtract(*np.quantile(e, [0.75, 0.25]))) / 1.349

@@ -9,7 +9,7 @@ import numpy as np
 from batten.engine.rows import Array, Ints
 from batten.families.base import Link
 from batten.fit.estimate import Estimate
-from batten.fit.predict import DELETIONS_ROWS, new_row_interval
+from batten.fit.predict import DELETIONS_ROWS, further_values, new_row_interval
 
 __all__ = ["moved_row_interval"]
 
@@ -35,7 +35,7 @@ def moved_row_interval(
     low, high = np.empty(len(xs)), np.empty(len(xs))
     first = max(int(np.floor((1 - level) / 2 * (len(some) + 1) + 1e-9)) - 1, 0)
     last = len(some) - 1 - first
-    moves = est.moves()[some] if est.n <= DELETIONS_ROWS else None
+    moves = est.row_moves()[some] if est.n <= DELETIONS_ROWS else None
     bring_back = _own_errors(est, some, moves)
     for g, x in enumerate(xs):
         j = est.jacobian_at(np.full(len(some), x), base[some], modifier[some])
@@ -51,12 +51,10 @@ def _own_errors(est: Estimate, some: Ints, moves: Array | None) -> Callable[[Arr
     """The map from the chosen rows' linear predictors to y, each with its own left-out error."""
     link = est.remedy.left
     if not isinstance(link, Link):
-        error = est.residual[some] / (1 - est.leverage[some])
+        error = est.left_out_residual[some]
         return lambda eta: est.scale.inverse(eta + error, est.c)
     own = est.eta[some]
     if moves is not None:
         own = own + np.einsum("np,np->n", moves, est.residual_jacobian[some])
-    y, mu = est.rows.y[some], link.mean(own)
-    if link.reading == "ratio":
-        return lambda eta: link.mean(eta) * (y / mu)
-    return lambda eta: np.clip(link.mean(eta) + (y - mu), 0.0, 1.0)
+    y, mu, root = est.rows.y[some], link.mean(own), 1 / est.rows.root_weight[some]
+    return lambda eta: further_values(est, link.mean(eta), mu, y, root)

@@ -49,9 +49,9 @@ def likelihood_moves(est: Estimate) -> Array:
     """
     y, e = est.rows.y, est.residual
     s2 = float(e @ e) / est.n
-    z1, z2 = in_lambda(lambda v: est.scale.forward(y, (v,)), est.c[0])
+    z1, z2 = in_lambda(lambda v: est.rows.weigh(est.scale.forward(y, (v,))), est.c[0])
     j1, j2 = in_lambda(lambda v: est.scale.log_jacobian(y, (v,)), est.c[0])
-    x = est.jacobian_at(est.rows.x, est.rows.base, est.rows.modifier)[:, :-1]
+    x = est.rows.weigh(est.jacobian_at(est.rows.x, est.rows.base, est.rows.modifier)[:, :-1])
     length = est.factored.length
     unit = x / length  # scaled columns keep the information matrix well conditioned
     score = np.column_stack([unit * (e / s2)[:, None], -e * z1 / s2 + j1, (e * e / s2 - 1) / (2 * s2)])

@@ -9,8 +9,9 @@ from scipy.stats import t as student
 
 from batten.engine.rows import Array
 from batten.families.base import Link
+from batten.fit.averaged import Averaged, interval
 from batten.fit.estimate import Estimate
-from batten.fit.means import Averaged, interval, means_at_rows
+from batten.fit.means import means_at_rows
 from batten.fit.smear import row_means
 
 __all__ = ["Prediction", "Total", "new_row_interval", "positive_by_nature", "predict", "rows_needed", "total"]
@@ -41,10 +42,12 @@ def predict(
     kind: str | None = None,
     level: float = 0.95,
     errors: str = "robust",
+    weight: Array | None = None,
 ) -> Prediction:
     """Predict k complete rows: x (k,), base (k, q), modifier (k, m).
 
-    kind: None, "estimate" (interval for the mean or median itself) or "new row" (for one further row).
+    kind: None, "estimate" (interval for the mean or median itself) or "new row" (for one further row). weight (k,): of
+    the further rows, as a multiple of the average weight; 1 when None. Means are those of a row of average weight.
     """
     k = len(x)
     value, low, high = np.empty(k), np.full(k, np.nan), np.full(k, np.nan)
@@ -56,7 +59,9 @@ def predict(
         if kind == "estimate":
             low[some], high[some] = interval(averaged, level, positive=positive_by_nature(est, averaged))
         elif kind == "new row":
-            low[some], high[some] = new_row_interval(est, *part, level=level, errors=errors)
+            low[some], high[some] = new_row_interval(
+                est, *part, level=level, errors=errors, weight=None if weight is None else weight[some]
+            )
     notes = [""] * k
     eta = est.design_at(x, base, modifier) @ est.coef
     if isinstance(est.remedy.left, Link):
@@ -83,61 +88,71 @@ def rows_needed(level: float) -> int:
 
 
 def new_row_interval(
-    est: Estimate, x: Array, base: Array, modifier: Array, *, level: float, errors: str
+    est: Estimate, x: Array, base: Array, modifier: Array, *, level: float, errors: str, weight: Array | None = None
 ) -> tuple[Array, Array]:
-    """Interval for one further row at each of k places, in units of y.
+    """Interval for one further row at each of k places, in units of y; with clusters, a row from a new cluster.
 
+    weight (k,): of the further rows, as a multiple of the average weight; 1 when None.
     Robust errors: jackknife+ with each tail by itself (Barber, Candes, Ramdas and Tibshirani 2021, signed), no normal
     shape assumed; constant errors, or too few rows for the level: the t interval on the fitting scale. Ends are mapped
     by the inverse, which keeps their coverage.
     """
+    root = np.ones(len(x)) if weight is None else np.sqrt(weight)
     if isinstance(est.remedy.left, Link):
-        return _link_interval(est, x, base, modifier, level=level)
+        return _link_interval(est, est.jacobian_at(x, base, modifier), root, level=level)
     j = est.jacobian_at(x, base, modifier)
     eta = j[:, : len(est.coef)] @ est.coef
     if errors == "robust" and est.n >= rows_needed(level):
-        low, high = _from_deletions(est, j, eta, est.residual / (1 - est.leverage), level=level)
+        low, high = _from_deletions(est, j, eta, root, level=level)
     else:
         kept = j[:, :-1] if est.remedy.left.searched else j
         v = np.einsum("kp,kp->k", kept @ est.factored.inverse_cross, kept) * est.sigma**2
-        half = float(student.ppf(0.5 + level / 2, est.df_residual)) * np.sqrt(est.sigma**2 + v)
+        half = float(student.ppf(0.5 + level / 2, est.df_residual)) * np.sqrt(est.sigma**2 / root**2 + v)
         low, high = eta - half, eta + half
     ends = est.scale.inverse(low, est.c), est.scale.inverse(high, est.c)
     return np.minimum(*ends), np.maximum(*ends)
 
 
-def _from_deletions(est: Estimate, j: Array, centre: Array, spread: Array, *, level: float) -> tuple[Array, Array]:
-    """Ordered values of centre without row i plus row i's own left-out residual."""
-    n = len(spread)
+def _from_deletions(est: Estimate, j: Array, centre: Array, root: Array, *, level: float) -> tuple[Array, Array]:
+    """Ordered values of centre without row i plus row i's own left-out residual over root (k,) = sqrt(weight)."""
+    spread, n = est.left_out_residual, est.n
     tail = (1 - level) / 2
     first = int(np.floor(tail * (n + 1) + 1e-9)) - 1
     last = n - 1 - first
     if n > DELETIONS_ROWS:
         ordered = np.partition(spread, [first, last])
-        return centre + ordered[first], centre + ordered[last]
-    values = np.partition(centre + est.moves() @ j.T + spread[:, None], [first, last], axis=0)
+        return centre + ordered[first] / root, centre + ordered[last] / root
+    values = np.partition(centre + est.row_moves() @ j.T + spread[:, None] / root, [first, last], axis=0)
     return values[first], values[last]
 
 
-def _link_interval(est: Estimate, x: Array, base: Array, modifier: Array, *, level: float) -> tuple[Array, Array]:
+def _link_interval(est: Estimate, j: Array, root: Array, *, level: float) -> tuple[Array, Array]:
     """The same for a link: left-out ratios y/mu for the log link, left-out differences for a share (kept in 0..1)."""
-    link = est.remedy.left
+    link, n = est.remedy.left, est.n
     assert isinstance(link, Link)
-    level = min(level, 1 - 2 / (est.n + 1))
-    j = est.jacobian_at(x, base, modifier)
+    level = min(level, 1 - 2 / (n + 1))
     eta = j[:, : len(est.coef)] @ est.coef
-    own = np.einsum("np,np->n", est.moves(), est.residual_jacobian)
-    left_out_mu = link.mean(est.eta + own)
-    n = est.n
+    moves = est.row_moves()
+    own = link.mean(est.eta + np.einsum("np,np->n", moves, est.residual_jacobian))
     first = int(np.floor((1 - level) / 2 * (n + 1) + 1e-9)) - 1
     last = n - 1 - first
-    centre = link.mean(eta + est.moves() @ j.T) if n <= DELETIONS_ROWS else link.mean(eta)[None]
-    if link.reading == "ratio":
-        values = centre * (est.rows.y / left_out_mu)[:, None]
-    else:
-        values = np.clip(centre + (est.rows.y - left_out_mu)[:, None], 0.0, 1.0)
+    centre = link.mean(eta + moves @ j.T) if n <= DELETIONS_ROWS else link.mean(eta)[None]
+    between = root / est.rows.root_weight[:, None]
+    values = further_values(est, centre, own[:, None], est.rows.y[:, None], between)
     ordered = np.partition(values, [first, last], axis=0)
     return ordered[first], ordered[last]
+
+
+def further_values(est: Estimate, centre: Array, own: Array, y: Array, root: Array) -> Array:
+    """A link's further values at means `centre`, with the errors that values y had about their left-out means `own`.
+
+    root: sqrt(weight) of the further row over that of the row whose error it takes.
+    """
+    link = est.remedy.left
+    assert isinstance(link, Link)
+    if link.reading == "ratio":
+        return np.asarray(centre * np.maximum(1 + (y / own - 1) / root, 0.0))
+    return np.clip(centre + (y - own) / root, 0.0, 1.0)
 
 
 @dataclass(frozen=True)
@@ -152,25 +167,38 @@ class Total:
 
 
 def total(
-    est: Estimate, x: Array, base: Array, modifier: Array, *, level: float = 0.95, errors: str = "robust"
+    est: Estimate,
+    x: Array,
+    base: Array,
+    modifier: Array,
+    *,
+    level: float = 0.95,
+    errors: str = "robust",
+    amount: Array | None = None,
+    weight: Array | None = None,
 ) -> Total:
-    """Total of k further rows. Shared error: the fit is the same for all. Row error: each row's own spread."""
+    """Total of k further rows. Shared error: the fit is the same for all. Row error: each row's own spread.
+
+    amount (k,): what each row's mean counts times (its exposure); 1 when None. weight (k,): as for `predict`.
+    """
+    amount = np.ones(len(x)) if amount is None else amount
     value, shared, root = 0.0, 0.0, None
     for start in range(0, len(x), CHUNK):
         some = slice(start, start + CHUNK)
         averaged = means_at_rows(est, x[some], base[some], modifier[some], errors=errors)
-        summed = averaged.root.sum(axis=1)
+        summed = averaged.root @ amount[some]
         root = summed if root is None else root + summed
-        value += float(averaged.value.sum())
+        value += float(averaged.value @ amount[some])
     if root is not None:
         shared = float(root @ root)
-    own = float(_row_variance(est, est.design_at(x, base, modifier) @ est.coef).sum())
-    half = float(student.ppf(0.5 + level / 2, est.df_residual)) * float(np.sqrt(shared + own))
+    variance = _row_variance(est, est.design_at(x, base, modifier) @ est.coef)
+    own = float((variance * amount**2 / (1.0 if weight is None else weight)).sum())
+    half = float(student.ppf(0.5 + level / 2, est.df_error)) * float(np.sqrt(shared + own))
     return Total(value, value - half, value + half, float(np.sqrt(shared)), float(np.sqrt(own)))
 
 
 def _row_variance(est: Estimate, eta: Array) -> Array:
-    """Variance of a further y about its mean at each linear predictor (k,)."""
+    """Variance of a further y, of average weight, about its mean at each linear predictor (k,)."""
     if isinstance(est.remedy.left, Link):
         return np.asarray(est.sigma**2 * est.remedy.left.variance(est.remedy.left.mean(eta)))
     if est.scale.closed == "identity":

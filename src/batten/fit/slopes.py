@@ -12,8 +12,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from batten.engine.rows import Array, Ints
+from batten.fit.averaged import Averaged
 from batten.fit.estimate import Estimate
-from batten.fit.means import BLOCK, Averaged, Share, by_replicate, pattern_weights, patterns, with_errors
+from batten.fit.means import BLOCK, Share, by_replicate, pattern_weights, patterns, with_errors
 from batten.fit.medians import middle
 from batten.fit.own_scale import on_own_scale
 from batten.fit.smear import mean_of

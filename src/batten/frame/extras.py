@@ -1,4 +1,9 @@
-"""Weights, clusters and exposure: columns beside the formula that say what a row stands for."""
+"""Weights, clusters and exposure: columns beside the formula that say what a row stands for.
+
+With an exposure the response is analysed per unit of it, and its variance falls with the exposure: under the log link
+these are the coefficients of a Poisson model with log exposure as offset, and every other remedy answers the same
+question. Frequencies are written out as repeated rows.
+"""
 
 from __future__ import annotations
 
@@ -9,13 +14,16 @@ import numpy as np
 
 from batten.engine.rows import Array, Ints
 from batten.errors import data as errors
-from batten.frame.columns import Bools, Column, as_groups, as_numbers, check_numbers, word
+from batten.frame.columns import Bools, Column, as_groups, as_numbers, check_numbers, look, word
 from batten.frame.rownotes import Complaint
 from batten.frame.slots import Slot
+from batten.frame.tables import Table
 
 __all__ = ["Beside", "Extras"]
 
 _KINDS = ("variance", "frequency")
+#: most rows that frequencies are written out to
+MOST_ROWS = 20_000_000
 _SURVEY = ("survey", "sampling", "probability", "design", "pweight", "pweights", "inverse probability")
 
 
@@ -45,6 +53,8 @@ class Beside:
             raise errors.survey_weights(kind)
         elif kind not in _KINDS:
             raise errors.unknown_weights_kind(kind, _KINDS)
+        elif kind == "variance" and self.exposure is not None:
+            raise errors.weights_and_exposure(self.weights, self.exposure)
 
     def check_numbers(self, columns: Mapping[str, Column]) -> None:
         """Weights and exposure must be numbers."""
@@ -61,11 +71,26 @@ class Beside:
 
     def extras(self, columns: Mapping[str, Column], rows: Bools) -> Extras:
         """The values on the analysis rows, checked."""
+        weights = None if self.weights is None else self._weights(columns[self.weights], rows)
+        frequent = self.weights_kind == "frequency"
         return Extras(
-            weights=None if self.weights is None else self._weights(columns[self.weights], rows),
+            times=None if weights is None or not frequent else _times(self.weights or "", weights),
+            weights=None if frequent else weights,
             cluster=None if self.cluster is None else _cluster(columns[self.cluster], rows),
-            offset=None if self.exposure is None else _log_exposure(columns[self.exposure], rows),
+            exposure=None if self.exposure is None else _exposure(columns[self.exposure], rows),
         )
+
+    def of_further(self, table: Table, average: float) -> tuple[Array | None, Array | None]:
+        """(weight over the average one, exposure) of further rows (k,), each None where its column is not there.
+
+        Where a value is missing or not above zero it is NaN.
+        """
+        name = self.exposure or (self.weights if self.weights_kind == "variance" else None)
+        if name is None or name not in table.counts:
+            return None, None
+        values = as_numbers(look(name, table.frame([name])[name]))
+        values = np.where(values > 0, values, np.nan)
+        return values / average, values if self.exposure is not None else None
 
     def _weights(self, column: Column, rows: Bools) -> Array:
         values = as_numbers(column)[rows]
@@ -82,11 +107,37 @@ class Beside:
 
 @dataclass(frozen=True, eq=False)
 class Extras:
-    """weights (n,), cluster codes 0..G-1 (n,), offset = log exposure (n,); None where not given."""
+    """times (how many equal rows each stands for), weights of variance, cluster codes 0..G-1, exposure, each (n,); None
+    where not given."""
 
+    times: Ints | None
     weights: Array | None
     cluster: Ints | None
-    offset: Array | None
+    exposure: Array | None
+
+    @property
+    def average_weight(self) -> float:
+        """Of the analysis rows; 1 without weights."""
+        values = self.weights if self.exposure is None else self.exposure
+        return 1.0 if values is None else float(np.average(values, weights=self.times))
+
+    @property
+    def relative_weight(self) -> Array | None:
+        """Weights (n,) over their average: those of variance, or the exposure."""
+        values = self.weights if self.exposure is None else self.exposure
+        return None if values is None else values / self.average_weight
+
+    @property
+    def written_out(self) -> Ints:
+        """Positions of the stored rows with repetition (sum of times,); asked only where there are times."""
+        assert self.times is not None
+        return np.repeat(np.arange(len(self.times)), self.times)
+
+
+def _times(name: str, weights: Array) -> Ints:
+    if weights.sum() > MOST_ROWS:
+        raise errors.too_many_repeats(name, float(weights.sum()), MOST_ROWS)
+    return weights.astype(np.intp)
 
 
 def _cluster(column: Column, rows: Bools) -> Ints:
@@ -96,9 +147,9 @@ def _cluster(column: Column, rows: Bools) -> Ints:
     return codes
 
 
-def _log_exposure(column: Column, rows: Bools) -> Array:
+def _exposure(column: Column, rows: Bools) -> Array:
     values = as_numbers(column)[rows]
     bad = values <= 0
     if bad.any():
         raise errors.exposure_not_positive(column.name, int(bad.sum()), len(values), float(values.min()))
-    return np.log(values)
+    return values

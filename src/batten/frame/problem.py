@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 import pandas as pd
 
-from batten.engine.rows import Array, Rows
+from batten.engine.rows import Array, Ints, Rows
+from batten.frame.extras import Beside
+from batten.frame.tables import open_table
 
 if TYPE_CHECKING:
     from batten.frame.design import Design
@@ -21,6 +23,7 @@ class NewRows:
     """Rows to predict, coded as the fitted ones were.
 
     x (k,), base (k, q), modifier (k, m): NaN in every row that cannot be predicted. index: the frame's own.
+    weight, exposure (k,): of each row, as `Beside.of_further` gives them.
     notes: one text per row, "" when there is nothing to say (missing value, unseen level 'zinc' of alloy, outside the
     data: mass_kg 80 is beyond 4.2 to 61.0).
     """
@@ -30,6 +33,8 @@ class NewRows:
     modifier: Array
     index: pd.Index
     notes: tuple[str, ...]
+    weight: Array | None = None
+    exposure: Array | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,6 +48,9 @@ class Problem:
     modifier that is a constant has label "". zero_is_arbitrary: the focal predictor is a date, a year or a temperature.
     profile: (base, modifier) of the rows with the covariates named in `at` set to the asked values, to average over
     instead of the rows' own; None without `at`.
+    response_column: the response's column; `response` names what is analysed, which is a rate where there is an
+    exposure. beside: columns of weights, clusters and exposure. average_weight: of the rows, in the column's own terms.
+    times (stored rows,): how many equal rows each stored row stands for, or None; `rows` and `index` hold all of them.
     design: codes further frames the same way and knows the formula's terms (for emitted scripts).
     """
 
@@ -61,6 +69,10 @@ class Problem:
     design: Design
     frame_name: str = "data"
     profile: tuple[Array, Array] | None = None
+    response_column: str = ""
+    beside: Beside = field(default_factory=Beside)
+    average_weight: float = 1.0
+    times: Ints | None = None
 
     def unit(self, column: str) -> str:
         """Unit of a column, "" when none is known."""
@@ -68,4 +80,6 @@ class Problem:
 
     def new_rows(self, frame: pd.DataFrame) -> NewRows:
         """Code another frame with this problem's levels and learned centres."""
-        return self.design.new_rows(frame)
+        new = self.design.new_rows(frame)
+        weight, exposure = self.beside.of_further(open_table(frame), self.average_weight)
+        return replace(new, weight=weight, exposure=exposure)

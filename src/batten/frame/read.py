@@ -14,7 +14,7 @@ from batten.errors.formula import unknown_focus
 from batten.frame import hints
 from batten.frame.choice import chosen_rows
 from batten.frame.columns import Column, check_numbers, look
-from batten.frame.extras import Beside
+from batten.frame.extras import Beside, Extras
 from batten.frame.formula import Formula, namespace, parse
 from batten.frame.learning import Learned, learn_design
 from batten.frame.plan import Plan, expression_complaints, make_plan
@@ -26,6 +26,9 @@ from batten.frame.slots import Slot
 from batten.frame.tables import Table, open_table
 
 __all__ = ["read"]
+
+#: below this many clusters intervals by cluster are not to be trusted
+FEW_CLUSTERS = 10
 
 
 def read(
@@ -63,8 +66,8 @@ def read(
     if rows is not None:
         sample.add((~chosen_rows(rows, table, env), f"not in --rows {rows}"))
     _leave_out_incomplete(sample, plan, roles, columns, beside)
-    numbers, learned = _numbers(plan, roles, columns, beside, sample)
-    asked = _Asked(parsed, roles, plan, columns, table, beside, dict(units or {}))
+    numbers, learned, extras = _numbers(plan, roles, columns, beside, sample)
+    asked = _Asked(parsed, roles, plan, columns, table, beside, extras, dict(units or {}))
     problem = asked.problem(numbers, learned, sample, frame_name)
     return replace(problem, profile=profile_at(problem, at)) if at else problem
 
@@ -105,17 +108,18 @@ def _complaints(plan: Plan, roles: Roles, columns: Mapping[str, Column], beside:
 
 def _numbers(
     plan: Plan, roles: Roles, columns: Mapping[str, Column], beside: Beside, sample: RowNotes
-) -> tuple[Rows, Learned]:
+) -> tuple[Rows, Learned, Extras]:
     """The analysis sample as numbers; refused when it is too small or does not vary."""
     rows = ~sample.bad
     if not rows.any():
         raise errors.empty(len(rows), sample.summary())
     extras = beside.extras(columns, rows)
     y = np.asarray(columns[roles.response].numbers)[rows]
-    counts = extras.weights if beside.weights_kind == "frequency" else None
-    standing_for = len(y) if counts is None else int(counts.sum())
+    standing_for = len(y) if extras.times is None else int(extras.times.sum())
     if standing_for < 5:
         raise errors.too_few_rows(standing_for, 0, len(rows), sample.summary())
+    if beside.exposure is not None:
+        y = y / extras.exposure
     if y.min() == y.max():
         raise errors.constant(roles.response, "response", float(y[0]), len(y))
     learned = learn_design(plan, columns, rows)
@@ -126,10 +130,9 @@ def _numbers(
         raise errors.too_few_rows(standing_for, coefficients, len(rows), sample.summary())
     numbers = Rows(
         y=y, x=learned.x, base=learned.base, modifier=learned.modifier, intercept=learned.intercept,
-        constant=learned.constant, weights=extras.weights, weights_kind=beside.weights_kind, cluster=extras.cluster,
-        offset=extras.offset,
+        constant=learned.constant, weights=extras.relative_weight, cluster=extras.cluster,
     )  # fmt: skip
-    return numbers, learned
+    return (numbers if extras.times is None else numbers.take(extras.written_out)), learned, extras
 
 
 @dataclass(frozen=True)
@@ -142,21 +145,27 @@ class _Asked:
     columns: Mapping[str, Column]
     table: Table
     beside: Beside
+    extras: Extras
     units: dict[str, str]
 
     def problem(self, numbers: Rows, learned: Learned, sample: RowNotes, frame_name: str) -> Problem:
-        roles, design = self.roles, learned.design
+        roles, design, response = self.roles, learned.design, self._response()
+        index = self.table.index[~sample.bad]
         date = self.columns[roles.focus].kind == "dates"
         if date:
             self.units.setdefault(roles.focus, "days")
         arbitrary = hints.zero_is_arbitrary(roles.focus, self.units.get(roles.focus, ""), learned.x, date=date)
         return Problem(
             formula=self.formula.text,
-            response=roles.response,
+            response=response,
+            response_column=roles.response,
+            beside=self.beside,
+            average_weight=self.extras.average_weight,
             focus=roles.focus,
             covariates=roles.covariates,
             rows=numbers,
-            index=self.table.index[~sample.bad],
+            index=index if self.extras.times is None else index[self.extras.written_out],
+            times=self.extras.times,
             left_out=sample.left_out(self.table.index),
             announcements=tuple(self._announcements(learned, sample, arbitrary)),
             units=self.units,
@@ -166,6 +175,16 @@ class _Asked:
             design=design,
             frame_name=frame_name,
         )
+
+    def _response(self) -> str:
+        """The name of what is analysed: the response, or the response per unit of exposure."""
+        name, exposure = self.roles.response, self.beside.exposure
+        if exposure is None:
+            return name
+        rate = f"{name} per {exposure}"
+        if name in self.units and exposure in self.units:
+            self.units.setdefault(rate, f"{self.units[name]}/{self.units[exposure]}")
+        return rate
 
     def _announcements(self, learned: Learned, sample: RowNotes, arbitrary: str) -> Iterator[str]:
         """Every choice made that the user should know, and every question to ask."""
@@ -178,6 +197,7 @@ class _Asked:
             yield f"{int(sample.bad.sum())} of {len(rows)} rows are left out: {sample.summary()}."
         yield from hints.read_differently(columns, slots, roles.response)
         yield from hints.powers(self.formula, roles.focus)
+        yield from self._beside()
         if learned.empty:
             yield "Left out because no rows hold them: " + ", ".join(learned.empty) + "."
         if learned.dropped:
@@ -195,3 +215,23 @@ class _Asked:
         if self.beside.cluster is None:
             used = {roles.response, *numeric, *self.beside.columns.values()}
             yield from hints.dependence(self.table, rows, grouped=grouped, numeric=used)
+
+    def _beside(self) -> Iterator[str]:
+        """What weights, clusters and exposure make of the rows."""
+        beside, extras = self.beside, self.extras
+        if extras.times is not None:
+            yield f"{len(extras.times):,} stored rows stand for {int(extras.times.sum()):,} ({beside.weights})."
+        if extras.weights is not None:
+            yield (
+                f"Weighted by {beside.weights}: errors, spreads and intervals for a new row are those of a row of "
+                f"average weight ({extras.average_weight:.4g})."
+            )
+        if extras.exposure is not None:
+            yield (
+                f"{self.roles.response} is taken per unit of {beside.exposure}, rows weighted by {beside.exposure}: "
+                f"errors and spreads are those of a row with average exposure ({extras.average_weight:.4g})."
+            )
+        if extras.cluster is not None:
+            groups = int(extras.cluster.max()) + 1
+            few = " That is few: intervals by cluster need about 10." if groups < FEW_CLUSTERS else ""
+            yield f"{groups:,} clusters by {beside.cluster}; intervals and folds keep each together.{few}"

@@ -107,7 +107,7 @@ def _owned(problem: Problem, est: Estimate) -> Iterator[str]:
 
 
 def _few(problem: Problem, est: Estimate) -> Iterator[str]:
-    n, k = problem.rows.n, est.parameters
+    n, k = problem.rows.count, est.parameters
     if n < FEW:
         yield f"Only {n} rows: single rows can turn the answer, and no test here could see a moderate bend."
     elif n < PER_CONSTANT * k:

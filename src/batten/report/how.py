@@ -36,7 +36,7 @@ def rows_words(exam: Examination) -> str:
     """The formula and the rows that every remedy shares."""
     p = exam.problem
     lost = left_out_words(p) or "None were left out."
-    rows = f"{p.rows.n:,} rows, the same for every remedy"
+    rows = f"{p.rows.count:,} rows, the same for every remedy"
     return f"Formula: {plain(p.formula)}, on {plain(p.frame_name)}: {rows}. {lost}"
 
 

@@ -83,7 +83,7 @@ body { background: #fff; margin: 2.5em auto; max-width: 68em; padding: 0 1.5em; 
 
 def _first_screen(exam: Examination, *, title: str, part: str) -> list[str]:
     """Verdict, figure, rows, span, reasons, cautions. title, part: tags of the headline and of the reasons' heading."""
-    rows = f"{exam.problem.rows.n:,} rows. {left_out_words(exam.problem)}".strip()
+    rows = f"{exam.problem.rows.count:,} rows. {left_out_words(exam.problem)}".strip()
     span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
     return [
         f'<{title} class="batten-headline"><strong>{esc(headline(exam))}</strong></{title}>',

@@ -18,7 +18,7 @@ __all__ = ["headline", "text_summary"]
 
 def text_summary(exam: Examination, *, width: int = 100) -> str:
     """Verdict, choice, the first rows of the table, the span, the reasons, and what to mind."""
-    rows = f"{exam.problem.rows.n:,} rows. {left_out_words(exam.problem)}".strip()
+    rows = f"{exam.problem.rows.count:,} rows. {left_out_words(exam.problem)}".strip()
     parts = [
         _wrapped(headline(exam), width),
         _wrapped(f"{trial_words(exam)} {rows}", width),

@@ -44,7 +44,7 @@ def _rows(exam: Examination) -> str:
     lost = left_out_words(p) or "No row was left out."
     return (
         f"{_with_unit(exam, p.response)} was regressed on {_with_unit(exam, p.focus)}{beside} "
-        f"(formula {plain(p.formula)}; n = {p.rows.n:,}). {lost}"
+        f"(formula {plain(p.formula)}; n = {p.rows.count:,}). {lost}"
     )
 
 

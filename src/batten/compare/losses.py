@@ -1,0 +1,101 @@
+"""What held-out rows lose: errors in units of y and log scores of fits made without them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.special import gammaln
+
+from batten.engine.rows import Array, Ints
+from batten.families.base import Constants, Scale
+from batten.fit.estimate import Estimate
+from batten.fit.smear import mean_of
+
+__all__ = ["Split", "Trained", "losses", "losses_together"]
+
+
+@dataclass(frozen=True, eq=False)
+class Split:
+    """Training rows, held-out rows, and the training rows' x in rising order."""
+
+    train: Ints
+    test: Ints
+    sorted_x: Array
+
+
+@dataclass(frozen=True, eq=False)
+class Trained:
+    """One training set's fit: linear predictor of all rows times sqrt(w) (n,), the scale's constants, and
+    v = w x0'(X'WX)^-1 x0 of the held-out rows."""
+
+    eta: Array
+    c: Constants
+    v: Array
+    columns: int
+
+
+def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Array | None:
+    """Squared and absolute error, share within 10% and log score of sets of one size (4, S), or None where one of them
+    has no finite mean."""
+    scale, rows, y, root = est.scale, est.rows, est.rows.y, est.rows.root_weight
+    train, test = np.stack([split.train for split in sets]), np.stack([split.test for split in sets])
+    c = [fit.c for fit in fits]
+    moved = any(constants != est.c for constants in c)
+    z = np.stack([rows.weigh(scale.forward(y, constants)) for constants in c]) if moved else est.z[None]
+    z = np.broadcast_to(z, (len(sets), est.n))
+    every = np.stack([fit.eta for fit in fits])
+    weighted = np.take_along_axis(every, test, axis=1)
+    eta = weighted if rows.weights is None else weighted / root[test]
+    residual = np.take_along_axis(z, train, axis=1) - np.take_along_axis(every, train, axis=1)
+    if not _sound(scale, c, eta, residual):
+        return None
+    middle = eta + np.median(residual, axis=1)[:, None]
+    with np.errstate(all="ignore"):
+        mean = mean_of(scale, c, eta, residual)
+        median = np.stack([scale.inverse(row, k) for row, k in zip(middle, c, strict=True)])
+    if not np.isfinite(mean).all():
+        return None
+    df = train.shape[1] - np.array([fit.columns for fit in fits])
+    jacobian = np.stack([scale.log_jacobian(y[rows], k) for rows, k in zip(test, c, strict=True)])
+    score = _log_t(np.take_along_axis(z, test, axis=1) - weighted, residual, np.stack([fit.v for fit in fits]), df)
+    if rows.weights is not None:
+        jacobian = jacobian + np.log(root[test])
+    return np.vstack([losses(y[test], mean, median, rows.weights, test), (score + jacobian).mean(axis=1)])
+
+
+def _sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
+    """Whether every eta, and every pair eta + e, can be brought back in every set.
+
+    A closed boundary is kept to; an open one, where the inverse is infinite, must not be reached.
+    """
+    for k, low_eta, high_eta, low_e, high_e in zip(
+        c, eta.min(axis=1), eta.max(axis=1), residual.min(axis=1), residual.max(axis=1), strict=True
+    ):
+        low, high = scale.limits(k)
+        if not low_eta > low or not high_eta < high:
+            return False
+        edges = [low] if low_eta + low_e <= low else []
+        edges += [high] if high_eta + high_e >= high else []
+        with np.errstate(all="ignore"):
+            if not all(np.isfinite(scale.inverse(np.array([edge]), k)[0]) for edge in edges):
+                return False
+    return True
+
+
+def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: Ints) -> Array:
+    """Mean losses over the last axis of the held-out rows `test`: (..., n) -> (3, ...)."""
+    squared, absolute, within = (y - mean) ** 2, np.abs(y - median), np.abs(y - mean) <= 0.1 * np.abs(y)
+    if weights is not None:
+        squared, absolute = squared * weights[test], absolute * np.sqrt(weights[test])
+    return np.array([squared.mean(axis=-1), absolute.mean(axis=-1), within.mean(axis=-1)])
+
+
+def _log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
+    """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance."""
+    d = df[:, None]
+    variance = ((residual**2).sum(axis=1) / df)[:, None] * (1 + v)
+    return np.asarray(
+        gammaln((d + 1) / 2) - gammaln(d / 2) - 0.5 * np.log(d * np.pi * variance)
+        - (d + 1) / 2 * np.log1p(error**2 / (variance * d))
+    )  # fmt: skip
