@@ -36,7 +36,7 @@ def _scaled_rss(a: Asked, power: str) -> float:
     """
     f = Fitted(_power_form(a))
     est = f.fit.estimate
-    likelihood = profile_likelihood(scale_power(est.scale), f.y, est.factored.q, float(power))
+    likelihood = profile_likelihood(scale_power(est.scale, est.rows), f.y, est.factored.q, float(power))
     return f.fit.rows * math.exp(-2 * likelihood / f.fit.rows - 1) / (2 * math.pi)
 
 

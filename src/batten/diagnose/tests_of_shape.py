@@ -16,6 +16,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import stats
 
+from batten.diagnose.ladder_tests import pe_columns
 from batten.diagnose.repeats import repeat_groups
 from batten.diagnose.robust import scores_of_last
 from batten.diagnose.span import basis, beyond, has_constant, outside, whitened
@@ -170,10 +171,10 @@ def pe_test(X_level: Array, y: Array, *, X_log: Array | None = None) -> BothScal
     Q_level, Q_log = basis(X_level), basis(X_log)
     log_y = np.log(y)
     level_fit, log_fit = Q_level @ (Q_level.T @ y), Q_log @ (Q_log.T @ log_y)
-    if np.min(level_fit) <= 0:
+    columns = pe_columns(level_fit, log_fit)
+    if columns is None:
         return None
-    level = one_column(X_level, log_fit - np.log(level_fit), y)
-    log = one_column(X_log, level_fit - np.exp(log_fit), log_y)
+    level, log = one_column(X_level, columns[0], y), one_column(X_log, columns[1], log_y)
     return None if level is None or log is None else BothScales(level, log)
 
 

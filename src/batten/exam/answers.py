@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
@@ -11,9 +12,10 @@ from batten.effects.checks import Check
 from batten.effects.groups import GroupEffect
 from batten.effects.lookup import LookupRow
 from batten.effects.slopes import SlopeAt
+from batten.effects.summary import Entry
 from batten.effects.value import Effect
 
-__all__ = ["check_table", "effect_table", "group_table", "lookup_table", "slope_table"]
+__all__ = ["check_table", "effect_table", "group_table", "lookup_table", "slope_table", "summary_table"]
 
 
 def effect_table(effects: Mapping[str, Effect], *, name: str) -> pd.DataFrame:
@@ -63,10 +65,23 @@ def lookup_table(rows: tuple[LookupRow, ...], *, focus: str) -> pd.DataFrame:
 
 
 def check_table(checks: tuple[Check, ...], labels: pd.Index) -> pd.DataFrame:
-    """asked, size, unit, p, reading by check; a row's position in a reading becomes the label the user gave it."""
-    rows = [
-        (c.asked, c.size, c.unit, c.p, c.reading if c.row is None else c.reading.replace("{row}", str(labels[c.row])))
-        for c in checks
-    ]
-    columns = ["asked", "size", "unit", "p", "reading"]
+    """One row per check; a row's position in a reading becomes the label the user gave it.
+
+    about, asked, test, statistic, df, df_rest, p (missing where there is no test), size, unit, reading.
+    """
+    rows = []
+    for c in checks:
+        kind, statistic, df = ("", math.nan, ()) if c.test is None else (c.test.kind, c.test.statistic, c.test.df)
+        first, second = (*map(float, df), math.nan, math.nan)[:2]
+        reading = c.reading if c.row is None else c.reading.replace("{row}", str(labels[c.row]))
+        rows.append((c.about, c.asked, kind, statistic, first, second, c.p, c.size, c.unit, reading))
+    columns = ["about", "asked", "test", "statistic", "df", "df_rest", "p", "size", "unit", "reading"]
     return pd.DataFrame(rows, columns=columns, index=pd.Index([c.name for c in checks], name="check"))
+
+
+def summary_table(entries: tuple[Entry, ...]) -> pd.DataFrame:
+    """value, unit, note by name."""
+    index = pd.Index([e.name for e in entries], name="number")
+    values = pd.Series([e.value for e in entries], index=index, dtype=object)  # whole numbers stay whole
+    told = [(e.unit, e.note) for e in entries]
+    return pd.DataFrame(told, columns=["unit", "note"], index=index).assign(value=values)[["value", "unit", "note"]]
