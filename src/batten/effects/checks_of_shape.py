@@ -24,8 +24,8 @@ __all__ = ["bending_columns", "checks_of_shape"]
 
 #: rows up to which a search is repeated on resamples, and up to which rows are predicted in turn
 RESAMPLED, IN_TURN = 5_000, 20_000
-#: places looked at, and resamples
-PLACES, RESAMPLES = 20, 999
+#: resamples of a search
+RESAMPLES = 999
 
 
 def checks_of_shape(est: Estimate, work: Working, names: Names, *, errors: str, every: bool) -> Iterator[Check | None]:
@@ -165,7 +165,7 @@ def _kink_resampled(est: Estimate, work: Working, names: Names, errors: str) -> 
     if est.n > RESAMPLED:
         return None
     rows, line = est.rows, _line(est)
-    columns = rows.weigh(hinge_columns(rows.x, candidate_places(rows.x, count=PLACES)))
+    columns = rows.weigh(hinge_columns(rows.x, candidate_places(rows.x)))
     found = sup_f(
         line, columns, work.z, rng=np.random.default_rng(0), resamples=RESAMPLES, wild=errors == "robust",
         cluster=work.cluster,

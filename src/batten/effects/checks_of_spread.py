@@ -22,6 +22,7 @@ from batten.effects.checks_of_shape import bending_columns
 from batten.effects.numbers import about, show
 from batten.effects.tell import Names
 from batten.engine.rows import Array
+from batten.families.shapes.straight import Straight
 from batten.fit.estimate import Estimate
 
 __all__ = ["checks_of_spread"]
@@ -46,7 +47,7 @@ def checks_of_spread(est: Estimate, work: Working, names: Names, *, every: bool)
     if not every:
         return
     columns = _predictors(est)
-    if columns.shape[1] > 1:
+    if columns.shape[1] > 1 or not isinstance(est.shape, Straight):  # else this was the first test
         asked = "is the spread the same whatever the predictors (Koenker)?"
         yield told.along("spread, all predictors", asked, koenker(work.e, columns), _expected(work.e, columns))
     asked = "is the spread the same along the fit (White's special form)?"
