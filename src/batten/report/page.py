@@ -126,7 +126,7 @@ def _tried(exam: Examination, *, figures: bool) -> str:
 
 
 def _checks(exam: Examination) -> str:
-    table = exam.chosen.checks()
+    table = exam.chosen.checks(every=False)
     rows = tuple(
         (plain(name), plain(asked), plain(reading))
         for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)

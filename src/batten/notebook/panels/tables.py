@@ -52,7 +52,7 @@ def predictions_table(fit: Fit, mean: pd.DataFrame, median: pd.DataFrame, new: p
 
 def checks_table(fit: Fit, *, named: bool) -> str:
     """What was checked, and what was found. named: with the names of the tests."""
-    table = fit.checks()
+    table = fit.checks(every=False)
     rows = [
         (plain(name), plain(asked) if named else _METHOD.sub("", plain(asked)), plain(reading))
         for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
