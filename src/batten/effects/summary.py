@@ -208,8 +208,13 @@ def _poisson(est: Estimate) -> Iterator[Entry]:
 
 def _deviance(est: Estimate, names: Names) -> Iterator[Entry]:
     if est.link is None:
-        square = f"{names.y_unit} squared" if plain_scale(est) and names.y_unit else ""
-        yield Entry("residual sum of squares, fitting scale", float(est.residual @ est.residual), square)
+        plain = plain_scale(est)
+        square, of = (
+            f"{names.y_unit} squared" * bool(plain and names.y_unit),
+            names.y if plain else est.scale.words(names.y),
+        )
+        rss = float(est.residual @ est.residual)
+        yield Entry("residual sum of squares, fitting scale", rss, square, f"of {of}")
         for name in ("deviance", "deviance explained", "dispersion"):
             yield Entry(name, math.nan, note=_LEAST_SQUARES)
         return
