@@ -113,7 +113,7 @@ def group_sentences(effects: tuple[GroupEffect, ...], names: Names, *, ratios: b
         amount = told.amount("difference", e.difference, names.y_unit)
         target = f"in the {e.span.of} of {names.y}"
         text = f"{e.label} against {first}: the same step of {names.x} goes with {amount} {target}"
-        if ratios and e.ratio.defined:
+        if ratios and e.ratio.defined and e.ratio.high - e.ratio.low > 1e-9:  # without an interaction ratios are equal
             r = e.ratio
             times = told.number("ratio", r.estimate, width=r.high - r.low)
             text += f"; the ratios differ by a factor of {times} ({told.interval('ratio', r.low, r.high)})"

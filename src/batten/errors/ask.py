@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from batten.errors import InputError, UnknownNameError, closest
 
-__all__ = ["cannot_hold", "not_a_covariate", "not_a_number"]
+__all__ = ["cannot_hold", "not_a_covariate", "not_a_number", "not_groups"]
 
 
 def not_a_number(what: str, given: object) -> InputError:
@@ -19,6 +19,14 @@ def not_a_covariate(column: str, covariates: Sequence[str]) -> UnknownNameError:
     return UnknownNameError(
         f"{column!r} is no covariate of this formula.", f"Its covariates: {known}.", closest(column, list(covariates))
     )
+
+
+def not_groups(column: str) -> InputError:
+    """Effects by group were asked along a number."""
+    return InputError(
+        f"{column!r} is read as a number, not as groups.", "by tells the levels of a group apart.",
+        f"Code it as groups: C({column}) in the formula; or ask fit.by_group({column!r}) for three of its values.",
+    )  # fmt: skip
 
 
 def cannot_hold(at: Mapping[str, object], note: str) -> InputError:

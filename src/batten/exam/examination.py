@@ -16,9 +16,11 @@ from batten.compare.grid import STRAIGHT, Comparison, Progress, compare, extend
 from batten.diagnose.trial import Trial, try_line
 from batten.effects.contrast import span_effect
 from batten.effects.span import round_span
+from batten.errors import ask
 from batten.errors import data as data_errors
 from batten.errors import exam as errors
 from batten.exam.fit import Fit
+from batten.exam.groups import categorical
 from batten.exam.tables import comparison_table, effects_table, refusal_table
 from batten.families import default_grid, expand, parse
 from batten.fit.guard import not_offered
@@ -221,13 +223,13 @@ def examine(
     _check_options(
         aim=aim, level=level, tolerance=tolerance, expect=expect, error_kind=errors, folds=folds, repeats=repeats
     )
-    _not_yet(by=by)
     if cluster is not None and errors == "constant":
         raise data_errors.constant_with_clusters(cluster)
     problem = read(
         formula, data, focus=focus, rows=rows, weights=weights, weights_kind=weights_kind, cluster=cluster,
         exposure=exposure, units=dict(units or {}), env=env, frame_name=frame_name, at=at,
     )  # fmt: skip
+    _check_by(problem, by)
     ends = _span(problem, span)
     keys = (only,) if isinstance(only, str) else tuple(only or ())
     question = Question(
@@ -280,11 +282,11 @@ def _check_options(
         raise errors.bad_number("repeats", repeats, "a whole number from 1 up")
 
 
-def _not_yet(**options: object) -> None:
-    """Options of the contract that come with later work are refused in words, never ignored."""
-    instead = {
-        "by": "Use rows to examine one group at a time, or an interaction in the formula.",
-    }
-    for name, value in options.items():
-        if value is not None:
-            raise errors.later(name, instead[name])
+def _check_by(problem: Problem, by: str | None) -> None:
+    """The question's groups must be a covariate that is read as groups."""
+    if by is None:
+        return
+    if by not in problem.covariates:
+        raise ask.not_a_covariate(by, problem.covariates)
+    if not categorical(problem, by):
+        raise ask.not_groups(by)

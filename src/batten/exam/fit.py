@@ -20,6 +20,7 @@ from batten.effects.groups import GroupEffect, group_effects
 from batten.effects.inverse import Inverse, x_for
 from batten.effects.lookup import lookup, round_places
 from batten.effects.numbers import place, show
+from batten.effects.own_shapes import OwnShapes, own_shapes, own_shapes_sentence
 from batten.effects.rounding import Rounding, roundings
 from batten.effects.sentences import sentences
 from batten.effects.slopes import average, slopes_along
@@ -28,11 +29,12 @@ from batten.effects.support import support
 from batten.effects.tell import Names, Sentence
 from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
+from batten.errors import Refusal
 from batten.errors import data as data_errors
 from batten.errors import exam as errors
 from batten.exam.answers import check_table, effect_table, group_table, lookup_table, slope_table, summary_table
 from batten.exam.given import complete, joined, known, labels_of, number, target
-from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by
+from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by, said
 from batten.families import Remedy
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
@@ -300,10 +302,19 @@ class Fit:
         base, modifier = self._covariates()
         q = self.question
         groups = groups_by(self.problem, q.by) if q.by else interaction_groups(self.problem)
-        return sentences(
+        told = sentences(
             self.estimate, self.names, q.span, of=target(of), errors=q.errors, groups=groups, base=base,
             modifier=modifier, learned=self._advised, turn=self.turning_point(),
         )  # fmt: skip
+        if q.by is None:
+            return told
+        return *told, own_shapes_sentence(self.own_shapes(q.by, of=of), q.by, self.names)
+
+    def own_shapes(self, by: str, of: str = "mean") -> OwnShapes | Refusal:
+        """This remedy with a shape of its own for each level of a covariate: span effects, and whether they differ."""
+        q = self.question
+        groups = {said(level): np.where(rows, 1.0, 0.0) for level, rows in masks_by(self.problem, by).items()}
+        return own_shapes(self.estimate, groups, q.span, of=target(of), level=q.level, errors=q.errors)
 
     def checks(self, every: bool = True) -> pd.DataFrame:
         """What can be checked about this fit: about, asked, test, statistic, df, df_rest, p, size, unit, reading.

@@ -13,7 +13,7 @@ from batten.engine.rows import Array
 from batten.errors import ask
 from batten.frame.problem import Problem
 
-__all__ = ["covariate_rows", "groups_by", "interaction_groups", "masks_by"]
+__all__ = ["categorical", "covariate_rows", "groups_by", "interaction_groups", "masks_by", "said"]
 
 #: a numeric moderator is shown at these quantiles
 QUANTILES = (0.1, 0.5, 0.9)
@@ -30,22 +30,27 @@ def interaction_groups(problem: Problem) -> tuple[Group, ...]:
     return ()
 
 
+def categorical(problem: Problem, column: str) -> bool:
+    """Whether a covariate is read as groups."""
+    values = problem.design.used(problem.index)[column]
+    return not pd.api.types.is_numeric_dtype(values) or values.nunique() == 2 or _is_grouping(problem, column)
+
+
 def groups_by(problem: Problem, column: str) -> tuple[Group, ...]:
     """One group per level of a column, each with its own rows; a number at its 10th, 50th and 90th percentile."""
     if column not in problem.covariates:
         raise ask.not_a_covariate(column, problem.covariates)
-    used = problem.design.used(problem.index)
-    values = used[column]
-    if pd.api.types.is_numeric_dtype(values) and values.nunique() > 2 and not _is_grouping(problem, column):
+    if not categorical(problem, column):
+        values = problem.design.used(problem.index)[column]
         return tuple(_at_value(problem, column, float(np.quantile(values, q))) for q in QUANTILES)
     rows = problem.rows
     return tuple(
-        Group(f"{column} {_said(level)}", rows.base[mask], rows.modifier[mask])
+        Group(f"{column} {said(level)}", rows.base[mask], rows.modifier[mask])
         for level, mask in masks_by(problem, column).items()
     )
 
 
-def _said(level: Any) -> str:
+def said(level: Any) -> str:
     """A level as people write it: numbers that stand for groups are read as floats, and 5.0 is 5."""
     return f"{level:g}" if isinstance(level, float) else str(level)
 

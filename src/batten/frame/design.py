@@ -8,13 +8,13 @@ the focal predictor is left out of the product (as if its column were ones), whi
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any, Literal
 
 import numpy as np
 import pandas as pd
 
-from batten.engine.rows import Array
+from batten.engine.rows import Array, Ints
 from batten.errors import data as errors
 from batten.frame.columns import Column, look
 from batten.frame.evaluate import Values, unknown, worked_out_in_parts
@@ -107,6 +107,10 @@ class Design:
         Numbers are float64, dates are dates; `new_rows` also takes dates as days since the first.
         """
         return pd.DataFrame({name: values.set_axis(index) for name, values in self.read.items()}, index=index)
+
+    def taken(self, rows: Ints) -> Design:
+        """The same for some of the analysis rows, or for repeated ones."""
+        return replace(self, read={name: values.iloc[rows].reset_index(drop=True) for name, values in self.read.items()})
 
     def new_rows(self, frame: Any) -> NewRows:
         """Code further rows with the levels, centres and knots learned here."""

@@ -151,6 +151,8 @@ class _Asked:
     def problem(self, numbers: Rows, learned: Learned, sample: RowNotes, frame_name: str) -> Problem:
         roles, design, response = self.roles, learned.design, self._response()
         index = self.table.index[~sample.bad]
+        if self.extras.times is not None:
+            index, design = index[self.extras.written_out], design.taken(self.extras.written_out)
         date = self.columns[roles.focus].kind == "dates"
         if date:
             self.units.setdefault(roles.focus, "days")
@@ -164,7 +166,7 @@ class _Asked:
             focus=roles.focus,
             covariates=roles.covariates,
             rows=numbers,
-            index=index if self.extras.times is None else index[self.extras.written_out],
+            index=index,
             times=self.extras.times,
             left_out=sample.left_out(self.table.index),
             announcements=tuple(self._announcements(learned, sample, arbitrary)),

@@ -88,7 +88,7 @@ _TABLE = (
     Option("--weights", ("NAME",), "column of weights", _text, "columns"),
     Option("--weights-kind", ("variance|frequency",), "what the weights are", _text, ("variance", "frequency")),
     Option("--cluster", ("NAME",), "column that says which rows belong together", _text, "columns"),
-    Option("--exposure", ("NAME",), "column of exposures, for log links", _text, "columns"),
+    Option("--exposure", ("NAME",), "column that the response is taken per unit of", _text, "columns"),
     Option("--rows", ("EXPRESSION",), 'rows to use, as for DataFrame.query: "mass_kg < 50"', _text, "rows"),
     Option("--by", ("NAME",), "covariate whose groups are told apart", _text, "columns"),
     Option("--at", ("NAME=VALUE",), "hold a covariate at a value (may be repeated)", _pair, "pairs", repeats=True),
