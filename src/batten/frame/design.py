@@ -110,7 +110,8 @@ class Design:
 
     def taken(self, rows: Ints) -> Design:
         """The same for some of the analysis rows, or for repeated ones."""
-        return replace(self, read={name: values.iloc[rows].reset_index(drop=True) for name, values in self.read.items()})
+        read = {name: values.iloc[rows].reset_index(drop=True) for name, values in self.read.items()}
+        return replace(self, read=read)
 
     def new_rows(self, frame: Any) -> NewRows:
         """Code further rows with the levels, centres and knots learned here."""

@@ -74,6 +74,11 @@ class Problem:
     average_weight: float = 1.0
     times: Ints | None = None
 
+    @property
+    def stored(self) -> int:
+        """Rows of the user's frame that are used; frequencies make more of them."""
+        return self.rows.count if self.times is None else len(self.times)
+
     def unit(self, column: str) -> str:
         """Unit of a column, "" when none is known."""
         return self.units.get(column, "")

@@ -135,7 +135,7 @@ def _neighbours(est: Estimate) -> Iterator[str]:
 
 def _left_out(problem: Problem) -> Iterator[str]:
     lost = len(problem.left_out)
-    if lost > LEFT_OUT * (lost + problem.rows.count):
+    if lost > LEFT_OUT * (lost + problem.stored):
         yield f"{left_out_words(problem)} If those rows differ from the rest, so would the answer."
 
 
@@ -147,4 +147,4 @@ def left_out_words(problem: Problem) -> str:
     why = Counter(str(reason) for reason in problem.left_out["why"])
     told = ", ".join(f"{count} {plain(reason)}" for reason, count in why.most_common(3))
     more = f", {len(why) - 3} other reasons" if len(why) > 3 else ""
-    return f"{lost:,} of {lost + problem.rows.count:,} rows were left out ({told}{more})."
+    return f"{lost:,} of {lost + problem.stored:,} rows were left out ({told}{more})."

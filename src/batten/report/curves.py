@@ -14,9 +14,9 @@ import numpy as np
 from batten.effects.contrast import same_group
 from batten.effects.value import Effect, effect_of, undefined
 from batten.engine.rows import Array, Ints
+from batten.fit.averaged import Averaged, interval
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
-from batten.fit.averaged import Averaged, interval
 from batten.fit.means import averaged_means, jackknifed, patterns
 from batten.fit.moved import moved_row_interval
 from batten.fit.predict import positive_by_nature

@@ -37,7 +37,30 @@ def rows_words(exam: Examination) -> str:
     p = exam.problem
     lost = left_out_words(p) or "None were left out."
     rows = f"{p.rows.count:,} rows, the same for every remedy"
-    return f"Formula: {plain(p.formula)}, on {plain(p.frame_name)}: {rows}. {lost}"
+    return f"Formula: {plain(p.formula)}, on {plain(p.frame_name)}: {rows}. {lost} {beside_words(exam)}".rstrip()
+
+
+def beside_words(exam: Examination) -> str:
+    """What weights, clusters and exposure make of the rows, "" without them."""
+    p, beside, told = exam.problem, exam.problem.beside, []
+    if p.times is not None:
+        told.append(f"{p.stored:,} stored rows stand for {p.rows.count:,}, by {plain(beside.weights or '')}.")
+    elif beside.weights is not None:
+        told.append(
+            f"Rows are weighted by {plain(beside.weights)} (variance inversely proportional to it); errors and spreads "
+            "are those of a row of average weight."
+        )
+    if beside.exposure is not None:
+        told.append(
+            f"{plain(p.response_column)} is taken per unit of {plain(beside.exposure)}, and rows are weighted by it; "
+            "errors and spreads are those of a row of average exposure."
+        )
+    if p.rows.cluster is not None:
+        told.append(
+            f"Rows that share {plain(beside.cluster or '')} ({int(p.rows.cluster.max()) + 1:,} clusters) stay together "
+            "in every fold, and errors are by cluster."
+        )
+    return " ".join(told)
 
 
 def scoring_words(exam: Examination) -> str:
@@ -106,13 +129,17 @@ def interval_words(est: Estimate, errors: str) -> str:
         return no_mean_interval(est)
     if errors == "constant":
         return "errors taken to spread evenly, t quantiles"
+    row, kind = ("row", "HC3") if est.clusters is None else ("cluster", "CR3")
     if jackknifed(est):
-        made = "every row left out in turn (jackknife; Wu 1986)"
-    elif est.link is None and est.scale.closed == "identity":
+        made = f"every {row} left out in turn (jackknife; Wu 1986)"
+    elif est.link is None and est.scale.closed == "identity" and est.clusters is None:
         made = "heteroscedasticity-robust errors (HC3; MacKinnon and White 1985)"
+    elif est.link is None and est.scale.closed == "identity":
+        made = "cluster-robust errors (CR3; Bell and McCaffrey 2002)"
     else:
-        made = "the influence of each row (HC3-type)"
-    return f"{made}, t quantiles; of a new row, jackknife+ with each tail by itself (Barber and others 2021)"
+        made = f"the influence of each {row} ({kind}-type)"
+    new = "a new row" if est.clusters is None else "a row of a new cluster"
+    return f"{made}, t quantiles; of {new}, jackknife+ with each tail by itself (Barber and others 2021)"
 
 
 def _band_words(est: Estimate, errors: str) -> str:

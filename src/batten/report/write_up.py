@@ -44,7 +44,7 @@ def _rows(exam: Examination) -> str:
     lost = left_out_words(p) or "No row was left out."
     return (
         f"{_with_unit(exam, p.response)} was regressed on {_with_unit(exam, p.focus)}{beside} "
-        f"(formula {plain(p.formula)}; n = {p.rows.count:,}). {lost}"
+        f"(formula {plain(p.formula)}; n = {p.rows.count:,}). {lost} {how.beside_words(exam)}".rstrip()
     )
 
 
@@ -121,7 +121,8 @@ def _line(exam: Examination) -> str:
     unit = p.unit(p.response)
     width = (trial.gap_high - trial.gap_low) / 10
     limits = f"{show(trial.gap_low, width=width)} to {show(trial.gap_high, unit, width=width)}"
-    test = f"robust F({trial.df[0]}, {trial.df[1]}) = {show(trial.f)}, {how.p_words(trial.p)}"
+    kind = "robust" if p.rows.cluster is None else "cluster-robust"
+    test = f"{kind} F({trial.df[0]}, {trial.df[1]}) = {show(trial.f)}, {how.p_words(trial.p)}"
     return (
         f"The straight line's mean lay up to {show(trial.gap, unit, width=width)} (limits {limits}) from the flexible "
         f"curve ({test}): {trial.verdict}."

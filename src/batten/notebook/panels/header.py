@@ -27,7 +27,7 @@ def header(exam: Examination) -> str:
 
 
 def _rows(problem: Problem) -> str:
-    used, lost = problem.rows.count, len(problem.left_out)
+    used, lost = problem.stored, len(problem.left_out)
     if not lost:
         return f"All {used:,} rows used; choices made"
     return f"{used:,} of {used + lost:,} rows used, {lost:,} left out; choices made"
