@@ -92,8 +92,8 @@ def test_r2_of_a_logged_response_on_both_scales():
     ("key", "value", "aicc"),
     [
         ("y ~ x", -34.135239, 77.270477), ("log y ~ x", -31.678099, 72.356197), ("sqrt y ~ x", -27.600553, 64.201107),
-        ("1/y ~ 1/x", None, None), ("log y ~ log x", -26.174925, 61.349851), ("loglink-gaussian y ~ x", -33.893609, 76.787218),
-        ("loglink-gamma y ~ x", -31.488537, 71.977074), ("boxcox y ~ x", -27.526523, 68.767332),
+        ("1/y ~ 1/x", None, None), ("log y ~ log x", -26.174925, 61.349851), ("boxcox y ~ x", -27.526523, 68.767332),
+        ("loglink-gaussian y ~ x", -33.893609, 76.787218), ("loglink-gamma y ~ x", -31.488537, 71.977074),
     ],
 )  # fmt: skip
 def test_likelihoods_are_in_units_of_y(key, value, aicc):
@@ -241,5 +241,5 @@ def test_covariances_carry_plain_labels_and_agree_with_the_coefficients():
         errors = np.sqrt(np.diagonal(got.to_numpy()))
         assert errors == pytest.approx(fit.coefficients["std_error"].to_numpy(), rel=1e-12)
     assert list(exam["y ~ x"].covariance("constant").index)[-1] == "mass"
-    with pytest.raises(BattenError, match="kind takes one of robust, constant, HC0, HC1, HC2, HC3."):
+    with pytest.raises(BattenError, match=r"kind takes one of robust, constant, HC0, HC1, HC2, HC3\."):
         exam["y ~ x"].covariance("HC4")

@@ -17,7 +17,8 @@ from batten.effects.units import unit_change
 from batten.families import parse
 from batten.families.remedy import Remedy
 from batten.families.shapes.straight import Straight
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 __all__ = ["checks_of_scale"]
 
@@ -155,4 +156,5 @@ def _unit_of_y(est: Estimate, names: Names, span: tuple[float, float]) -> Check 
     if found is None:
         return None
     asked = f"would the answer be the same with {names.y} in hundredths of its unit?"
-    return Check("unit of y", "scale", asked, found.change, names.y_unit, found.words(names))
+    words = found.sentence(names).text
+    return Check("unit of y", "scale", asked, found.change, names.y_unit, words[0].lower() + words[1:].rstrip("."))

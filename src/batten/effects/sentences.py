@@ -2,8 +2,9 @@
 
 First the span, always; then what belongs to the remedy: a reading of its coefficient where one holds all along x, two
 named places where the curve has no single slope, each step of a grouping, both sides of a break, each group of an
-interaction with the difference between them; then what was learned, and where the curve turns. Every number comes with
-its unit, the mean or median it is about, and its interval.
+interaction with the difference between them; then what was learned, where the curve turns, and what another unit of y
+would have given where the scale hangs on it. Every number comes with its unit, the mean or median it is about, and its
+interval.
 """
 
 from __future__ import annotations
@@ -21,6 +22,7 @@ from batten.effects.rounding import Rounding
 from batten.effects.slopes import SlopeAt, breaks, slopes_along
 from batten.effects.tell import UNSETTLED, Names, Sentence, Told
 from batten.effects.turn import Turn
+from batten.effects.units import unit_change
 from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
 
@@ -71,6 +73,9 @@ def sentences(
     out += constant_sentences(learned, names)
     if turn is not None and turn.estimates:
         out.append(turn_sentence(turn, names, of=of))
+    change = unit_change(est, span)
+    if change is not None:
+        out.append(change.sentence(names))
     return tuple(out)
 
 

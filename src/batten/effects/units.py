@@ -8,9 +8,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from batten.effects.contrast import reach_trouble, same_group
-from batten.effects.numbers import show
-from batten.effects.tell import Names
-from batten.fit.estimate import Estimate, estimate
+from batten.effects.tell import Names, Sentence, Told
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 
 __all__ = ["FACTOR", "UnitChange", "unit_change"]
@@ -39,18 +39,21 @@ class UnitChange:
         """Units of y."""
         return self.difference_other - self.difference
 
-    def words(self, names: Names) -> str:
-        """ "counted in hundredths of a min, the difference over the span would be 3.21 min, not 2.84; ..."."""
-        counted = f"with {names.y} in hundredths of {names.y_unit or 'its unit'}"
+    def sentence(self, names: Names) -> Sentence:
+        """ "With minutes in hundredths of min the difference over the span would be 3.21 min, not 2.84 min; ..."."""
+        told, y = Told(names), names.y
+        lead = f"With {y} in hundredths of {names.y_unit or 'its unit'}"
         if self.why:
-            return f"{counted} this remedy cannot be fitted: {self.why}"
-        size = show(self.difference_other, names.y_unit)
-        words = f"{counted} the difference over the span would be {size}, not {show(self.difference)}"
+            return told.sentence("unit", f"{lead} this remedy cannot be fitted: {self.why}.")
+        now = told.number("difference", self.difference, names.y_unit)
+        other = told.number("difference_other", self.difference_other, names.y_unit)
+        text = f"{lead} the difference over the span would be {other}, not {now}"
         if math.isfinite(self.ratio + self.ratio_other):
-            words += f", and the ratio of means {show(self.ratio_other)}, not {show(self.ratio)}"
+            ratios = told.number("ratio_other", self.ratio_other), told.number("ratio", self.ratio)
+            text += f", and the ratio of means {ratios[0]}, not {ratios[1]}"
         if self.zeros:
-            words += f"; {names.y} holds zeros or negatives, so no percent can be read off this scale"
-        return words
+            text += f"; {y} holds zeros or negatives, so this scale has no relative effects"
+        return told.sentence("unit", f"{text}.")
 
 
 def unit_change(est: Estimate, span: tuple[float, float]) -> UnitChange | None:
