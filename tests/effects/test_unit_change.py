@@ -69,7 +69,7 @@ def test_it_stands_in_the_sentences_and_the_checks_and_no_percent_does():
         last = fit.sentences()[-1]
         assert last.kind == "unit"
         assert last.text.startswith("With cost in hundredths of euro the difference over the span would be ")
-        assert last.text.endswith("; cost holds zeros or negatives, so this scale has no relative effects.")
+        assert last.text.endswith("; cost holds zeros or negatives, so nothing relative can be read off this scale.")
         check = fit.checks().loc["unit of y"]
         assert check["size"] == pytest.approx(last.numbers["difference_other"] - last.numbers["difference"], rel=1e-12)
         assert check["reading"] == last.text[0].lower() + last.text[1:-1]

@@ -52,7 +52,7 @@ class UnitChange:
             ratios = told.number("ratio_other", self.ratio_other), told.number("ratio", self.ratio)
             text += f", and the ratio of means {ratios[0]}, not {ratios[1]}"
         if self.zeros:
-            text += f"; {y} holds zeros or negatives, so this scale has no relative effects"
+            text += f"; {y} holds zeros or negatives, so nothing relative can be read off this scale"
         return told.sentence("unit", f"{text}.")
 
 
