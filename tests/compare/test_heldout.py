@@ -11,7 +11,8 @@ from batten.engine.rows import Rows
 from batten.errors import Refusal
 from batten.families import parse
 from batten.families.base import Link
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import means_at_rows
 
 KEYS = [

@@ -9,7 +9,8 @@ from batten.diagnose.bend import Bend, bend_of, flexible, knots_for
 from batten.diagnose.trial import Trial, try_line
 from batten.engine.rows import Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 
 def trial(x: np.ndarray, y: np.ndarray, tolerance: float | None = None) -> Trial:

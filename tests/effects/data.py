@@ -6,7 +6,8 @@ import numpy as np
 
 from batten.engine.rows import Array, Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 __all__ = ["A_D", "A_X", "A_Y", "B_X", "B_Y", "fitted", "rows_of"]
 

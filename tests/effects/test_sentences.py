@@ -19,7 +19,8 @@ from batten.effects.tell import UNSETTLED, Names
 from batten.effects.turn import turning_point
 from batten.engine.rows import Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 NAMES = Names("minutes", "mass", "min", "kg", covariates=True)
 KEYS = [

@@ -14,7 +14,8 @@ from batten.effects.span import round_span
 from batten.emit.numbers import numbers
 from batten.emit.script import script
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
 from batten.frame.read import read
@@ -85,7 +86,7 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
         [] if np.linalg.cond(est.factored.r) > 1e8 else np.column_stack([shown.coef, shown.error]).ravel(),
         [] if shown.smear is None else [shown.smear],
         [v for v in (span.estimate, (span.high - span.low) / 2) if np.isfinite(v)],
-        shown.predictions.ravel(),
+        shown.prediction,
     ])  # fmt: skip
 
 

@@ -10,7 +10,8 @@ import pandas as pd
 from batten.engine.rows import Rows
 from batten.exam.fit import Fit
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.question import Question
 from batten.frame.problem import NewRows, Problem
 

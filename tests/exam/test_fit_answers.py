@@ -14,7 +14,8 @@ import batten
 from batten.errors import BattenError
 from batten.exam.fit import Fit
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.question import Question
 from batten.frame.read import read
 

@@ -18,7 +18,8 @@ from batten.engine.folds import deal
 from batten.engine.rows import Rows
 from batten.errors import BattenError, Refusal
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import means_at_rows
 
 N = 90

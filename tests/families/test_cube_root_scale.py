@@ -9,7 +9,8 @@ from scipy.stats import chi2, norm
 from batten.engine.rows import Rows
 from batten.families import parse
 from batten.families.base import Scale
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 
 ROOT = parse("cbrt y ~ x").left

@@ -8,7 +8,8 @@ import statsmodels.api as sm
 
 from batten.engine.rows import Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 
 def test_the_edge_of_a_cube_is_straight_in_the_cube_root_of_its_volume() -> None:

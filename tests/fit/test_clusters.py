@@ -11,7 +11,8 @@ import statsmodels.api as sm
 from batten.engine.clusters import Clusters
 from batten.engine.rows import Array, Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 from batten.fit.predict import predict
 from batten.fit.slopes import average_slope

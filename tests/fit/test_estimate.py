@@ -9,7 +9,8 @@ from check_data import AD, AX, AY, BX, BY, CX, CY, DX, DY, rows_of
 
 from batten.errors import Refusal
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 
 def fit(y: np.ndarray, x: np.ndarray, key: str, *covariates: np.ndarray) -> Estimate:

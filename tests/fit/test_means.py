@@ -9,7 +9,8 @@ from check_data import AD, AX, AY, DX, DY, rows_of
 
 from batten.families import parse
 from batten.fit.averaged import interval
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 from batten.fit.predict import new_row_interval, predict, total
 from batten.fit.slopes import average_slope

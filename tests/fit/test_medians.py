@@ -8,7 +8,8 @@ import pytest
 from batten.engine.rows import Rows
 from batten.families import parse
 from batten.fit.averaged import interval
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 from batten.fit.medians import middle
 

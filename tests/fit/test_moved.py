@@ -7,7 +7,8 @@ import pytest
 
 from batten.engine.rows import Array, Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.moved import moved_row_interval
 from batten.fit.predict import new_row_interval
 

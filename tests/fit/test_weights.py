@@ -12,7 +12,8 @@ from scipy.optimize import curve_fit, minimize_scalar
 
 from batten.engine.rows import Array, Rows
 from batten.families import parse
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 from batten.fit.predict import predict, total
 

@@ -18,7 +18,8 @@ from batten.engine.threads import one_thread, side_by_side
 from batten.errors import Refusal
 from batten.errors.compare import nothing_fits
 from batten.families.remedy import Remedy, parse
-from batten.fit.estimate import Designs, Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import Designs, estimate
 from batten.fit.means import averaged_means
 from batten.fit.question import Question
 

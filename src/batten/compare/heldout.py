@@ -15,6 +15,7 @@ from functools import partial
 import numpy as np
 
 from batten.compare.losses import Split, Trained, losses, losses_together
+from batten.compare.spread import spread_losses
 from batten.engine.folds import Splits
 from batten.engine.irls import Mean
 from batten.engine.linear import design
@@ -70,7 +71,7 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     members: list[list[int]] = []
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
-        if est.link is None and not est.shape.searched:
+        if est.link is None and not est.shape.searched and est.spread is None:
             shapes.setdefault(est.shape.key, []).append(i)
         else:
             members.append([i])
@@ -79,6 +80,8 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     def scored(group: list[Estimate]) -> list[HeldOut | Refusal]:
         if group[0].link is not None:
             return [_score_link(group[0], sets)]
+        if group[0].spread is not None:
+            return [_score_spread(group[0], sets)]
         if group[0].shape.searched:
             return [_score(group[0], sets, _searched_fits(group[0], sets))]
         return _score_group(group, sets)
@@ -286,6 +289,14 @@ def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
             median = float(np.median(1 + root[train] * (rows.y[train] / mu[s, train] - 1)))
             out[:, first + s] = losses(rows.y[test], mu[s, test], mu[s, test] * median, rows.weights, test)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
+
+
+def _score_spread(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
+    """Losses of a remedy whose weights are learned."""
+    found = spread_losses(est, sets)
+    if isinstance(found, str):
+        return _fewer(est.shape.key) if found == "fewer" else _rank(est.shape.key)
+    return HeldOut(found[0], found[1], found[2], found[3], np.array([len(split.test) for split in sets]))
 
 
 def _inverse(cross: Array) -> Array | None:

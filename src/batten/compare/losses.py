@@ -12,7 +12,7 @@ from batten.families.base import Constants, Scale
 from batten.fit.estimate import Estimate
 from batten.fit.smear import mean_of
 
-__all__ = ["Split", "Trained", "losses", "losses_together"]
+__all__ = ["Split", "Trained", "log_t", "losses", "losses_together"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -58,7 +58,7 @@ def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Ar
         return None
     df = train.shape[1] - np.array([fit.columns for fit in fits])
     jacobian = np.stack([scale.log_jacobian(y[rows], k) for rows, k in zip(test, c, strict=True)])
-    score = _log_t(np.take_along_axis(z, test, axis=1) - weighted, residual, np.stack([fit.v for fit in fits]), df)
+    score = log_t(np.take_along_axis(z, test, axis=1) - weighted, residual, np.stack([fit.v for fit in fits]), df)
     if rows.weights is not None:
         jacobian = jacobian + np.log(root[test])
     return np.vstack([losses(y[test], mean, median, rows.weights, test), (score + jacobian).mean(axis=1)])
@@ -91,7 +91,7 @@ def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: In
     return np.array([squared.mean(axis=-1), absolute.mean(axis=-1), within.mean(axis=-1)])
 
 
-def _log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
+def log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
     """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance."""
     d = df[:, None]
     variance = ((residual**2).sum(axis=1) / df)[:, None] * (1 + v)

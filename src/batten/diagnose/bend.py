@@ -19,7 +19,8 @@ from batten.families.remedy import Remedy
 from batten.families.scales.identity import Identity
 from batten.families.shapes.spline import Spline
 from batten.fit.averaged import Averaged
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 from batten.fit.means import averaged_means
 
 __all__ = ["Bend", "Flexible", "bend_of", "flexible", "knots_for"]

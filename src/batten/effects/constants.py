@@ -13,6 +13,7 @@ from typing import Literal
 import numpy as np
 from scipy.optimize import minimize
 from scipy.stats import f as fisher
+from scipy.stats import norm as normal
 
 from batten.effects.profile import Profile, profile_of_power, profile_of_shape
 from batten.engine.linear import factor, solve
@@ -24,7 +25,7 @@ from batten.fit.searched import weighted_design
 
 __all__ = ["Constant", "learned_constants"]
 
-Kind = Literal["power of y", "power of x", "place in x", "curve", "listed", "fixed"]
+Kind = Literal["power of y", "power of x", "place in x", "curve", "listed", "spread", "fixed"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,7 +62,7 @@ class Constant:
 def learned_constants(est: Estimate, *, x: str = "x", y: str = "y", level: float = 0.95) -> tuple[Constant, ...]:
     """Searched constants first, then a curve's own coefficients, then fixed facts; x, y: names for the words."""
     searched = _searched(est, x, y, level)
-    return (*searched, *_curve_levels(est, x, searched, level), *_facts(est, x, y))
+    return (*searched, *_of_spread(est, y, level), *_curve_levels(est, x, searched, level), *_facts(est, x, y))
 
 
 def _searched(est: Estimate, x: str, y: str, level: float) -> tuple[Constant, ...]:
@@ -74,6 +75,20 @@ def _searched(est: Estimate, x: str, y: str, level: float) -> tuple[Constant, ..
         kind = _kind(est, name)
         out.append(_constant(name, kind, profile_of_shape(est, j, level=level), j))
     return tuple(out)
+
+
+def _of_spread(est: Estimate, y: str, level: float) -> tuple[Constant, ...]:
+    """How the spread changes with the mean, where weights were learned from that; a Wald interval, robust to shape."""
+    spread = est.spread
+    if spread is None:
+        return ()
+    half = float(normal.ppf(0.5 + level / 2)) * spread.error
+    name = f"power of the spread of {y} along its mean"
+    note = "0: the same spread everywhere; 1: in proportion to the mean"
+    if not spread.positive:
+        name = f"growth of the log spread of {y} per {spread.unit:.4g} of its mean"
+        note = "0: the same spread everywhere"
+    return (Constant(name, "spread", spread.power, ((spread.power - half, spread.power + half),), note),)
 
 
 def _kind(est: Estimate, name: str) -> Kind:

@@ -15,7 +15,9 @@ from batten.effects.contrast import SpanEffect, span_effect
 from batten.effects.tell import Names, Sentence, Told
 from batten.engine.rows import Array, Rows
 from batten.errors import Refusal
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
+from batten.fit.spread import given_rows
 
 __all__ = ["OwnShapes", "own_shapes", "own_shapes_sentence"]
 
@@ -39,8 +41,9 @@ def own_shapes(
 ) -> OwnShapes | Refusal:
     """groups: label -> 1.0 in the group's rows, else 0.0 (n,). A refusal where some group cannot carry the shape."""
     marks = np.column_stack(list(groups.values()))
-    rows = _crossed(est.rows, marks)
-    own = est if rows is est.rows else estimate(rows, est.remedy)
+    given = given_rows(est)
+    rows = _crossed(given, marks)
+    own = est if rows is given else estimate(rows, est.remedy)
     if isinstance(own, Refusal):
         return own
     members = [mark > 0 for mark in marks.T]

@@ -13,7 +13,8 @@ from dataclasses import dataclass
 from batten.effects.constants import Constant
 from batten.effects.contrast import span_difference
 from batten.effects.profile import best_given
-from batten.fit.estimate import Estimate, estimate
+from batten.fit.estimate import Estimate
+from batten.fit.fitting import estimate
 
 __all__ = ["Rounding", "roundest", "roundings"]
 

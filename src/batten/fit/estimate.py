@@ -1,38 +1,21 @@
-"""One remedy fitted to one analysis sample, or the reason why it cannot be."""
+"""One remedy fitted to one analysis sample, and what moves it."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
 
 from batten.engine.clusters import OWNS, Clusters
-from batten.engine.irls import Mean, iterate
-from batten.engine.linear import Factored, design, factor, solve
-from batten.engine.power import best_power
+from batten.engine.linear import Factored, design
 from batten.engine.rows import Array, Ints, Rows
-from batten.engine.search import search
-from batten.engine.threads import MANY_ROWS
-from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
-from batten.fit.guard import (
-    aliased,
-    domain_trouble,
-    edge,
-    meets_constant,
-    not_offered,
-    not_settled,
-    too_few,
-)  # fmt: skip
 from batten.fit.powers import in_lambda, likelihood_moves, own_units, pivot
-from batten.fit.searched import scale_power, searched_model, weighted_design
+from batten.fit.spread import Spread
 
-#: (shape's key, theta) -> design and its QR, on one set of rows
-Designs = dict[tuple[str, Constants], tuple[Array, Factored]]
-
-__all__ = ["Designs", "Estimate", "estimate"]
+__all__ = ["Estimate"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -45,6 +28,7 @@ class Estimate:
     weight; for links y - mu. factored: QR of the effective design (coefficients, then theta), rows times sqrt(w), and
     times the working weights for links. leverage (n,). sigma: residual SD on the fitting scale, of a row of average
     weight. log_likelihood: in units of y, None for a pseudo-likelihood. parameters: counted ones, sigma included.
+    spread: what a `weighted` remedy learned; its weights are then among those of `rows`.
     """
 
     remedy: Remedy
@@ -62,6 +46,7 @@ class Estimate:
     log_likelihood: float | None
     parameters: int
     notes: tuple[str, ...] = field(default=())
+    spread: Spread | None = None
 
     @property
     def link(self) -> Link | None:
@@ -220,6 +205,14 @@ class Estimate:
         lost = self.clusters.scores(self.factored.q, self.residual)
         return np.asarray(self.residual + (self.factored.q * lost[self.clusters.code]).sum(axis=1))
 
+    def further_root(self, design: Array, weight: Array | None = None) -> Array:
+        """Root of the weight (k,) of further rows with this design (k, p), that of a row of average weight being one.
+
+        weight (k,): given with the rows, over the average one.
+        """
+        root = np.ones(len(design)) if weight is None else np.sqrt(weight)
+        return root if self.spread is None else root * self.spread.root(design)
+
     def row_moves(self) -> Array:
         """`moves` by row (n, P): that of the row's cluster where there are clusters."""
         return self.moves() if self.clusters is None else self.moves()[self.clusters.code]
@@ -240,10 +233,14 @@ class Estimate:
         return 1.0 if self.clusters is None else float(np.sqrt(1 - 1 / self.clusters.count))
 
     def _score(self) -> Array:
-        """Residual of the weighted least squares whose QR is `factored` (n,): for links sqrt(w) (y - mu) / sqrt V."""
+        """Residual of the weighted least squares whose QR is `factored` (n,): for links sqrt(w) (y - mu) / sqrt V.
+
+        With the sign of d mu / d eta, for the working weights hold its size only.
+        """
         if self.link is None:
             return self.residual
-        return self.rows.weigh(self.residual / np.sqrt(self.link.variance(self.mu)))
+        side = np.sign(self.link.mean_slope(self.eta))
+        return self.rows.weigh(side * self.residual / np.sqrt(self.link.variance(self.mu)))
 
     def covariance(self, kind: str = "robust") -> Array:
         """Covariance of (coef, theta, c) (P, P).
@@ -254,143 +251,3 @@ class Estimate:
             d = self.moves() * self.few_clusters
             return np.asarray(d.T @ d)
         return np.asarray(self.factored.inverse_cross * self.sigma**2)
-
-
-def estimate(
-    rows: Rows,
-    remedy: Remedy,
-    *,
-    theta: Constants | None = None,
-    c: Constants | None = None,
-    designs: Designs | None = None,
-) -> Estimate | Refusal:
-    """Fit a remedy; a remedy that cannot be used on these rows comes back as a Refusal.
-
-    designs: designs and their factors on these rows, shared by the remedies of one shape; filled along the way.
-    theta, c: constants set by hand (a profile, a dragged lambda); learned from the rows when None.
-    """
-    refusal = not_offered(remedy) or remedy.left.refuse(rows.y) or remedy.shape.refuse(rows.x) or too_few(rows, remedy)
-    if refusal:
-        return refusal
-    state = remedy.shape.learn(rows.x, constant=meets_constant(rows, remedy.shape))
-    if isinstance(remedy.left, Link):
-        return _fit_link(rows, remedy, state, theta)
-    return _fit_scale(rows, remedy, state, theta, c, {} if designs is None else designs)
-
-
-def _fit_scale(
-    rows: Rows,
-    remedy: Remedy,
-    state: Constants,
-    theta: Constants | None,
-    c: Constants | None,
-    designs: Designs,
-) -> Estimate | Refusal:
-    scale, shape = remedy.left, remedy.shape
-    assert isinstance(scale, Scale)
-    by_hand = (theta is not None and bool(shape.searched)) or (c is not None and bool(scale.searched))
-    constants = _constants(rows, remedy, state, theta, c)
-    if isinstance(constants, Refusal):
-        return constants
-    t, c = constants
-    if (shape.key, t) not in designs:
-        x = weighted_design(rows, shape, state, t)
-        if not np.isfinite(x).all():
-            return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
-        designs[shape.key, t] = x, factor(x)
-    x, linear = designs[shape.key, t]
-    if linear.aliased:
-        return aliased(remedy, linear.aliased, x.shape[1])
-    z = rows.weigh(scale.forward(rows.y, c))
-    coef, residual = solve(linear, x, z)
-    eta = (z - residual) / rows.root_weight
-    trouble = domain_trouble(scale, c, eta, residual)
-    if trouble:
-        return trouble
-    df = rows.count - x.shape[1] - (0 if shape.finite else len(t))
-    rss = float(residual @ residual)
-    est = Estimate(
-        remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
-        factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
-        log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c) + np.log(rows.root_weight)),
-        parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0),
-        notes=("constant set by hand; not ranked",) if by_hand else (),
-    )  # fmt: skip
-    if not est.moving:
-        return est
-    full = est.jacobian_at(rows.x, rows.base, rows.modifier)
-    effective = factor(rows.weigh(full[:, :-1] if scale.searched else full))
-    return not_settled(shape) if effective.aliased else replace(est, factored=effective)
-
-
-def _constants(
-    rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None, c: Constants | None
-) -> tuple[Constants, Constants] | Refusal:
-    """The searched constants (theta, c); where both are searched, each in turn until neither moves."""
-    scale, shape = remedy.left, remedy.shape
-    assert isinstance(scale, Scale)
-    search_t, search_c = bool(shape.searched) and theta is None, bool(scale.searched) and c is None
-    t: Constants = theta or ()
-    if c is None:
-        c = (1.0,) if scale.searched else scale.learn(rows.y)
-    model = searched_model(rows, shape, state) if search_t else None
-    for turn in range(40 if search_t and search_c else 1):
-        before = (*t, *c)
-        if model is not None:
-            found = search(
-                model, rows.weigh(scale.forward(rows.y, c)), start=np.array(t) if turn else None,
-                precision=1e-13 if rows.count <= MANY_ROWS else 1e-10,
-            )  # fmt: skip
-            if not found.settled:
-                return not_settled(shape)
-            t = tuple(float(v) for v in found.theta)
-        if search_c:
-            x = weighted_design(rows, shape, state, t)
-            power = scale_power(scale, rows)
-            lam, inside = best_power(power, rows.y, factor(x).q, start=c[0] if turn else None)
-            if not inside:
-                return edge(scale, lam)
-            c = (lam,)
-        if turn and max(abs(new - old) for new, old in zip((*t, *c), before, strict=True)) < 1e-9:
-            break
-    return t, c
-
-
-def _likelihood(rss: float, n: int, log_jacobian: Array) -> float | None:
-    """Gaussian log-likelihood plus the log-Jacobian of sqrt(w) T, in units of y (Box and Cox 1964). None for RSS 0."""
-    if rss <= 0:
-        return None
-    return float(-0.5 * n * (np.log(2 * np.pi * rss / n) + 1) + log_jacobian.sum())
-
-
-def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None) -> Estimate | Refusal:
-    link, shape = remedy.left, remedy.shape
-    assert isinstance(link, Link)
-    t = theta or ()
-    if shape.searched and theta is None:
-        return Refusal(
-            "A link with a shape whose constant is searched is not offered.", f"{remedy.key}.",
-            "Use a spline under the link, or the same shape on log y.",
-        )  # fmt: skip
-    x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
-    repeated = factor(x).aliased
-    if repeated:
-        return aliased(remedy, repeated, x.shape[1])
-    model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
-    done = iterate(model, x, rows.y, eta=link.start(rows.y), prior=rows.weights)
-    if not done.settled or not np.isfinite(done.mu).all():
-        return Refusal(
-            "The fit of this mean model does not settle.",
-            "A coefficient runs away: some pattern of the predictors may hold only zeros, or fits perfectly.",
-            "A scale of y (log y, sqrt y) or fewer columns.",
-        )
-    df = rows.count - x.shape[1]
-    residual = rows.y - done.mu
-    likelihood = link.log_likelihood(rows.y, done.mu) if rows.weights is None else None
-    pearson = float((rows.weigh(residual) ** 2 / link.variance(done.mu)).sum())
-    return Estimate(
-        remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef, z=rows.y, eta=done.eta,
-        residual=residual, factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
-        sigma=float(np.sqrt(pearson / df)), log_likelihood=likelihood,
-        parameters=x.shape[1] + 1,
-    )  # fmt: skip

@@ -19,10 +19,11 @@ def meets_constant(rows: Rows, shape: Shape) -> bool:
 
 def not_offered(remedy: Remedy) -> Refusal | None:
     """Members that the grammar knows and this version cannot fit yet."""
-    if remedy.weighted:
+    if remedy.weighted and (remedy.left.key != "y" or remedy.shape.searched):
         return Refusal(
-            "Weights learned from the spread are not offered in this version.", f"{remedy.key}.",
-            "Robust errors, which hold whatever the spread (the default), or log y where it grows with the level.",
+            "Weights learned from the spread go with y itself, on a shape without searched constants.",
+            f"{remedy.key}: a scale or link of y changes its spread already, and a search would move with the weights.",
+            "weighted y ~ x, or weighted y on a spline; or this remedy without weights, whose errors are robust.",
         )  # fmt: skip
     if remedy.shape.family == "smooth":
         return Refusal(

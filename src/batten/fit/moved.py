@@ -39,22 +39,23 @@ def moved_row_interval(
     bring_back = _own_errors(est, some, moves)
     for g, x in enumerate(xs):
         j = est.jacobian_at(np.full(len(some), x), base[some], modifier[some])
-        eta = j[:, : len(est.coef)] @ est.coef
+        design = j[:, : len(est.coef)]
+        eta = design @ est.coef
         if moves is not None:
             eta = eta + np.einsum("np,np->n", moves, j)
-        ordered = np.partition(bring_back(eta), [first, last])
+        ordered = np.partition(bring_back(eta, est.further_root(design)), [first, last])
         low[g], high[g] = ordered[first], ordered[last]
     return low, high
 
 
-def _own_errors(est: Estimate, some: Ints, moves: Array | None) -> Callable[[Array], Array]:
-    """The map from the chosen rows' linear predictors to y, each with its own left-out error."""
+def _own_errors(est: Estimate, some: Ints, moves: Array | None) -> Callable[[Array, Array], Array]:
+    """The map from the chosen rows' linear predictors, and roots of weights, to y, each with its own left-out error."""
     link = est.remedy.left
     if not isinstance(link, Link):
         error = est.left_out_residual[some]
-        return lambda eta: est.scale.inverse(eta + error, est.c)
+        return lambda eta, root: est.scale.inverse(eta + error / root, est.c)
     own = est.eta[some]
     if moves is not None:
         own = own + np.einsum("np,np->n", moves, est.residual_jacobian[some])
-    y, mu, root = est.rows.y[some], link.mean(own), 1 / est.rows.root_weight[some]
-    return lambda eta: further_values(est, link.mean(eta), mu, y, root)
+    y, mu, before = est.rows.y[some], link.mean(own), est.rows.root_weight[some]
+    return lambda eta, root: further_values(est, link.mean(eta), mu, y, root / before)

@@ -97,10 +97,10 @@ def new_row_interval(
     shape assumed; constant errors, or too few rows for the level: the t interval on the fitting scale. Ends are mapped
     by the inverse, which keeps their coverage.
     """
-    root = np.ones(len(x)) if weight is None else np.sqrt(weight)
-    if isinstance(est.remedy.left, Link):
-        return _link_interval(est, est.jacobian_at(x, base, modifier), root, level=level)
     j = est.jacobian_at(x, base, modifier)
+    root = est.further_root(j[:, : len(est.coef)], weight)
+    if isinstance(est.remedy.left, Link):
+        return _link_interval(est, j, root, level=level)
     eta = j[:, : len(est.coef)] @ est.coef
     if errors == "robust" and est.n >= rows_needed(level):
         low, high = _from_deletions(est, j, eta, root, level=level)
@@ -191,8 +191,8 @@ def total(
         value += float(averaged.value @ amount[some])
     if root is not None:
         shared = float(root @ root)
-    variance = _row_variance(est, est.design_at(x, base, modifier) @ est.coef)
-    own = float((variance * amount**2 / (1.0 if weight is None else weight)).sum())
+    design = est.design_at(x, base, modifier)
+    own = float((_row_variance(est, design @ est.coef) * (amount / est.further_root(design, weight)) ** 2).sum())
     half = float(student.ppf(0.5 + level / 2, est.df_error)) * float(np.sqrt(shared + own))
     return Total(value, value - half, value + half, float(np.sqrt(shared)), float(np.sqrt(own)))
 
