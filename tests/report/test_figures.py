@@ -17,8 +17,8 @@ from situations import QUICK, examined
 
 from batten.exam.examination import Examination
 from batten.report import figures
-from batten.report.canvas import round_places
 from batten.report.plot_left import running_median
+from batten.report.scales import round_places
 
 MAKERS: dict[str, Callable[[Examination], figures.Picture]] = {
     "line against choice": figures.line_against_choice,
@@ -208,11 +208,12 @@ def test_the_spans_figure_has_an_interval_for_every_remedy_that_has_an_answer() 
     table = exam.table()
     made = figures.spans_figure(exam)
     ax = made.axes[0]
-    drawn = {float(line.get_xdata()[0]) for line in ax.get_lines() if line.get_marker() == "o"}
+    points = [line for line in ax.get_lines() if line.get_marker() == "o"]
+    drawn = {float(x) for line in points for x in line.get_xdata()}
     low, high = ax.get_xlim()
     wanted = {float(v) for v in table["difference"].dropna() if low <= v <= high}
     assert drawn == wanted
-    filled = sum(line.get_marker() == "o" and line.get_markerfacecolor() != "#ffffff" for line in ax.get_lines())
+    filled = sum(len(line.get_xdata()) for line in points if line.get_markerfacecolor() != "#ffffff")
     assert filled == int((table["tied"] & table["difference"].between(low, high)).sum())
     assert f"{len(exam.refused)} that cannot be used" in figures.describe(made)
 

@@ -11,7 +11,10 @@ from matplotlib.ft2font import FT2Font, LoadFlags
 
 from batten.report.style import FONT, TEXT
 
-__all__ = ["drawn", "families", "fitted", "plain", "shortened", "titled", "width_of", "wrapped"]
+__all__ = [
+    "MEASURED", "advance", "drawn", "families", "fitted", "font_of", "plain", "shortened", "titled", "width_of",
+    "wrapped",
+]  # fmt: skip
 
 #: tried, where installed, for letters that the first font lacks
 _FURTHER = (
@@ -20,7 +23,7 @@ _FURTHER = (
 )  # fmt: skip
 _MISSING = "□"
 #: points at which letters are measured
-_MEASURED = 100
+MEASURED = 100
 
 
 def plain(text: object) -> str:
@@ -70,12 +73,12 @@ def titled(name: object, unit: object = "", *, limit: int = 60) -> str:
 
 def drawn(text: str) -> str:
     """The text with a box for every letter that no font here can draw."""
-    return "".join(c if c == "\n" or _font_of(c, False) is not None else _MISSING for c in text)
+    return "".join(c if c == "\n" or font_of(c, False) is not None else _MISSING for c in text)
 
 
 def width_of(text: str, *, size: float = TEXT, bold: bool = False) -> float:
     """Inches that one line of text takes."""
-    return sum(_advance(c, bold) for c in text) * size / 72
+    return sum(advance(c, bold) for c in text) * size / 72
 
 
 @cache
@@ -108,17 +111,18 @@ def _pieces(word: str, inches: float, size: float, bold: bool) -> list[str]:
 
 
 @cache
-def _advance(letter: str, bold: bool) -> float:
+def advance(letter: str, bold: bool) -> float:
     """Width of a letter, or of the box drawn for it, as a share of the type size."""
-    font = _font_of(letter, bold)
+    font = font_of(letter, bold)
     if font is None:
-        return 1.0 if letter == _MISSING else _advance(_MISSING, bold)
-    font.set_size(_MEASURED, 72)
-    return font.load_char(ord(letter), flags=LoadFlags.NO_HINTING).linearHoriAdvance / 65536 / _MEASURED
+        return 1.0 if letter == _MISSING else advance(_MISSING, bold)
+    font.set_size(MEASURED, 72)
+    return font.load_char(ord(letter), flags=LoadFlags.NO_HINTING).linearHoriAdvance / 65536 / MEASURED
 
 
 @cache
-def _font_of(letter: str, bold: bool) -> FT2Font | None:
+def font_of(letter: str, bold: bool) -> FT2Font | None:
+    """The first font that has a letter, a copy that nothing else draws with; None where none has."""
     return next((font for font in _fonts(bold) if font.get_char_index(ord(letter))), None)
 
 

@@ -11,7 +11,7 @@ from matplotlib.figure import Figure
 
 from batten.engine.rows import Array, Ints
 from batten.report import style
-from batten.report.canvas import letters
+from batten.report.canvas import inches, letters, strokes
 from batten.report.curves import Curve, Ground
 from batten.report.lettering import fitted, titled, wrapped
 
@@ -49,9 +49,9 @@ def scatter(ax: Axes, x: Array, y: Array) -> None:
 
 def rug(ax: Axes, x: Array) -> None:
     """Where the rows are, as short strokes on the axis."""
-    ax.vlines(
-        x, 0, 0.022, transform=ax.get_xaxis_transform(), colors=style.QUIET, linewidth=0.5, zorder=2.2,
-        alpha=0.7 if len(x) <= 300 else 0.22, linestyles="solid", antialiaseds=True,
+    strokes(
+        ax, np.stack([np.column_stack([x, np.zeros(len(x))]), np.column_stack([x, np.full(len(x), 0.022)])], axis=1),
+        ax.get_xaxis_transform(), color=style.QUIET, width=0.5, zorder=2.2, alpha=0.7 if len(x) <= 300 else 0.22,
     )  # fmt: skip
 
 
@@ -167,12 +167,3 @@ def _apart(wanted: Sequence[tuple[float, float]]) -> list[float]:
         out[i] = min(out[i], ceiling - wanted[i][1] / 2)
         ceiling = out[i] - wanted[i][1] / 2
     return out
-
-
-def inches(ax: Axes) -> tuple[float, float]:
-    """Size of the axes."""
-    figure = ax.get_figure(root=True)
-    assert figure is not None
-    w, h = figure.get_size_inches()
-    box = ax.get_position()
-    return float(w * box.width), float(h * box.height)

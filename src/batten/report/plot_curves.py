@@ -14,10 +14,12 @@ from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
 from batten.frame.problem import Problem
 from batten.report import numerals, parts, style
-from batten.report.canvas import Picture, letters, pane, scale_ticks, settle, sheet
+from batten.report.canvas import Picture, inches, letters, pane, settle, sheet
 from batten.report.curves import Curve, Ground, SpanEnds, beyond, curve_of, places_along, row_band, span_ends
+from batten.report.days import counted_from
 from batten.report.lettering import shortened, titled, width_of, wrapped
 from batten.report.naming import brief, remedy_words
+from batten.report.scales import scale
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
@@ -125,8 +127,7 @@ def _prepared(problem: Problem, curves: list[Curve], room: list[Curve] | None = 
     ax = pane(figure, LEFT, BOTTOM, RIGHT, TOP)
     ax.set_xlim(at.left, at.right)
     ax.set_ylim(low, high)
-    x_word, y_word = scale_ticks(ax.xaxis, at.left, at.right), scale_ticks(ax.yaxis, low, high)
-    ax.yaxis.grid(visible=True, color=style.FAINT, linewidth=0.6, linestyle="solid", alpha=1.0)
+    x_word, y_word = scale(ax, "x", start=counted_from(problem)), scale(ax, "y", grid=True)
     y, x = problem.response, problem.focus
     parts.heading(ax, (y, _unit(problem, y, y_word)), (x, _unit(problem, x, x_word)))
     parts.ground(ax, at)
@@ -193,7 +194,7 @@ def _draw_span(ax: Axes, span: SpanEnds, curve: Curve, problem: Problem) -> None
     words, ends = _span_words(span, problem), ax.get_xlim()
     middle = (span.a + span.b) / 2
     # the words are centred on the span unless that would carry them over an edge
-    half = 0.5 * (width_of(words, size=style.SMALL) + 0.1) / parts.inches(ax)[0] * (ends[1] - ends[0])
+    half = 0.5 * (width_of(words, size=style.SMALL) + 0.1) / inches(ax)[0] * (ends[1] - ends[0])
     middle = min(max(middle, ends[0] + half), max(ends[1] - half, ends[0] + half))
     letters(ax, middle, level + 0.018 * (high - low), words, ha="center", size=style.SMALL, zorder=6)
 

@@ -10,7 +10,7 @@ from matplotlib.patches import Rectangle
 
 from batten.families import parse
 from batten.report import numerals, parts, style
-from batten.report.canvas import Picture, letters, pane, settle, sheet
+from batten.report.canvas import Picture, inches, letters, pane, settle, sheet
 from batten.report.entries import Entry, entries, lowest
 from batten.report.lettering import fitted, plain, shortened
 
@@ -38,9 +38,6 @@ def ladder_figure(exam: Examination) -> Picture:
     ax = pane(figure, LEFT, BOTTOM, RIGHT, TOP)
     ax.set_xlim(0, len(shapes))
     ax.set_ylim(len(scales), 0)
-    ax.tick_params(axis="both", left=False, bottom=False, labelleft=False, labelbottom=False)
-    for spine in ax.spines.values():
-        spine.set_visible(False)
     best = lowest(rows)
     for i, scale in enumerate(scales):
         for j, shape in enumerate(shapes):
@@ -61,7 +58,7 @@ def ladder_figure(exam: Examination) -> Picture:
 
 def _margins(ax: Axes, scales: list[str], shapes: list[str], response: str, focus: str) -> None:
     """Names of the rows and columns."""
-    above = -0.08 / parts.inches(ax)[1] * len(scales)
+    above = -0.08 / inches(ax)[1] * len(scales)
     for i, scale in enumerate(scales):
         left = parse(f"{scale} ~ x").left
         words = fitted(lambda limit, left=left: left.words(shortened(response, limit)), LEFT - 0.35)  # type: ignore[misc]

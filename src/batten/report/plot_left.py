@@ -12,10 +12,12 @@ from batten.effects.numbers import show
 from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
 from batten.report import parts, style
-from batten.report.canvas import Picture, letters, pane, scale_ticks, settle, sheet
+from batten.report.canvas import Picture, inches, letters, pane, settle, sheet
 from batten.report.curves import beyond
+from batten.report.days import counted_from
 from batten.report.lettering import fitted, plain, shortened, titled
 from batten.report.naming import remedy_in, remedy_words
+from batten.report.scales import scale
 
 if TYPE_CHECKING:
     from batten.exam.fit import Fit
@@ -58,8 +60,8 @@ def _residuals(ax: Axes, fit: Fit, color: str) -> str:
     size = float(np.abs(left).max()) * 1.08 or 1.0
     low, high = min(float(left.min()) * 1.08, -0.3 * size), max(float(left.max()) * 1.08, 0.3 * size)
     ax.set_ylim(low - 0.06 * (high - low), high)
-    scale_ticks(ax.xaxis, at.left, at.right, most=5)
-    scale_ticks(ax.yaxis, *ax.get_ylim(), most=6)
+    scale(ax, "x", most=5, start=counted_from(problem))
+    scale(ax, "y", grid=True)
     parts.ground(ax, at)
     some = parts.shown_rows(x)
     parts.scatter(ax, x[some], left[some])
@@ -75,7 +77,7 @@ def _residuals(ax: Axes, fit: Fit, color: str) -> str:
 
 
 def _titles(ax: Axes, fit: Fit, unit: str, color: str) -> None:
-    problem, (wide, tall) = fit.problem, parts.inches(ax)
+    problem, (wide, tall) = fit.problem, inches(ax)
     name = remedy_in(problem, fit.key, wide, bold=True)
     letters(ax, 0, 1 + 0.34 / tall, name, transform=ax.transAxes, color=color, bold=True)
 

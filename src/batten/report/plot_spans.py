@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -11,10 +12,11 @@ from batten.compare.grid import STRAIGHT
 from batten.effects.numbers import show
 from batten.frame.problem import Problem
 from batten.report import numerals, parts, style
-from batten.report.canvas import Picture, letters, pane, scale_ticks, settle, sheet
+from batten.report.canvas import Picture, inches, letters, pane, settle, sheet, strokes
 from batten.report.entries import Entry, entries
 from batten.report.lettering import fitted, plain, shortened, titled
-from batten.report.naming import brief
+from batten.report.naming import remedy_in
+from batten.report.scales import scale
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
@@ -34,13 +36,11 @@ def spans_figure(exam: Examination) -> Picture:
     low, high = _window(rows, exam.choice.key)
     ax.set_xlim(low, high)
     ax.set_ylim(len(rows) - 0.4, -0.6)
-    ax.tick_params(axis="y", left=False, labelleft=False)
-    ax.spines["left"].set_visible(False)
-    word = scale_ticks(ax.xaxis, low, high)
-    ax.xaxis.grid(visible=True, color=style.FAINT, linewidth=0.6, linestyle="solid", alpha=1.0)
+    word = scale(ax, "x", grid=True)
     _guides(ax, rows[exam.choice.key])
-    for place, entry in enumerate(rows.values()):
-        _one(ax, place, entry, _color(entry.key, exam.choice.key), problem)
+    shown = list(rows.values())
+    _names(ax, shown, exam.choice.key, problem)
+    _marks(ax, shown, exam.choice.key)
     unit = ", ".join(w for w in (problem.unit(problem.response), word) if w)
     _heading(figure, exam, span, unit)
     notes = [
@@ -94,44 +94,49 @@ def _color(key: str, choice: str) -> str:
     return style.CHOICE if key == choice else style.LINE if key == STRAIGHT else style.QUIET
 
 
-def _one(ax: Axes, place: int, entry: Entry, color: str, problem: Problem) -> None:
-    """The name, interval and point of one remedy."""
-    main = color != style.QUIET
-    role = "choice: " if color == style.CHOICE else ""
-    name = fitted(lambda limit: f"{role}{brief(problem, entry.key, limit)}", LEFT - 0.2, size=style.SMALL, bold=main)
-    letters(
-        ax, -0.1 / parts.inches(ax)[0], place, name, ha="right", va="center",
-        transform=ax.get_yaxis_transform(), color=color if main else style.INK, size=style.SMALL, bold=main,
-    )  # fmt: skip
-    left, right = ax.get_xlim()
-    if not entry.defined:
-        at = left + 0.01 * (right - left)
-        letters(ax, at, place, shortened(entry.note, 60), va="center", color=style.QUIET, size=style.SMALL)
-        return
-    low, high = (
-        (max(entry.low, left) if np.isfinite(entry.low) else left),
-        (min(entry.high, right) if np.isfinite(entry.high) else right),
-    )
-    if low < high:
-        ax.plot([low, high], [place, place], color=color, linewidth=2.2 if main else 1.2, linestyle="solid", zorder=3,
-                solid_capstyle="butt", marker="None", alpha=1.0)  # fmt: skip
-    _arrows(ax, place, entry, color)
-    if left <= entry.difference <= right:
-        fill = color if entry.tied else style.PAPER
-        ax.plot([entry.difference], [place], linestyle="none", marker="o", markersize=6 if main else 4.6, zorder=4,
-                markeredgewidth=1.3, markerfacecolor=fill, markeredgecolor=color, alpha=1.0)  # fmt: skip
+def _names(ax: Axes, shown: Sequence[Entry], choice: str, problem: Problem) -> None:
+    """The remedies in words at the left."""
+    x, across = -0.1 / inches(ax)[0], ax.get_yaxis_transform()
+    for place, entry in enumerate(shown):
+        color = _color(entry.key, choice)
+        main = color != style.QUIET
+        words = remedy_in(
+            problem, entry.key, LEFT - 0.2, size=style.SMALL, bold=main, role="choice: " * (entry.key == choice)
+        )
+        letters(ax, x, place, words, ha="right", va="center", transform=across, color=color if main else style.INK,
+                size=style.SMALL, bold=main)  # fmt: skip
 
 
-def _arrows(ax: Axes, place: int, entry: Entry, color: str) -> None:
+def _marks(ax: Axes, shown: Sequence[Entry], choice: str) -> None:
+    """Interval and point of each remedy, or the words for why it has none."""
     left, right = ax.get_xlim()
-    edges: list[tuple[float, str]] = []
-    if not entry.low >= left:
-        edges.append((left, "<"))
-    if not entry.high <= right:
-        edges.append((right, ">"))
-    for x, marker in edges:
-        ax.plot([x], [place], linestyle="none", marker=marker, markersize=4.5, markerfacecolor=color, markeredgewidth=0,
-                zorder=4, clip_on=False, alpha=1.0)  # fmt: skip
+    alike: dict[tuple[str, bool], list[tuple[int, Entry]]] = {}
+    for place, entry in enumerate(shown):
+        if entry.defined:
+            alike.setdefault((_color(entry.key, choice), entry.tied), []).append((place, entry))
+        else:
+            at = left + 0.01 * (right - left)
+            letters(ax, at, place, shortened(entry.note, 60), va="center", color=style.QUIET, size=style.SMALL)
+    for (color, tied), some in alike.items():
+        main = color != style.QUIET
+        ends = [(max(e.low, left), min(e.high, right), i) for i, e in some]
+        bars = [[(low, i), (high, i)] for low, high, i in ends if low < high]
+        strokes(ax, bars, ax.transData, color=color, width=2.2 if main else 1.2, zorder=3)
+        seen = [(e.difference, i) for i, e in some if left <= e.difference <= right]
+        _points(ax, seen, "o", 6 if main else 4.6, markeredgewidth=1.3, markeredgecolor=color,
+                markerfacecolor=color if tied else style.PAPER)  # fmt: skip
+        # the interval goes on beyond the figure
+        for marker, x, over in (
+            ("<", left, [i for i, e in some if not e.low >= left]),
+            (">", right, [i for i, e in some if not e.high <= right]),
+        ):
+            _points(ax, [(x, i) for i in over], marker, 4.5, markeredgewidth=0, markerfacecolor=color, clip_on=False)
+
+
+def _points(ax: Axes, places: Sequence[tuple[float, int]], marker: str, size: float, **look: Any) -> None:
+    if places:
+        x, y = zip(*places, strict=True)
+        ax.plot(x, y, linestyle="none", marker=marker, markersize=size, zorder=4, alpha=1.0, **look)
 
 
 def _told(rows: dict[str, Entry], exam: Examination, span: str) -> str:
