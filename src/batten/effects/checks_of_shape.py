@@ -79,9 +79,9 @@ def _powers_of_fit(est: Estimate, work: Working, names: Names, errors: str, *, h
 
 def _repeats(est: Estimate, work: Working, names: Names) -> Check | None:
     """Lack of fit against the spread of rows that repeat in all predictors; a searched break or power counts."""
-    if est.link is not None or est.remedy.left.searched or est.rows.weights is not None:
+    if est.link is not None or est.remedy.left.searched:
         return None
-    found = pure_error(work.X, work.z)
+    found = pure_error(work.X / work.root[:, None], work.z / work.root, weights=est.rows.weights)
     if found is None:
         return None
     size = found.gap_rms * work.lean

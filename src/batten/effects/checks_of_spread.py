@@ -83,6 +83,7 @@ class _Told:
     def _check(self, name: str, asked: str, test: SpreadTest, spread: Spread, low: str, high: str) -> Check:
         unit, lean = self.names.y_unit, self.work.lean
         scale = "" if plain_scale(self.est) else " (as seen at the middle of the fit)"
+        scale += "" if self.est.rows.weights is None else " once weighted"
         reading = (
             f"errors spread {show(spread.ratio)} times as much {high} as {low}: {show(spread.high * lean, unit)} "
             f"against {show(spread.low * lean, unit)}{scale}, {chance(test.p)}"

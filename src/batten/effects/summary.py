@@ -92,10 +92,10 @@ def _squares(est: Estimate, values: Array) -> float:
 
 def _r2(est: Estimate, work: Working, names: Names) -> Iterator[Entry]:
     """Shares of the squared deviations from the mean (Kvalseth 1985 on the many R2)."""
-    y, df = est.rows.y, est.df_residual
+    y, df, weighted = est.rows.y, est.df_residual, "" if est.rows.weights is None else ", rows weighted"
     away = y - np.average(y, weights=est.rows.weights)
     r2 = _share(_squares(est, y - in_sample_means(est)), _squares(est, away))
-    yield _defined("R2, units of y", r2, f"{names.y} does not vary", f"of {names.y} by its fitted mean")
+    yield _defined("R2, units of y", r2, f"{names.y} does not vary", f"of {names.y} by its fitted mean{weighted}")
     yield _defined(
         "adjusted R2, units of y", 1 - (1 - r2) * (est.n - 1) / df, f"{names.y} does not vary",
         "as above, with the constants paid for",
