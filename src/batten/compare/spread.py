@@ -47,7 +47,8 @@ def _block(est: Estimate, q: Array, sets: list[Split]) -> Array | None:
     y, given, z = rows.y, rows.root_weight, rows.weigh(rows.y)
     units = np.array([[unit_of(y[split.train], positive=positive)] for split in sets])
     u = driver(units, positive=positive)
-    found = learn_spread(q, z, lambda eta: u(eta / given), masks(rows.count, [split.test for split in sets]))
+    mask = masks(rows.count, [split.test for split in sets])
+    found = learn_spread(q, z, lambda eta: u(eta / given), mask, start=est.spread.power)
     if not found.settled.all():
         return None
     out = np.empty((4, len(sets)))

@@ -38,18 +38,18 @@ class LearnedSpread:
 
 
 def learn_spread(
-    q: Array, z: Array, drive: Callable[[Array], Array], mask: Array, *, steps: int = 200
+    q: Array, z: Array, drive: Callable[[Array], Array], mask: Array, *, start: float = 0.0, steps: int = 200
 ) -> LearnedSpread:
     """q (n, p) or (S, n, p): the design's columns; z (n,); mask (S, n): 1 where a set trains on a row.
 
-    drive: u (S, n) of the plain fit's predictor (S, n).
+    drive: u (S, n) of the plain fit's predictor (S, n). start: a power to begin with.
     """
     count = mask.sum(axis=1)
     first, _ = _solve(q, z, mask)
     u = drive(_predict(q, first))
     centre = (mask * u).sum(axis=1) / count
     u = u - centre[:, None]
-    power, settled = np.zeros(len(mask)), np.zeros(len(mask), dtype=bool)
+    power, settled = np.full(len(mask), start), np.zeros(len(mask), dtype=bool)
     for _ in range(steps):
         root = np.exp(-power[:, None] * u)
         b, inverse = _solve(q, z, mask * root**2)
