@@ -104,8 +104,8 @@ class Examination(Mapping[str, Fit]):
 
     @property
     def refused(self) -> pd.DataFrame:
-        """Remedies that cannot be used on these rows: key, wrong, seen, instead."""
-        return refusal_table(self._comparison)
+        """Remedies that cannot be used on these rows: key, wrong, seen, instead, and the rows they cannot take."""
+        return refusal_table(self._comparison, self._problem.index)
 
     def table(self) -> pd.DataFrame:
         """The comparison by key, best held-out error first; errors and gaps in units of y."""

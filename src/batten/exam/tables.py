@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Hashable, Mapping
 
 import pandas as pd
 
@@ -11,6 +11,7 @@ from batten.compare.choose import gaps
 from batten.compare.grid import Comparison
 from batten.effects.contrast import SpanEffect
 from batten.exam.fit import Fit
+from batten.families import parse
 from batten.frame.problem import Problem
 
 __all__ = ["comparison_table", "effects_table", "refusal_table"]
@@ -18,10 +19,19 @@ __all__ = ["comparison_table", "effects_table", "refusal_table"]
 _NO_LIKELIHOOD = "pseudo-likelihood: no AICc, no log score"
 
 
-def refusal_table(comparison: Comparison) -> pd.DataFrame:
-    """key, wrong, seen, instead."""
-    rows = [(key, r.wrong, r.seen, r.instead) for key, r in comparison.refused.items()]
-    return pd.DataFrame(rows, columns=["key", "wrong", "seen", "instead"]).set_index("key")
+def refusal_table(comparison: Comparison, labels: pd.Index) -> pd.DataFrame:
+    """key, wrong, seen, instead, and rows: labels of the rows whose y or x the remedy cannot take."""
+    rows = [
+        (key, r.wrong, r.seen, r.instead, _not_taken(comparison, key, labels)) for key, r in comparison.refused.items()
+    ]
+    return pd.DataFrame(rows, columns=["key", "wrong", "seen", "instead", "rows"]).set_index("key")
+
+
+def _not_taken(comparison: Comparison, key: str, labels: pd.Index) -> tuple[Hashable, ...]:
+    """() where the refusal has another reason than single values."""
+    remedy, rows = parse(key), comparison.rows
+    lost = ~(remedy.left.takes(rows.y) & remedy.shape.takes(rows.x))
+    return tuple(labels[lost])
 
 
 def comparison_table(problem: Problem, comparison: Comparison, spans: Mapping[str, SpanEffect]) -> pd.DataFrame:

@@ -19,9 +19,10 @@ import numpy.typing as npt
 from batten.errors import Refusal
 
 Array = npt.NDArray[np.float64]
+Bools = npt.NDArray[np.bool_]
 Constants = tuple[float, ...]
 
-__all__ = ["Array", "Code", "Constants", "Link", "Scale", "Shape"]
+__all__ = ["Array", "Bools", "Code", "Constants", "Link", "Scale", "Shape"]
 
 
 @dataclass(frozen=True)
@@ -74,6 +75,10 @@ class Scale(ABC):
     @abstractmethod
     def words(self, y: str) -> str:
         """Display name, "log of minutes"."""
+
+    def takes(self, y: Array) -> Bools:
+        """Which responses (n,) lie in the domain; the rows that do not are those `refuse` counts."""
+        return np.ones(len(y), dtype=bool)
 
     @abstractmethod
     def refuse(self, y: Array) -> Refusal | None:
@@ -156,6 +161,10 @@ class Shape(ABC):
     def words(self, x: str) -> str:
         """Display name, "quadratic in mass"."""
 
+    def takes(self, x: Array) -> Bools:
+        """Which predictor values (n,) lie in the domain; the rows that do not are those `refuse` counts."""
+        return np.ones(len(x), dtype=bool)
+
     @abstractmethod
     def refuse(self, x: Array) -> Refusal | None:
         """Why these predictor values (n,) cannot take the shape, or None."""
@@ -209,7 +218,10 @@ class Link(ABC):
 
     family: ClassVar[str]
     searched: tuple[str, ...] = ()
+    #: "ratio" where means are above zero and errors are a share of them, so that new rows are ratios to the mean
     reading: ClassVar[Literal["difference", "ratio", "none"]] = "ratio"
+    #: whether a difference of the linear predictor is then a ratio of means too
+    multiplies: ClassVar[bool] = True
     #: name for `only`
     group: ClassVar[str] = "links"
     #: place in the order from simple to elaborate, and the place among members of the same rank
@@ -227,6 +239,10 @@ class Link(ABC):
 
     @abstractmethod
     def words(self, y: str) -> str: ...
+
+    def takes(self, y: Array) -> Bools:
+        """Which responses (n,) lie in the domain; the rows that do not are those `refuse` counts."""
+        return np.ones(len(y), dtype=bool)
 
     @abstractmethod
     def refuse(self, y: Array) -> Refusal | None: ...

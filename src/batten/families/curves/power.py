@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Shape
+from batten.families.base import Array, Bools, Code, Constants, Shape
 from batten.families.numbers import log, near, plain, positive, power, shown, typical
 
 __all__ = ["FAMILY", "PowerCurve"]
@@ -41,8 +41,11 @@ class PowerCurve(Shape):
     def constant_words(self, x: str, y: str) -> tuple[str, ...]:
         return (f"percent of {y} per percent of {x}",)
 
+    def takes(self, x: Array) -> Bools:
+        return x >= 0
+
     def refuse(self, x: Array) -> Refusal | None:
-        bad, found = int((x < 0).sum()), len(np.unique(x[x > 0]))
+        bad, found = int((~self.takes(x)).sum()), len(np.unique(x[x > 0]))
         if not bad and found >= 3:
             return None
         return Refusal(

@@ -9,7 +9,7 @@ import numpy as np
 from scipy.special import digamma, gammaln, polygamma
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Link
+from batten.families.base import Array, Bools, Code, Link
 from batten.families.numbers import shown
 
 __all__ = ["FAMILIES", "LogLink"]
@@ -42,9 +42,12 @@ class LogLink(Link):
     def words(self, y: str) -> str:
         return f"log link for {y}" + ("" if self.kind == "poisson" else f" ({self.kind.capitalize()})")
 
+    def takes(self, y: Array) -> Bools:
+        return y > 0 if self.kind == "gamma" else y >= 0 if self.kind == "poisson" else np.ones(len(y), dtype=bool)
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = y <= 0 if self.kind == "gamma" else y < 0
-        if self.kind != "gaussian" and bad.any():
+        bad = ~self.takes(y)
+        if bad.any():
             which = "zero or negative" if self.kind == "gamma" else "negative"
             return Refusal(
                 wrong="A log link needs a response " + ("above zero." if self.kind == "gamma" else "of zero or more."),

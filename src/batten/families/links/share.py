@@ -9,7 +9,7 @@ import numpy as np
 from scipy.special import expit, logit
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Link
+from batten.families.base import Array, Bools, Code, Link
 from batten.families.numbers import shown
 
 __all__ = ["FAMILY", "Share"]
@@ -35,8 +35,11 @@ class Share(Link):
     def words(self, y: str) -> str:
         return f"share link for {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return (y >= 0) & (y <= 1)
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = int(((y < 0) | (y > 1)).sum())
+        bad = int((~self.takes(y)).sum())
         if bad:
             return Refusal(
                 wrong="A share link needs a response from 0 to 1.",

@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal, keys
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 from batten.families.numbers import listed, plain, shown
 
 __all__ = ["FAMILY", "BoxCox"]
@@ -51,8 +51,11 @@ class BoxCox(Scale):
     def words(self, y: str) -> str:
         return f"Box-Cox power of {y}" if self.power is None else f"Box-Cox power {shown(self.power)} of {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return y > 0
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = int((y <= 0).sum())
+        bad = int((~self.takes(y)).sum())
         if not bad:
             return None
         return Refusal(

@@ -8,7 +8,7 @@ from typing import ClassVar, Literal
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 
 __all__ = ["FAMILY", "Log"]
 
@@ -34,8 +34,11 @@ class Log(Scale):
     def words(self, y: str) -> str:
         return f"log of {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return y > 0
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = int((y <= 0).sum())
+        bad = int((~self.takes(y)).sum())
         if not bad:
             return None
         return Refusal(

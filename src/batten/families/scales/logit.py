@@ -9,7 +9,7 @@ import numpy as np
 from scipy.special import expit
 
 from batten.errors import Refusal, keys
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 from batten.families.numbers import listed, plain, shown
 
 __all__ = ["FAMILY", "Logit"]
@@ -47,8 +47,11 @@ class Logit(Scale):
     def words(self, y: str) -> str:
         return f"logit of {y} between {shown(self.low)} and {shown(self.high)}"
 
+    def takes(self, y: Array) -> Bools:
+        return (y > self.low) & (y < self.high)
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = int(((y <= self.low) | (y >= self.high)).sum())
+        bad = int((~self.takes(y)).sum())
         if not bad:
             return None
         return Refusal(

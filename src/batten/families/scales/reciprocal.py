@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 
 __all__ = ["FAMILY", "Reciprocal"]
 
@@ -32,10 +32,14 @@ class Reciprocal(Scale):
     def words(self, y: str) -> str:
         return f"reciprocal of {y}"
 
+    def takes(self, y: Array) -> Bools:
+        """Those of the sign that most have."""
+        return y > 0 if (y > 0).sum() >= (y < 0).sum() else y < 0
+
     def refuse(self, y: Array) -> Refusal | None:
-        above, below = int((y > 0).sum()), int((y < 0).sum())
-        if len(y) in (above, below):
+        if self.takes(y).all():
             return None
+        above, below = int((y > 0).sum()), int((y < 0).sum())
         return Refusal(
             wrong="A reciprocal needs a response above zero throughout, or below zero throughout.",
             seen=f"{above} values are above zero, {below} below, {len(y) - above - below} are zero.",

@@ -8,7 +8,7 @@ from typing import ClassVar, Literal
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 from batten.families.numbers import shown
 
 __all__ = ["FAMILIES", "Sqrt", "Square"]
@@ -34,8 +34,11 @@ class Sqrt(Scale):
     def words(self, y: str) -> str:
         return f"square root of {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return y >= 0
+
     def refuse(self, y: Array) -> Refusal | None:
-        return _negative(y, "A square root needs a response of zero or more.")
+        return _negative(y, self.takes(y), "A square root needs a response of zero or more.")
 
     def forward(self, y: Array, c: Constants) -> Array:
         return np.sqrt(y)
@@ -80,8 +83,11 @@ class Square(Scale):
     def words(self, y: str) -> str:
         return f"square of {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return y >= 0
+
     def refuse(self, y: Array) -> Refusal | None:
-        return _negative(y, "The square of a response cannot be undone where it is negative.")
+        return _negative(y, self.takes(y), "The square of a response cannot be undone where it is negative.")
 
     def forward(self, y: Array, c: Constants) -> Array:
         return y**2
@@ -109,8 +115,8 @@ class Square(Scale):
         )
 
 
-def _negative(y: Array, wrong: str) -> Refusal | None:
-    bad = int((y < 0).sum())
+def _negative(y: Array, taken: Bools, wrong: str) -> Refusal | None:
+    bad = int((~taken).sum())
     if not bad:
         return None
     return Refusal(

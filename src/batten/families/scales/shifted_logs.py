@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Scale
+from batten.families.base import Array, Bools, Code, Constants, Scale
 from batten.families.numbers import shown
 
 __all__ = ["FAMILIES", "Asinh", "Log1p"]
@@ -35,8 +35,11 @@ class Log1p(Scale):
     def words(self, y: str) -> str:
         return f"log of 1 + {y}"
 
+    def takes(self, y: Array) -> Bools:
+        return y > -1
+
     def refuse(self, y: Array) -> Refusal | None:
-        bad = int((y <= -1).sum())
+        bad = int((~self.takes(y)).sum())
         if not bad:
             return None
         return Refusal(

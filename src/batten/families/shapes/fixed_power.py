@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal, keys
-from batten.families.base import Array, Code, Constants, Shape
+from batten.families.base import Array, Bools, Code, Constants, Shape
 from batten.families.numbers import number, plain, power, shown
 
 __all__ = ["FAMILIES", "FixedPower"]
@@ -62,16 +62,17 @@ class FixedPower(Shape):
     def words(self, x: str) -> str:
         return _WORDS.get(self.exponent, f"{{x}} to the power {shown(self.exponent)}").format(x=x)
 
-    def refuse(self, x: Array) -> Refusal | None:
-        if self.exponent > 0 and self.exponent == int(self.exponent):
-            return None
-        if self.exponent == -1 and (np.all(x > 0) or np.all(x < 0)):
-            return None
-        bad, needs, seen = x <= 0, "above zero", "zero or negative"
+    def takes(self, x: Array) -> Bools:
+        """All for whole powers; for 1/x those of one sign where all have it; else those at or above zero."""
         if self.exponent > 0:
-            bad, needs, seen = x < 0, "of zero or more", "negative"
+            return np.ones(len(x), dtype=bool) if self.exponent == int(self.exponent) else x >= 0
+        return x < 0 if self.exponent == -1 and bool(np.all(x < 0)) else x > 0
+
+    def refuse(self, x: Array) -> Refusal | None:
+        bad = ~self.takes(x)
         if not bad.any():
             return None
+        needs, seen = ("of zero or more", "negative") if self.exponent > 0 else ("above zero", "zero or negative")
         name = self.words("x")
         return Refusal(
             wrong=f"{name[0].upper()}{name[1:]} needs a predictor {needs}.",

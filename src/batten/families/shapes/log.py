@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Shape
+from batten.families.base import Array, Bools, Code, Constants, Shape
 from batten.families.numbers import log, shown
 
 __all__ = ["FAMILY", "Log"]
@@ -34,8 +34,11 @@ class Log(Shape):
     def words(self, x: str) -> str:
         return f"log of {x}"
 
+    def takes(self, x: Array) -> Bools:
+        return x > 0
+
     def refuse(self, x: Array) -> Refusal | None:
-        bad = int((x <= 0).sum())
+        bad = int((~self.takes(x)).sum())
         if not bad:
             return None
         return Refusal(

@@ -8,7 +8,7 @@ from typing import ClassVar
 import numpy as np
 
 from batten.errors import Refusal
-from batten.families.base import Array, Code, Constants, Shape
+from batten.families.base import Array, Bools, Code, Constants, Shape
 from batten.families.numbers import distinct, log, plain, shown, typical
 
 __all__ = ["FAMILY", "EstimatedPower"]
@@ -44,8 +44,11 @@ class EstimatedPower(Shape):
     def constant_words(self, x: str, y: str) -> tuple[str, ...]:
         return (f"power of {x}",)
 
+    def takes(self, x: Array) -> Bools:
+        return x > 0
+
     def refuse(self, x: Array) -> Refusal | None:
-        bad = int((x <= 0).sum())
+        bad = int((~self.takes(x)).sum())
         if bad:
             return Refusal(
                 wrong="An estimated power needs a predictor above zero.",
