@@ -278,3 +278,17 @@ def test_covariates_are_taken_off_before_the_thirds():
     got = found("y ~ x", rows_of(x, 2 * x + 10 * d + rng.normal(0, 0.1, 300), d))["thirds along x"]
     assert got.size == pytest.approx(0, abs=0.1)
     assert A_D.sum() == 6
+
+
+def test_the_share_of_a_mean_that_is_clipped_is_counted_pair_by_pair():
+    """A square root whose fit plus a residual falls below zero stands for y = 0 there."""
+    rng = np.random.default_rng(12)
+    x = rng.uniform(1, 9, 50)
+    rows = rows_of(x, np.maximum(0.3 * x + rng.normal(0, 0.8, 50), 0.02) ** 2)
+    est = fitted("sqrt y ~ x", rows)
+    pairs = est.eta[:, None] + est.residual < 0
+    got = found("sqrt y ~ x", rows, every=False)["beyond the scale"]
+    assert pairs.any()
+    assert got.size == pytest.approx(100 * pairs.mean(), rel=1e-12)
+    assert got.reading.endswith("leave what sqrt y can undo and count as 0 min")
+    assert "beyond the scale" not in found("log y ~ x", A)

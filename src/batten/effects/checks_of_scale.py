@@ -11,7 +11,7 @@ from batten.diagnose.closed_test import closed_test
 from batten.diagnose.influence import power_pull
 from batten.diagnose.ladder_tests import pe_columns, power_step
 from batten.effects.check import Check, Tested, Working, added_check, added_t, chance, plain_scale
-from batten.effects.numbers import show
+from batten.effects.numbers import place, show
 from batten.effects.tell import Names
 from batten.effects.units import unit_change
 from batten.families import parse
@@ -28,6 +28,7 @@ def checks_of_scale(
 ) -> Iterator[Check | None]:
     """The unit of y where the scale holds one; every: also the tests along the ladder."""
     yield _unit_of_y(est, names, span)
+    yield _clipped(est, names)
     if not every:
         return
     yield _square_of_fit(est, work, names, errors)
@@ -35,6 +36,29 @@ def checks_of_scale(
     yield _power_of_y(est, work, names, errors)
     yield _power_of_x(est, work, names, errors)
     yield from _powers_needed(est, work, names)
+
+
+def _clipped(est: Estimate, names: Names) -> Check | None:
+    """How much of the average that brings means back stands at the end of y's domain (Poirier 1978 on Box-Cox)."""
+    if est.link is not None or est.scale.closed == "identity":
+        return None
+    low, high = est.scale.limits(est.c)
+    if not (math.isfinite(low) or math.isfinite(high)):
+        return None
+    # pairs of a fitted value and another row's residual that leave the scale, counted by sorting
+    e = np.sort(est.residual / est.rows.root_weight)
+    below = np.searchsorted(e, low - est.eta, side="left").sum()
+    above = len(e) * est.n - np.searchsorted(e, high - est.eta, side="right").sum()
+    share, end = 100 * float(below + above) / est.n**2, low if below >= above else high
+    stands = float(est.scale.inverse(np.array([end]), est.c)[0])
+    if not math.isfinite(stands):  # such a fit is refused where any pair leaves the scale
+        return None
+    reading = (
+        f"{show(share, '%')} of fitted values with a residual leave what {est.scale.key} can undo and count as "
+        f"{place(stands, names.y_unit)}"
+    )
+    asked = f"how much of a mean stands at the end of what {names.y} can be?"
+    return Check("beyond the scale", "scale", asked, share, "%", reading)
 
 
 def _square_of_fit(est: Estimate, work: Working, names: Names, errors: str) -> Check | None:
