@@ -36,7 +36,9 @@ def test_the_folders_hold_these_members_from_simple_to_elaborate() -> None:
         "smooth x", "cut x", "bins5 x",
     ]  # fmt: skip
     assert in_order([m.key for m in shapes()], right)
-    assert in_order([m.key for m in links()], ["loglink y", "loglink-gamma y", "loglink-gaussian y", "share y"])
+    assert in_order(
+        [m.key for m in links()], ["loglink y", "loglink-gamma y", "loglink-gaussian y", "share y", "invlink-gamma y"]
+    )
     known = ["exponential x", "power x", "level-exp x", "level-hyp x", "s-curve x", "gompertz x"]
     assert in_order([m.key for m in curves()], known)
 

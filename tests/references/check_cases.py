@@ -113,8 +113,6 @@ class _Regressions:
             return self._numbered(numbered[1], squared=bool(numbered[2]))
         if prefix == "unrounded":
             return read_form(self.case, table(self.case, rounded=False))
-        if prefix == "inverse":
-            raise NotDelivered("no link 1/mean is offered")
         some = without_dropped(self.case, self.frame, prefix)
         if some is not None:
             return read_form(self.case, some)
@@ -136,6 +134,8 @@ class _Regressions:
             return base.with_key(base.left, "x")
         if prefix == "interaction":
             return replace(base, crossed=base.covariates)
+        if prefix == "inverse":
+            return replace(base, left="invlink-gamma y")
         if prefix == "glm_gaussian_log":
             return base.with_key("loglink-gaussian y", "x")
         if prefix in FORMS:

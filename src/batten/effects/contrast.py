@@ -116,7 +116,10 @@ def reach_trouble(
     if lost.any():
         return f"{est.shape.key} cannot be taken at {', '.join(f'{x:.6g}' for x in xs[lost])}"
     if est.link is not None:
-        return ""
+        with np.errstate(all="ignore"):
+            none = ~np.isfinite(est.link.mean(eta)).all(axis=0)
+        places = ", ".join(f"{x:.6g}" for x in xs[none])
+        return f"{est.link.key} has no mean at {places}" if places else ""
     low, high = est.scale.limits(est.c)
     beyond = (eta <= low) | (eta >= high)
     if beyond.any():

@@ -45,7 +45,7 @@ def step_of(a: float, b: float) -> float:
 
 def multiplies(est: Estimate) -> bool:
     """Whether a difference of the linear predictor is a ratio of y."""
-    return est.remedy.left.reading == "ratio"
+    return est.remedy.left.reading == "ratio" and (est.link is None or est.link.multiplies)
 
 
 def readings(

@@ -178,10 +178,9 @@ def _quadratic_words(kind: str, estimate: float, pieces: tuple[Piece, ...], form
 
 
 def _rising(est: Estimate) -> float:
-    """1 where y rises with the linear predictor, -1 where it falls (1/y)."""
-    if est.link is not None:
-        return 1.0
-    slope = est.scale.inverse_slope(np.array([np.median(est.eta)]), est.c)
+    """1 where y rises with the linear predictor, -1 where it falls (1/y, the inverse link)."""
+    middle = np.array([np.median(est.eta)])
+    slope = est.scale.inverse_slope(middle, est.c) if est.link is None else est.link.mean_slope(middle)
     return float(np.sign(slope[0]))
 
 

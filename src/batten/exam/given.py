@@ -49,7 +49,12 @@ def complete(est: Estimate, new: NewRows) -> tuple[NDArray[np.bool_], list[str]]
         taken = np.isfinite(est.shape.columns(new.x, est.state, est.theta)).all(axis=1)
     for row in np.flatnonzero(given & ~taken):
         told[row] = joined(told[row], f"{est.shape.key} cannot be taken at {new.x[row]:.6g}")
-    return given & taken, told
+    whole = given & taken
+    if est.link is not None and whole.any():
+        eta = est.design_at(new.x[whole], new.base[whole], new.modifier[whole]) @ est.coef
+        for row in np.flatnonzero(whole)[~np.isfinite(est.link.mean(eta))]:
+            told[row], whole[row] = joined(told[row], f"{est.link.key} has no mean there"), False
+    return whole, told
 
 
 def labels_of(problem: Problem, est: Estimate) -> list[str]:

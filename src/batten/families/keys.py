@@ -2,7 +2,7 @@
 
     key    := [weighted] left "~" right
     left   := y | log y | sqrt y | 1/y | y^2 | boxcox[(L)] y | yeojohnson[(L)] y | logit(a,b) y | log1p y | asinh y
-            | loglink y | loglink-gamma y | loglink-gaussian y | share y
+            | loglink y | loglink-gamma y | loglink-gaussian y | invlink-gamma y | share y
     right  := x | 1/x | x^NUMBER | x^p | (log|sqrt|polyN|fp1|fp2|binsN|cut|hinge|hinge2|splineN|smooth|CURVE) x
             | (bins|spline|hinge|hinge2|fp1|fp2)(list of numbers) x
 
