@@ -206,10 +206,6 @@ MISTAKES = {
     "%%batten castings --level 95\nminutes ~ mass_kg": (
         "level must be from 0.5 to below 1, such as 0.95. Seen: 95.0. Give level from 0.5 to below 1, such as 0.95."
     ),
-    "%%batten castings --by alloy\nminutes ~ mass_kg + alloy": (
-        "by is not offered in this version. Nothing was computed. Use rows to examine one group at a time, or an "
-        "interaction in the formula."
-    ),
     "%%batten castings --only lader\nminutes ~ mass_kg": (
         "'lader' is neither a family of remedies nor a remedy's key. Families: ladder, powers, polynomials, "
         "fractional, groups, hinges, splines, smooth, links, shares, curves, weighted. Did you mean 'ladder'? "

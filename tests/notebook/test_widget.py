@@ -83,7 +83,8 @@ def test_rows_left_out_are_named_with_their_reason(shown: ExamWidget, pumps: Exa
     head = words(shown.head)
     lost = pumps.problem.left_out
     assert len(lost) > 0
-    assert f"{pumps.problem.rows.count} of {pumps.problem.rows.count + len(lost)} rows used, {len(lost)} left out" in head
+    used = pumps.problem.rows.count
+    assert f"{used} of {used + len(lost)} rows used, {len(lost)} left out" in head
     for label, why in lost["why"].items():
         assert re.search(rf"{why}: rows? (\d+, )*{label}\b", head)
 

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import numpy as np
+import pandas as pd
 import pytest
-from situations import QUICK, examined
+from situations import QUICK, examined, fan
 from traced import known_numbers, untraced
 
+import batten
 from batten.compare.shortlist import shortlist
 from batten.report import numerals
 from batten.report.entries import entries
@@ -129,3 +131,13 @@ def test_a_difference_has_its_sign_its_unit_and_its_interval() -> None:
     assert numerals.difference(-3.214, -5.04, -1.391, "min") == "-3.2 min (-5.0 to -1.4)"
     assert numerals.difference(3.21, float("nan"), float("nan")) == "+3.21 (no interval)"
     assert numerals.difference(float("nan"), float("nan"), float("nan")) == "not defined"
+
+
+def test_rows_asked_for_by_themselves_are_those_of_the_whole_table() -> None:
+    whole, fresh = examined("fan", 40, *QUICK), fan(40).examine(only=list(QUICK))
+    keys = ["log y ~ log x", "y~x"]
+    some = fresh.table(keys)
+    assert list(some.index) == [key for key in whole if key in ("y ~ x", "log y ~ log x")]
+    pd.testing.assert_frame_equal(some, whole.table().loc[some.index])
+    with pytest.raises(batten.BattenError):
+        fresh.table(["y ~ log10 x"])

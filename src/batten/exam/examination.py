@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import replace
 from functools import cached_property
 from typing import Any, Literal
@@ -14,7 +14,7 @@ import pandas as pd
 from batten.compare.choose import Choice
 from batten.compare.grid import STRAIGHT, Comparison, Progress, compare, extend
 from batten.diagnose.trial import Trial, try_line
-from batten.effects.contrast import span_effect
+from batten.effects.contrast import SpanEffect, span_effect
 from batten.effects.span import round_span
 from batten.errors import ask
 from batten.errors import data as data_errors
@@ -37,6 +37,7 @@ class Examination(Mapping[str, Fit]):
     def __init__(self, problem: Problem, question: Question, comparison: Comparison) -> None:
         self._problem, self._question, self._comparison = problem, question, comparison
         self._fits: dict[str, Fit] = {}
+        self._spans: dict[str, SpanEffect] = {}
         self._lock = threading.RLock()
 
     def __getstate__(self) -> dict[str, Any]:
@@ -107,23 +108,31 @@ class Examination(Mapping[str, Fit]):
         """Remedies that cannot be used on these rows: key, wrong, seen, instead, and the rows they cannot take."""
         return refusal_table(self._comparison, self._problem.index)
 
-    def table(self) -> pd.DataFrame:
-        """The comparison by key, best held-out error first; errors and gaps in units of y."""
+    def table(self, keys: Iterable[str] | None = None) -> pd.DataFrame:
+        """The comparison by key, best held-out error first; errors and gaps in units of y.
+
+        keys: only these rows; the others' differences over the span are then not computed.
+        """
         with self._lock:
-            return self._table.copy()
+            if keys is None:
+                return self._table.copy()
+            asked = {self[key].key for key in keys}
+            return self._rows([key for key in self if key in asked])
 
     @cached_property
     def _table(self) -> pd.DataFrame:
-        return comparison_table(self._problem, self._comparison, self._spans)
+        return self._rows(list(self))
 
-    @cached_property
-    def _spans(self) -> dict[str, Any]:
+    def _rows(self, keys: list[str]) -> pd.DataFrame:
         q = self._question
         base, modifier = self._problem.profile or (None, None)
-        return {
-            key: span_effect(est, q.span, level=q.level, errors=q.errors, base=base, modifier=modifier)
-            for key, est in self._comparison.estimates.items()
-        }
+        for key in keys:
+            if key not in self._spans:
+                est = self._comparison.estimates[key]
+                self._spans[key] = span_effect(
+                    est, q.span, level=q.level, errors=q.errors, base=base, modifier=modifier
+                )  # fmt: skip
+        return comparison_table(self._problem, self._comparison, {key: self._spans[key] for key in keys})
 
     def effects(self, a: float | None = None, b: float | None = None, of: str = "mean") -> pd.DataFrame:
         """The same question to every remedy: difference, ratio, span_slope, average_slope with _low, _high; note."""
@@ -137,11 +146,15 @@ class Examination(Mapping[str, Fit]):
     def with_remedy(self, key: str) -> Examination:
         """A new examination with one more remedy, on the same rows and folds."""
         more = extend(self._comparison, parse(key), unit=self._problem.unit(self._problem.response))
-        return Examination(self._problem, self._question, more)
+        made = Examination(self._problem, self._question, more)
+        made._spans.update(self._spans)
+        return made
 
     def with_aim(self, aim: Literal["effect", "prediction"]) -> Examination:
         """The same fits and scores, chosen by the other aim."""
-        return self._asked(replace(self._question, aim=aim))
+        made = self._asked(replace(self._question, aim=aim))
+        made._spans.update(self._spans)
+        return made
 
     def with_span(self, a: float, b: float) -> Examination:
         """The same fits, scores and choice, asked about the span from a to b."""

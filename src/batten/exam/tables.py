@@ -35,11 +35,11 @@ def _not_taken(comparison: Comparison, key: str, labels: pd.Index) -> tuple[Hash
 
 
 def comparison_table(problem: Problem, comparison: Comparison, spans: Mapping[str, SpanEffect]) -> pd.DataFrame:
-    """One row per remedy in table order; errors, gaps and differences in units of y."""
+    """One row for each of the spans, in their order; errors, gaps and differences in units of y."""
     gap = gaps(comparison.candidates, comparison.splits.k)
     rows = []
-    for key, est in comparison.estimates.items():
-        scores, bend, span = comparison.scores[key], comparison.bends[key], spans[key]
+    for key, span in spans.items():
+        est, scores, bend = comparison.estimates[key], comparison.scores[key], comparison.bends[key]
         notes = [*est.notes, comparison.turns[key], span.difference.note]
         if est.log_likelihood is None:
             notes.append(_NO_LIKELIHOOD)

@@ -42,31 +42,33 @@ def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool) -> N
     again: there the widget's place says only that its model is gone.
     """
     width = _width(shell)
-    text = text_summary(exam, width=width).rstrip()
     if plain or not in_kernel(shell):
+        text = text_summary(exam, width=width).rstrip()
         # the focal predictor that was guessed, columns that were dropped, questions about the rows
         said = [textwrap.fill(words, width) for words in exam.problem.announcements]
         progress.end()
         print("\n\n".join([text, *said, NEXT]))
         return
     token = f"batten-static-{uuid4().hex}"
-    static = {"text/html": f'<div class="{token}">{static_html(exam)}</div>', "text/plain": text}
-    view = _widget_view(exam, token)
-    if view is not None:
-        progress.place({**view, "text/plain": headline(exam), "text/html": ""})
-    progress.place(static)
+    box = _widget(exam, token)
+    if box is not None:
+        progress.place({**box._repr_mimebundle_(), "text/plain": headline(exam), "text/html": ""})
+    # nobody waits for the copy, which asks every remedy
+    html = static_html(exam, figure=box.first_figure if box is not None else "")
+    progress.place({
+        "text/html": f'<div class="{token}">{html}</div>', "text/plain": text_summary(exam, width=width).rstrip(),
+    })  # fmt: skip
 
 
-def _widget_view(exam: Examination, token: str) -> dict[str, Any] | None:
-    """The widget as an output; None where there is no ipywidgets."""
+def _widget(exam: Examination, token: str) -> Any:
+    """The widget; None where there is no ipywidgets."""
     try:
         from batten.notebook.widget import widget_for
     except ModuleNotFoundError as error:
         if (error.name or "").partition(".")[0] == "ipywidgets":
             return None
         raise
-    view: dict[str, Any] = widget_for(exam, cell_id=current_cell_id(), token=token)._repr_mimebundle_()
-    return view
+    return widget_for(exam, cell_id=current_cell_id(), token=token)
 
 
 def show_table(exam: Examination, *, shell: Any) -> None:

@@ -38,6 +38,11 @@ class ExamBox(widgets.VBox):  # type: ignore[misc]  # ipywidgets has no types
 
     parts: ExamWidget | None = None
 
+    @property
+    def first_figure(self) -> str:
+        """The figure in view at first, as HTML."""
+        return self.parts.compare.first.figure if self.parts is not None else ""
+
     def close(self) -> None:
         """Close everything inside as well, and let the examination go."""
         parts, self.parts = self.parts, None

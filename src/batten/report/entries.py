@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+from batten.compare.choose import Gap, gaps
 from batten.report import numerals
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
 
-__all__ = ["Entry", "Refused", "entries", "lowest", "refused"]
+__all__ = ["Entry", "Refused", "entries", "lowest", "refused", "standings"]
 
 
 @dataclass(frozen=True)
@@ -50,9 +52,9 @@ class Refused:
     instead: str
 
 
-def entries(exam: Examination) -> dict[str, Entry]:
-    """Every remedy by key, in table order."""
-    table = exam.table()
+def entries(exam: Examination, keys: Iterable[str] | None = None) -> dict[str, Entry]:
+    """Every remedy by key, or those asked for, in table order."""
+    table = exam.table(keys)
     out = {}
     for key, row in zip(table.index, table.to_dict("records"), strict=True):
         out[str(key)] = _entry(str(key), {str(name): value for name, value in row.items()})
@@ -68,9 +70,14 @@ def _entry(key: str, row: dict[str, Any]) -> Entry:
     )  # fmt: skip
 
 
-def lowest(rows: dict[str, Entry]) -> float:
+def lowest(exam: Examination) -> float:
     """The lowest held-out error, which sets the digits of all."""
-    return min(entry.rmse for entry in rows.values())
+    return exam.comparison.scores[exam.choice.best].rmse
+
+
+def standings(exam: Examination) -> dict[str, Gap]:
+    """How far each remedy's held-out error lies behind the lowest, and whether it is tied with it."""
+    return gaps(exam.comparison.candidates, exam.comparison.splits.k)
 
 
 def refused(exam: Examination) -> list[Refused]:

@@ -56,13 +56,14 @@ def page(exam: Examination) -> str:
     )
 
 
-def static_html(exam: Examination) -> str:
+def static_html(exam: Examination, *, figure: str = "") -> str:
     """What a notebook keeps for readers without a kernel: the first screen, and the rest behind clicks.
 
-    Without headings, which would stand in the notebook's own table of contents.
+    Without headings, which would stand in the notebook's own table of contents. figure: the first one's HTML, where it
+    has been drawn already.
     """
     body = "\n".join([
-        *_first_screen(exam, title="p", part="p"),
+        *_first_screen(exam, title="p", part="p", figure=figure),
         details(f"All {len(exam)} tried", _tried(exam, figures=False)),
         details("How this was computed", _list(how_computed(exam)) + paragraph(CARE, "quiet")),
         details(f"The chosen remedy as a script: {exam.choice.key}", _script(exam)),
@@ -81,14 +82,14 @@ body { background: #fff; margin: 2.5em auto; max-width: 68em; padding: 0 1.5em; 
 """
 
 
-def _first_screen(exam: Examination, *, title: str, part: str) -> list[str]:
+def _first_screen(exam: Examination, *, title: str, part: str, figure: str = "") -> list[str]:
     """Verdict, figure, rows, span, reasons, cautions. title, part: tags of the headline and of the reasons' heading."""
     rows = f"{exam.problem.rows.count:,} rows. {left_out_words(exam.problem)}".strip()
     span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
     return [
         f'<{title} class="batten-headline"><strong>{esc(headline(exam))}</strong></{title}>',
         paragraph(f"{trial_words(exam)} {rows}"),
-        _figure(line_against_choice(exam)),
+        figure or _figure(line_against_choice(exam)),
         f'<div class="batten-span">\n{span}\n</div>',
         shortlist_table(exam),
         *(f'<div class="batten-caution">{paragraph(words)}</div>' for words in cautions(exam)),

@@ -8,10 +8,11 @@ from typing import TYPE_CHECKING
 from matplotlib.axes import Axes
 from matplotlib.patches import Rectangle
 
+from batten.compare.choose import Gap
 from batten.families import parse
 from batten.report import numerals, parts, style
 from batten.report.canvas import Picture, inches, letters, pane, settle, sheet
-from batten.report.entries import Entry, entries, lowest
+from batten.report.entries import lowest, standings
 from batten.report.lettering import fitted, plain, shortened
 
 if TYPE_CHECKING:
@@ -30,7 +31,7 @@ ROW, LEFT, RIGHT, TOP, BOTTOM = 0.56, 2.05, 0.2, 0.74, 0.62
 
 def ladder_figure(exam: Examination) -> Picture:
     """How far behind the lowest held-out error each cell of the ladder lies, in units of y."""
-    rows, problem = entries(exam), exam.problem
+    rows, problem = standings(exam), exam.problem
     known = {*rows, *map(str, exam.refused.index)}
     scales = [s for s in SCALES if any(f"{s} ~ {r}" in known for r in SHAPES)]
     shapes = [r for r in SHAPES if any(f"{s} ~ {r}" in known for s in scales)]
@@ -38,7 +39,7 @@ def ladder_figure(exam: Examination) -> Picture:
     ax = pane(figure, LEFT, BOTTOM, RIGHT, TOP)
     ax.set_xlim(0, len(shapes))
     ax.set_ylim(len(scales), 0)
-    best = lowest(rows)
+    best = lowest(exam)
     for i, scale in enumerate(scales):
         for j, shape in enumerate(shapes):
             _cell(ax, j, i, _content(f"{scale} ~ {shape}", rows, best, known), f"{scale} ~ {shape}" == exam.choice.key)
@@ -69,15 +70,15 @@ def _margins(ax: Axes, scales: list[str], shapes: list[str], response: str, focu
     letters(ax, -0.12, above, corner, ha="right", color=style.QUIET, size=style.SMALL)
 
 
-def _content(key: str, rows: dict[str, Entry], best: float, known: set[str]) -> tuple[str, str, str]:
+def _content(key: str, rows: dict[str, Gap], best: float, known: set[str]) -> tuple[str, str, str]:
     """Colour of a cell, its number, and the word below it."""
     if key not in rows:
         return (style.BEYOND, "cannot be used", "") if key in known else (style.PAPER, "not tried", "")
     entry = rows[key]
-    share = entry.gap / best if best > 0 else math.inf
+    share = entry.size / best if best > 0 else math.inf
     color = style.COOL[sum(share > step for step in STEPS)]
-    below = "lowest" if entry.gap == 0 else "tied" if entry.tied else ""
-    return color, f"+{numerals.behind(entry.gap, best)}" if entry.gap > 0 else "0", below
+    below = "lowest" if entry.size == 0 else "tied" if entry.tied else ""
+    return color, f"+{numerals.behind(entry.size, best)}" if entry.size > 0 else "0", below
 
 
 def _cell(ax: Axes, j: int, i: int, content: tuple[str, str, str], chosen: bool) -> None:
@@ -94,13 +95,13 @@ def _cell(ax: Axes, j: int, i: int, content: tuple[str, str, str], chosen: bool)
         letters(ax, j + 0.5, i + 0.74, below, ha="center", va="center", color=ink, zorder=4, size=style.SMALL)
 
 
-def _told(rows: dict[str, Entry], scales: list[str], shapes: list[str], best: float, unit: str) -> str:
-    cells = [rows[key] for s in scales for r in shapes if (key := f"{s} ~ {r}") in rows]
+def _told(rows: dict[str, Gap], scales: list[str], shapes: list[str], best: float, unit: str) -> str:
+    cells = {key: rows[key] for s in scales for r in shapes if (key := f"{s} ~ {r}") in rows}
     if not cells:
         return "Map of the ladder: nothing in it can be used on these rows."
-    first = min(cells, key=lambda entry: entry.gap)
-    nearest = f"Nearest: {first.key}, {numerals.behind(first.gap, best, unit)} behind."
+    first = min(cells, key=lambda key: cells[key].size)
+    nearest = f"Nearest: {first}, {numerals.behind(cells[first].size, best, unit)} behind."
     return (
         f"Map of the ladder, {len(scales)} scales by {len(shapes)} shapes: held-out error behind the lowest (mean). "
-        f"{nearest} Cells tied: {sum(e.tied for e in cells)}."
+        f"{nearest} Cells tied: {sum(gap.tied for gap in cells.values())}."
     )

@@ -49,9 +49,10 @@ def refused_table(exam: Examination) -> str:
 
 def shortlist_grid(exam: Examination) -> Grid:
     """The rows of the first screen."""
-    rows, roles = entries(exam), shortlist(exam.comparison)
+    roles, best = shortlist(exam.comparison), lowest(exam)
+    rows = entries(exam, [key for _, key in roles])
     columns = (Column("role"), *_columns(exam))
-    cells = [(role, *_cells(exam, rows[key], lowest(rows))) for role, key in roles]
+    cells = [(role, *_cells(exam, rows[key], best)) for role, key in roles]
     return Grid(columns, tuple(cells), tuple(_mark(key, exam) for _, key in roles))
 
 
@@ -59,7 +60,7 @@ def full_grid(exam: Examination) -> Grid:
     """All rows, with two more columns."""
     rows = entries(exam)
     more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", "words")
-    best = lowest(rows)
+    best = lowest(exam)
     cells = [(*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()]
     return Grid((*_columns(exam), *more), tuple(cells), tuple(_mark(key, exam) for key in rows))
 

@@ -12,7 +12,7 @@ from batten.compare.grid import STRAIGHT
 from batten.effects.numbers import show
 from batten.report import how, numerals
 from batten.report.cautions import SUBTITLE, left_out_words
-from batten.report.entries import entries, lowest
+from batten.report.entries import lowest
 from batten.report.lettering import plain
 from batten.report.naming import remedy_words
 from batten.report.words import span_words
@@ -130,10 +130,10 @@ def _line(exam: Examination) -> str:
 
 
 def _errors(exam: Examination, key: str) -> str:
-    rows, p = entries(exam), exam.problem
-    unit, best = p.unit(p.response), lowest(rows)
-    own = f"Held-out error was {numerals.error(rows[key].rmse, best, unit)} for this model"
-    line = "" if key == STRAIGHT else f", {numerals.error(rows[STRAIGHT].rmse, best, unit)} for the straight line"
+    scores, p = exam.comparison.scores, exam.problem
+    unit, best = p.unit(p.response), lowest(exam)
+    own = f"Held-out error was {numerals.error(scores[key].rmse, best, unit)} for this model"
+    line = "" if key == STRAIGHT else f", {numerals.error(scores[STRAIGHT].rmse, best, unit)} for the straight line"
     lowest_words = f" and {numerals.error(best, best, unit)} at the lowest ({exam.choice.best})"
     first = "" if key == exam.choice.best else lowest_words
     return f"{own}{line}{first}; {len(exam.choice.tied)} of {exam.choice.tried} could not be told from the lowest."

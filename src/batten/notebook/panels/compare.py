@@ -44,6 +44,7 @@ class FirstLook:
 
     def __init__(self, desk: Desk, span: SpanFields) -> None:
         self._desk = desk
+        self.figure = ""  # as HTML
         self.picture, self.table, self.reasons = sheet(), sheet(""), sheet("")
         self.aim = widgets.ToggleButtons(options=list(AIMS), value=desk.exam.question.aim, tooltips=list(AIMS.values()))
         self.aim.observe(weakly(self._chosen), "value")
@@ -52,7 +53,8 @@ class FirstLook:
         self.box = widgets.VBox([self.picture, row, self.table, self.reasons])
 
     def draw(self, exam: Examination) -> None:
-        self.picture.value = figure(line_against_choice(exam)) + span_block(exam)
+        self.figure = figure(line_against_choice(exam))
+        self.picture.value = self.figure + span_block(exam)
         mind = paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
         self.table.value = f'<div class="batten-short">{shortlist_table(exam)}</div>{mind}'
         why = details(f"Why {choice_words(exam)}", bullets([*exam.choice.reasons, otherwise(exam)]))
