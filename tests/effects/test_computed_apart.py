@@ -56,6 +56,9 @@ def test_influence_of_rows_on_a_smeared_difference_and_an_average_slope():
     slope = average_slope(est, jackknife=False)
     assert slope.value[0] == pytest.approx(2.692910, rel=1e-6)
     assert slope.error[0] == pytest.approx(0.509009, rel=1e-5)
+    growth = np.exp(est.eta)  # with x taken as fixed the rows' own share in the average falls away
+    fixed = slope.root[:, 0] * 12 - est.coef[2] * np.exp(est.residual).mean() * (growth - growth.mean())
+    assert np.sqrt(fixed @ fixed) / 12 == pytest.approx(0.445118, rel=1e-5)
     single = averaged_means(first_order(fitted("log y ~ x", A)), np.array([10.0]), jackknife=False)
     assert single.error[0] == pytest.approx(1.165355, rel=1e-5)
     assert single.root[:3, 0] * 12 == pytest.approx([-4.399169, -1.657585, -2.387964], rel=1e-5)

@@ -11,11 +11,17 @@ import pandas as pd
 from batten.effects.checks import Check
 from batten.effects.groups import GroupEffect
 from batten.effects.lookup import LookupRow
+from batten.effects.partial import Partial
+from batten.effects.percents import Percent
 from batten.effects.slopes import SlopeAt
 from batten.effects.summary import Entry
 from batten.effects.value import Effect
+from batten.frame.problem import Problem
 
-__all__ = ["check_table", "effect_table", "group_table", "lookup_table", "slope_table", "summary_table"]
+__all__ = [
+    "check_table", "effect_table", "group_table", "lookup_table", "partial_table", "percent_table", "slope_table",
+    "summary_table",
+]  # fmt: skip
 
 
 def effect_table(effects: Mapping[str, Effect], *, name: str) -> pd.DataFrame:
@@ -85,3 +91,18 @@ def summary_table(entries: tuple[Entry, ...]) -> pd.DataFrame:
     values = pd.Series([e.value for e in entries], index=index, dtype=object)  # whole numbers stay whole
     told = [(e.unit, e.note) for e in entries]
     return pd.DataFrame(told, columns=["unit", "note"], index=index).assign(value=values)[["value", "unit", "note"]]
+
+
+def partial_table(found: Partial, problem: Problem) -> pd.DataFrame:
+    """The focal predictor, value, curve and note, by the frame's own labels."""
+    bent = ", ".join(problem.base_names[j] for j in found.bent)
+    note = f"{bent} bends along {problem.focus}, and that is taken off too (CERES)" if bent else ""
+    columns = {problem.focus: problem.rows.x, "value": found.value, "curve": found.curve, "note": note}
+    return pd.DataFrame(columns, index=problem.index)
+
+
+def percent_table(found: tuple[Percent, ...]) -> pd.DataFrame:
+    """percent, low, high, kennedy, unbiased, unbiased_error, means, note by term."""
+    names = ["percent", "low", "high", "kennedy", "unbiased", "unbiased_error", "means", "note"]
+    index = pd.Index([p.label for p in found], name="term")
+    return pd.DataFrame([[getattr(p, name) for name in names] for p in found], columns=names, index=index)

@@ -19,21 +19,30 @@ from batten.effects.covariances import covariance, kinds
 from batten.effects.groups import GroupEffect, group_effects
 from batten.effects.inverse import Inverse, x_for
 from batten.effects.lookup import lookup, round_places
-from batten.effects.numbers import place, show
 from batten.effects.own_shapes import OwnShapes, own_shapes, own_shapes_sentence
+from batten.effects.partial import partial
+from batten.effects.percents import percents
 from batten.effects.rounding import Rounding, roundings
 from batten.effects.sentences import sentences
 from batten.effects.slopes import average, slopes_along
 from batten.effects.summary import summary
-from batten.effects.support import support
 from batten.effects.tell import Names, Sentence
 from batten.effects.turn import Turn, turning_point
 from batten.engine.rows import Array
 from batten.errors import Refusal
 from batten.errors import data as data_errors
 from batten.errors import exam as errors
-from batten.exam.answers import check_table, effect_table, group_table, lookup_table, slope_table, summary_table
-from batten.exam.given import complete, joined, known, labels_of, number, target
+from batten.exam.answers import (
+    check_table,
+    effect_table,
+    group_table,
+    lookup_table,
+    partial_table,
+    percent_table,
+    slope_table,
+    summary_table,
+)
+from batten.exam.given import complete, joined, known, labels_of, number, sparse_words, target
 from batten.exam.groups import covariate_rows, groups_by, interaction_groups, masks_by, said
 from batten.families import Remedy
 from batten.fit.carried import no_mean_interval
@@ -213,7 +222,7 @@ class Fit:
         found = self.span_effect(a, b, of=of)
         names = ("difference", "ratio", "span_slope")
         table = effect_table({name: getattr(found, name) for name in names}, name="effect")
-        sparse = self._sparse((found.a, found.b))
+        sparse = sparse_words(self.problem, (found.a, found.b))
         table["note"] = [joined(note, sparse) for note in table["note"]]
         return table
 
@@ -329,6 +338,15 @@ class Fit:
         )  # fmt: skip
         return check_table(found, p.index)
 
+    def partial(self) -> pd.DataFrame:
+        """Each row with its covariates at their averages, in units of y: the focal predictor, value, curve, note."""
+        return partial_table(partial(self.estimate), self.problem)
+
+    def percents(self) -> pd.DataFrame:
+        """Covariates' coefficients in percent, for log y and log links; empty elsewhere."""
+        q, labels = self.question, tuple(self.problem.base_names)
+        return percent_table(percents(self.estimate, labels, level=q.level, errors=q.errors))
+
     def summary(self) -> pd.DataFrame:
         """In-sample numbers a report is asked for: value, unit, note; NaN with the reason where there is none."""
         return summary_table(summary(self.estimate, self.names, errors=self.question.errors))
@@ -358,17 +376,6 @@ class Fit:
             p.response, p.focus, p.unit(p.response), p.unit(p.focus), covariates=bool(p.covariates),
             at=tuple(q.at.items()), level=q.level,
         )  # fmt: skip
-
-    def _sparse(self, span: tuple[float, float]) -> str:
-        """Words where more than a twentieth of the rows have none like them near an end of the span."""
-        p = self.problem
-        if not p.covariates:
-            return ""
-        base, modifier = self._covariates()
-        found = support(p.rows, span, base=base, modifier=modifier)
-        ends = zip((found.missing_a, found.missing_b), span, strict=True)
-        parts = [f"{show(100 * share, '%')} at {place(end, p.unit(p.focus))}" for share, end in ends if share > 0.05]
-        return f"no rows like these near: {' and '.join(parts)}" if parts else ""
 
     def _covariates(self) -> tuple[Array | None, Array | None]:
         """Covariate rows to average over: those of `at`, or None, None for the rows' own."""

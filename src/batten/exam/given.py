@@ -8,13 +8,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from batten.effects.numbers import place, show
+from batten.effects.support import support
 from batten.engine.rows import Array
 from batten.errors import ask
 from batten.errors import exam as errors
 from batten.fit.estimate import Estimate
 from batten.frame.problem import NewRows, Problem
 
-__all__ = ["complete", "joined", "known", "labels_of", "number", "target"]
+__all__ = ["complete", "joined", "known", "labels_of", "number", "sparse_words", "target"]
 
 
 def target(of: str) -> str:
@@ -66,3 +68,14 @@ def labels_of(problem: Problem, est: Estimate) -> list[str]:
     crossed = [f"{name} × {modifier}" if modifier else name for modifier in problem.modifier_names for name in focal]
     constants = est.shape.constant_words(problem.focus, problem.response)
     return [*base, *crossed, *constants[: est.moving]]
+
+
+def sparse_words(problem: Problem, span: tuple[float, float]) -> str:
+    """Words where more than a twentieth of the rows have none like them near an end of the span."""
+    if not problem.covariates:
+        return ""
+    base, modifier = problem.profile or (None, None)
+    found = support(problem.rows, span, base=base, modifier=modifier)
+    ends, unit = zip((found.missing_a, found.missing_b), span, strict=True), problem.unit(problem.focus)
+    parts = [f"{show(100 * share, '%')} at {place(end, unit)}" for share, end in ends if share > 0.05]
+    return f"no rows like these near: {' and '.join(parts)}" if parts else ""
