@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import subprocess
 import sys
 from pathlib import Path
@@ -25,7 +26,7 @@ def test_a_changed_row_trips_the_assert(engine: str) -> None:
         changed = data.copy()
         changed.loc[20, "minutes"] *= 1.001
         ran = run_script(written.source, {"castings": changed}, engine)
-        assert "`castings` differs from the rows this script was written for" in ran.error
+        assert "`castings` differs from the rows of this script" in ran.error
         fewer = run_script(written.source, {"castings": data.drop(index=11)}, engine)
         assert "differs from the rows" in fewer.error
 
@@ -50,7 +51,7 @@ refits = np.array(refits)
     ols = after.replace("FIT", 'smf.ols(MODEL, less.assign(log_y=np.log(less["y"]))).fit()')
     ran = agrees(write("log y ~ spline4 x", FORMULA, data), data, after=ols)
     np.testing.assert_allclose(ran.names["without"], ran.names["refits"], rtol=1e-10)
-    glm = after.replace("FIT", "smf.glm(MODEL, less, family=sm.families.Poisson()).fit()")
+    glm = after.replace("FIT", "smf.glm(MODEL, less, family=families.Poisson()).fit()")
     ran = agrees(write("loglink y ~ x", FORMULA, data), data, after=glm)
     moved = ran.names["refits"] - ran.names["b"]
     step = ran.names["without"] - ran.names["b"]
@@ -146,18 +147,10 @@ def test_the_same_fit_gives_the_same_text() -> None:
     assert one.source == two.source
 
 
-#: the commonest remedies; curves with groups beside them need a few lines more
+#: the commonest remedies
 COMMON = ["y ~ x", "log y ~ x", "log y ~ log x", "y ~ poly2 x", "log y ~ spline4 x", "y ~ bins5 x", "loglink y ~ log x",
           "y ~ hinge x", "log y ~ fp1 x", "1/y ~ x", "sqrt y ~ x", "share y ~ x"]  # fmt: skip
 RESPONSES = {"y ~ hinge x": "kinked", "1/y ~ x": "rate", "share y ~ x": "scrap"}
-
-
-def test_common_scripts_have_at_most_70_lines() -> None:
-    data = foundry(90)
-    lengths = {
-        key: len(write(key, f"{RESPONSES.get(key, 'minutes')} ~ mass_kg + C(alloy)", data).lines) for key in COMMON
-    }
-    assert max(lengths.values()) <= 70, lengths
 
 
 def test_scripts_pass_a_linter(tmp_path: Path) -> None:
@@ -188,14 +181,20 @@ def test_scripts_pass_a_linter(tmp_path: Path) -> None:
 def test_comments_say_which_rows_and_errors() -> None:
     data = foundry(60)
     data.loc[3, "mass_kg"], data.loc[[4, 5], "depth"] = np.nan, np.inf
-    first, *more = write("log y ~ x", FORMULA, data).lines[:3]
-    assert first == '# minutes ~ mass_kg + C(alloy) + depth, remedy "log y ~ x": log of minutes on mass_kg.'
-    assert " ".join(line.removeprefix("#").strip() for line in more) == (
+    told = _introduced(write("log y ~ x", FORMULA, data).lines)
+    assert told == (
+        'minutes ~ mass_kg + C(alloy) + depth, remedy "log y ~ x": log of minutes on mass_kg. '
         "`castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. "
         "Errors: robust (HC3), as if this remedy had been fixed in advance."
     )
-    planned = write("log y ~ x", FORMULA, foundry(60), planned="log y ~ x").lines[1]
-    assert planned == "# `castings` (pandas): all 60 rows used. Errors: robust (HC3)."
+    planned = _introduced(write("log y ~ x", FORMULA, foundry(60), planned="log y ~ x").lines)
+    assert planned.endswith("`castings` (pandas): all 60 rows used. Errors: robust (HC3).")
+
+
+def _introduced(lines: list[str]) -> str:
+    """The comment a script opens with, on one line."""
+    opening = itertools.takewhile(lambda line: line.startswith("#"), lines)
+    return " ".join(line.removeprefix("#").strip() for line in opening)
 
 
 def test_predictions_keep_the_index_of_what_is_asked() -> None:

@@ -58,19 +58,6 @@ def read_numbers(column: str, frame: str, *, text: bool) -> str:
     return f'pd.to_numeric({source}, errors="coerce").astype(float)' if text else f"{source}.astype(float)"
 
 
-_LEVELS = '''
-def as_levels(values, levels):
-    """Categories with explicit levels; any other value becomes missing, not the reference level."""
-    return pd.Categorical(values.astype(object).where(values.isin(levels)), categories=levels)
-'''
-
-_TABLE = '''
-def coded(values, table, j):
-    """Column j of the levels' table; a level that is not in it becomes missing."""
-    return values.astype(object).map({level: row[j] for level, row in table.items()}).to_numpy(float)
-'''
-
-
 class _Writer:
     def __init__(self, design: Design, *, own_level: bool, taken: Iterable[str]) -> None:
         self.design, self.out = design, Covariates()
@@ -106,9 +93,9 @@ class _Writer:
 
     def _numbers(self, column: str, start: pd.Timestamp | None, name: str) -> str:
         if start is None:
-            return f"{read_numbers(column, 'frame', text=self._is_text(column))}.to_numpy()"
+            return read_numbers(column, "frame", text=self._is_text(column))
         stamps = f"pd.to_datetime(frame[{literal(column)}]).dt.tz_localize(None)"
-        return f"(({stamps} - {name}) / pd.Timedelta(days=1)).to_numpy()"
+        return f"(({stamps} - {name}) / pd.Timedelta(days=1))"
 
     def _is_text(self, column: str) -> bool:
         return look(column, self.design.read[column]).stored == "as text"
@@ -131,7 +118,7 @@ class _Writer:
                 source += ".astype(bool)"
             name = self._name(slot.column)
             self.variables[slot_name] = name
-            self.out.lines.append(f"{name} = {source}.reset_index(drop=True)")
+            self.out.lines.append(f"{name} = {source}")
             # in the table too, so that a row is missing where it is: a comparison would not say so
             self.out.entries.append((name, name))
         return self.variables[slot_name]
@@ -170,16 +157,7 @@ class _Writer:
         levels = f"{name.upper().strip('_')}_LEVELS"
         meaning = f"levels of {self._label(code)}; the first is the reference"
         self.out.constants.append((levels, literal(list(self._levels(code))), meaning))
-        if self.groups > 1:
-            self.out.entries.append((name, f"as_levels({self._values(code, name)}, {levels})"))
-            self._needs(_LEVELS)
-            return [f"C({name})"]
-        values = self._values(code, name)
-        entry = f"pd.Categorical({values}.astype(object).where({values}.isin({levels})), {levels})"
-        if len(name) + len(entry) > 105:
-            self.out.lines.append(f"{name} = {values}.astype(object)")
-            entry = f"pd.Categorical({name}.where({name}.isin({levels})), {levels})"
-        self.out.entries.append((name, entry))
+        self.out.entries.append((name, f'{self._values(code, name)}.astype("category").cat.set_categories({levels})'))
         return [f"C({name})"]
 
     def _called(self, code: str) -> str:
@@ -191,7 +169,7 @@ class _Writer:
         slot = self.design.slots.get(code)
         if slot is not None:
             return f"frame[{literal(slot.column)}]"
-        return f"pd.Series({self._expression(code, name).source})"
+        return f"pd.Series({self._expression(code, name).source}, index=frame.index)"
 
     def _numeric(self, code: str) -> list[str]:
         slot = self.design.slots.get(code)
@@ -281,9 +259,9 @@ class _Writer:
             body = ", ".join(f"{literal(level)}: {literal(row)}" for level, row in table.items())
             constant = f"{name.upper().strip('_')}_TABLE"
             self.out.constants.append((constant, f"{{{body}}}", f"columns of {self._label(code)} by level"))
-            values = self._values(code, name)
-            self.out.entries += [(f"{name}_{j + 1}", f"coded({values}, {constant}, {j})") for j in range(len(columns))]
-            self._needs(_TABLE)
+            found = f"pd.DataFrame({constant}, dtype=float).T.reindex({self._values(code, name)}.astype(object))"
+            self.out.lines.append(f"{name} = {found}.to_numpy()")
+            self.out.entries += [(f"{name}_{j + 1}", f"{name}[:, {j}]") for j in range(len(columns))]
 
     def _dropped(self) -> bool:
         d = self.design

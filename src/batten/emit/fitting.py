@@ -1,4 +1,4 @@
-"""The fit of a script: rows, statsmodels, leverages, coefficients without each row, the table of coefficients."""
+"""The fit of a script: rows, statsmodels, the table of coefficients, coefficients and errors without each row."""
 
 from __future__ import annotations
 
@@ -10,13 +10,19 @@ from batten.emit.text import WIDTH, literal, noted, wrapped
 
 __all__ = ["fitting"]
 
-#: family, square root of the variance, square root of the working weight (in mu)
+#: family, square root of the working weight, residual in units of its own spread (both in mu)
 _LINKS = {
-    "loglink y": ("Poisson()", "np.sqrt(mu)", "np.sqrt(mu)"),
-    "loglink-gamma y": ("Gamma(sm.families.links.Log())", "mu", ""),
-    "loglink-gaussian y": ("Gaussian(sm.families.links.Log())", "", "mu"),
-    "share y": ("Binomial()", "np.sqrt(mu * (1 - mu))", "np.sqrt(mu * (1 - mu))"),
+    "loglink y": ("Poisson()", "np.sqrt(mu)", "(y - mu) / np.sqrt(mu)"),
+    "loglink-gamma y": ("Gamma(families.links.Log())", "", "y / mu - 1"),
+    "loglink-gaussian y": ("Gaussian(families.links.Log())", "mu", "y - mu"),
+    "invlink-gamma y": ("Gamma()", "mu", "1 - y / mu"),
+    "share y": ("Binomial()", "np.sqrt(mu * (1 - mu))", "(y - mu) / np.sqrt(mu * (1 - mu))"),
 }
+
+
+def fitting(parts: Parts) -> list[str]:
+    """From the frame to fitted coefficients and what their uncertainty needs."""
+    return [*_rows(parts), *(_glm(parts) if parts.link else _ols(parts))]
 
 
 def _chosen(parts: Parts) -> str:
@@ -28,83 +34,125 @@ def _chosen(parts: Parts) -> str:
     return ""
 
 
-def fitting(parts: Parts) -> list[str]:
-    """From the frame to fitted coefficients and what their uncertainty needs."""
-    return [*_rows(parts), *(_glm(parts) if parts.link else _ols(parts)), *_table(parts)]
-
-
 def _rows(parts: Parts) -> list[str]:
     response, lines, data = parts.problem.response, [], parts.frame
     if _chosen(parts):
         data = "data"
         lines = wrapped(f"data = {parts.frame}.query({literal(_chosen(parts))})")
     text = any(f"{response} (stored as text)" in said for said in parts.problem.announcements)
-    source = read_numbers(response, data, text=text)
-    made = f"rows = columns({data}).assign(y={source}.to_numpy())"
-    finite = any(
-        "finite" in str(why) for why in parts.problem.left_out["why"].unique()
-    )  # infinite; not a finite number
-    clean = ".replace([np.inf, -np.inf], np.nan).dropna()" if finite else ".dropna()"
-    if len(made + clean) <= WIDTH:
-        lines.append(made + clean)
-    else:
-        lines += [*wrapped(made), f"rows = rows{clean}"]
-    lines.append(f'y, used = rows["y"].to_numpy(), {data}.iloc[rows.index]')
+    lines += wrapped(f"rows = columns({data}, {read_numbers(response, data, text=text)}).dropna()")
+    lines.append(f'used, y = {data}.iloc[rows.index], rows["y"].to_numpy()')
     if parts.left.check is not None:
         condition, words = parts.left.check
         lines += wrapped(f"assert ({condition}).all(), {literal(words)}")
     return lines
 
 
+# --- least squares ----------------------------------------------------------------------------------------------------
+
+
 def _ols(parts: Parts) -> list[str]:
-    source = parts.left.columns[0][1]
+    lines = ["m = np.median(y)"] if parts.power else []
+    lines += _fit(parts)
+    zeros = _zeros(parts) if len(parts.searched) < 2 else f"[{_zeros(parts)}]"
+    values = {
+        "X": "design(used)" if parts.searched else "fit.model.exog",
+        "z": "fit.model.endog", "e": "fit.resid.to_numpy()",
+        "b": f"np.append(fit.params, {zeros})" if parts.searched else "fit.params.to_numpy()",
+    }  # fmt: skip
+    names = ["X", "z", "e", "b"]
+    if parts.power:
+        names.remove("b")
+    if parts.kind == "identity":
+        names.remove("z")
+    code = f"{', '.join(names)} = {', '.join(values[name] for name in names)}"
+    zero = "0: linear around what was searched"
+    lines += [f"{code}  # {zero}"] if parts.searched and len(code) + len(zero) + 4 <= WIDTH else wrapped(code)
+    if parts.kind == "exp":
+        lines.append("smear = np.exp(e).mean()  # exp() of a fitted log is a median; this makes it a mean (Duan 1983)")
+    if parts.needs_s2:
+        lines.append(f"s2 = e @ e / {parts.est.df_residual}")
+    lines += _deletions(parts)
+    lines += _table(parts)
+    if not parts.power:
+        return lines
+    weight = "np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "out / e"
+    return [*lines, *power_moves(weight, f"{_zeros(parts)}, " if parts.searched else "")]
+
+
+def _fit(parts: Parts) -> list[str]:
+    source = "bent(LAMBDA)" if parts.power else parts.left.columns[0][1]
     response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
     fit = f"fit = smf.ols(MODEL, rows{response})"
     if parts.uneven:
-        lines = noted(f'{fit}.fit(method="qr")', "columns differ much in size: QR keeps their digits")
-    elif parts.robust and not parts.own_table:
-        lines = noted(f'{fit}.fit(cov_type="HC3", use_t=True)', "HC3: errors may be of uneven size")
-    else:
-        lines = [f"{fit}.fit()"]
-    if parts.searched:
-        lines.append("X, z, e = jacobian(used), fit.model.endog, fit.resid.to_numpy()")
-        lines += noted(f"b = np.append(fit.params, {_zeros(parts)})", "0: the fit is linear around what was searched")
-    else:
-        lines.append("X, z, e, b = fit.model.exog, fit.model.endog, fit.resid.to_numpy(), fit.params.to_numpy()")
-    if parts.kind == "exp":
-        lines.append("smear = np.exp(e).mean()  # exp() of a fitted log is a median; this makes it a mean (Duan 1983)")
-    lines.append("Q, R = np.linalg.qr(X)")
-    if parts.needs_s2:
-        lines.append(f"s2 = e @ e / {parts.est.df_residual}")
-    if parts.power:
-        lines += [f"h = {parts.leverages}", "out = e / (1 - h)  # each row's error around the fit without it"]
-        return [*lines, *power_moves(parts)]
-    if not parts.robust:
-        return lines
-    lines.append(f"out = e / (1 - {parts.leverages})  # each row's error around the fit without it")
-    return [*lines, "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out"]
+        return noted(f'{fit}.fit(method="qr")', "columns differ much in size: QR keeps their digits")
+    if parts.robust and not parts.own_table:
+        code = f'{fit}.fit(cov_type="HC3", use_t=True)'
+        why = "  # errors may differ in size"
+        return [code + (why if len(code + why) <= WIDTH else "")]
+    return wrapped(f"{fit}.fit()")
 
 
 def _zeros(parts: Parts) -> str:
-    return "0.0" if len(parts.searched) == 1 else f"[{', '.join(['0.0'] * len(parts.searched))}]"
+    return ", ".join(["0.0"] * len(parts.searched))
+
+
+def _deletions(parts: Parts) -> list[str]:
+    """without: coefficients with each row left out; out: its error around that fit."""
+    out, without = "# each row's error around the fit without it", "# coefficients with each row left out"
+    if parts.power:
+        made = ["Q, R = np.linalg.qr(X)", f"out = e / (1 - {parts.leverages})"]
+        lines = made if parts.triangle else ["out = fit.get_influence().resid_press"]
+        return [*lines[:-1], f"{lines[-1]}  {out}"]
+    if parts.triangle:
+        lines = ["Q, R = np.linalg.qr(X)"]
+        if parts.ordered or parts.uses_without:
+            lines.append(f"out = e / (1 - {parts.leverages})  {out}")
+        if parts.uses_without:
+            lines.append(f"without = b - np.linalg.solve(R, Q.T * out).T  {without}")
+        return lines
+    if not parts.uses_without:
+        return [f"out = fit.get_influence().resid_press  {out}"]
+    y = "y" if parts.kind == "identity" else "z"
+    if parts.searched:
+        fit = f"np.linalg.lstsq(np.delete(X, i, axis=0), np.delete({y}, i), rcond=None)[0]"
+        lines = wrapped(f"without = np.array([{fit} for i in range(len(y))])")
+    else:
+        lines = [f"without = fit.get_influence().params_not_obsi  {without}"]
+    return [*lines, f"out = {y} - (X * without).sum(axis=1)  {out}"]
+
+
+# --- links ------------------------------------------------------------------------------------------------------------
 
 
 def _glm(parts: Parts) -> list[str]:
-    family, spread, weight = _LINKS[parts.est.remedy.left.key]
-    score = f"(y - mu) / {spread}" if spread else "y - mu"
-    lines = [
-        f"model = smf.glm(MODEL, rows, family=sm.families.{family})",
-        'fit = model.fit(tol=0, rtol=1e-10, tol_criterion="params")',
-        "X, b = fit.model.exog, fit.params.to_numpy()",
-        f"mu = {undo(parts, 'X @ b')}",
-        f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})",
-        f"score = {score}",
-        "# GLM's own HC1 to HC3 are all HC0: leave out each row instead, by one Newton step",
-        f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T",
+    family, weight, score = _LINKS[parts.est.remedy.left.key]
+    scale = "" if parts.robust else 'scale="X2", '
+    settled = f'fit({scale}tol=0, rtol=1e-10, tol_criterion="params")'
+    code = f"fit = smf.glm(MODEL, rows, family=families.{family}).{settled}"
+    lines = wrapped(code)
+    if parts.kind == "invlink":
+        warned = 'warnings.filterwarnings("ignore", "The InversePower link")'
+        lines = [f"{warned}  # it warns of means below zero; here all lie above", *lines]
+    lines.append("X, b, mu = fit.model.exog, fit.params.to_numpy(), fit.mu")
+    why = "each row left out by a Newton step: GLM's HC3 is HC0"
+    if parts.triangle:
+        lines += [
+            f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})",
+            f"score = {score}",
+            f"# {why}",
+            f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T",
+        ]
+    else:
+        lines += noted("without = b - fit.get_influence(observed=False).d_params", why)
+    lines.append(
         f"out = y {'-' if parts.kind == 'share' else '/'} {undo(parts, '(X * without).sum(axis=1)')}"
-        "  # each row against the mean without it",
-    ]
-    return [*lines, f"s2 = score @ score / {parts.est.df_residual}"] if not parts.robust else lines
+        "  # each row against the mean without it"
+    )
+    return [*lines, *_table(parts)]
+
+
+# --- table ------------------------------------------------------------------------------------------------------------
 
 
 def _table(parts: Parts) -> list[str]:

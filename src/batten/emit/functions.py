@@ -6,30 +6,33 @@ import re
 
 from batten.emit.parts import Parts
 from batten.emit.powers import power_functions
-from batten.emit.text import docstring, noted, wrapped
+from batten.emit.text import WIDTH, docstring, noted, wrapped
 
-__all__ = ["design_call", "functions", "undo"]
+__all__ = ["functions", "undo"]
+
+#: lines of a function that needs no blank line above it
+SHORT = 3
 
 
 def functions(parts: Parts) -> list[str]:
-    """All functions, a blank line between them."""
-    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_jacobian(parts), *_means(parts)]
+    """All functions; those of two or three lines stand under the one before, without a blank line."""
+    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_back(parts)]
     blocks += [] if parts.covariates.unwritten else [_predict(parts)]
-    return [line for block in blocks for line in ["", *block]][1:]
+    lines = blocks[0]
+    for block in blocks[1:]:
+        lines = [*lines, *([] if len(block) <= SHORT else [""]), *block]
+    return lines
 
 
 def undo(parts: Parts, argument: str) -> str:
     """Source of the way back to units of y."""
     if parts.kind == "identity":
         return argument
+    if parts.kind == "share":
+        return f"expit({argument})"
     if parts.kind != "square" and parts.left.inverse != "np.exp(z)":
         return f"undo({argument})"
-    return re.sub(r"\bz\b", argument, parts.left.inverse)
-
-
-def design_call(parts: Parts) -> str:
-    """The function that gives design rows, searched constants included."""
-    return "jacobian" if parts.searched else "design"
+    return re.sub(r"\bz\b", lambda _: argument, parts.left.inverse)
 
 
 def _helpers(parts: Parts) -> list[list[str]]:
@@ -48,108 +51,122 @@ def _blocks(source: str) -> list[str]:
 def _columns(parts: Parts) -> list[str]:
     c = parts.covariates
     arguments = "".join(f", {name}={name}" for name in parts.searched)
-    guarded = _overflows(parts) or c.guarded
-    focus = _finite(c.focus) if parts.shape.helper and not guarded else c.focus
-    lines = ['@np.errstate(all="ignore")  # what a column cannot take becomes missing'] if guarded else []
+    lines = []
+    if _warns(parts) or c.guarded:
+        lines = ['@np.errstate(all="ignore")  # what a column cannot take becomes missing']
     lines += [
-        f"def columns(frame{arguments}):",
+        f"def columns(frame, y=0.0{arguments}):",
         *docstring("The model's columns under plain names; an unknown level is missing, not the reference level."),
-        *wrapped(f"    x = {focus}", 4),
     ]
     if parts.shape.check is not None:
         condition, words = parts.shape.check
-        lines += noted(f"    x = np.where({condition}, x, np.nan)", words)
+        lines += noted(f"    x = {c.focus}.where(lambda x: {condition})", words)
+    else:
+        lines += wrapped(f"    x = {c.focus}", 4)
     lines += [line for source in c.lines for line in wrapped(f"    {source}", 4)]
     shape = [(name, source) for name, source in parts.shape.columns if name != "x"]
-    entries = ", ".join(f'"{name}": {source}' for name, source in [("x", "x"), *shape, *c.entries])
-    return [*lines, *wrapped(f"    return pd.DataFrame({{{entries}}})", 4)]
+    entries = ", ".join(f'"{name}": {source}' for name, source in [("y", "y"), ("x", "x"), *shape, *c.entries])
+    clean = "replace([np.inf, -np.inf], np.nan).reset_index(drop=True)"
+    return [*lines, *_returned(f"pd.DataFrame({{{entries}}})", clean)]
 
 
-def _finite(source: str) -> str:
-    """A series without its infinite values, which splines and groups cannot take quietly."""
-    return source.removesuffix(".to_numpy()") + ".replace([np.inf, -np.inf], np.nan).to_numpy()"
+def _returned(table: str, then: str) -> list[str]:
+    """Return a table after a last step, in one statement where that saves a line."""
+    apart = [*wrapped(f"    found = {table}", 4), *wrapped(f"    return found.{then}", 4)]
+    together = wrapped(f"    return {table}.{then}", 4)
+    return together if len(together) < len(apart) else apart
 
 
-def _overflows(parts: Parts) -> bool:
-    """Whether some values of x would make numpy warn, far outside the data or at zero."""
-    sources = " ".join(source for _, source in parts.shape.columns)
-    return bool(parts.searched) or any(sign in sources for sign in ("exp", "**", "1 /"))
+def _warns(parts: Parts) -> bool:
+    """Whether numpy would warn at some values of x; pandas' own arithmetic does not."""
+    return any("np.exp" in source for _, source in parts.shape.columns)
 
 
 def _design(parts: Parts) -> list[str]:
-    more, given = (", **constants", ", **constants") if parts.searched else ("", "")
+    """design(), where constants of the shape were searched with a column for each of them."""
+    if not parts.searched:
+        return ["def design(frame):", *noted(f"    return {_exog(parts, '')}", "gaps keep their place")]
+    names, corners = parts.searched, parts.est.shape.corners
+    moves = [[step if i == j else "0" for i in range(len(names))] for j, step in enumerate(parts.steps)]
+    ways = [move if sign else ["-" + m if m != "0" else m for m in move] for move in moves for sign in (1, 0)]
+    if corners:
+        ways = moves
+    if len(names) == 1:
+        at, places = f", {names[0]}={names[0]} + d", ", ".join(["0", *(way[0] for way in ways)])
+        given = "d"
+    else:
+        given = ", ".join("cd"[: len(names)])
+        at = "".join(f", {name}={name} + {letter}" for name, letter in zip(names, "cd", strict=True))
+        places = ", ".join(f"({', '.join(way)})" for way in [["0"] * len(names), *ways])
+    columns = [
+        f"(moved[{j}] - X) @ fit.params / {step}" if corners
+        else f"(moved[{2 * j}] - moved[{2 * j + 1}]) @ fit.params / 2{step[1:]}"
+        for j, step in enumerate(parts.steps)
+    ]  # fmt: skip
+    design = [
+        *wrapped(f"    X, *moved = ({_exog(parts, at)} for {given} in ({places}))", 4),
+        *wrapped(f"    return np.column_stack([X, {', '.join(columns)}])", 4),
+    ]
+    why = f"  # last: how the fit moves with {' and '.join(names)}"
+    if len(design[-1] + why) <= WIDTH:
+        return ["def design(frame):", *design[:-1], design[-1] + why]
     return [
-        f"def design(frame{more}):",
-        *docstring("The design at the rows of `frame`, by the model's own formula; missing where a column is."),
-        f"    new = columns(frame{given}).replace([np.inf, -np.inf], np.nan)",
-        *noted(
-            f"    X = smf.ols(MODEL, new.fillna(rows.iloc[0]).assign({parts.response}=0.0)).exog",
-            "gaps keep their place",
-        ),
-        "    return np.where(new.notna().all(axis=1).to_numpy()[:, None], X, np.nan)",
+        "def design(frame):",
+        *docstring(f"The model's design, then how the fit moves with {' and '.join(names)}, estimated with the rest."),
+        *design,
     ]
 
 
-def _jacobian(parts: Parts) -> list[list[str]]:
-    """Design, then how the fitted value moves with each searched constant."""
-    if not parts.searched:
-        return []
-    names = " and ".join(parts.searched)
-    text = f"The design, then how the fitted value moves with {names}, estimated as the coefficients are."
-    lines, moves = ["def jacobian(frame):", *docstring(text)], []
-    for name, step in zip(parts.searched, parts.steps, strict=True):
-        if parts.est.shape.corners:
-            moves.append(f"(design(frame, {name}={name} + STEP) - design(frame)) @ fit.params / STEP")
-            continue
-        pair = f"[design(frame, {name}={name} + d) @ fit.params for d in (1{step}, -1{step})]"
-        lines.append(f"    {name.lower()} = {pair}")
-        moves.append(f"({name.lower()}[0] - {name.lower()}[1]) / 2{step}")
-    return [[*lines, *wrapped(f"    return np.column_stack([design(frame), {', '.join(moves)}])", 4)]]
+def _exog(parts: Parts, given: str) -> str:
+    """Source of the design at the rows of `frame` by the model's own formula."""
+    response = "" if parts.response == "y" else f".assign({parts.response}=0.0)"
+    return f"smf.ols(MODEL, columns(frame{given}).fillna(rows.iloc[0]){response}).exog"
 
 
 # --- the way back -----------------------------------------------------------------------------------------------------
 
 
-def _means(parts: Parts) -> list[list[str]]:
+def _back(parts: Parts) -> list[list[str]]:
     """undo() and mean(), where the way back is more than exp()."""
     if parts.power:
         return [*power_functions(parts), _mean_of_pairs(parts)]
-    found = []
+    blocks = []
     if undo(parts, "z") == "undo(z)" and parts.left.inverse != "undo(z)":
-        inverse = parts.left.inverse
-        found.append(["def undo(z):", *docstring(f"Back to {parts.y}."), *wrapped(f"    return {inverse}", 4)])
+        blocks.append(["def undo(z):", *wrapped(f"    return {parts.left.inverse}", 4)])
     if parts.kind == "square":
-        found.append(_mean_of_squares(parts))
+        blocks.append(_mean_of_squares(parts))
     elif parts.kind == "pairs":
-        found.append(_mean_of_pairs(parts))
-    return found
+        blocks.append(_mean_of_pairs(parts))
+    return blocks
 
 
 def _mean_of_squares(parts: Parts) -> list[str]:
-    text = f"Mean {parts.y} at fitted roots eta: squares averaged over the errors e, a root below 0 counting as 0."
-    return [
+    lines = [
         "def mean(eta, e):",
-        *docstring(text),
-        "    e = np.sort(e)[::-1]",
-        "    above = np.searchsorted(-e, eta)  # how many errors leave the root above 0",
-        "    one, two = (np.append(0, np.cumsum(e**k))[above] for k in (1, 2))",
-        "    return (above * eta**2 + 2 * eta * one + two) / len(e)",
+        *docstring(f"Mean {parts.y} at fitted roots eta: squares over the errors e, a root below 0 counting as 0."),
+    ]
+    if parts.few_pairs:
+        return [*lines, "    return (np.maximum(np.add.outer(eta, e), 0) ** 2).mean(axis=1)"]
+    return [
+        *lines,
+        "    sums = [np.append(0, np.cumsum(np.sort(e)[::-1] ** k)) for k in range(3)]",
+        "    n, one, two = (total[np.searchsorted(np.sort(-e), eta)] for total in sums)  # over the roots above 0",
+        "    return (n * eta**2 + 2 * eta * one + two) / len(e)",
     ]
 
 
 def _mean_of_pairs(parts: Parts) -> list[str]:
-    extra, given, args = (", LAMBDA=LAMBDA", ", LAMBDA", "(e, LAMBDA)") if parts.power else ("", "", "(e,)")
-    exact = f"np.array([undo(v + e{given}).mean() for v in eta])"
+    extra, given, args = (", v=LAMBDA", ", v", "(e, v)") if parts.power else ("", "", "(e,)")
     lines = [
         f"def mean(eta, e{extra}):",
         *docstring(f"Mean {parts.y} at fitted values eta, averaged over the errors e (Duan 1983)."),
     ]
-    if parts.single or parts.est.n <= 200:
-        return [*lines, f"    return {exact}"]
+    if parts.few_pairs:
+        return [*lines, f"    return undo(np.add.outer(eta, e){given}).mean(axis=1)"]
     return [
         *lines,
         "    if len(eta) <= 200:",
-        f"        return {exact}",
+        f"        return undo(np.add.outer(eta, e){given}).mean(axis=1)",
         "    ends = [np.nanmin(eta) - 1e-9, np.nanmax(eta) + 1e-9]  # many eta by a polynomial right to ten digits",
         f"    return np.polynomial.Chebyshev.interpolate(mean, 60, ends, args={args})(eta)",
     ]
@@ -159,22 +176,27 @@ def _mean_of_pairs(parts: Parts) -> list[str]:
 
 
 def _predict(parts: Parts) -> list[str]:
-    limits = _limits(parts)
     text = f"{parts.y} of one further row: median, mean, {parts.percent} interval{_way(parts)}."
-    lost = f"    N = np.where({limits}[:, None], N, np.nan)"
+    known = "columns(frame).notna().all(axis=1)"
+    limits = _limits(parts)
+    lines = [f"    N, known = design(frame), {known}"]
+    kept = f"known & {limits}" if limits else "known"
+    if limits and parts.kind == "pairs" and not parts.few_pairs:
+        lines = ["    N = design(frame)", f"    known = {known} & {limits}"]
+        lines += ["    N = np.where(known.to_numpy()[:, None], N, np.nan)"]
+        kept = "known"
     return [
         "def predict(frame):",
         *docstring(text),
-        f"    N = {design_call(parts)}(frame)",
-        *(noted(lost, f"beyond, there is no {parts.y}") if limits else []),
+        *lines,
         *(_new_row_of_link(parts) if parts.link else _new_row(parts)),
-        *wrapped(f"    return pd.DataFrame({{{_targets(parts)}}}, index=frame.index)", 4),
+        *_returned(f"pd.DataFrame({{{_targets(parts)}}})", f"where({kept}).set_axis(frame.index)"),
     ]
 
 
 def _way(parts: Parts) -> str:
     """How the interval is made."""
-    return " by jackknife+ (errors as seen, none assumed normal)" if parts.ordered else " for normal errors"
+    return " by jackknife+ (errors as seen, not as if normal)" if parts.ordered else " for normal errors"
 
 
 def _limits(parts: Parts) -> str:
@@ -185,38 +207,35 @@ def _limits(parts: Parts) -> str:
     eta = f"N @ {_b(parts)}"
     above = f"({eta} > {low:.17g})" if low > -float("inf") else ""
     below = f"({eta} < {high:.17g})" if high < float("inf") else ""
-    both = " & ".join(part for part in (above, below) if part)
-    return f"({both})" if above and below else both
+    return " & ".join(part for part in (above, below) if part)
 
 
 def _b(parts: Parts) -> str:
-    return "b[:-1]" if parts.power else "b"
+    return "b[:-2]" if parts.power else "b"
 
 
 def _targets(parts: Parts) -> str:
     """Median, mean and the ends of the interval."""
     if parts.link:
         return '"median": mean * np.median(y / mu), "mean": mean, "low": low, "high": high'
-    median = undo(parts, "eta + np.median(e)")
-    mean = {"identity": "eta", "exp": "np.exp(eta) * smear"}.get(parts.kind, "mean(eta, e)")
-    return f'"median": {median}, "mean": {mean}, "low": low, "high": high'
+    eta = f"N @ {_b(parts)}"
+    mean = {"identity": eta, "exp": f"np.exp({eta}) * smear"}.get(parts.kind, f"mean({eta}, e)")
+    return f'"median": {undo(parts, f"{eta} + np.median(e)")}, "mean": {mean}, "low": low, "high": high'
 
 
 def _new_row(parts: Parts) -> list[str]:
-    """eta, low and high for further rows at the design N."""
+    """low and high for further rows at the design N."""
     first, last = parts.rank, -1 - parts.rank
-    eta, tail = f"N @ {_b(parts)}", f"{50 - 50 * parts.question.level:.10g}% lie beyond each end"
+    lines = []
     if not parts.ordered:
         half = f"{parts.t_name} * np.sqrt(s2 * (1 + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
-        lines = [f"    eta, half = {eta}, {half}"]
-        ends = "np.array([eta - half, eta + half])"
+        lines = [f"    half = {half}"]
+        ends = f"np.array([N @ {_b(parts)} - half, N @ {_b(parts)} + half])"
     elif parts.many:
-        lines = noted(f"    eta, spread = {eta}, np.sort(out)[[{first}, {last}]]", tail)
-        ends = "np.add.outer(spread, eta)"
+        ends = f"np.add.outer(np.sort(out)[[{first}, {last}]], N @ {_b(parts)})"
     else:
-        without = "without[:, :-1]" if parts.power else "without"
-        lines = noted(f"    eta, ends = {eta}, [np.sort({without} @ row + out)[[{first}, {last}]] for row in N]", tail)
-        ends = "np.transpose(ends)"
+        without = "without[:, :-2]" if parts.power else "without"
+        ends = f"np.transpose([np.sort({without} @ row + out)[[{first}, {last}]] for row in N])"
     back = undo(parts, ends)
     falls = bool((parts.est.scale.inverse_slope(parts.est.eta[:1], parts.est.c) < 0).all())
     return [*lines, *wrapped(f"    low, high = {f'np.sort({back}, axis=0)' if falls else back}", 4)]

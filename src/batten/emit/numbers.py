@@ -21,8 +21,8 @@ __all__ = ["Numbers", "numbers"]
 class Numbers:
     """rows: how many the fit uses. coef, error (k,): the shape's own columns and searched constants, with standard
     errors; empty where the focal predictor stands in interactions only. smear: factor from median to mean on the log
-    scale, else None. span: the standing question's answer. predictions (2, 4): median, mean, low, high of one further
-    row like the first and like the last of those used.
+    scale, else None. span: the standing question's answer. prediction (4,): median, mean, low, high of one further
+    row like the last of those used.
     """
 
     rows: int
@@ -30,7 +30,7 @@ class Numbers:
     error: Array
     smear: float | None
     span: SpanEffect
-    predictions: Array
+    prediction: Array
 
 
 def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
@@ -46,7 +46,7 @@ def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
         span=span_effect(
             est, question.span, level=question.level, errors=question.errors, base=base, modifier=modifier
         ),
-        predictions=_predictions(est, question, np.array([0, est.n - 1])),
+        prediction=_prediction(est, question, np.array([est.n - 1])),
     )
 
 
@@ -61,9 +61,9 @@ def _own_columns(problem: Problem, est: Estimate) -> Ints:
     return np.append(np.arange(first, first + width), np.arange(total, total + est.moving))
 
 
-def _predictions(est: Estimate, question: Question, probes: Ints) -> Array:
-    part = est.rows.take(probes)
+def _prediction(est: Estimate, question: Question, probe: Ints) -> Array:
+    part = est.rows.take(probe)
     where = part.x, part.base, part.modifier
     median = predict(est, *where, of="median")
     mean = predict(est, *where, kind="new row", level=question.level, errors=question.errors)
-    return np.column_stack([median.estimate, mean.estimate, mean.low, mean.high])
+    return np.concatenate([median.estimate, mean.estimate, mean.low, mean.high])

@@ -22,6 +22,9 @@ from batten.frame.problem import Problem
 
 __all__ = ["Parts", "read_parts"]
 
+#: rows whose means over all pairs of fitted value and error are taken as they stand
+FEW = 300
+
 _RESPONSES = {"y": "y", "log y": "log_y", "sqrt y": "root_y", "1/y": "inverse_y", "y^2": "square_y"}
 
 
@@ -50,9 +53,9 @@ class Parts:
 
     @property
     def kind(self) -> str:
-        """How a fitted value becomes a mean: "identity", "exp", "square", "pairs", "log link", "share"."""
+        """How a fitted value becomes a mean: "identity", "exp", "square", "pairs", or the family of a link."""
         if self.est.link is not None:
-            return "log link" if self.est.link.reading == "ratio" else "share"
+            return self.est.link.family
         return self.est.scale.closed or "pairs"
 
     @property
@@ -80,10 +83,16 @@ class Parts:
 
     @cached_property
     def steps(self) -> tuple[str, ...]:
-        """Steps in the searched constants for numeric slopes, as exponents (e-7)."""
-        low, high = self.est.shape.bounds(self.est.rows.x, self.est.state)
-        sizes = [max(abs(t), 1e-3 * width) for t, width in zip(self.est.theta, high - low, strict=True)]
-        return tuple(f"e{math.floor(math.log10(1e-5 * size))}" for size in sizes[: len(self.searched)])
+        """Steps in the searched constants for numeric slopes ("1e-7"), at a break short of the next row above it."""
+        x = self.est.rows.x
+        low, high = self.est.shape.bounds(x, self.est.state)
+        found = []
+        for theta, width in zip(self.est.theta[: len(self.searched)], high - low, strict=False):
+            size = max(abs(theta), 1e-3 * width)
+            if self.est.shape.corners:
+                size = min(size, 1e4 * float((x[x > theta] - theta).min()))
+            found.append(f"1e{math.floor(math.log10(1e-5 * size))}")
+        return tuple(found)
 
     @property
     def power(self) -> bool:
@@ -126,21 +135,63 @@ class Parts:
         return f"T{100 * self.question.level:.10g}".replace(".", "_")
 
     @property
-    def needs_s2(self) -> bool:
-        """Whether the error variance on the fitting scale is used."""
-        return not self.link and (not self.robust or not self.ordered)
-
-    @property
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
-        return self.link or bool(self.searched) or self.power or self.alone or self.uneven
+        if self.link:
+            return self.robust
+        return bool(self.searched) or self.alone or self.uneven
+
+    @property
+    def triangle(self) -> bool:
+        """Whether the script decomposes the design itself, where refits by statsmodels do not serve or take long."""
+        if self.link:
+            return self.alone or self.kind == "invlink"  # whose slope is falling, which statsmodels leaves out
+        # at a break's corner the fit does not minimise the linear one's squares, so no refit of that would serve
+        rough = bool(self.searched) and (self.est.shape.corners or self.power or self.est.n > FEW or self.mixed)
+        return rough or self.alone or self.uneven or not self.ordered or (self.many and self.uses_without)
+
+    @property
+    def needs_s2(self) -> bool:
+        """Whether the error variance on the fitting scale is used."""
+        return not self.link and not self.ordered
+
+    @property
+    def steady(self) -> bool:
+        """Whether the change over the span is the same in all rows, on the fitting scale."""
+        modifier = self.est.rows.modifier
+        return self.fixed or bool((modifier == modifier[:1]).all())
+
+    @property
+    def tested(self) -> bool:
+        """Whether the effect is a combination of coefficients for which statsmodels' own covariance serves."""
+        own = self.searched or self.deletes or self.alone or self.uneven or not self.ordered
+        return self.kind == "identity" and self.steady and not own
+
+    @property
+    def uses_without(self) -> bool:
+        """Whether the coefficients without each row are used."""
+        predicted = self.ordered and not self.many
+        return self.power or (self.robust and (predicted or self.own_table or (self.bounded and not self.tested)))
+
+    @property
+    def few_pairs(self) -> bool:
+        """Whether the errors of all rows can be added to all fitted values, again for every row left out."""
+        return self.est.n <= FEW or (self.single and not self.many)
 
     @cached_property
     def uneven(self) -> bool:
         """Whether columns differ so much in size that a pseudo-inverse (statsmodels' default) loses digits."""
-        p = len(self.est.coef)
+        return not self.link and self._spread_of_sizes(len(self.est.coef)) > 1e6
+
+    @cached_property
+    def mixed(self) -> bool:
+        """The same with the columns of searched constants."""
+        return self._spread_of_sizes(len(self.est.coef) + len(self.searched)) > 1e6
+
+    def _spread_of_sizes(self, p: int) -> float:
+        """Condition of the first p columns as they stand, in their own units."""
         raw = self.est.factored.r[:p, :p] * self.est.factored.length[:p]
-        return not self.link and bool(np.linalg.cond(raw) > 1e6)
+        return float(np.linalg.cond(raw))
 
     @cached_property
     def delicate(self) -> bool:

@@ -2,62 +2,99 @@
 
 from __future__ import annotations
 
-import re
-
 from batten.emit.parts import Parts
 from batten.emit.text import docstring
 
-__all__ = ["difference_by_power", "power_functions", "power_moves"]
+__all__ = ["power_functions", "power_moves"]
+
+_HELD = "its place and stretch at m, the median of y, kept as LAMBDA has them"
+_BACK = "Back to {y}; beyond the scale's limit 0 or infinite."
 
 
 def power_functions(parts: Parts) -> list[list[str]]:
-    """The scale's own functions with the power as an argument, and held()."""
-    blocks = re.split(r"\n{2,}(?=def )", parts.left.helper.strip())
-    own = [re.sub(r"^def (\w+)\((\w)\):", r"def \1(\2, LAMBDA=LAMBDA):", block) for block in blocks]
-    text = "Place and stretch of power v at the median m of y; in these units coefficients hardly move with v."
-    place = _forward(parts, "m") if parts.covariates.intercept else "0.0"
-    held = ["def held(v):", *docstring(text), f"    return {place}, np.exp((v - LAMBDA) * {_drift(parts, 'm')})"]
-    return [*(block.replace("def unbent(", "def undo(").splitlines() for block in own), held]
+    """bent() and undo() by any power, and the likelihood.
 
-
-def _forward(parts: Parts, y: str) -> str:
-    """Source of the scale with power v."""
-    source = parts.left.columns[0][1]
-    return f"bent({y}, v)" if source == "bent(y)" else re.sub(r"\by\b", y, source).replace("LAMBDA", "v")
-
-
-def _drift(parts: Parts, y: str) -> str:
-    """Source of the slope in LAMBDA of the log of the scale's own slope at y."""
-    return f"np.log({y})" if parts.est.remedy.left.family == "boxcox" else f"np.sign({y}) * np.log1p(np.abs({y}))"
-
-
-def power_moves(parts: Parts) -> list[str]:
-    """b and without, LAMBDA last: a Newton step of the full likelihood, sigma included, leaves out each row.
-
-    The step in LAMBDA is the row's score with coefficients and variance swept out, over the information left; the
-    coefficients follow by `pull`. Slopes are taken in the units of held(), where coefficients stand almost still.
+    A power stretches its whole scale as it moves, and coefficients with it; in units in which the median of y stands
+    still they hardly move, so that one step in all of them is a good one.
     """
-    held = " - z1[-1] - g * (z - e - held(LAMBDA)[0])" if parts.covariates.intercept else " - g * (z - e)"
+    return [*(_box_cox(parts) if _positive(parts) else _yeo_johnson(parts)), _likelihood(parts)]
+
+
+def _positive(parts: Parts) -> bool:
+    """Whether the scale is Box-Cox's, for y above zero."""
+    return parts.est.remedy.left.family == "boxcox"
+
+
+def _quiet(parts: Parts) -> list[str]:
+    """A decorator where the way back may divide by zero at the scale's limit."""
+    power = parts.est.c[0]
+    safe = power > 0.02 if _positive(parts) else 0.02 < power < 1.98
+    return [] if safe else ['@np.errstate(divide="ignore", over="ignore")']
+
+
+def _box_cox(parts: Parts) -> list[list[str]]:
+    if parts.covariates.intercept:
+        forward = "(m**LAMBDA - 1) / LAMBDA + m**LAMBDA * np.expm1(v * np.log(y / m)) / v"
+        back = "m * np.maximum(1 + v * ((LAMBDA * z + 1) / m**LAMBDA - 1) / LAMBDA, 0) ** (1 / v)"
+    else:
+        forward = "m ** (LAMBDA - v) * np.expm1(v * np.log(y)) / v"
+        back = "np.maximum(1 + v * m ** (v - LAMBDA) * z, 0) ** (1 / v)"
     return [
-        "# LAMBDA was estimated too: a Newton step of the whole likelihood (Box and Cox 1964) leaves out each row",
-        f"m, var, g = np.median(y), e @ e / len(e), {_drift(parts, 'np.median(y)')}",
-        f"five = np.array([{_forward(parts, 'np.append(y, m)')} for v in LAMBDA + 1e-3 * np.arange(-2, 3)])",
-        "z1, z2 = [1, -8, 0, 8, -1] @ five / 12e-3, [-1, 16, -30, 16, -1] @ five / 12e-6  # slopes of z in LAMBDA",
-        f"w = z1[:-1]{held}",
-        "pull = np.linalg.solve(R, Q.T @ w)",
-        "own, k = w - X @ pull, e @ w / var / len(e)",
-        f"score = {_drift(parts, 'y')} - e * own / var + k * (e * e / var - 1)",
-        "power = LAMBDA - score / ((own @ own + e @ z2[:-1]) / var - 2 * len(e) * k**2) / (1 - h)",
-        "without = b - np.linalg.solve(R, Q.T * out).T - np.outer(LAMBDA - power, pull)",
-        "b, without, slope = np.append(b, LAMBDA), np.column_stack([without, power]), w - g * e",
+        ["def bent(v):", *docstring(f"{parts.y} on the Box-Cox scale of power v, {_HELD}."), f"    return {forward}"],
+        [
+            *_quiet(parts),
+            "def undo(z, v=LAMBDA):",
+            *docstring(_BACK.format(y=parts.y)),
+            f"    return {back}",
+        ],
     ]
 
 
-def difference_by_power(keep: str) -> list[str]:
-    """Body of difference(b, keep): each replicate goes back by its own power."""
+def _yeo_johnson(parts: Parts) -> list[list[str]]:
+    if parts.covariates.intercept:
+        forward = "scale(m, LAMBDA) + (scale(y, v) - scale(m, v)) * np.exp((LAMBDA - v) * size(m))"
+        back = "scale(m, v) + (z - scale(m, LAMBDA)) * np.exp((v - LAMBDA) * size(m))"
+    else:
+        forward, back = "scale(y, v) * np.exp((LAMBDA - v) * size(m))", "z * np.exp((v - LAMBDA) * size(m))"
     return [
-        "    at, by = held(b[-1])",
-        "    e = by * (z + (b[-1] - LAMBDA) * slope - X @ b[:-1])[keep]",
-        f"    low, high = (at + by * ((N @ b[:-1]){keep} - held(LAMBDA)[0]) for N in (A, B))",
-        "    return (mean(high, e, b[-1]) - mean(low, e, b[-1])).mean()",
+        [
+            "def size(y):",
+            "    return np.sign(y) * np.log1p(np.abs(y))",
+            "def scale(y, v):",
+            *docstring("The Yeo-Johnson scale of power v, which is 2 - v below zero."),
+            "    return np.expm1(np.where(y < 0, v - 2, v) * size(y)) / np.where(y < 0, v - 2, v)",
+        ],
+        ["def bent(v):", *docstring(f"{parts.y} on the scale of power v, {_HELD}."), f"    return {forward}"],
+        [
+            *_quiet(parts),
+            "def undo(z, v=LAMBDA):",
+            *docstring(_BACK.format(y=parts.y)),
+            f"    z = {back}",
+            "    power = np.where(z < 0, v - 2, v)",
+            "    return np.sign(z) * np.expm1(np.abs(np.log1p(np.maximum(power * z, -1)) / power))",
+        ],
+    ]
+
+
+def _likelihood(parts: Parts) -> list[str]:
+    drift = "np.log(y / m)" if _positive(parts) else "(size(y) - size(m))"
+    return [
+        "def likelihood(p):",
+        *docstring("Log-likelihood of each row at p: coefficients, power, log of error variance (Box and Cox 1964)."),
+        f"    return p[-2] * {drift} - p[-1] / 2 - (bent(p[-2]) - X @ p[:-2]) ** 2 / np.exp(p[-1]) / 2",
+    ]
+
+
+def power_moves(weight: str, zeros: str) -> list[str]:
+    """b and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
+
+    weight: source of what leaving a row out makes of its score. zeros: the coefficients of searched constants.
+    """
+    return [
+        "# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each row",
+        f"b = np.array([*fit.params, {zeros}LAMBDA, np.log(e @ e / len(e))])",
+        'step = 1e-5 * np.array([*table["std_error"], 1, 1])',
+        "score, curved = approx_fprime_cs(b, likelihood), approx_hess_cs(b, lambda p: likelihood(p).sum(), step)",
+        f"without = b + (np.linalg.solve(curved, score.T) * {weight}).T",
+        "slope = bent(LAMBDA + 1e-20j).imag * 1e20  # of the scale in LAMBDA (Squire and Trapp 1998)",
     ]

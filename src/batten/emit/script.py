@@ -27,8 +27,7 @@ def script(problem: Problem, question: Question, estimate: Estimate) -> str:
         _header(parts) + _imports(parts),
         _constants(parts),
         functions(parts),
-        fitting(parts),
-        span(parts),
+        fitting(parts) + span(parts),
         [] if parts.covariates.unwritten else _picture(parts),
         _checks(parts),
     ]
@@ -49,7 +48,7 @@ def _header(parts: Parts) -> list[str]:
         lines.append(f"{label} learns from the rows it is given, so this script predicts no further rows.")
     if parts.covariates.external:
         lines.append(f"Needs {', '.join(parts.covariates.external)} as defined where the formula was written.")
-    return [line for text in lines for line in comment(text)]
+    return comment(" ".join(lines))
 
 
 def _rows_words(parts: Parts) -> str:
@@ -65,14 +64,17 @@ def _rows_words(parts: Parts) -> str:
 
 def _imports(parts: Parts) -> list[str]:
     plain = ["import numpy as np", "import pandas as pd"]
-    plain += ["import statsmodels.api as sm"] if parts.link else []
     plain += ["import statsmodels.formula.api as smf"]
+    plain += ["import warnings"] if parts.kind == "invlink" else []
     plain += [line for line in parts.covariates.imports if line.startswith("import ")]
     merged: dict[str, list[str]] = {}
-    for line in parts.covariates.imports:
+    own = ["from statsmodels.genmod import families"] if parts.link else []
+    own += ["from scipy.special import expit"] if parts.kind == "share" else []
+    own += ["from statsmodels.tools.numdiff import approx_fprime_cs, approx_hess_cs"] if parts.power else []
+    for line in [*parts.covariates.imports, *own]:
         if line.startswith("from "):
-            _, module, _, name = line.split()
-            merged.setdefault(module, []).append(name)
+            _, module, _, names = line.split(maxsplit=3)
+            merged.setdefault(module, []).append(names)
     named = [f"from {module} import {', '.join(sorted(names))}" for module, names in sorted(merged.items())]
     return [*sorted(plain, key=lambda line: line.split()[1]), *named]
 
@@ -85,20 +87,10 @@ def _constants(parts: Parts) -> list[str]:
     if not parts.numbers.span.note:
         meaning = f"the question: rows at {parts.x} {b:.6g}{' ' + said(unit) if unit else ''} against rows at {a:.6g}"
         lines += constant("SPAN", f"({number(a)}, {number(b)})", meaning)
-    if parts.searched and parts.est.shape.corners:
-        lines += constant(
-            "STEP", number(_step(parts)), "no row lies this close above a break, so slopes in it are exact"
-        )
     meaning = f"t quantile for {parts.percent} on {parts.est.df_error} degrees of freedom"
     if _uses_t(parts):
         lines += constant(parts.t_name, number(parts.t_quantile), meaning)
     return [*lines, *_model(parts)]
-
-
-def _step(parts: Parts) -> float:
-    """Half of the way from a break to the next value of x above it."""
-    x = parts.est.rows.x
-    return min(float((x[x > place] - place).min()) / 2 for place in parts.est.theta)
 
 
 def _uses_t(parts: Parts) -> bool:
@@ -141,14 +133,14 @@ def _picture(parts: Parts) -> list[str]:
     units = [said(p.unit(p.focus)), said(p.unit(p.response))]
     names = [f"{name} ({unit})" if unit else name for name, unit in zip((parts.x, parts.y), units, strict=True)]
     x_label, y_label = (literal(name.replace("$", r"\$")) for name in names)
-    labels = f"xlabel={x_label}, ylabel={y_label}"
+    labels = f'color="0.6", xlabel={x_label}, ylabel={y_label}'
     title = f"{parts.percent} of further rows"
-    title += ", covariates as in the first row used" if p.covariates else " lie between low and high"
+    others = "  # covariates as in the first row used" if p.covariates else ""
     return [
-        'at = np.linspace(rows["x"].min(), rows["x"].max(), 200)',
+        f'at = np.linspace(rows["x"].min(), rows["x"].max(), 200){others}',
         *wrapped(f"curve = predict(used.iloc[[0] * 200].assign({held_at(parts, 'at')})).set_axis(at)"),
-        *wrapped(f'ax = curve[["mean", "low", "high"]].plot(style=["C0-", "C1:", "C1:"], {labels}, title="{title}")'),
-        f'ax.plot(rows["x"]{some}, y{some}, ".", color="0.6", zorder=0)',
+        *wrapped(f'ax = rows{some}.plot.scatter("x", "y", {labels}, title="{title}")'),
+        'curve[["mean", "low", "high"]].plot(style=["C0-", "C1:", "C1:"], ax=ax)',
     ]
 
 
@@ -172,9 +164,9 @@ def _checks(parts: Parts) -> list[str]:
         got.append("half")
         want.append(rounded((n.span.difference.high - n.span.difference.low) / 2))
     if not parts.covariates.unwritten:
-        got.append("*np.ravel(predict(used.iloc[[0, -1]]))")
-        want += [rounded(v) for v in n.predictions.ravel()]
-    message = literal(f"`{parts.frame}` differs from the rows this script was written for")
+        got.append("*predict(used.tail(1)).iloc[0]")
+        want += [rounded(v) for v in n.prediction]
+    message = literal(f"`{parts.frame}` differs from the rows of this script")
     return [
         *wrapped(f"got = [{', '.join(got)}]"),
         *wrapped(f"want = [{', '.join(want)}]"),

@@ -8,12 +8,14 @@ from typing import Any
 
 import pandas as pd
 
-from batten.emit.functions import design_call, undo
+from batten.emit.functions import undo
 from batten.emit.parts import Parts
-from batten.emit.powers import difference_by_power
 from batten.emit.text import comment, fstring, literal, said, wrapped
 
 __all__ = ["held_at", "span"]
+
+#: slope of a link's mean in the linear predictor, from the mean
+_LINK_SLOPES = {"loglink": "{}", "share": "{0} * (1 - {0})", "invlink": "-({}**2)"}
 
 
 def span(parts: Parts) -> list[str]:
@@ -23,9 +25,8 @@ def span(parts: Parts) -> list[str]:
         return comment(f"No effect over the span: {said(note, 200)}.")
     if not parts.bounded:
         why = comment(f"Change of the mean over SPAN; {said(parts.numbers.span.difference.note, 200)}.")
-        alone = ["def difference(b, keep=slice(None)):", *_difference(parts), "effect = difference(b)"]
-        return [*why, *_ends(parts), *alone, *_told(parts)]
-    how = _deleted(parts) if parts.deletes else _linearised(parts)
+        return [*why, *_ends(parts), *_function(parts), "effect = difference(b)", *_told(parts)]
+    how = _tested(parts) if parts.tested else _deleted(parts) if parts.deletes else _linearised(parts)
     return [*comment(_introduction(parts)), *_ends(parts), *how, *_told(parts)]
 
 
@@ -44,6 +45,8 @@ def _introduction(parts: Parts) -> str:
         over = ", at " + ", ".join(f"{said(name)} = {said(value)}" for name, value in parts.question.at.items())
     if parts.deletes:
         way = "by leaving out each row in turn"
+    elif parts.tested:
+        way = "that of the coefficients"
     else:
         way = "by each row's influence" if parts.robust else "for errors of one size"
     return f"Change of the mean over SPAN{over}; interval {way}."
@@ -52,8 +55,7 @@ def _introduction(parts: Parts) -> str:
 def _ends(parts: Parts) -> list[str]:
     """Designs A and B at the two ends; one row is enough where all have the same covariates."""
     one = ".iloc[:1]" if parts.single else ""
-    made = f"{design_call(parts)}(used{one}.assign({held_at(parts, 'at', _asked(parts))}))"
-    return wrapped(f"A, B = ({made} for at in SPAN)")
+    return wrapped(f"A, B = (design(used{one}.assign({held_at(parts, 'at', _asked(parts))})) for at in SPAN)")
 
 
 def _asked(parts: Parts) -> dict[str, Any]:
@@ -67,33 +69,52 @@ def _stored(value: Any, column: pd.Series[Any]) -> Any:
     return value
 
 
+# --- statsmodels' own -------------------------------------------------------------------------------------------------
+
+
+def _tested(parts: Parts) -> list[str]:
+    return [
+        "change = fit.t_test((B - A).mean(axis=0))",
+        f"effect, half = change.effect[0], {parts.t_name} * change.sd[0, 0]",
+    ]
+
+
 # --- leaving out rows -------------------------------------------------------------------------------------------------
 
 
 def _deleted(parts: Parts) -> list[str]:
-    return [
-        "def difference(b, keep):",
-        *_difference(parts),
-        "each = [difference(w, np.arange(len(y)) != i) for i, w in enumerate(without)]",
-        f"effect, half = difference(b, slice(None)), {parts.t_name} * np.sqrt((len(y) - 1) * np.var(each))",
-    ]
-
-
-def _difference(parts: Parts) -> list[str]:
-    """Body of difference(b, keep): the effect under coefficients b, averaged over the rows kept."""
-    keep = "" if parts.fixed else "[keep]"
-    if parts.kind == "identity":
-        return [f"    return ((B - A) @ b){keep}.mean()"]
-    if parts.kind == "exp":
-        return [f"    return np.exp(z - X @ b)[keep].mean() * (np.exp(B @ b) - np.exp(A @ b)){keep}.mean()"]
+    half = f"{parts.t_name} * np.sqrt((len(y) - 1) * np.var(EACH))"
+    if parts.kind == "identity" and parts.steady:
+        return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half.replace('EACH', 'without @ gap')}"]
     if parts.link:
-        return [f"    return ({undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}){keep}.mean()"]
-    if parts.power:
-        return difference_by_power(keep)
-    return [
-        "    e = (z - X @ b)[keep]",
-        f"    return (mean((B @ b){keep}, e) - mean((A @ b){keep}, e)).mean()",
-    ]
+        gap = f"{undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}"
+        each = gap.replace("@ b", "@ w")
+        each = f"({each}).mean() for w in without" if parts.fixed else (
+            f"np.delete({each}, i).mean() for i, w in enumerate(without)")  # fmt: skip
+        return [f"each = [{each}]", *wrapped(f"effect, half = ({gap}).mean(), {half.replace('EACH', 'each')}")]
+    each = "each = [difference(w, i) for i, w in enumerate(without)]"
+    return [*_function(parts), each, f"effect, half = difference(b), {half.replace('EACH', 'each')}"]
+
+
+def _function(parts: Parts) -> list[str]:
+    """difference(b, i): the effect under coefficients b, averaged over the rows but row i."""
+    return [f"def difference(b{', i=()' if parts.deletes else ''}):", *_difference(parts, deletes=parts.deletes)]
+
+
+def _difference(parts: Parts, *, deletes: bool) -> list[str]:
+    by_error = "np.delete({}, i)" if deletes else "{}"
+    by_row = "np.delete({}, i)" if deletes and not parts.fixed else "({})"
+    if parts.kind == "identity":
+        return [f"    return {by_row.format('(B - A) @ b')}.mean()"]
+    if parts.kind == "exp":
+        smear, gap = by_error.format("np.exp(z - X @ b)"), by_row.format("np.exp(B @ b) - np.exp(A @ b)")
+        return [f"    return {smear}.mean() * {gap}.mean()"]
+    if parts.link:
+        gap = f"{undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}"
+        return [f"    return {by_row.format(gap)}.mean()"]
+    e = "z + (b[-2] - LAMBDA) * slope - X @ b[:-2]" if parts.power else "z - X @ b"
+    low, high = (f"mean({end} @ b[:-2], e, b[-2])" if parts.power else f"mean({end} @ b, e)" for end in "AB")
+    return [f"    e = {by_error.format(e)}", f"    return {by_row.format(f'{high} - {low}')}.mean()"]
 
 
 # --- to first order ---------------------------------------------------------------------------------------------------
@@ -109,24 +130,28 @@ def _linearised(parts: Parts) -> list[str]:
             *wrapped(f"influence = {total}"),
             f"half = {parts.t_name} * np.sqrt((influence**2).sum()) / len(y)",
         ]
-    spread = "(((without - b) @ pull) ** 2).sum()" if parts.power else "s2 * (np.linalg.solve(R.T, pull) ** 2).sum()"
+    if parts.power:
+        spread = "(((without - b) @ pull) ** 2).sum()"
+    else:
+        spread = "s2 * (np.linalg.solve(R.T, pull) ** 2).sum()" if parts.needs_s2 else "pull @ cov @ pull"
     if own:
         own = [f"({share})" for share in own]
         spread += f" + sum((share**2).sum() for share in [{', '.join(own)}]) / len(y) ** 2"
-    return [*lines, *wrapped(f"half = {parts.t_name} * np.sqrt({spread})")]
+    known = [] if parts.power or parts.needs_s2 else ["cov = fit.cov_params().to_numpy()"]
+    return [*lines, *known, *wrapped(f"half = {parts.t_name} * np.sqrt({spread})")]
 
 
 def _slopes(parts: Parts) -> tuple[list[str], list[str]]:
     """Statements, and sources of the rows' own shares."""
     if parts.kind == "identity":
         lines = ["gap = (B - A) @ b", "effect, pull = gap.mean(), (B - A).mean(axis=0)"]
-        return lines, [] if parts.fixed else ["gap - effect"]
+        return lines, [] if parts.steady else ["gap - effect"]
     if parts.link:
-        low, high = ("low * (1 - low)", "high * (1 - high)") if parts.kind == "share" else ("low", "high")
+        low, high = (_LINK_SLOPES[parts.kind].format(end) for end in ("low", "high"))
         lines = [
             f"low, high = {undo(parts, 'A @ b')}, {undo(parts, 'B @ b')}",
             "effect = (high - low).mean()",
-            f"pull = ({high} @ B - {low} @ A) / len(A)",
+            f"pull = (({high}) @ B - ({low}) @ A) / len(A)",
         ]
         return lines, [] if parts.fixed else ["high - low - effect"]
     if parts.kind == "exp":
@@ -143,12 +168,11 @@ def _slopes(parts: Parts) -> tuple[list[str], list[str]]:
 def _numeric_slopes(parts: Parts) -> tuple[list[str], list[str]]:
     moves = "without - b" if parts.robust or parts.power else "np.linalg.solve(R, Q.T * e).T"
     lines = [
-        "def difference(b, keep=slice(None)):",
-        *_difference(parts),
+        *_function(parts),
         "effect = difference(b)",
         f"steps = 1e-4 * np.sqrt((({moves}) ** 2).sum(axis=0))",
         "pull = np.array([difference(b + d) - difference(b - d) for d in np.diag(steps)]) / (2 * steps)",
-        f"low, high = (N @ {'b[:-1]' if parts.power else 'b'} for N in (A, B))",
+        f"low, high = (N @ {'b[:-2]' if parts.power else 'b'} for N in (A, B))",
     ]
     own = ["mean(e, high) - mean(e, low) - effect"]
     return lines, own if parts.fixed else [*own, "mean(high, e) - mean(low, e) - effect"]

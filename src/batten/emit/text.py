@@ -77,8 +77,8 @@ def number(value: float) -> str:
 
 
 def rounded(value: float) -> str:
-    """Nine digits of a number to assert at 1e-6."""
-    return number(float(f"{value:.9g}")) if math.isfinite(value) else number(value)
+    """Eight digits of a number to assert at 1e-6."""
+    return number(float(f"{value:.8g}")) if math.isfinite(value) else number(value)
 
 
 def fstring(*pieces: str | tuple[str]) -> str:

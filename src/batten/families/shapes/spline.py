@@ -133,7 +133,7 @@ class Spline(Shape):
         bends = tuple((f"s{j}", f"bend(x, {j - 1})") for j in range(1, len(state) - 1))
         return Code(
             columns=(("x", "x"), *bends),
-            constants=(("KNOTS", f"({knots})", f"where the curve in {x} may bend; straight beyond the outer two"),),
+            constants=(("KNOTS", f"({knots})", f"knots in {x}, where the curve may bend"),),
             helper=_HELPER,
         )
 
@@ -165,11 +165,10 @@ def _bends(x: Array, knots: Constants, *, power: int) -> list[Array]:
 
 
 _HELPER = '''
-def bend(x, j):
+def bend(x, j, c=KNOTS[-2], d=KNOTS[-1]):
     """Column j of a restricted cubic spline: cubic between the knots, straight beyond the outer two."""
-    k, c, d = KNOTS[j], KNOTS[-2], KNOTS[-1]
-    own, before, last = (np.maximum(x - knot, 0) ** 3 for knot in (k, c, d))
-    return (own - before * (d - k) / (d - c) + last * (c - k) / (d - c)) / (d - KNOTS[0]) ** 2
+    own, before, last = (np.maximum(x - knot, 0) ** 3 for knot in (KNOTS[j], c, d))
+    return (own - before * (d - KNOTS[j]) / (d - c) + last * (c - KNOTS[j]) / (d - c)) / (d - KNOTS[0]) ** 2
 '''
 
 FAMILY = Spline()
