@@ -231,6 +231,10 @@ def test_the_row_that_moves_a_searched_constant_most_is_that_of_refits():
     assert got.row == int(np.argmax(np.abs(np.array(refits) - est.theta[0])))
 
 
+def test_a_constant_that_the_data_do_not_settle_is_not_named_by_a_row():
+    assert "loudest row: power of x" not in found("y ~ x^p", A, unnamed=("power of x",))
+
+
 # What a reader sees
 
 

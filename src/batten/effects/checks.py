@@ -27,15 +27,17 @@ def checks(
     errors: str = "robust",
     labels: tuple[str, ...] = (),
     tolerance: float | None = None,
+    unnamed: tuple[str, ...] = (),
     every: bool = True,
 ) -> tuple[Check, ...]:
     """All checks that can be made on this fit; one that cannot is left out.
 
     labels: names of the columns without the focal predictor. tolerance: smallest bend that matters, units of y.
-    every: also the tests that ask a question again in another way.
+    unnamed: searched constants that the data do not settle. every: also the tests that ask a question again in
+    another way.
     """
     work = working(est)
-    rows = [c for c in checks_of_rows(est, work, names, span=span, labels=labels) if c is not None]
+    rows = [c for c in checks_of_rows(est, work, names, span=span, labels=labels, unnamed=unnamed) if c is not None]
     bent = any(c.name == "bent covariate" and c.p < CHANCE for c in rows)
     found = [
         *checks_of_shape(est, work, names, errors=errors, every=every),

@@ -23,13 +23,19 @@ __all__ = ["checks_of_rows"]
 
 
 def checks_of_rows(
-    est: Estimate, work: Working, names: Names, *, span: tuple[float, float], labels: tuple[str, ...]
+    est: Estimate,
+    work: Working,
+    names: Names,
+    *,
+    span: tuple[float, float],
+    labels: tuple[str, ...],
+    unnamed: tuple[str, ...],
 ) -> Iterator[Check | None]:
     yield _neighbours(work)
     yield _supported(est, names, span)
     yield _curved_covariate(est, work, names, labels)
     yield _loudest(est, names, span)
-    yield from _of_constants(est, names)
+    yield from _of_constants(est, names, unnamed)
     yield _leverage(est)
     yield _correction(est)
 
@@ -106,8 +112,8 @@ def _left_out(est: Estimate, span: tuple[float, float]) -> tuple[Array | None, f
     return moved if est.clusters is None else moved[est.clusters.code], difference
 
 
-def _of_constants(est: Estimate, names: Names) -> Iterator[Check]:
-    """The row that moves each searched constant most."""
+def _of_constants(est: Estimate, names: Names, unnamed: tuple[str, ...]) -> Iterator[Check]:
+    """The row that moves each searched constant most; none for constants that the data do not settle."""
     words = list(est.shape.constant_words(names.x, names.y)[: est.moving])
     value = list(est.theta[: est.moving])
     if est.remedy.left.searched and est.link is None:
@@ -117,6 +123,8 @@ def _of_constants(est: Estimate, names: Names) -> Iterator[Check]:
         return
     moved = est.row_moves()[:, len(est.coef) :]
     for k, word in enumerate(words):
+        if word in unnamed:
+            continue
         row = int(np.argmax(np.abs(moved[:, k])))
         without = show(value[k] + float(moved[row, k]))
         who = "{row}" if est.clusters is None else "{row} and its cluster"

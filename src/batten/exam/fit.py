@@ -334,7 +334,7 @@ class Fit:
         p, q = self.problem, self.question
         found = checks(
             self.estimate, self.names, q.span, errors=q.errors, labels=tuple(p.base_names), tolerance=q.tolerance,
-            every=every,
+            unnamed=tuple(c.name for c in self.learned if not c.named), every=every,
         )  # fmt: skip
         return check_table(found, p.index)
 
