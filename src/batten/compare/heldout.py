@@ -9,7 +9,7 @@ cross-products keep their digits; constants searched with the response are searc
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 
 import numpy as np
@@ -19,6 +19,7 @@ from batten.compare.spread import spread_losses
 from batten.engine.folds import Splits
 from batten.engine.irls import Mean
 from batten.engine.linear import design
+from batten.engine.mean_search import search_mean
 from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
@@ -260,9 +261,11 @@ def _alike(sets: list[Split], n: int) -> list[list[int]]:
 
 def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
     """Losses of a mean model; its median is the mean times the median of y / mu."""
-    rows, shape, link, root = est.rows, est.shape, est.link, est.rows.root_weight
+    rows, shape, link = est.rows, est.shape, est.link
     assert isinstance(link, Link)
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
+    if shape.searched:
+        return _score_searched_link(est, model, sets)
     steps = 1 if rows.count > FULL_STEPS_ROWS else 30
     out = np.empty((3, len(sets)))
     block = max(1, BLOCK // (rows.count * len(est.coef)))
@@ -285,9 +288,34 @@ def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
         if not np.isfinite(mu).all():
             return _unsafe(est)
         for s, split in enumerate(some):
-            train, test = split.train, split.test
-            median = float(np.median(1 + root[train] * (rows.y[train] / mu[s, train] - 1)))
-            out[:, first + s] = losses(rows.y[test], mu[s, test], mu[s, test] * median, rows.weights, test)
+            out[:, first + s] = _losses_of_means(rows, mu[s], split)
+    return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
+
+
+def _losses_of_means(rows: Rows, mu: Array, split: Split) -> Array:
+    """Losses (3,) of means mu (n,) fitted to the training rows."""
+    train, test = split.train, split.test
+    median = float(np.median(1 + rows.root_weight[train] * (rows.y[train] / mu[train] - 1)))
+    return losses(rows.y[test], mu[test], mu[test] * median, rows.weights, test)
+
+
+def _score_searched_link(est: Estimate, model: Mean, sets: list[Split]) -> HeldOut | Refusal:
+    """The same where the shape's constants are searched again in each training set, from the all-rows place."""
+    rows, shape = est.rows, est.shape
+    out = np.empty((3, len(sets)))
+    for s, split in enumerate(sets):
+        part = rows.take(split.train)
+        state = shape.learn(split.sorted_x, constant=meets_constant(rows, shape))
+        found = search_mean(
+            model, searched_model(replace(part, weights=None), shape, state), part.y, prior=part.weights,
+            eta=est.eta[split.train], start=np.array(est.theta),
+        )  # fmt: skip
+        columns = shape.columns(rows.x, state, tuple(found.theta))
+        with np.errstate(all="ignore"):
+            mu = model.mean(design(rows, columns, own_level=shape.own_level) @ found.coef)
+        if not np.isfinite(mu).all():
+            return _unsafe(est)
+        out[:, s] = _losses_of_means(rows, mu, split)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
 
 

@@ -14,6 +14,7 @@ from scipy.optimize import brentq
 from scipy.stats import chi2
 from scipy.stats import f as fisher
 
+from batten.effects.profile_of_link import allowed_loss, deviance_loss, listed_losses
 from batten.engine.linear import factor
 from batten.engine.power import best_power, profile_likelihood
 from batten.engine.rows import Array
@@ -86,9 +87,13 @@ def profile_of_shape(est: Estimate, which: int = 0, *, level: float = 0.95) -> P
     The set where RSS <= RSS_min (1 + F / df), F on 1 and the residual degrees of freedom.
     """
     best = est.theta[which]
+    if est.link is not None:
+        return _under_link(est, which, level)
     allowed = est.n / 2 * float(np.log1p(fisher.ppf(level, 1, est.df_residual) / est.df_residual))
     if est.shape.finite:
-        return _listed(est, which, allowed)
+        model = searched_model(est.rows, est.shape, est.state)
+        lost = est.n / 2 * np.log(scan(model, est.z[:, None])[:, 0] / (est.residual @ est.residual))
+        return _listed(est, which, allowed, model.candidates, lost)
 
     plain = len(est.theta) == 1 and not est.remedy.left.searched
     around: dict[int, Callable[[float], float]] = {}
@@ -100,15 +105,35 @@ def profile_of_shape(est: Estimate, which: int = 0, *, level: float = 0.95) -> P
             return around[part.n](value)
         return best_given(part, None)[0] - best_given(part, None, fixed=(which, value))[0]
 
+    return _profile(est, loss, best, _local(est, len(est.coef) + which), _grid(est, which), allowed)
+
+
+def _under_link(est: Estimate, which: int, level: float) -> Profile:
+    """The same by the deviance."""
+    allowed = allowed_loss(est, level)
+    if est.shape.finite:
+        candidates = est.shape.candidates(est.rows.x, est.state)
+        return _listed(est, which, allowed, candidates, listed_losses(est, candidates))
+
+    def without(model: Searched, held: int, value: float) -> Searched:
+        return _without(model, held, value, joined=isinstance(est.shape, Hinge))
+
+    # each place costs a fit by iteration, so corners are not looked at one by one
+    grid = _grid(est, which, corners=False)
+    loss = deviance_loss(est, which, without)
+    return _profile(est, loss, est.theta[which], _local(est, len(est.coef) + which), grid, allowed)
+
+
+def _grid(est: Estimate, which: int, *, corners: bool = True) -> Array:
+    """Places along the search of one constant, its ends among them."""
     lower, upper = (float(end[which]) for end in est.shape.bounds(est.rows.x, est.state))
     grid = est.shape.candidates(est.rows.x, est.state)[:, which]
-    if isinstance(est.shape, Hinge):
+    if corners and isinstance(est.shape, Hinge):
         # a break's profile has a corner at every x
         x = np.unique(est.rows.x)
         if len(x) <= PLACES:
             grid = np.concatenate([x, (x[1:] + x[:-1]) / 2])
-    grid = np.concatenate([grid[(grid > lower) & (grid < upper)], [lower, upper]])
-    return _profile(est, loss, best, _local(est, len(est.coef) + which), grid, allowed)
+    return np.concatenate([grid[(grid > lower) & (grid < upper)], [lower, upper]])
 
 
 def _rss_loss(est: Estimate) -> Callable[[float], float]:
@@ -254,12 +279,10 @@ def _thinned(est: Estimate) -> Estimate:
     return replace(est, rows=est.rows.take(np.arange(0, est.n, every)), z=est.z[::every])
 
 
-def _listed(est: Estimate, which: int, allowed: float) -> Profile:
-    """A constant that can take only the listed values; the others are free."""
-    model = searched_model(est.rows, est.shape, est.state)
-    loss = est.n / 2 * np.log(scan(model, est.z[:, None])[:, 0] / (est.residual @ est.residual))
-    places = np.unique(model.candidates[:, which])
-    lost = np.array([loss[model.candidates[:, which] == place].min() for place in places])
+def _listed(est: Estimate, which: int, allowed: float, candidates: Array, loss: Array) -> Profile:
+    """A constant that can take only the listed values; the others are free. candidates (K, q), loss (K,)."""
+    places = np.unique(candidates[:, which])
+    lost = np.array([loss[candidates[:, which] == place].min() for place in places])
     kept = places[lost <= allowed]
     return Profile(
         est.theta[which], tuple((float(v), float(v)) for v in kept), float(places[0]), float(places[-1]),

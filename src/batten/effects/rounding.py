@@ -54,7 +54,7 @@ def roundings(
 
     Those the data do not rule out, and the nearest others. x, y: names for the words.
     """
-    if constant.profile is None or not constant.named or constant.kind == "listed":
+    if constant.profile is None or est.link is not None or not constant.named or constant.kind == "listed":
         return ()
     names = {"power of y": _OF_Y, "power of x": _OF_X}.get(constant.kind)
     if names is None:

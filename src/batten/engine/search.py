@@ -14,7 +14,7 @@ import numpy as np
 
 from batten.engine.rows import Array, Ints
 
-__all__ = ["Found", "Searched", "profile_interval", "refine", "scan", "search"]
+__all__ = ["Found", "Searched", "apart", "profile_interval", "refine", "scan", "search"]
 
 #: rows used to choose the starting cell; the refinement always uses all rows
 SCAN_ROWS = 3_000
@@ -221,7 +221,7 @@ def search(model: Searched, z: Array, *, start: Array | None = None, tries: int 
     if model.finite:
         return Found(model.candidates[order[0]], float(profile[order[0]]), settled=bool(np.isfinite(profile[order[0]])))
     if start is None:
-        starts = [model.candidates[k] for k in _apart(model, order, profile, tries)]
+        starts = [model.candidates[k] for k in apart(model, order, profile, tries)]
         if every > 1:  # the part of the rows tells which start is best, and where it leads to within its own error
             starts = [min((refine(small, k, thin_z, precision=1e-6) for k in starts), key=lambda f: f.rss).theta]
         return min((refine(model, k, z, precision=precision) for k in starts), key=lambda f: f.rss)
@@ -232,7 +232,7 @@ def search(model: Searched, z: Array, *, start: Array | None = None, tries: int 
     return min(found, refine(model, model.candidates[order[0]], z, precision=precision), key=lambda f: f.rss)
 
 
-def _apart(model: Searched, order: Ints, profile: Array, tries: int) -> list[int]:
+def apart(model: Searched, order: Ints, profile: Array, tries: int) -> list[int]:
     """The best candidate and the next best local minima of a one-dimensional grid (the best few in more)."""
     if model.candidates.shape[1] > 1:
         return [int(k) for k in order[:tries]]

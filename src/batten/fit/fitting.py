@@ -8,6 +8,7 @@ import numpy as np
 
 from batten.engine.irls import Mean, iterate
 from batten.engine.linear import Factored, design, factor, solve
+from batten.engine.mean_search import search_mean
 from batten.engine.power import best_power
 from batten.engine.rows import Array, Rows
 from batten.engine.search import search
@@ -160,17 +161,18 @@ def _likelihood(rss: float, n: int, log_jacobian: Array) -> float | None:
 def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | None) -> Estimate | Refusal:
     link, shape = remedy.left, remedy.shape
     assert isinstance(link, Link)
+    model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     t = theta or ()
     if shape.searched and theta is None:
-        return Refusal(
-            "A link with a shape whose constant is searched is not offered.", f"{remedy.key}.",
-            "Use a spline under the link, or the same shape on log y.",
-        )  # fmt: skip
+        plain = searched_model(replace(rows, weights=None), shape, state)
+        found = search_mean(model, plain, rows.y, prior=rows.weights, eta=link.start(rows.y))
+        if not found.settled:
+            return not_settled(shape)
+        t = tuple(float(v) for v in found.theta)
     x = design(rows, shape.columns(rows.x, state, t), own_level=shape.own_level)
     repeated = factor(x).aliased
     if repeated:
         return aliased(remedy, repeated, x.shape[1])
-    model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     done = iterate(model, x, rows.y, eta=link.start(rows.y), prior=rows.weights)
     if not done.settled or not np.isfinite(done.mu).all():
         return Refusal(
@@ -178,13 +180,18 @@ def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | N
             "A coefficient runs away: some pattern of the predictors may hold only zeros, or fits perfectly.",
             "A scale of y (log y, sqrt y) or fewer columns.",
         )
-    df = rows.count - x.shape[1]
+    df = rows.count - x.shape[1] - (0 if shape.finite else len(t))
     residual = rows.y - done.mu
     likelihood = link.log_likelihood(rows.y, done.mu) if rows.weights is None else None
     pearson = float((rows.weigh(residual) ** 2 / link.variance(done.mu)).sum())
-    return Estimate(
+    est = Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef, z=rows.y, eta=done.eta,
         residual=residual, factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
         sigma=float(np.sqrt(pearson / df)), log_likelihood=likelihood,
-        parameters=x.shape[1] + 1,
+        parameters=x.shape[1] + 1 + len(t),
+        notes=("constant set by hand; not ranked",) if theta and shape.searched else (),
     )  # fmt: skip
+    if not est.moving:
+        return est
+    effective = factor(est.jacobian_at(rows.x, rows.base, rows.modifier) * np.sqrt(done.weight)[:, None])
+    return not_settled(shape) if effective.aliased else replace(est, factored=effective)
