@@ -134,7 +134,7 @@ def _picture(parts: Parts) -> list[str]:
     names = [f"{name} ({unit})" if unit else name for name, unit in zip((parts.x, parts.y), units, strict=True)]
     x_label, y_label = (literal(name.replace("$", r"\$")) for name in names)
     labels = f'color="0.6", xlabel={x_label}, ylabel={y_label}'
-    title = f"{parts.percent} of further rows"
+    title = f"{parts.percent} of rows like the first" if p.covariates else f"{parts.percent} of further rows"
     others = "  # covariates as in the first row used" if p.covariates else ""
     return [
         f'at = np.linspace(rows["x"].min(), rows["x"].max(), 200){others}',
