@@ -10,6 +10,7 @@ from statsmodels.stats.diagnostic import linear_harvey_collier, linear_rainbow, 
 from two_sets import A_X, A_Y, B_X, B_Y, line, residuals, shuffled
 
 from batten.diagnose.tests_along_x import harvey_collier, rainbow, recursive_residuals
+from batten.families.shapes.spline import Spline
 
 
 def test_harvey_collier_of_the_nearly_straight_set():
@@ -65,6 +66,19 @@ def test_a_category_that_begins_late_takes_one_row_to_learn():
     assert len(found) == 55
     assert np.sum(found**2) == pytest.approx(np.sum(residuals(X, z) ** 2), rel=1e-12)
     assert harvey_collier(X, z, along=x).df == 54
+
+
+def test_columns_that_begin_almost_at_rest_do_not_break_the_recursion():
+    """A spline's bends are near nought over the first rows, so later rows reach a million times beyond them."""
+    rng = np.random.default_rng(0)
+    x = np.sort(rng.uniform(1, 9, 120))
+    spline = Spline(5)
+    X, z = line(x, *spline.columns(x, spline.learn(x))[:, 1:].T), np.exp(0.3 * x) + rng.normal(0, 0.2, 120)
+    found = recursive_residuals(X, z)
+    Q = np.linalg.qr(X / np.linalg.norm(X, axis=0))[0]
+    e = z - Q @ (Q.T @ z)
+    assert len(found) == 120 - 5
+    assert found @ found == pytest.approx(e @ e, rel=1e-6)  # the first of them carry the rounding of tiny columns
 
 
 def test_harvey_collier_sorts_by_the_focal_predictor_itself():

@@ -16,6 +16,7 @@ from scipy import stats
 
 from batten.effects.checks import checks
 from batten.effects.tell import Names
+from batten.engine.rows import Rows
 
 NAMES = Names("y", "x", "min", "kg", covariates=True)
 A, B = rows_of(A_X, A_Y), rows_of(B_X, B_Y)
@@ -233,6 +234,14 @@ def test_the_row_that_moves_a_searched_constant_most_is_that_of_refits():
 
 def test_a_constant_that_the_data_do_not_settle_is_not_named_by_a_row():
     assert "loudest row: power of x" not in found("y ~ x^p", A, unnamed=("power of x",))
+
+
+def test_a_line_through_zero_is_checked_too():
+    rows = Rows(y=A_Y, x=A_X, base=np.empty((12, 0)), modifier=np.ones((12, 1)), intercept=None, constant=False)
+    got = found("y ~ x", rows)
+    theirs = sm.OLS(A_Y, np.column_stack([A_X, A_X * np.log(A_X)])).fit()
+    assert got["power of x"].test.statistic == pytest.approx(theirs.tvalues[1], rel=1e-8)
+    assert got["rows in turn"].test.df == (10,)
 
 
 # What a reader sees

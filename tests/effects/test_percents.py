@@ -58,3 +58,11 @@ def test_a_wide_error_says_that_the_unbiased_reading_differs():
     y = np.exp(0.1 * A_X + rng.normal(0, 0.8, 12))
     (got,) = percents(fitted("log y ~ x", rows_of(A_X, y, A_D)), ("one", "d"))
     assert got.note.endswith("the error is wide enough for the unbiased reading to differ")
+
+
+@pytest.mark.parametrize("key", ["log y ~ x", "loglink y ~ x"])
+def test_where_every_level_has_a_column_of_its_own_none_is_compared(key):
+    frame = pd.DataFrame({"x": A_X, "y": A_Y, "d": np.where(A_D > 0, "b", "a")})
+    exam = batten.examine("y ~ x + d - 1", frame, only=[key], repeats=1, folds=4)
+    assert exam[key].percents().empty
+    assert len(exam[key].coefficients) == 3

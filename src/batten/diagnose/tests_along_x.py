@@ -21,6 +21,8 @@ __all__ = ["HarveyCollier", "Rainbow", "harvey_collier", "rainbow", "recursive_r
 
 #: most rows predicted at once; a block's errors are decorrelated by a Cholesky factor, which is the recursion
 BLOCK = 64
+#: rows that reach farther than this beyond those before are predicted one by one: of several the squares would drown
+FAR = 1e4
 #: a row (of an orthonormal design) this close to the rows before it adds no direction; its residual is then a contrast
 #: with the same law, since what is neglected is rounding
 NEW = 1e-12
@@ -120,6 +122,8 @@ def recursive_residuals(X: Array, z: Array) -> Array:
             # blocks grow with what is known: predicted far ahead of a few rows, the unit error would drown in rounding
             end = min(stop, at + max(1, min(BLOCK, at // 2)))
             rows = np.column_stack([Q[at:end] @ axes, z[at:end]])
+            if end > at + 1 and np.abs(_reach(seen, rows)).max() > FAR:
+                end, rows = at + 1, rows[:1]
             found.append(_predicted(seen, rows))
             seen = _triangle(seen, rows)
             at = end
@@ -148,10 +152,15 @@ def _first_new(left: Array, start: int) -> int:
     return start + int(big[0]) if len(big) else len(left)
 
 
+def _reach(seen: Array, rows: Array) -> Array:
+    """How far each row lies beyond those before it (b, k): its weights on the triangle's rows."""
+    k = rows.shape[1] - 1
+    return np.asarray(solve_triangular(seen[:k, :k], rows[:, :k].T, trans="T").T)
+
+
 def _predicted(seen: Array, rows: Array) -> Array:
     """Recursive residuals of a block of rows [x | z] after a triangle [R u; 0 s]."""
     k = rows.shape[1] - 1
-    R, u = seen[:k, :k], seen[:k, k]
-    reach = solve_triangular(R, rows[:, :k].T, trans="T").T
+    u, reach = seen[:k, k], _reach(seen, rows)
     errors = rows[:, k] - reach @ u
     return np.asarray(solve_triangular(np.linalg.cholesky(np.eye(len(rows)) + reach @ reach.T), errors, lower=True))

@@ -83,7 +83,7 @@ def _thirds(est: Estimate, names: Names, bent: bool) -> Check | None:
 
 def _taken_off(est: Estimate, bent: bool) -> Array:
     rows = est.rows
-    if np.ptp(rows.base, axis=0).max() == 0:
+    if not (np.ptp(rows.base, axis=0) > 0).any():
         return rows.y
     X = np.column_stack([rows.base, rows.x])
     return (

@@ -59,12 +59,15 @@ def percents(
             continue
         percent, low, high = (100 * math.expm1(v) for v in (found.estimate[j], found.low[j], found.high[j]))
         pair = set(np.unique(column)) <= {0.0, 1.0}
+        e, ours = _two_groups(est, labels, j)
+        if pair and ours.all():  # every level has a column of its own, so that none is compared
+            continue
         if est.link is not None or not pair:
             note = "of the mean" if est.link is not None else "for one unit more, of the median"
             out.append(Percent(label, percent, low, high, math.nan, math.nan, math.nan, math.nan, note))
             continue
         dummy = percent_of_dummy(float(found.estimate[j]), float(even[j]), df=est.df_residual, critical=critical)
-        means = 100 * (ratio_of_means(float(found.estimate[j]), *_two_groups(est, labels, j)) - 1)
+        means = 100 * (ratio_of_means(float(found.estimate[j]), e, ours) - 1)
         note = "of the median; `means` is that of the means, which differs where the spreads do"
         if even[j] > WIDE:
             note += "; the error is wide enough for the unbiased reading to differ"
