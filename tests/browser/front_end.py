@@ -73,7 +73,9 @@ _READY = (
 
 _DRAWN = """() => {
     const views = [...document.querySelectorAll('[data-mime-type="application/vnd.jupyter.widget-view+json"]')];
-    return views.every(view => view.querySelector('.jupyter-widgets')) && [...document.images].every(i => i.complete);
+    const waiting = [...document.querySelectorAll('.batten-waiting')].some(part => part.checkVisibility());
+    return views.every(view => view.querySelector('.jupyter-widgets')) && [...document.images].every(i => i.complete)
+        && !waiting;
 }"""
 
 

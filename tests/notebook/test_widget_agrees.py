@@ -103,5 +103,6 @@ def test_the_tables_of_the_comparison_agree_with_the_table(shown: ExamWidget, ex
     shown.tabs.selected_index = 0
     shown.compare.pages.buttons.index = 3
     html = "\n".join(all_html(shown.compare.pages.panels[3].box))
-    cells = dict(re.findall(r'<td class="batten-key">(.*?)</td><td class="batten-number">(.*?)</td>', html))
+    row = r'<div class="batten-key batten-under">(.*?)</div>.*?</th><td class="batten-number">(.*?)</td>'
+    cells = dict(re.findall(row, html))
     assert {key: Rounded(float(rmse)) for key, rmse in exam.table()["rmse"].items()} == cells

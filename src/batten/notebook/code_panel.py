@@ -39,7 +39,7 @@ _BUTTON = f'<button type="button" class="jupyter-button" onclick="{escape(_COPY)
 _CODE = """<pre tabindex="0" role="region" aria-label="code" style="width:0;min-width:100%;box-sizing:border-box;
 margin:0;padding:8px 10px;max-height:32em;overflow:auto;white-space:pre;user-select:text;line-height:1.4;
 font-family:var(--jp-code-font-family,monospace);
-font-size:var(--jp-code-font-size,13px);color:var(--jp-content-font-color1,#222);
+font-size:calc(.92 * var(--jp-code-font-size,13px));color:var(--jp-content-font-color1,#222);
 background:var(--jp-layout-color2,#f4f4f4);border:1px solid var(--jp-border-color2,#ccc)">
 {code}</pre>"""
 

@@ -6,7 +6,7 @@ from __future__ import annotations
 import shutil
 import textwrap
 from collections.abc import Callable
-from typing import Any
+from typing import TYPE_CHECKING, Any
 from uuid import uuid4
 
 from batten.exam import Examination, Fit
@@ -18,6 +18,9 @@ from batten.report.page import static_html
 from batten.report.style import CSS
 from batten.report.tables import full_grid, full_table
 from batten.report.text import headline, text_summary
+
+if TYPE_CHECKING:
+    from batten.notebook.panels.desk import Changed
 
 __all__ = ["add_formatters", "in_kernel", "remove_formatters", "show", "show_table"]
 
@@ -34,8 +37,8 @@ def in_kernel(shell: Any) -> bool:
     return getattr(shell, "kernel", None) is not None
 
 
-def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool) -> None:
-    """The result of %%batten; plain: as text.
+def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool, changed: Changed | None = None) -> None:
+    """The result of %%batten; plain: as text. changed(before, after): told when the widget asks something else.
 
     In a notebook two outputs: the widget, with nothing where no widget can be shown, and a static copy, which a style
     inside the living widget hides. A copy in the widget's own output would not be used by a notebook that is opened
@@ -50,7 +53,7 @@ def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool) -> N
         print("\n\n".join([text, *said, NEXT]))
         return
     token = f"batten-static-{uuid4().hex}"
-    box = _widget(exam, token)
+    box = _widget(exam, token, changed)
     if box is not None:
         progress.place({**box._repr_mimebundle_(), "text/plain": headline(exam), "text/html": ""})
     # nobody waits for the copy, which asks every remedy
@@ -60,7 +63,7 @@ def show(exam: Examination, *, shell: Any, progress: Progress, plain: bool) -> N
     })  # fmt: skip
 
 
-def _widget(exam: Examination, token: str) -> Any:
+def _widget(exam: Examination, token: str, changed: Changed | None) -> Any:
     """The widget; None where there is no ipywidgets."""
     try:
         from batten.notebook.widget import widget_for
@@ -68,7 +71,7 @@ def _widget(exam: Examination, token: str) -> Any:
         if (error.name or "").partition(".")[0] == "ipywidgets":
             return None
         raise
-    return widget_for(exam, cell_id=current_cell_id(), token=token)
+    return widget_for(exam, cell_id=current_cell_id(), token=token, changed=changed)
 
 
 def show_table(exam: Examination, *, shell: Any) -> None:

@@ -14,6 +14,9 @@ _OWN = """
 }
 .batten-widget ul { padding-left: 1.3em; margin: .5em 0; }
 .batten-widget li { margin: .25em 0; }
+.batten-widget .batten-head { justify-content: space-between; align-items: flex-start; gap: 1em; }
+.batten-widget .batten-head > .widget-html { flex: 1 1 auto; min-width: 0; }
+.batten-widget .batten-head > button { flex: 0 0 auto; }
 .batten-widget h3 { font-size: 1.1em; margin: .2em 0 .5em; }
 .batten-widget code { font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); font-size: .92em;
   font-weight: 400; background: none; padding: 0; color: inherit; }

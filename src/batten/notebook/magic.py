@@ -60,4 +60,9 @@ class BattenMagics(Magics):
             self.last = exam
             if keep:
                 names[keep] = exam
-            show(exam, shell=self.shell, progress=progress, plain=plain)
+            show(exam, shell=self.shell, progress=progress, plain=plain, changed=self._follow)
+
+    def _follow(self, before: Examination, after: Examination) -> None:
+        """What a widget makes of the last examination (another span or aim, further remedies) is the last one now."""
+        if self.last is before:
+            self.last = after

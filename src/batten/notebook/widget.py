@@ -11,7 +11,7 @@ from batten.notebook.insertion import KEYS_CLASS
 from batten.notebook.look import style_sheet
 from batten.notebook.open_widgets import close_all, register
 from batten.notebook.panels.compare import Compare
-from batten.notebook.panels.desk import Desk, sheet
+from batten.notebook.panels.desk import Changed, Desk, sheet
 from batten.notebook.panels.header import header
 from batten.notebook.panels.picker import Picker
 from batten.notebook.panels.remedy import RemedyTab
@@ -22,13 +22,13 @@ __all__ = ["ExamBox", "ExamWidget", "widget_for"]
 COMPARE = "compare"
 
 
-def widget_for(exam: Examination, *, cell_id: str | None, token: str) -> ExamBox:
+def widget_for(exam: Examination, *, cell_id: str | None, token: str, changed: Changed | None = None) -> ExamBox:
     """The widget of an examination, drawn as far as it is seen at first.
 
     cell_id: the cell that shows it; running that cell again closes the widget. token: class of the static copy, which
-    hides where this widget is alive.
+    hides where this widget is alive. changed(before, after): told when the widget asks something else.
     """
-    made = ExamWidget(exam, cell_id=cell_id, token=token)
+    made = ExamWidget(exam, cell_id=cell_id, token=token, changed=changed)
     register(made.box, cell_id)
     return made.box
 
@@ -54,8 +54,8 @@ class ExamBox(widgets.VBox):  # type: ignore[misc]  # ipywidgets has no types
 class ExamWidget:
     """The tabs, and which of them is drawn."""
 
-    def __init__(self, exam: Examination, *, cell_id: str | None, token: str) -> None:
-        self.desk = Desk(exam, cell_id=cell_id)
+    def __init__(self, exam: Examination, *, cell_id: str | None, token: str, changed: Changed | None = None) -> None:
+        self.desk = Desk(exam, cell_id=cell_id, changed=changed)
         self.head, self.message = sheet(""), self.desk.message
         self.span = SpanFields(self.desk)
         self.compare = Compare(self.desk, self.span)
@@ -96,6 +96,15 @@ class ExamWidget:
                 self.refresh()
             self.tabs.selected_index = 1 + self.keys.index(key)
 
+    def shut(self, key: str) -> None:
+        """Take an opened remedy's tab away; the tab before it comes into view."""
+        with self.desk.lock:
+            if key in self.opened:
+                place = self.keys.index(key)
+                self.opened.remove(key)
+                self.tabs.selected_index = place
+                self.refresh()
+
     def close(self) -> None:
         """Close every widget made here, also those that are not in a tab now."""
         with self.desk.lock:
@@ -109,7 +118,8 @@ class ExamWidget:
         children, titles = [self.compare.box], [COMPARE]
         for key in self.keys:
             if key not in self.remedies:
-                self.remedies[key] = RemedyTab(self.desk, key, self.span)
+                self.remedies[key] = RemedyTab(self.desk, key, self.span, self.shut)
+            self.remedies[key].may_be_shut(key not in roles)
             children.append(self.remedies[key].box)
             titles.append(roles.get(key, key))
         if tuple(children) == self.tabs.children:

@@ -18,10 +18,14 @@ LEAST = 13
 
 @dataclass(frozen=True)
 class Column:
-    """head: what the column holds, with its unit. kind: "number", "key", "words" (long ones) or "" (short ones)."""
+    """head: what the column holds, with its unit. kind: "number", "key", "words" (long ones) or "" (short ones).
+
+    under: on a page, its cells stand below those of the nearest column of words before it, which saves width.
+    """
 
     head: str
     kind: str = ""
+    under: bool = False
 
 
 @dataclass(frozen=True)
@@ -35,13 +39,17 @@ class Grid:
 
 def as_html(grid: Grid) -> str:
     """One <table>; the first cell of a row heads it."""
-    heads = "".join(f'<th scope="col"{_kind(c)}>{esc(c.head)}</th>' for c in grid.columns)
+    stacks = _stacks(grid.columns)
+    titles = [column.head for column in grid.columns]
+    heads = "".join(f'<th scope="col"{_kind(grid.columns[s[0]])}>{_stacked(s, titles, grid)}</th>' for s in stacks)
     lines = []
     for row, mark in zip(grid.rows, grid.marks, strict=True):
-        first = f'<th scope="row"{_kind(grid.columns[0])}>{esc(row[0])}</th>'
-        cells = zip(row[1:], grid.columns[1:], strict=True)
-        rest = "".join(f"<td{_kind(c)}>{esc(cell)}</td>" for cell, c in cells)
-        lines.append(f'<tr class="batten-{mark}">{first}{rest}</tr>' if mark else f"<tr>{first}{rest}</tr>")
+        tags = ('th scope="row"', "th"), *[("td", "td")] * (len(stacks) - 1)
+        cells = "".join(
+            f"<{tag}{_kind(grid.columns[s[0]])}>{_stacked(s, row, grid)}</{end}>"
+            for s, (tag, end) in zip(stacks, tags, strict=True)
+        )
+        lines.append(f'<tr class="batten-{mark}">{cells}</tr>' if mark else f"<tr>{cells}</tr>")
     body = "\n".join(lines)
     return (
         f'<div class="batten-scroll"><table class="batten-table">\n<thead><tr>{heads}</tr></thead>\n'
@@ -78,8 +86,26 @@ def _block(cells: Sequence[Sequence[str]], widths: Sequence[int], columns: Seque
     return [_line([cell[i] if i < len(cell) else "" for cell in cells], widths, columns) for i in range(tall)]
 
 
-def _kind(column: Column) -> str:
-    return f' class="batten-{column.kind}"' if column.kind else ""
+def _stacks(columns: Sequence[Column]) -> list[list[int]]:
+    """Places of the columns that stand on their own, each with those that stand under it."""
+    out: list[list[int]] = []
+    for j, column in enumerate(columns):
+        if column.under:
+            next(stack for stack in reversed(out) if columns[stack[0]].kind == "words").append(j)
+        else:
+            out.append([j])
+    return out
+
+
+def _stacked(stack: Sequence[int], cells: Sequence[str], grid: Grid) -> str:
+    """One cell, and below it in smaller type those that stand under it."""
+    below = (f"<div{_kind(grid.columns[j], 'under')}>{esc(cells[j])}</div>" for j in stack[1:] if cells[j])
+    return f"{esc(cells[stack[0]])}{''.join(below)}"
+
+
+def _kind(column: Column, more: str = "") -> str:
+    names = " ".join(f"batten-{name}" for name in (column.kind, more) if name)
+    return f' class="{names}"' if names else ""
 
 
 def _line(cells: Sequence[str], widths: Sequence[int], columns: Sequence[Column]) -> str:

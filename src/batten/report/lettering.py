@@ -66,8 +66,9 @@ def wrapped(text: object, inches: float, lines: int, *, size: float = TEXT, bold
 
 
 def titled(name: object, unit: object = "", *, limit: int = 60) -> str:
-    """An axis title: the name in at most `limit` characters, and its unit in brackets."""
-    behind = f" ({shortened(unit, 20)})" if str(unit).strip() else ""
+    """An axis title: the name in at most `limit` characters, and its unit in brackets unless the name gives it."""
+    told = any(f"{left}{plain(unit)}{right}" in plain(name) for left, right in ("()", "[]"))
+    behind = f" ({shortened(unit, 20)})" if str(unit).strip() and not told else ""
     return f"{shortened(name, limit)}{behind}"
 
 

@@ -10,22 +10,18 @@ from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-import numpy as np
-import pandas as pd
-
 from batten.compare.grid import STRAIGHT
-from batten.effects.numbers import place, show
 from batten.errors import BattenError
 from batten.report.cautions import CARE, SUBTITLE, cautions, choosing_note, left_out_words
 from batten.report.figures import Picture, fit_figure, img_html, ladder_figure, left_figure, line_against_choice
 from batten.report.figures import spans_figure as spans_of
-from batten.report.grid import Column, Grid, as_html
+from batten.report.fit_tables import checks_table, coefficients_table, constants_table, lookup_table
 from batten.report.how import how_computed
 from batten.report.lettering import plain
 from batten.report.markup import details, esc, paragraph, part
 from batten.report.style import CSS
 from batten.report.tables import full_table, refused_table, shortlist_table
-from batten.report.words import choice_words, headline, otherwise, refused_words, span_words, trial_words
+from batten.report.words import choice_words, days_words, headline, otherwise, refused_words, span_words, trial_words
 from batten.report.write_up import write_up
 
 if TYPE_CHECKING:
@@ -41,7 +37,7 @@ def page(exam: Examination) -> str:
     body = "\n".join([
         *_first_screen(exam, title="h1", part="h2"),
         part(f"The choice: {plain(fit.words)}", _choice(exam)),
-        part("What is left", _figure(left_figure(fit, exam[STRAIGHT])) + _checks(exam)),
+        part("What is left", _figure(left_figure(fit, exam[STRAIGHT])) + checks_table(fit, named=True)),
         part("All that were tried", _tried(exam, figures=True)),
         part("How this was computed", _list(how_computed(exam))),
         part("Methods and results, as text", _paragraphs(write_up(exam, exam.choice.key))),
@@ -85,7 +81,8 @@ body { background: #fff; margin: 2.5em auto; max-width: 68em; padding: 0 1.5em; 
 def _first_screen(exam: Examination, *, title: str, part: str, figure: str = "") -> list[str]:
     """Verdict, figure, rows, span, reasons, cautions. title, part: tags of the headline and of the reasons' heading."""
     rows = f"{exam.problem.rows.count:,} rows. {left_out_words(exam.problem)}".strip()
-    span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(f"{SUBTITLE} {choosing_note(exam)}", "quiet")
+    mind = " ".join(words for words in (days_words(exam), SUBTITLE, choosing_note(exam)) if words)
+    span = f"<p>{esc(span_words(exam))}</p>\n" + paragraph(mind, "quiet")
     return [
         f'<{title} class="batten-headline"><strong>{esc(headline(exam))}</strong></{title}>',
         paragraph(f"{trial_words(exam)} {rows}"),
@@ -102,13 +99,11 @@ def _choice(exam: Examination) -> str:
     """The chosen fit: its figure, what it says, its constants, and values to look up."""
     fit = exam.chosen
     said = [plain(sentence) for sentence in fit.sentences()]
-    level = f"{exam.question.level:.0%}"
     return "\n".join([
         _figure(fit_figure(fit)),
         _list(said),
-        details("Values to look up", _lookup(exam) + paragraph(
-            f"Low and high: where {level} of new rows are expected, with covariates as in the rows.", "quiet")),
-        details("Coefficients, on the fitting scale", _numbers(fit.coefficients, "term")),
+        details("Values to look up", lookup_table(fit, exam.question.by)),
+        details("Coefficients, on the fitting scale", coefficients_table(fit) + constants_table(fit)),
     ])  # fmt: skip
 
 
@@ -124,46 +119,6 @@ def _tried(exam: Examination, *, figures: bool) -> str:
     if refused:
         parts += [paragraph(f"{refused[:-1]}; what to use instead:"), refused_table(exam)]
     return "\n".join(parts)
-
-
-def _checks(exam: Examination) -> str:
-    table = exam.chosen.checks(every=False)
-    rows = tuple(
-        (plain(name), plain(asked), plain(reading))
-        for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
-    )
-    return as_html(Grid((Column("check"), Column("asked"), Column("found")), rows, ("",) * len(rows)))
-
-
-def _lookup(exam: Examination) -> str:
-    problem = exam.problem
-    unit = problem.unit(problem.response)
-    table = exam.chosen.lookup()
-    names = ["mean", "median", "low", "high"]
-    columns = [Column(_titled(plain(problem.focus), problem.unit(problem.focus)), "number")]
-    columns += [Column(_titled(name, unit), "number") for name in names]
-    values = table[names].to_numpy(float)
-    middle = float(np.nanmedian(np.abs(values))) if np.isfinite(values).any() else 0.0
-    rows = tuple(
-        # a tenth of the middle value sets the digits of all
-        (place(float(x)), *(show(float(v), width=middle / 10) for v in row))
-        for x, row in zip(table.index, values, strict=True)
-    )
-    return as_html(Grid(tuple(columns), rows, ("",) * len(rows)))
-
-
-def _numbers(table: pd.DataFrame, first: str) -> str:
-    """A table of numbers with words in front; digits by each row's standard error."""
-    columns = (Column(first), *(Column(str(name).replace("_", " "), "number") for name in table.columns))
-    rows = []
-    for name, row in zip(table.index, table.to_numpy(float), strict=True):
-        width = float(row[3] - row[2]) if len(row) > 3 else None
-        rows.append((plain(name), *(show(float(v), width=None if width is None else width / 10) for v in row)))
-    return as_html(Grid(columns, tuple(rows), ("",) * len(rows)))
-
-
-def _titled(name: str, unit: str) -> str:
-    return f"{name}, {unit}" if unit else name
 
 
 def _script(exam: Examination) -> str:

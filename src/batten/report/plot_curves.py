@@ -9,16 +9,16 @@ import numpy as np
 from matplotlib.axes import Axes
 
 from batten.compare.grid import STRAIGHT
-from batten.effects.numbers import place, show
+from batten.effects.numbers import show
 from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
 from batten.frame.problem import Problem
-from batten.report import numerals, parts, style
+from batten.report import parts, style
 from batten.report.canvas import Picture, inches, letters, pane, settle, sheet
 from batten.report.curves import Curve, Ground, SpanEnds, beyond, curve_of, places_along, row_band, span_ends
 from batten.report.days import counted_from
 from batten.report.lettering import shortened, titled, width_of, wrapped
-from batten.report.naming import brief, remedy_words
+from batten.report.naming import brief, place_in, remedy_words, span_in
 from batten.report.scales import scale
 
 if TYPE_CHECKING:
@@ -66,23 +66,25 @@ def fit_figure(fit: Fit, straight: Fit | None = None) -> Picture:
     rows = row_band(est, mean.x, level=asked.level, errors=asked.errors, profile=asked.profile)
     median = asked.value(est, mean.x, of="median")
     apart = _apart(mean, median, problem.rows.y)
+    is_line = fit.key == STRAIGHT
+    color, tint, tint_word = (style.LINE, style.LINE_BAND, "Amber") if is_line else (style.CHOICE, style.BAND, "Blue")
     figure, ax, at = _prepared(problem, [mean], room=[rows])
     parts.draw_band(ax, rows, color=style.FAINT, alpha=0.8, zorder=0.8, edge=style.RULE)
-    parts.draw_band(ax, mean)
-    ends = [parts.End(_name(fit), "mean", _end(mean, at), style.CHOICE)]
+    parts.draw_band(ax, mean, color=tint)
+    ends = [parts.End(_name(fit), "mean", _end(mean, at), color)]
     if apart:
         parts.draw_curve(ax, median, at, color=style.INK, dashed=True, width=1.2, zorder=3.8)
         ends.append(parts.End("median", "the typical row", _end(median, at), style.INK))
-    if straight is not None and straight.key != fit.key:
+    if straight is not None and not is_line:
         line = asked.value(straight.estimate, mean.x)
         parts.draw_curve(ax, line, at, color=style.LINE, dashed=True, width=1.5, zorder=3.5)
         ends.append(parts.End("straight line", "", _end(line, at), style.LINE))
-    parts.draw_curve(ax, mean, at, color=style.CHOICE)
-    _draw_span(ax, span, mean, problem)
+    parts.draw_curve(ax, mean, at, color=color)
+    _draw_span(ax, span, mean, problem, color=color)
     parts.ends_of_curves(ax, ends)
     notes = [
         parts.drawn_of(len(problem.rows.x)),
-        _band_words("Blue band", mean, asked),
+        _band_words(f"{tint_word} band", mean, asked),
         f"Grey band: where {asked.level:.0%} of new rows are expected.",
         "" if apart else "Mean and median lie too close to draw both.",
         _averaged(problem, mean), GROUND,
@@ -127,9 +129,10 @@ def _prepared(problem: Problem, curves: list[Curve], room: list[Curve] | None = 
     ax = pane(figure, LEFT, BOTTOM, RIGHT, TOP)
     ax.set_xlim(at.left, at.right)
     ax.set_ylim(low, high)
-    x_word, y_word = scale(ax, "x", start=counted_from(problem)), scale(ax, "y", grid=True)
+    start = counted_from(problem)
+    x_word, y_word = scale(ax, "x", start=start), scale(ax, "y", grid=True)
     y, x = problem.response, problem.focus
-    parts.heading(ax, (y, _unit(problem, y, y_word)), (x, _unit(problem, x, x_word)))
+    parts.heading(ax, (y, _unit(problem, y, y_word)), (x, "" if start else _unit(problem, x, x_word)))
     parts.ground(ax, at)
     some = parts.shown_rows(rows.x)
     parts.scatter(ax, rows.x[some], rows.y[some])
@@ -176,7 +179,7 @@ def _end(curve: Curve, at: Ground) -> float:
     return beyond_data if np.isfinite(beyond_data) else parts.value_at(curve, at.high)
 
 
-def _draw_span(ax: Axes, span: SpanEnds, curve: Curve, problem: Problem) -> None:
+def _draw_span(ax: Axes, span: SpanEnds, curve: Curve, problem: Problem, *, color: str = style.CHOICE) -> None:
     """The two x values of the question: a bracket with the difference, and the curve's places."""
     low, high = ax.get_ylim()
     level = high - 0.085 * (high - low)
@@ -188,7 +191,7 @@ def _draw_span(ax: Axes, span: SpanEnds, curve: Curve, problem: Problem) -> None
                 marker="None", alpha=1.0)  # fmt: skip
         if np.isfinite(on_curve):
             ax.plot([end], [on_curve], linestyle="none", marker="o", markersize=5.5, markerfacecolor=style.PAPER,
-                    markeredgecolor=style.CHOICE, markeredgewidth=1.6, zorder=5, alpha=1.0)  # fmt: skip
+                    markeredgecolor=color, markeredgewidth=1.6, zorder=5, alpha=1.0)  # fmt: skip
     ax.plot([span.a, span.b], [level, level], color=style.INK, linewidth=1.1, zorder=3, marker="|", markersize=5,
             markeredgewidth=1.1, markeredgecolor=style.INK, linestyle="solid", alpha=1.0)  # fmt: skip
     words, ends = _span_words(span, problem), ax.get_xlim()
@@ -200,8 +203,7 @@ def _draw_span(ax: Axes, span: SpanEnds, curve: Curve, problem: Problem) -> None
 
 
 def _span_words(span: SpanEnds, problem: Problem) -> str:
-    unit_x, unit_y = shortened(problem.unit(problem.focus), 14), shortened(problem.unit(problem.response), 14)
-    ends = numerals.span_words(span.a, span.b, unit_x)
+    unit_y, ends = shortened(problem.unit(problem.response), 14), span_in(problem, span.a, span.b, 14)
     if not span.difference.defined:
         return ends
     d, width = span.difference, span.difference.high - span.difference.low
@@ -219,9 +221,9 @@ def _averaged(problem: Problem, curve: Curve) -> str:
 
 
 def _apart(mean: Curve, median: Curve, y: Array) -> bool:
-    """Whether mean and median can be seen apart: more than two line widths somewhere."""
+    """Whether mean and median can be told apart: four line widths between them somewhere."""
     gap = np.abs(mean.value - median.value)
-    return bool(np.isfinite(gap).any() and np.nanmax(gap) > 0.012 * np.ptp(y))
+    return bool(np.isfinite(gap).any() and np.nanmax(gap) > 0.025 * np.ptp(y))
 
 
 def _seen(problem: Problem) -> list[str]:
@@ -237,8 +239,7 @@ def _told(fit: Fit, span: SpanEnds, second: Curve | None, is_line: bool) -> list
         return [f"Curve: {words}."]
     width = max(e.high - e.low for e in (span.at_a, span.at_b))
     a, b = (show(e.estimate, unit, width=width) for e in (span.at_a, span.at_b))
-    x_unit = problem.unit(problem.focus)
-    where = place(span.a, x_unit), place(span.b, x_unit)
+    where = [place_in(problem, x, problem.unit(problem.focus)) for x in (span.a, span.b)]
     out = [f"Mean by {words}: {a} at {where[0]}, {b} at {where[1]}."]
     if second is not None:
         ends = [show(parts.value_at(second, x), unit, width=width) for x in (span.a, span.b)]

@@ -85,7 +85,8 @@ def _titles(ax: Axes, fit: Fit, unit: str, color: str) -> None:
         return titled(_named(fit.estimate, shortened(problem.response, limit)), unit, limit=200)
 
     letters(ax, 0, 1 + 0.14 / tall, fitted(residual, wide, size=style.SMALL), transform=ax.transAxes, size=style.SMALL)
-    below = fitted(lambda limit: titled(problem.focus, problem.unit(problem.focus), limit=limit), wide, bold=True)
+    x_unit = "" if counted_from(problem) else problem.unit(problem.focus)
+    below = fitted(lambda limit: titled(problem.focus, x_unit, limit=limit), wide, bold=True)
     letters(ax, 1, -0.33 / tall, below, transform=ax.transAxes, ha="right", va="center", bold=True)
 
 

@@ -11,11 +11,11 @@ from matplotlib.axes import Axes
 from batten.compare.grid import STRAIGHT
 from batten.effects.numbers import show
 from batten.frame.problem import Problem
-from batten.report import numerals, parts, style
+from batten.report import parts, style
 from batten.report.canvas import Picture, inches, letters, pane, settle, sheet, strokes
 from batten.report.entries import Entry, entries
 from batten.report.lettering import fitted, plain, shortened, titled
-from batten.report.naming import remedy_in
+from batten.report.naming import remedy_in, span_in
 from batten.report.scales import scale
 
 if TYPE_CHECKING:
@@ -30,7 +30,7 @@ STEP, LEFT, RIGHT, TOP, BOTTOM = 0.185, 3.35, 0.2, 0.62, 0.92
 def spans_figure(exam: Examination) -> Picture:
     """The difference over the span by remedy, lowest held-out error first, with its interval."""
     rows, problem = entries(exam), exam.problem
-    span = numerals.span_words(*exam.question.span, problem.unit(problem.focus))
+    span = span_in(problem, *exam.question.span)
     figure = sheet(style.WIDTH, TOP + BOTTOM + STEP * len(rows))
     ax = pane(figure, LEFT, BOTTOM, RIGHT, TOP)
     low, high = _window(rows, exam.choice.key)

@@ -8,7 +8,8 @@ Figures stay opaque white in dark notebooks; text, tables and frames follow the 
 from __future__ import annotations
 
 __all__ = [
-    "BAND", "BEYOND", "CHOICE", "COOL", "CSS", "DATA", "DPI", "FAINT", "FONT", "INK", "LINE", "OUTER", "PAPER", "QUIET",
+    "BAND", "BEYOND", "CHOICE", "COOL", "CSS", "DATA", "DPI", "FAINT", "FONT", "INK", "LINE", "LINE_BAND",
+    "OUTER", "PAPER", "QUIET",
     "RULE", "SMALL", "TEXT", "TITLE", "WIDTH",
 ]  # fmt: skip
 
@@ -26,7 +27,7 @@ DATA = "#7d8b96"
 LINE = "#a8520a"
 #: the choice (or the remedy a figure is about); 7.8:1 on white
 CHOICE = "#0b5688"
-BAND = "#a9cbe3"
+BAND, LINE_BAND = "#a9cbe3", "#eccfb0"
 #: ground outside the central 90% of the predictor, and beyond its last rows
 OUTER, BEYOND = "#f4f6f7", "#e4e9ec"
 #: steps from the smallest gap to the largest, dark to light, read in grey too
@@ -74,10 +75,9 @@ body[data-jp-theme-light="false"] .batten-report { --batten-choice: #7cbce6; --b
 .batten-report .batten-table tr.batten-line th { box-shadow: inset 4px 0 var(--batten-line); }
 .batten-report .batten-table tbody th { font-weight: 400; }
 .batten-report .batten-table tr.batten-choice th { font-weight: 600; }
-.batten-report .batten-table td.batten-key {
-  font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); font-size: .88em; white-space: nowrap;
-  color: var(--batten-quiet);
-}
+.batten-report .batten-table .batten-under { color: var(--batten-quiet); font-size: .88em; font-weight: 400; }
+.batten-report .batten-table .batten-key { font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); }
+.batten-report .batten-table tbody .batten-key { white-space: nowrap; }
 .batten-report details { margin: .6em 0; }
 .batten-report summary { cursor: pointer; color: var(--batten-choice); }
 .batten-report pre.batten-code {

@@ -10,7 +10,7 @@ from batten.frame.problem import Problem
 from batten.report import numerals
 from batten.report.entries import Entry, Refused, entries, lowest, refused
 from batten.report.grid import Column, Grid, as_html, as_text
-from batten.report.naming import brief
+from batten.report.naming import brief, span_in
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
@@ -59,7 +59,7 @@ def shortlist_grid(exam: Examination) -> Grid:
 def full_grid(exam: Examination) -> Grid:
     """All rows, with two more columns."""
     rows = entries(exam)
-    more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", "words")
+    more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", under=True)
     best = lowest(exam)
     cells = [(*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()]
     return Grid((*_columns(exam), *more), tuple(cells), tuple(_mark(key, exam) for key in rows))
@@ -69,7 +69,7 @@ def refused_grid(exam: Examination) -> Grid:
     """Refused remedies in plain words."""
     problem = exam.problem
     heads = ("what is wrong", "what was seen", "instead")
-    columns = Column(REMEDY, "words"), Column("key", "key"), *(Column(head, "words") for head in heads)
+    columns = Column(REMEDY, "words"), Column("key", "key", under=True), *(Column(head, "words") for head in heads)
     cells = [_refusal(problem, r) for r in refused(exam)]
     return Grid(columns, tuple(cells), ("",) * len(cells))
 
@@ -83,11 +83,11 @@ def _columns(exam: Examination) -> tuple[Column, ...]:
     problem = exam.problem
     unit = problem.unit(problem.response)
     mean = f"{unit} (mean)" if unit else "(mean)"
-    span = numerals.span_words(*exam.question.span, problem.unit(problem.focus))
+    span = span_in(problem, *exam.question.span)
     joint = ", " if unit else " "
     return (
         Column(REMEDY, "words"),
-        Column("key", "key"),
+        Column("key", "key", under=True),
         Column(f"held-out error{joint}{mean}", "number"),
         Column(f"behind the lowest{joint}{unit}".rstrip(), "number"),
         Column(f"difference {span}{joint}{mean}", "number"),

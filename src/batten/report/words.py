@@ -6,15 +6,18 @@ import math
 from typing import TYPE_CHECKING
 
 from batten.compare.grid import STRAIGHT
-from batten.effects.numbers import show
+from batten.effects.numbers import place, show
 from batten.effects.sentences import span_sentence
+from batten.report.days import counted_from, day_of
 from batten.report.lettering import plain
 from batten.report.naming import remedy_words
 
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
 
-__all__ = ["choice_words", "headline", "otherwise", "refused_words", "span_words", "trial_words", "verdict"]
+__all__ = [
+    "choice_words", "days_words", "headline", "otherwise", "refused_words", "span_words", "trial_words", "verdict",
+]  # fmt: skip
 
 _VERDICTS = {
     "straight enough": "The straight line is straight enough",
@@ -62,6 +65,18 @@ def span_words(exam: Examination, key: str | None = None) -> str:
     """The standing question's answer by one remedy, the choice by default."""
     fit = exam[key or exam.choice.key]
     return plain(span_sentence(fit.span_effect(), fit.names))
+
+
+def days_words(exam: Examination) -> str:
+    """Which dates the span's days are, "" where the focal predictor holds none."""
+    problem, (a, b) = exam.problem, exam.question.span
+    start = counted_from(problem)
+    if start is None:
+        return ""
+    return (
+        f"{plain(problem.focus)} counts days from {day_of(start, 0)}: "
+        f"{place(a)} is {day_of(start, a)}, {place(b)} is {day_of(start, b)}."
+    )
 
 
 def otherwise(exam: Examination) -> str:

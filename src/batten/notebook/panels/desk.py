@@ -15,10 +15,13 @@ from batten.report.figures import Picture, img_html
 from batten.report.lettering import plain
 from batten.report.markup import esc
 
-__all__ = ["NOT_YET", "Desk", "Panel", "bullets", "figure", "sheet"]
+__all__ = ["NOT_YET", "Changed", "Desk", "Panel", "bullets", "figure", "sheet"]
 
-#: what an unopened part says; also what a saved notebook shows of it
-NOT_YET = '<p class="batten-quiet">Drawn when it is opened with a live kernel.</p>'
+#: what a part says until it is drawn; also what a saved notebook shows of it
+NOT_YET = '<p class="batten-quiet batten-waiting">Being drawn; this needs a live kernel.</p>'
+
+
+Changed = Callable[[Examination, Examination], None]
 
 
 class Panel(Protocol):
@@ -36,11 +39,13 @@ class Desk:
     """The examination in force, the cell, and one lock round everything that draws or changes it.
 
     Callbacks may run beside a cell, or beside each other, on any thread. The span, the aim and further remedies make a
-    new examination, so what a part has drawn is fresh exactly if it was drawn for this very object.
+    new examination, so what a part has drawn is fresh exactly if it was drawn for this very object. changed(before,
+    after) is told of each.
     """
 
-    def __init__(self, exam: Examination, *, cell_id: str | None) -> None:
+    def __init__(self, exam: Examination, *, cell_id: str | None, changed: Changed | None = None) -> None:
         self.exam, self.cell_id, self.lock = exam, cell_id, threading.RLock()
+        self._changed = changed
         self.message = Message()  # for what belongs to no panel
         self.loose: list[widgets.Widget] = []  # made here, and in no box
         self._followers: list[WeakMethod[Callable[[], None]]] = []
@@ -52,7 +57,9 @@ class Desk:
     def change(self, make: Callable[[Examination], Examination]) -> None:
         """Put what `make` makes of the examination in its place; nothing changes where it raises."""
         with self.lock:
-            self.exam = make(self.exam)
+            before, self.exam = self.exam, make(self.exam)
+            if self._changed is not None:
+                self._changed(before, self.exam)
             for ref in self._followers:
                 follower = ref()
                 if follower is not None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from datetime import datetime, timedelta
 from typing import Any, Protocol
 
 import ipywidgets as widgets
@@ -12,9 +13,10 @@ import pandas as pd
 from batten.effects.numbers import place
 from batten.errors.widget import not_a_date, not_a_number
 from batten.frame.columns import word
+from batten.report.days import day_of
 from batten.report.lettering import plain, shortened
 
-__all__ = ["Choices", "Dates", "Field", "Numbers", "labelled", "number_in"]
+__all__ = ["Choices", "Dates", "Days", "Field", "Numbers", "labelled", "number_in"]
 
 #: up to this many choices stand side by side as buttons
 BUTTONS = 6
@@ -54,6 +56,29 @@ class Numbers:
         self.text.observe(call, "value")
 
 
+class Days:
+    """A date, typed, for a number of days since `start`."""
+
+    def __init__(self, name: str, value: float, *, start: datetime, label: str) -> None:
+        self.name, self._start = name, start
+        self.text = widgets.Text(continuous_update=False)
+        self.box = labelled(label, self.text)
+        self.set(value)
+
+    def set(self, value: float) -> None:
+        """Write a value into the field."""
+        self._value, self._written = value, day_of(self._start, value)
+        self.text.value = self._written
+
+    def read(self) -> float:
+        if self.text.value == self._written:
+            return self._value
+        return (date_in(self.text.value, self.name).to_pydatetime() - self._start) / timedelta(days=1)
+
+    def on_change(self, call: Callable[..., None]) -> None:
+        self.text.observe(call, "value")
+
+
 class Dates:
     """A date, typed."""
 
@@ -63,13 +88,7 @@ class Dates:
         self.box = labelled(shortened(name, NAME), self.text)
 
     def read(self) -> pd.Timestamp:
-        try:
-            stamp = pd.Timestamp(self.text.value)
-        except ValueError:
-            raise not_a_date(self.name, self.text.value) from None
-        if not isinstance(stamp, pd.Timestamp):  # empty text is "not a time"
-            raise not_a_date(self.name, self.text.value)
-        return stamp
+        return date_in(self.text.value, self.name)
 
     def on_change(self, call: Callable[..., None]) -> None:
         self.text.observe(call, "value")
@@ -90,6 +109,17 @@ class Choices:
 
     def on_change(self, call: Callable[..., None]) -> None:
         self.choice.observe(call, "index")
+
+
+def date_in(text: str, name: str) -> pd.Timestamp:
+    """The date that a text holds."""
+    try:
+        stamp = pd.Timestamp(text)
+    except ValueError:
+        raise not_a_date(name, text) from None
+    if not isinstance(stamp, pd.Timestamp):  # empty text is "not a time"
+        raise not_a_date(name, text)
+    return stamp
 
 
 def number_in(text: str, name: str) -> float:

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from functools import cached_property
+from weakref import WeakMethod
 
 import ipywidgets as widgets
 
 from batten.compare.shortlist import shortlist
 from batten.exam.examination import Examination
+from batten.notebook.callbacks import weakly
 from batten.notebook.panels.desk import Desk, sheet
 from batten.notebook.panels.pages import Pages
 from batten.notebook.panels.remedy_panels import CodeOf, EffectOf, FitOf, HowOf, LeftOf
@@ -26,10 +29,23 @@ class RemedyTab:
     The panels are made when the tab is first opened: some forty models, which the page would have to make as well.
     """
 
-    def __init__(self, desk: Desk, key: str, span: SpanFields) -> None:
-        self.key, self._desk, self._span = key, desk, span
+    def __init__(self, desk: Desk, key: str, span: SpanFields, shut: Callable[[str], None]) -> None:
+        self.key, self._desk, self._span, self._shut = key, desk, span, WeakMethod(shut)
         self.heading = sheet()
-        self.box = widgets.VBox([self.heading])
+        self.shut_button = widgets.Button(description="Close this tab", layout=widgets.Layout(width="auto"))
+        self.shut_button.on_click(weakly(self._pressed))
+        self._head = widgets.HBox([self.heading, self.shut_button])
+        self._head.add_class("batten-head")
+        self.box = widgets.VBox([self._head])
+
+    def may_be_shut(self, may: bool) -> None:
+        """Whether the tab has a button that takes it away: those that the picker opened do."""
+        self.shut_button.layout.display = "" if may else "none"
+
+    def _pressed(self, _button: object) -> None:
+        shut = self._shut()
+        if shut is not None:
+            shut(self.key)
 
     @cached_property
     def pages(self) -> Pages:
@@ -37,7 +53,7 @@ class RemedyTab:
         desk, key = self._desk, self.key
         effect, code = EffectOf(key, self._span), CodeOf(key, cell_id=desk.cell_id)
         made = Pages(desk, (FitOf(key), LeftOf(key), effect, TryValue(desk, key), code, HowOf(key)))
-        self.box.children = [self.heading, made.box]
+        self.box.children = [self._head, made.box]
         return made
 
     def draw(self, exam: Examination) -> None:

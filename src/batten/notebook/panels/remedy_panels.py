@@ -11,12 +11,12 @@ from batten.notebook.code_panel import CodePanel
 from batten.notebook.open_widgets import close_all
 from batten.notebook.panels.desk import bullets, figure, sheet
 from batten.notebook.panels.span import SpanFields
-from batten.notebook.panels.tables import checks_table, coefficients_table, constants_table, effect_table
 from batten.report.cautions import CARE, SUBTITLE, choosing_note
 from batten.report.figures import fit_figure, left_figure
+from batten.report.fit_tables import checks_table, coefficients_table, constants_table, effect_table
 from batten.report.how import how_computed
 from batten.report.markup import paragraph
-from batten.report.words import span_words
+from batten.report.words import days_words, span_words
 
 __all__ = ["CodeOf", "EffectOf", "FitOf", "HowOf", "LeftOf", "span_block"]
 
@@ -60,13 +60,15 @@ class EffectOf:
         fit = exam[self._key]
         effects = [fit.span_effect(of=of) for of in ("mean", "median")]
         notes = dict.fromkeys(effect.note for effect in effects if effect.note)
-        self._said.value = "\n".join([
-            paragraph(SUBTITLE, "quiet"),
-            bullets(fit.sentences()),
+        numbers = "\n".join([
             effect_table(fit, effects),
             *(paragraph(f"{note[:1].upper()}{note[1:]}.") for note in notes),
             paragraph(f"In brackets: {exam.question.level:.0%} intervals. {choosing_note(exam)}", "quiet"),
         ])  # fmt: skip
+        first, days = paragraph(SUBTITLE, "quiet"), days_words(exam)
+        # where the curve turns can take a moment: the numbers need not wait for it
+        self._said.value = f"{first}\n{span_block(exam, self._key)}\n{numbers}"
+        self._said.value = f"{first}\n{bullets([*fit.sentences(), days])}\n{numbers}"
 
 
 class CodeOf:
@@ -108,7 +110,9 @@ class HowOf:
 
 def span_block(exam: Examination, key: str | None = None) -> str:
     """The answer to the standing question in one sentence."""
-    return f'<div class="batten-span">{paragraph(span_words(exam, key))}</div>'
+    days = days_words(exam)
+    note = paragraph(days, "quiet") if days else ""
+    return f'<div class="batten-span">{paragraph(span_words(exam, key))}</div>{note}'
 
 
 def _line(exam: Examination) -> Fit | None:

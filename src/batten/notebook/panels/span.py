@@ -5,9 +5,11 @@ from __future__ import annotations
 import ipywidgets as widgets
 
 from batten.exam.examination import Examination
+from batten.frame.problem import Problem
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk
-from batten.notebook.panels.fields import NAME, Numbers
+from batten.notebook.panels.fields import NAME, Days, Numbers
+from batten.report.days import counted_from
 from batten.report.lettering import shortened
 
 __all__ = ["SpanFields"]
@@ -22,8 +24,8 @@ class SpanFields:
         self.message, self._writing = Message(), False
         a, b = self.first
         name = shortened(problem.focus, NAME)
-        self.low = Numbers(problem.focus, a, label=f"Span: {name} from")
-        self.high = Numbers(problem.focus, b, label="to", unit=problem.unit(problem.focus))
+        self.low = _field(problem, a, label=f"Span: {name} from")
+        self.high = _field(problem, b, label="to", unit=problem.unit(problem.focus))
         self.back = widgets.Button(description="Back", tooltip="Back to the first span")
         self.back.layout.width = "auto"
         for field in (self.low, self.high):
@@ -57,3 +59,11 @@ class SpanFields:
             field.set(value)
         self._writing = False
         self.back.layout.display = "none" if exam.question.span == self.first else ""
+
+
+def _field(problem: Problem, value: float, *, label: str, unit: str = "") -> Numbers | Days:
+    """A number, or a date where the focal predictor holds dates."""
+    start = counted_from(problem)
+    if start is not None:
+        return Days(problem.focus, value, start=start, label=label)
+    return Numbers(problem.focus, value, label=label, unit=unit)

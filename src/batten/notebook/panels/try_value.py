@@ -14,7 +14,7 @@ from batten.frame.slots import Slot
 from batten.notebook.callbacks import Message, told_in, weakly
 from batten.notebook.panels.desk import Desk, sheet
 from batten.notebook.panels.fields import NAME, Choices, Dates, Field, Numbers, labelled, number_in
-from batten.notebook.panels.tables import predictions_table
+from batten.report.fit_tables import lookup_table, predictions_table
 from batten.report.lettering import plain, shortened
 from batten.report.markup import paragraph
 
@@ -39,9 +39,15 @@ class TryValue:
         for field in self.fields:
             field.on_change(weakly(self._changed))
         self.wanted.observe(weakly(self._asked_back), "value")
+        self.several = widgets.ToggleButton(
+            description=f"Table at round {shortened(problem.focus, 30)}", layout=widgets.Layout(width="auto")
+        )  # fmt: skip
+        self.several.observe(weakly(self._asked_for_several), "value")
+        self.table, self.trouble = sheet(""), Message()
         self.box = widgets.VBox([
             *(field.box for field in self.fields), self.message.box, self.shown,
             _question(problem, self.wanted), self.backwards.box, self.reached,
+            self.several, self.trouble.box, self.table,
         ])  # fmt: skip
 
     def draw(self, exam: Examination) -> None:
@@ -49,6 +55,7 @@ class TryValue:
             self._predict(exam[self._key])
         if self.wanted.value.strip():
             self._ask_back(exam)
+        self._look_up(exam)
 
     def row(self) -> pd.DataFrame:
         """What is typed, as a frame of one row."""
@@ -65,6 +72,16 @@ class TryValue:
         notes = dict.fromkeys(note for table in (mean, median, new) for note in table["note"] if note)
         told = "".join(paragraph(f"{note[:1].upper()}{note[1:]}.", "caution") for note in notes)
         self.shown.value = told + predictions_table(fit, mean, median, new)
+
+    def _asked_for_several(self, _change: object) -> None:
+        with self._desk.lock:
+            self._look_up(self._desk.exam)
+
+    def _look_up(self, exam: Examination) -> None:
+        """The table at round values, for as long as its button is down."""
+        with told_in(self.trouble):
+            asked = self.several.value
+            self.table.value = lookup_table(exam[self._key], exam.question.by) if asked else ""
 
     def _asked_back(self, _change: object) -> None:
         with self._desk.lock:
@@ -107,5 +124,6 @@ def _question(problem: Problem, wanted: widgets.Text) -> widgets.HBox:
     """The same asked backwards."""
     y, x = (shortened(name, NAME) for name in (problem.response, problem.focus))
     alike = " (covariates as in the rows)" if problem.covariates else ""
-    ask = f"Backwards: at which {x}{alike} is the mean of {y}"
-    return labelled(ask, wanted, problem.unit(problem.response))
+    unit = problem.unit(problem.response)
+    ask = f"Backwards: at which {x}{alike} is the mean of {y}{f' ({shortened(unit, 20)})' if unit else ''}"
+    return labelled(ask, wanted)

@@ -5,18 +5,26 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
+import numpy as np
 import pandas as pd
 
 from batten.effects.contrast import SpanEffect
 from batten.effects.numbers import show, show_interval
-from batten.exam.fit import Fit
-from batten.notebook.panels.fields import NAME
 from batten.report.grid import Column, Grid, as_html
 from batten.report.lettering import plain, shortened
-from batten.report.numerals import difference, span_words
+from batten.report.markup import paragraph
+from batten.report.naming import place_in, span_in
+from batten.report.numerals import difference
 
-__all__ = ["checks_table", "coefficients_table", "constants_table", "effect_table", "predictions_table"]
+if TYPE_CHECKING:
+    from batten.exam.fit import Fit
+
+__all__ = ["checks_table", "coefficients_table", "constants_table", "effect_table", "lookup_table", "predictions_table"]
+
+#: letters of a column's name that a table's head keeps
+NAME = 50
 
 #: the name of a method, in brackets at the end of a question
 _METHOD = re.compile(r" \([^()]*\)(?=\?$)")
@@ -27,7 +35,7 @@ def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
     problem = fit.problem
     y_unit, x_unit = problem.unit(problem.response), problem.unit(problem.focus)
     first = effects[0]
-    ends = span_words(first.a, first.b, x_unit)
+    ends = span_in(problem, first.a, first.b)
     y, x = shortened(problem.response, NAME), shortened(problem.focus, NAME)
     per = f"{y_unit or y} per {x_unit or f'unit of {x}'}"
     heads = [Column(f"{x} {ends}"), *(Column(f"{e.of} of {y}") for e in effects)]
@@ -48,6 +56,26 @@ def predictions_table(fit: Fit, mean: pd.DataFrame, median: pd.DataFrame, new: p
     low, high = float(new["low"].iloc[0]), float(new["high"].iloc[0])
     rows.append(("one new row like this", "", _interval(low, high)))
     return _html(heads, rows)
+
+
+def lookup_table(fit: Fit, by: str | None = None) -> str:
+    """Mean, median and where a new row is expected at round values of the focal predictor, by group if asked."""
+    problem, table = fit.problem, fit.lookup(by=by)
+    names = ["mean", "median", "low", "high"]
+    values = table[names].to_numpy(float)
+    middle = float(np.nanmedian(np.abs(values))) if np.isfinite(values).any() else 0.0
+    groups = [Column(plain(by))] if by else []
+    focus = _with_unit(plain(problem.focus), problem.unit(problem.focus))
+    heads = [*groups, Column(focus, "number")]
+    heads += [Column(_with_unit(name, problem.unit(problem.response)), "number") for name in names]
+    rows = []
+    for place, row in zip(table.index, values, strict=True):
+        group, x = place if by else ("", place)
+        # a tenth of the middle value sets the digits of all
+        numbers = (show(float(v), width=middle / 10) for v in row)
+        rows.append((*([plain(group)] if by else []), place_in(problem, float(x)), *numbers))
+    what = f"Low and high: where {fit.question.level:.0%} of new rows are expected, covariates as in the rows."
+    return _html(heads, rows) + paragraph(what, "quiet")
 
 
 def checks_table(fit: Fit, *, named: bool) -> str:
