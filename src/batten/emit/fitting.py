@@ -7,6 +7,7 @@ from batten.emit.functions import undo
 from batten.emit.parts import Parts
 from batten.emit.powers import power_moves
 from batten.emit.text import WIDTH, literal, noted, wrapped
+from batten.emit.weights import weighted_fit
 
 __all__ = ["fitting"]
 
@@ -54,10 +55,12 @@ def _rows(parts: Parts) -> list[str]:
 def _ols(parts: Parts) -> list[str]:
     lines = ["m = np.median(y)"] if parts.power else []
     lines += _fit(parts)
+    w = "w" if parts.weighted else ""
     zeros = _zeros(parts) if len(parts.searched) < 2 else f"[{_zeros(parts)}]"
     values = {
-        "X": "design(used)" if parts.searched else "fit.model.exog",
-        "z": "fit.model.endog", "e": "fit.resid.to_numpy()",
+        "X": "design(used)" if parts.searched else f"fit.model.{w}exog",
+        "z": f"fit.model.{w}endog",
+        "e": f"fit.{w}resid.to_numpy()",
         "b": f"np.append(fit.params, {zeros})" if parts.searched else "fit.params.to_numpy()",
     }  # fmt: skip
     names = ["X", "z", "e", "b"]
@@ -84,6 +87,8 @@ def _fit(parts: Parts) -> list[str]:
     source = "bent(LAMBDA)" if parts.power else parts.left.columns[0][1]
     response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
     fit = f"fit = smf.ols(MODEL, rows{response})"
+    if parts.est.spread is not None:
+        return weighted_fit()
     if parts.uneven:
         return noted(f'{fit}.fit(method="qr")', "columns differ much in size: QR keeps their digits")
     if parts.robust and not parts.own_table:

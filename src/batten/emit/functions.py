@@ -7,6 +7,7 @@ import re
 from batten.emit.parts import Parts
 from batten.emit.powers import power_functions
 from batten.emit.text import WIDTH, docstring, noted, wrapped
+from batten.emit.weights import root_function, root_of
 
 __all__ = ["functions", "undo"]
 
@@ -16,7 +17,7 @@ SHORT = 3
 
 def functions(parts: Parts) -> list[str]:
     """All functions; those of two or three lines stand under the one before, without a blank line."""
-    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_back(parts)]
+    blocks = [*_helpers(parts), _columns(parts), _design(parts), *_back(parts), *root_function(parts)]
     blocks += [] if parts.covariates.unwritten else [_predict(parts)]
     lines = blocks[0]
     for block in blocks[1:]:
@@ -228,14 +229,22 @@ def _new_row(parts: Parts) -> list[str]:
     first, last = parts.rank, -1 - parts.rank
     lines = []
     if not parts.ordered:
-        half = f"{parts.t_name} * np.sqrt(s2 * (1 + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
+        own = "1" if parts.est.spread is None else f"{root_of('N')} ** -2"
+        half = f"{parts.t_name} * np.sqrt(s2 * ({own} + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
         lines = [f"    half = {half}"]
         ends = f"np.array([N @ {_b(parts)} - half, N @ {_b(parts)} + half])"
     elif parts.many:
         ends = f"np.add.outer(np.sort(out)[[{first}, {last}]], N @ {_b(parts)})"
+        if parts.est.spread is not None:
+            ends = f"N @ b + np.sort(out)[[{first}, {last}]][:, None] / {root_of('N')}"
     else:
         without = "without[:, :-2]" if parts.power else "without"
-        ends = f"np.transpose([np.sort({without} @ row + out)[[{first}, {last}]] for row in N])"
+        each = "np.sort(WITHOUT @ row + out)[[FIRST, LAST]] for row in N"
+        if parts.est.spread is not None:
+            lines = [f"    roots = {root_of('N')}"]
+            each = "np.sort(WITHOUT @ row + out / r)[[FIRST, LAST]] for row, r in zip(N, roots, strict=True)"
+        each = each.replace("WITHOUT", without).replace("FIRST", str(first)).replace("LAST", str(last))
+        ends = f"np.transpose([{each}])"
     back = undo(parts, ends)
     falls = bool((parts.est.scale.inverse_slope(parts.est.eta[:1], parts.est.c) < 0).all())
     return [*lines, *wrapped(f"    low, high = {f'np.sort({back}, axis=0)' if falls else back}", 4)]

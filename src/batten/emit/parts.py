@@ -135,11 +135,16 @@ class Parts:
         return f"T{100 * self.question.level:.10g}".replace(".", "_")
 
     @property
+    def weighted(self) -> bool:
+        """Whether rows count by weights, given or learned."""
+        return self.est.rows.weights is not None
+
+    @property
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
         if self.link:
             return self.robust
-        return bool(self.searched) or self.alone or self.uneven
+        return bool(self.searched) or self.alone or self.uneven or self.weighted
 
     @property
     def triangle(self) -> bool:
@@ -148,7 +153,8 @@ class Parts:
             return self.alone or self.kind == "invlink"  # whose slope is falling, which statsmodels leaves out
         # at a break's corner the fit does not minimise the linear one's squares, so no refit of that would serve
         rough = bool(self.searched) and (self.est.shape.corners or self.power or self.est.n > FEW or self.mixed)
-        return rough or self.alone or self.uneven or not self.ordered or (self.many and self.uses_without)
+        rough = rough or self.alone or self.uneven or self.weighted
+        return rough or not self.ordered or (self.many and self.uses_without)
 
     @property
     def needs_s2(self) -> bool:
@@ -164,7 +170,7 @@ class Parts:
     @property
     def tested(self) -> bool:
         """Whether the effect is a combination of coefficients for which statsmodels' own covariance serves."""
-        own = self.searched or self.deletes or self.alone or self.uneven or not self.ordered
+        own = self.searched or self.deletes or self.alone or self.uneven or self.weighted or not self.ordered
         return self.kind == "identity" and self.steady and not own
 
     @property

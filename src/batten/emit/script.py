@@ -10,6 +10,7 @@ from batten.emit.parts import Parts, read_parts
 from batten.emit.renaming import without_names
 from batten.emit.span import held_at, span
 from batten.emit.text import PLACE, WIDTH, comment, constant, literal, number, rounded, said, wrapped
+from batten.emit.weights import spread_constants
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
@@ -82,8 +83,8 @@ def _imports(parts: Parts) -> list[str]:
 def _constants(parts: Parts) -> list[str]:
     a, b = parts.question.span
     unit = parts.problem.unit(parts.problem.focus)
-    lines = [line for one in (*parts.shape.constants, *parts.left.constants, *parts.covariates.constants)
-             for line in constant(*one)]  # fmt: skip
+    own = *parts.shape.constants, *parts.left.constants, *spread_constants(parts), *parts.covariates.constants
+    lines = [line for one in own for line in constant(*one)]
     if not parts.numbers.span.note:
         meaning = f"the question: rows at {parts.x} {b:.6g}{' ' + said(unit) if unit else ''} against rows at {a:.6g}"
         lines += constant("SPAN", f"({number(a)}, {number(b)})", meaning)

@@ -45,7 +45,7 @@ def _introduction(parts: Parts) -> str:
         over = ", at " + ", ".join(f"{said(name)} = {said(value)}" for name, value in parts.question.at.items())
     if parts.deletes:
         way = "by leaving out each row in turn"
-    elif parts.tested:
+    elif parts.kind == "identity" and parts.steady and parts.robust:
         way = "that of the coefficients"
     else:
         way = "by each row's influence" if parts.robust else "for errors of one size"
@@ -122,6 +122,9 @@ def _difference(parts: Parts, *, deletes: bool) -> list[str]:
 
 def _linearised(parts: Parts) -> list[str]:
     """effect, its slopes in the coefficients (pull), and each row's own share in the averages."""
+    if parts.kind == "identity" and parts.steady and parts.robust:
+        half = f"{parts.t_name} * np.sqrt((((without - b) @ gap) ** 2).sum())"
+        return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half}"]
     lines, own = _slopes(parts)
     if parts.robust:
         total = " + ".join(["len(y) * (b - without) @ pull", *own])
