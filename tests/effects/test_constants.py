@@ -160,6 +160,12 @@ def test_a_choice_from_a_list_names_the_powers_that_fit_about_as_well():
     assert constant.note == "1 and 2 fit about as well; only these values were tried"
 
 
+def test_a_perfect_fit_names_the_one_power_that_gives_it():
+    (power, *_) = learned_constants(fitted("y ~ fp1 x", rows_of(A_X, 2 + 3 * A_X)))
+    assert power.estimate == 1
+    assert power.pieces == ((1.0, 1.0),)
+
+
 def test_knots_edges_and_centres_are_facts_without_interval():
     knots = learned_constants(fitted("y ~ spline4 x", A), x="kg")
     assert [k.name for k in knots] == ["knot 1", "knot 2", "knot 3", "knot 4"]

@@ -92,7 +92,9 @@ def profile_of_shape(est: Estimate, which: int = 0, *, level: float = 0.95) -> P
     allowed = est.n / 2 * float(np.log1p(fisher.ppf(level, 1, est.df_residual) / est.df_residual))
     if est.shape.finite:
         model = searched_model(est.rows, est.shape, est.state)
-        lost = est.n / 2 * np.log(scan(model, est.z[:, None])[:, 0] / (est.residual @ est.residual))
+        rounding = 1e-15 * float(est.z @ est.z)  # what a difference of sums of squares can leave of a perfect fit
+        rss, least = scan(model, est.z[:, None])[:, 0], float(est.residual @ est.residual)
+        lost = est.n / 2 * np.log(np.maximum(rss, rounding) / max(least, rounding))
         return _listed(est, which, allowed, model.candidates, lost)
 
     plain = len(est.theta) == 1 and not est.remedy.left.searched
