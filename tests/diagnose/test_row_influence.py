@@ -8,7 +8,7 @@ import statsmodels.api as sm
 from scipy import stats
 from two_sets import A_X, A_Y, B_X, B_Y, line, residuals
 
-from batten.diagnose.influence import dfbeta, loo_log_scores, power_pull, preference
+from batten.diagnose.influence import dfbeta, gaps_without, loo_log_scores, power_pull, preference
 from batten.engine.power import Power, best_power
 
 
@@ -140,3 +140,19 @@ def test_a_row_that_owns_a_parameter_has_no_fit_without_it():
     found = scores(X, A_Y, np.zeros(12))
     assert np.flatnonzero(np.isnan(found)).tolist() == [3]
     assert np.flatnonzero(np.isnan(power_pull(X, A_Y).without)).tolist() == [3]
+
+
+def test_the_gap_between_two_fits_without_each_row_is_that_of_refits():
+    X0, extra = line(B_X), (B_X**2)[:, None]
+    found = gaps_without(X0, extra, B_Y)
+    for i in range(len(B_Y)):
+        keep = np.arange(len(B_Y)) != i
+        fits = [X @ np.linalg.lstsq(X[keep], B_Y[keep], rcond=None)[0] for X in (np.hstack([X0, extra]), X0)]
+        assert found[i] == pytest.approx(np.abs(fits[0] - fits[1]).max(), rel=1e-9)
+
+
+def test_no_gap_without_a_row_that_owns_a_parameter():
+    own = (np.arange(12) == 3).astype(float)
+    found = gaps_without(line(A_X, own), (A_X**2)[:, None], A_Y)
+    assert np.isnan(found[3])
+    assert np.isfinite(np.delete(found, 3)).all()

@@ -232,6 +232,16 @@ def test_the_row_that_moves_a_searched_constant_most_is_that_of_refits():
     assert got.row == int(np.argmax(np.abs(np.array(refits) - est.theta[0])))
 
 
+def test_the_row_that_makes_the_bend_is_found_on_the_straight_line():
+    x = np.linspace(1, 9, 40)
+    y = 2 * x + np.random.default_rng(5).normal(0, 0.2, 40)
+    y[39] += 6
+    got = found("y ~ x", rows_of(x, y))["loudest row: left-over bend"]
+    assert got.row == 39
+    assert got.size < -0.8  # from 0.89 to 0.04
+    assert got.reading.startswith("without row {row} the left-over bend would be up to ")
+
+
 def test_a_constant_that_the_data_do_not_settle_is_not_named_by_a_row():
     assert "loudest row: power of x" not in found("y ~ x^p", A, unnamed=("power of x",))
 

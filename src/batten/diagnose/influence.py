@@ -11,10 +11,10 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import stats
 
-from batten.diagnose.span import basis, leverages, outside
+from batten.diagnose.span import basis, beyond, leverages, outside
 from batten.engine.rows import Array
 
-__all__ = ["PowerPull", "Preference", "dfbeta", "loo_log_scores", "power_pull", "preference"]
+__all__ = ["PowerPull", "Preference", "dfbeta", "gaps_without", "loo_log_scores", "power_pull", "preference"]
 
 #: a row with leverage this near 1 owns a parameter: the fit without it does not exist
 OWNED = 1e-9
@@ -62,6 +62,21 @@ def dfbeta(X: Array, e: Array, columns: list[int]) -> Array:
     Q, R = np.linalg.qr(X / length)
     rows = np.linalg.solve(R, Q.T)[columns] / length[columns, None]
     return np.asarray((rows * _left_out(e, leverages(Q))).T)
+
+
+def gaps_without(X0: Array, extra: Array, z: Array) -> Array:
+    """Largest difference that the columns `extra` (n, k) make to the fit, with row i left out of both fits (n,).
+
+    Over the rows as they stand, so that a row left out is still looked at. From one fit of each; NaN for a row that
+    owns a parameter. n by n numbers are made: give a part of very many rows.
+    """
+    Q0 = basis(X0)
+    Q1 = np.hstack([Q0, beyond(Q0, extra)])
+    shift, moved = np.zeros(len(z)), np.zeros((len(z), len(z)))
+    for Q, sign in ((Q1, 1.0), (Q0, -1.0)):
+        shift += sign * (Q @ (Q.T @ z))
+        moved += sign * Q @ (Q * _left_out(outside(Q, z), leverages(Q))[:, None]).T
+    return np.asarray(np.abs(shift[:, None] - moved).max(axis=0))
 
 
 def power_pull(X: Array, y: Array) -> PowerPull | None:

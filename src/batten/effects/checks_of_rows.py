@@ -8,8 +8,10 @@ from collections.abc import Iterator
 import numpy as np
 
 from batten.diagnose.dependence import neighbouring_residuals
+from batten.diagnose.influence import gaps_without
 from batten.diagnose.tests_of_shape import add_on
-from batten.effects.check import Check, Tested, Working, chance
+from batten.effects.check import Check, Tested, Working, added, chance
+from batten.effects.checks_of_shape import bending_columns
 from batten.effects.contrast import reach_trouble, same_group
 from batten.effects.numbers import place, show
 from batten.effects.support import support
@@ -20,6 +22,9 @@ from batten.fit.estimate import Estimate
 from batten.fit.means import averaged_means
 
 __all__ = ["checks_of_rows"]
+
+#: rows up to which each is left out of the bend in turn
+LEFT_OUT = 2_000
 
 
 def checks_of_rows(
@@ -35,6 +40,7 @@ def checks_of_rows(
     yield _supported(est, names, span)
     yield _curved_covariate(est, work, names, labels)
     yield _loudest(est, names, span)
+    yield _of_bend(est, work, names)
     yield from _of_constants(est, names, unnamed)
     yield _leverage(est)
     yield _correction(est)
@@ -110,6 +116,23 @@ def _left_out(est: Estimate, span: tuple[float, float]) -> tuple[Array | None, f
     else:  # to first order: a row's influence with its sign turned
         moved = -(ends.root[:, 1] - ends.root[:, 0])
     return moved if est.clusters is None else moved[est.clusters.code], difference
+
+
+def _of_bend(est: Estimate, work: Working, names: Names) -> Check | None:
+    """The row without which the left-over bend would differ most."""
+    extra = bending_columns(est) if est.n <= LEFT_OUT and est.clusters is None else None
+    if extra is None:
+        return None
+    columns = extra * work.root[:, None]
+    found = added(work, extra, errors="constant")
+    without = gaps_without(work.q, columns, work.z)
+    if found is None or not np.isfinite(without).any():
+        return None
+    row = int(np.nanargmax(np.abs(without - found.gap_max)))
+    now, then = found.gap_max * work.lean, float(without[row]) * work.lean
+    reading = f"without row {{row}} the left-over bend would be up to {show(then, names.y_unit)}, not {show(now)}"
+    asked = "which row makes most of the left-over bend, or hides it?"
+    return Check("loudest row: left-over bend", "rows", asked, then - now, names.y_unit, reading, row=row)
 
 
 def _of_constants(est: Estimate, names: Names, unnamed: tuple[str, ...]) -> Iterator[Check]:
