@@ -77,20 +77,22 @@ class Found:
         self.wrong += other.wrong
 
 
-def examined(case: Case, only: Sequence[str] | None = None) -> Examination:
+def examined(case: Case, only: Sequence[str] | None = None, *, frame: pd.DataFrame | None = None) -> Examination:
     """The examination of a case; few folds, since held-out errors are no part of a script."""
     return batten.examine(
-        case.formula, case.frame(), focus=case.focus, frame_name=case.name, folds=3, repeats=1,
-        only=list(only) if only else None,
+        case.formula, case.frame() if frame is None else frame, focus=case.focus, frame_name=case.name,
+        folds=3, repeats=1, only=list(only) if only else None,
     )  # fmt: skip
 
 
-def compare(exam: Examination, case: Case, engines: Sequence[str] = ENGINES) -> Found:
-    """Every remedy of the examination under each engine."""
+def compare(
+    exam: Examination, case: Case, engines: Sequence[str] = ENGINES, *, keys: Sequence[str] | None = None
+) -> Found:
+    """Every remedy of the examination, or these, under each engine."""
     found, table = Found(), exam.table()
     page = _Page(static_html(exam, figure="<p></p>"))
     rows = dict(zip(exam, page.rows_of("held-out rows within 10%"), strict=True))
-    for key in exam:
+    for key in exam if keys is None else keys:
         _page_row(found, f"{case.name}, {key}", key, rows[key], table.loc[key])
         for engine in engines:
             _remedy(found, case, exam, key, engine, rows[key])
@@ -134,8 +136,8 @@ answer = predict(some)
 along = [predict(used.assign(**{{{case.focus!r}: at}}))["mean"].mean() for at in {list(asked)!r}]
 level = {{name: value for name, value in globals().items() if name.startswith("T9")}}
 quantile = float(*level.values())
-spread = np.cov((without - b).T, ddof=0) if "without" in globals() else fit.cov_params().to_numpy()
-spread = ((without - b).T @ (without - b)) if "without" in globals() else spread
+moves = without[:, : len(b)] - b if "without" in globals() else np.zeros((0, len(b)))
+spread = moves.T @ moves if len(moves) else fit.cov_params().to_numpy()
 names = list(table.index)
 """
 
@@ -379,6 +381,7 @@ class _Page(HTMLParser):
         self._cell = self._cell and tag not in ("td", "th")
 
     def handle_data(self, data: str) -> None:
+        data = data.replace("\N{NON-BREAKING HYPHEN}", "-").replace("\N{NO-BREAK SPACE}", " ")
         self.pieces.append(data)
         if self._cell:
             self.tables[-1][-1][-1] += data

@@ -184,11 +184,11 @@ def test_comments_say_which_rows_and_errors() -> None:
     told = _introduced(write("log y ~ x", FORMULA, data).lines)
     assert told == (
         'minutes ~ mass_kg + C(alloy) + depth, remedy "log y ~ x": log of minutes on mass_kg. '
-        "`castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. "
-        "Errors: robust (HC3), as if this remedy had been fixed in advance."
+        "`castings` (pandas): 57 of 60 rows used; left out: 2 infinite depth, 1 missing mass_kg. Errors: robust (HC3)."
     )
-    planned = _introduced(write("log y ~ x", FORMULA, foundry(60), planned="log y ~ x").lines)
-    assert planned.endswith("`castings` (pandas): all 60 rows used. Errors: robust (HC3).")
+    fixed = "degrees of freedom, as if this remedy had been fixed in advance\n"
+    assert fixed in write("log y ~ x", FORMULA, data).source
+    assert fixed not in write("log y ~ x", FORMULA, data, planned="log y ~ x").source
 
 
 def _introduced(lines: list[str]) -> str:

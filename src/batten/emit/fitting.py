@@ -64,8 +64,6 @@ def _ols(parts: Parts) -> list[str]:
         "b": f"np.append(fit.params, {zeros})" if parts.searched else "fit.params.to_numpy()",
     }  # fmt: skip
     names = ["X", "z", "e", "b"]
-    if parts.power:
-        names.remove("b")
     if parts.kind == "identity":
         names.remove("z")
     code = f"{', '.join(names)} = {', '.join(values[name] for name in names)}"
@@ -80,7 +78,7 @@ def _ols(parts: Parts) -> list[str]:
     if not parts.power:
         return lines
     weight = "np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "out / e"
-    return [*lines, *power_moves(weight, f"{_zeros(parts)}, " if parts.searched else "")]
+    return [*lines, *power_moves(weight)]
 
 
 def _fit(parts: Parts) -> list[str]:

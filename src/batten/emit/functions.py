@@ -205,21 +205,17 @@ def _limits(parts: Parts) -> str:
     if parts.link:
         return ""
     low, high = parts.est.scale.limits(parts.est.c)
-    eta = f"N @ {_b(parts)}"
+    eta = "N @ b"
     above = f"({eta} > {low:.17g})" if low > -float("inf") else ""
     below = f"({eta} < {high:.17g})" if high < float("inf") else ""
     return " & ".join(part for part in (above, below) if part)
-
-
-def _b(parts: Parts) -> str:
-    return "b[:-2]" if parts.power else "b"
 
 
 def _targets(parts: Parts) -> str:
     """Median, mean and the ends of the interval."""
     if parts.link:
         return '"median": mean * np.median(y / mu), "mean": mean, "low": low, "high": high'
-    eta = f"N @ {_b(parts)}"
+    eta = "N @ b"
     mean = {"identity": eta, "exp": f"np.exp({eta}) * smear"}.get(parts.kind, f"mean({eta}, e)")
     return f'"median": {undo(parts, f"{eta} + np.median(e)")}, "mean": {mean}, "low": low, "high": high'
 
@@ -232,9 +228,9 @@ def _new_row(parts: Parts) -> list[str]:
         own = "1" if parts.est.spread is None else f"{root_of('N')} ** -2"
         half = f"{parts.t_name} * np.sqrt(s2 * ({own} + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
         lines = [f"    half = {half}"]
-        ends = f"np.array([N @ {_b(parts)} - half, N @ {_b(parts)} + half])"
+        ends = "np.array([N @ b - half, N @ b + half])"
     elif parts.many:
-        ends = f"np.add.outer(np.sort(out)[[{first}, {last}]], N @ {_b(parts)})"
+        ends = f"np.add.outer(np.sort(out)[[{first}, {last}]], N @ b)"
         if parts.est.spread is not None:
             ends = f"N @ b + np.sort(out)[[{first}, {last}]][:, None] / {root_of('N')}"
     else:

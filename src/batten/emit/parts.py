@@ -100,6 +100,11 @@ class Parts:
         return bool(self.est.remedy.left.searched)
 
     @property
+    def parameters(self) -> str:
+        """Name of all that was estimated: the coefficients b, or p with a searched power of y."""
+        return "p" if self.power else "b"
+
+    @property
     def robust(self) -> bool:
         return self.question.errors == "robust"
 
@@ -151,8 +156,7 @@ class Parts:
         """Whether the script decomposes the design itself, where refits by statsmodels do not serve or take long."""
         if self.link:
             return self.alone or self.kind == "invlink"  # whose slope is falling, which statsmodels leaves out
-        # at a break's corner the fit does not minimise the linear one's squares, so no refit of that would serve
-        rough = bool(self.searched) and (self.est.shape.corners or self.power or self.est.n > FEW or self.mixed)
+        rough = bool(self.searched) and (self.power or self.est.n > FEW or self.mixed or not self.level_there)
         rough = rough or self.alone or self.uneven or self.weighted
         return rough or not self.ordered or (self.many and self.uses_without)
 
@@ -188,6 +192,17 @@ class Parts:
     def uneven(self) -> bool:
         """Whether columns differ so much in size that a pseudo-inverse (statsmodels' default) loses digits."""
         return not self.link and self._spread_of_sizes(len(self.est.coef)) > 1e6
+
+    @cached_property
+    def level_there(self) -> bool:
+        """Whether the fit also has the smallest squares of the linear one around it, so that refits of that serve.
+
+        At a corner of the squares, where a break lies on a row, it has not.
+        """
+        step = (
+            np.linalg.solve(self.est.factored.r, self.est.factored.q.T @ self.est.residual) / self.est.factored.length
+        )
+        return bool((np.abs(step) <= 1e-11 * np.linalg.norm(self.est.moves(), axis=0)[: len(step)]).all())
 
     @cached_property
     def mixed(self) -> bool:

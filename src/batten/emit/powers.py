@@ -7,7 +7,7 @@ from batten.emit.text import docstring
 
 __all__ = ["power_functions", "power_moves"]
 
-_HELD = "its place and stretch at m, the median of y, kept as LAMBDA has them"
+_HELD = "its place and stretch at m, the median of y, as under LAMBDA"
 _BACK = "Back to {y}; beyond the scale's limit 0 or infinite."
 
 
@@ -85,16 +85,16 @@ def _likelihood(parts: Parts) -> list[str]:
     ]
 
 
-def power_moves(weight: str, zeros: str) -> list[str]:
-    """b and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
+def power_moves(weight: str) -> list[str]:
+    """p and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
 
-    weight: source of what leaving a row out makes of its score. zeros: the coefficients of searched constants.
+    weight: source of what leaving a row out makes of its score.
     """
     return [
         "# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each row",
-        f"b = np.array([*fit.params, {zeros}LAMBDA, np.log(e @ e / len(e))])",
+        "p = np.array([*b, LAMBDA, np.log(e @ e / len(e))])",
         'step = 1e-5 * np.array([*table["std_error"], 1, 1])',
-        "score, curved = approx_fprime_cs(b, likelihood), approx_hess_cs(b, lambda p: likelihood(p).sum(), step)",
-        f"without = b + (np.linalg.solve(curved, score.T) * {weight}).T",
+        "score, curved = approx_fprime_cs(p, likelihood), approx_hess_cs(p, lambda p: likelihood(p).sum(), step)",
+        f"without = p + (np.linalg.solve(curved, score.T) * {weight}).T",
         "slope = bent(LAMBDA + 1e-20j).imag * 1e20  # of the scale in LAMBDA (Squire and Trapp 1998)",
     ]

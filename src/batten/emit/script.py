@@ -17,6 +17,8 @@ from batten.frame.problem import Problem
 
 __all__ = ["script"]
 
+_FIXED = "as if this remedy had been fixed in advance"
+
 
 def script(problem: Problem, question: Question, estimate: Estimate) -> str:
     """Source that runs on numpy, pandas, statsmodels and matplotlib where a data frame of the user's name exists.
@@ -40,7 +42,7 @@ def _header(parts: Parts) -> list[str]:
     p, remedy = parts.problem, parts.est.remedy
     words = remedy.words(parts.y, parts.x)
     kind = "robust (HC3)" if parts.robust else "of one size for all rows"
-    kind += "" if parts.question.planned == remedy.key else ", as if this remedy had been fixed in advance"
+    kind += "" if parts.question.planned == remedy.key or _uses_t(parts) else f", {_FIXED}"
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
         f"`{parts.frame}` (pandas): {_rows_words(parts)} Errors: {kind}.",
@@ -89,6 +91,7 @@ def _constants(parts: Parts) -> list[str]:
         meaning = f"the question: rows at {parts.x} {b:.6g}{' ' + said(unit) if unit else ''} against rows at {a:.6g}"
         lines += constant("SPAN", f"({number(a)}, {number(b)})", meaning)
     meaning = f"t quantile for {parts.percent} on {parts.est.df_error} degrees of freedom"
+    meaning += "" if parts.question.planned == parts.est.remedy.key else f", {_FIXED}"
     if _uses_t(parts):
         lines += constant(parts.t_name, number(parts.t_quantile), meaning)
     return [*lines, *_model(parts)]
@@ -134,7 +137,7 @@ def _picture(parts: Parts) -> list[str]:
     units = [said(p.unit(p.focus)), said(p.unit(p.response))]
     names = [f"{name} ({unit})" if unit else name for name, unit in zip((parts.x, parts.y), units, strict=True)]
     x_label, y_label = (literal(name.replace("$", r"\$")) for name in names)
-    labels = f'color="0.6", xlabel={x_label}, ylabel={y_label}'
+    labels = f'c="0.6", xlabel={x_label}, ylabel={y_label}'
     title = f"{parts.percent} of rows like the first" if p.covariates else f"{parts.percent} of further rows"
     others = "  # covariates as in the first row used" if p.covariates else ""
     return [

@@ -25,7 +25,13 @@ def span(parts: Parts) -> list[str]:
         return comment(f"No effect over the span: {said(note, 200)}.")
     if not parts.bounded:
         why = comment(f"Change of the mean over SPAN; {said(parts.numbers.span.difference.note, 200)}.")
-        return [*why, *_ends(parts), *_function(parts), "effect = difference(b)", *_told(parts)]
+        return [
+            *why,
+            *_ends(parts),
+            *_function(parts),
+            f"effect = difference({parts.parameters})",
+            *_told(parts),
+        ]
     how = _tested(parts) if parts.tested else _deleted(parts) if parts.deletes else _linearised(parts)
     return [*comment(_introduction(parts)), *_ends(parts), *how, *_told(parts)]
 
@@ -93,12 +99,19 @@ def _deleted(parts: Parts) -> list[str]:
             f"np.delete({each}, i).mean() for i, w in enumerate(without)")  # fmt: skip
         return [f"each = [{each}]", *wrapped(f"effect, half = ({gap}).mean(), {half.replace('EACH', 'each')}")]
     each = "each = [difference(w, i) for i, w in enumerate(without)]"
-    return [*_function(parts), each, f"effect, half = difference(b), {half.replace('EACH', 'each')}"]
+    return [
+        *_function(parts),
+        each,
+        f"effect, half = difference({parts.parameters}), {half.replace('EACH', 'each')}",
+    ]
 
 
 def _function(parts: Parts) -> list[str]:
     """difference(b, i): the effect under coefficients b, averaged over the rows but row i."""
-    return [f"def difference(b{', i=()' if parts.deletes else ''}):", *_difference(parts, deletes=parts.deletes)]
+    return [
+        f"def difference({parts.parameters}{', i=()' if parts.deletes else ''}):",
+        *_difference(parts, deletes=parts.deletes),
+    ]
 
 
 def _difference(parts: Parts, *, deletes: bool) -> list[str]:
@@ -112,8 +125,8 @@ def _difference(parts: Parts, *, deletes: bool) -> list[str]:
     if parts.link:
         gap = f"{undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}"
         return [f"    return {by_row.format(gap)}.mean()"]
-    e = "z + (b[-2] - LAMBDA) * slope - X @ b[:-2]" if parts.power else "z - X @ b"
-    low, high = (f"mean({end} @ b[:-2], e, b[-2])" if parts.power else f"mean({end} @ b, e)" for end in "AB")
+    e = "z + (p[-2] - LAMBDA) * slope - X @ p[:-2]" if parts.power else "z - X @ b"
+    low, high = (f"mean({end} @ p[:-2], e, p[-2])" if parts.power else f"mean({end} @ b, e)" for end in "AB")
     return [f"    e = {by_error.format(e)}", f"    return {by_row.format(f'{high} - {low}')}.mean()"]
 
 
@@ -127,14 +140,14 @@ def _linearised(parts: Parts) -> list[str]:
         return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half}"]
     lines, own = _slopes(parts)
     if parts.robust:
-        total = " + ".join(["len(y) * (b - without) @ pull", *own])
+        total = " + ".join([f"len(y) * ({parts.parameters} - without) @ pull", *own])
         return [
             *lines,
             *wrapped(f"influence = {total}"),
             f"half = {parts.t_name} * np.sqrt((influence**2).sum()) / len(y)",
         ]
     if parts.power:
-        spread = "(((without - b) @ pull) ** 2).sum()"
+        spread = "(((without - p) @ pull) ** 2).sum()"
     else:
         spread = "s2 * (np.linalg.solve(R.T, pull) ** 2).sum()" if parts.needs_s2 else "pull @ cov @ pull"
     if own:
@@ -169,13 +182,14 @@ def _slopes(parts: Parts) -> tuple[list[str], list[str]]:
 
 
 def _numeric_slopes(parts: Parts) -> tuple[list[str], list[str]]:
-    moves = "without - b" if parts.robust or parts.power else "np.linalg.solve(R, Q.T * e).T"
+    b = parts.parameters
+    moves = f"without - {b}" if parts.robust or parts.power else "np.linalg.solve(R, Q.T * e).T"
     lines = [
         *_function(parts),
-        "effect = difference(b)",
+        f"effect = difference({parts.parameters})",
         f"steps = 1e-4 * np.sqrt((({moves}) ** 2).sum(axis=0))",
-        "pull = np.array([difference(b + d) - difference(b - d) for d in np.diag(steps)]) / (2 * steps)",
-        f"low, high = (N @ {'b[:-2]' if parts.power else 'b'} for N in (A, B))",
+        f"pull = np.array([difference({b} + d) - difference({b} - d) for d in np.diag(steps)]) / (2 * steps)",
+        "low, high = (N @ b for N in (A, B))",
     ]
     own = ["mean(e, high) - mean(e, low) - effect"]
     return lines, own if parts.fixed else [*own, "mean(high, e) - mean(low, e) - effect"]
