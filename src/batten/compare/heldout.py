@@ -282,8 +282,10 @@ def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
         mask = masks(rows.count, [split.test for split in some])
         mask = mask if rows.weights is None else mask * rows.weights
         done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, steps=steps)
-        if (steps > 1 and not done.settled.all()) or not np.isfinite(done.eta).all():
+        if not np.isfinite(done.eta).all():
             return _rank(shape.key)
+        if steps > 1 and not done.settled.all():
+            return _unsettled(est)
         mu = link.mean(done.eta)
         if not np.isfinite(mu).all():
             return _unsafe(est)
@@ -348,6 +350,14 @@ def _fewer(shape: str) -> Refusal:
         wrong="One training set has too few different values for this remedy.",
         seen=f"{shape} loses a knot or a group when a tenth of the rows is held out.",
         instead="Fewer knots or groups, or edges given by hand: bins(10, 20) x.",
+    )
+
+
+def _unsettled(est: Estimate) -> Refusal:
+    return Refusal(
+        wrong="The fit of this mean model does not settle in every training set.",
+        seen=f"With a tenth of the rows held out a coefficient of {est.remedy.key} runs away.",
+        instead="A scale of y (log y, sqrt y), fewer columns, or merge levels that few rows have.",
     )
 
 

@@ -216,12 +216,17 @@ def solve_means(model: Mean, x: Array, y: Array, mask: Array, start: Array, *, s
     def deviance(b: Array) -> tuple[Array, Array]:
         eta = np.matmul(unit, b[:, :, None])[:, :, 0]
         with np.errstate(all="ignore"):
-            return eta, (model.deviance(np.broadcast_to(y, eta.shape), model.mean(eta)) * mask).sum(axis=1)
+            total = (model.deviance(np.broadcast_to(y, eta.shape), known(model.mean(eta))) * mask).sum(axis=1)
+        return eta, total
+
+    def known(mu: Array) -> Array:
+        """A held-out row may have no mean; it counts for nothing, so any number will do."""
+        return mu if np.isfinite(mu).all() else np.where((mask == 0) & ~np.isfinite(mu), 1.0, mu)
 
     eta, now = deviance(b)
     settled = np.zeros(count, dtype=bool)
     for _ in range(steps):
-        mu, slope = model.mean(eta), model.slope(eta)
+        mu, slope = known(model.mean(eta)), known(model.slope(eta))
         weight = slope / model.variance(mu) * mask
         left = unit.transpose(0, 2, 1)
         cross = np.matmul(left, unit * (weight * slope)[:, :, None])

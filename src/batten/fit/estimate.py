@@ -97,9 +97,14 @@ class Estimate:
 
     @property
     def aicc(self) -> float:
-        """AICc in units of y (Hurvich and Tsai 1989); NaN for pseudo-likelihoods, with clusters, and for few rows."""
+        """AICc in units of y (Hurvich and Tsai 1989).
+
+        NaN for pseudo-likelihoods, with clusters, for few rows, and where cuts were searched: a jump that was looked
+        for is worth more than the one parameter it counts.
+        """
         k, n = self.parameters, self.n
-        if self.log_likelihood is None or self.clusters is not None or n - k - 1 <= 0:
+        cut = self.shape.steps and bool(self.theta)
+        if self.log_likelihood is None or self.clusters is not None or cut or n - k - 1 <= 0:
             return float("nan")
         return -2 * self.log_likelihood + 2 * k + 2 * k * (k + 1) / (n - k - 1)
 
