@@ -46,3 +46,19 @@ def test_script_gives_the_numbers_of_the_fit(key: str, design: str) -> None:
     written = write(key, DESIGNS[design].format(y=response), data)
     assert max(map(len, written.lines)) <= 120
     agrees(written, data)
+
+
+@pytest.mark.parametrize("errors", ["robust", "constant"])
+@pytest.mark.parametrize(
+    ("key", "design"),
+    [
+        ("loglink y ~ hinge x", "beside a factor"), ("loglink y ~ x^p", "alone"), ("loglink y ~ fp2 x", "alone"),
+        ("loglink-gamma y ~ hinge x", "crossed with a factor"), ("share y ~ hinge x", "beside a factor"),
+        ("loglink-gaussian y ~ cut x", "alone"), ("invlink-gamma y ~ x^p", "beside a factor"),
+    ],
+)  # fmt: skip
+def test_links_take_shapes_whose_constants_are_searched(key: str, design: str, errors: str) -> None:
+    data = foundry()
+    response = {"share": "scrap", "invlink-gamma": "rate"}.get(key.split()[0], "minutes")
+    # under constant errors the fit's gradients are central differences
+    agrees(write(key, DESIGNS[design].format(y=response), data, errors=errors), data, rtol=1e-8)

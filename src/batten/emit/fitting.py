@@ -56,13 +56,12 @@ def _ols(parts: Parts) -> list[str]:
     lines = ["m = np.median(y)"] if parts.power else []
     lines += _fit(parts)
     w = "w" if parts.weighted else ""
-    zeros = _zeros(parts) if len(parts.searched) < 2 else f"[{_zeros(parts)}]"
     values = {
-        "X": "design(used)" if parts.searched else f"fit.model.{w}exog",
+        "X": _design_of_rows(parts),
         "z": f"fit.model.{w}endog",
         "e": f"fit.{w}resid.to_numpy()",
-        "b": f"np.append(fit.params, {zeros})" if parts.searched else "fit.params.to_numpy()",
-    }  # fmt: skip
+        "b": _coefficients(parts),
+    }
     names = ["X", "z", "e", "b"]
     if parts.kind == "identity":
         names.remove("z")
@@ -96,8 +95,16 @@ def _fit(parts: Parts) -> list[str]:
     return wrapped(f"{fit}.fit()")
 
 
-def _zeros(parts: Parts) -> str:
-    return ", ".join(["0.0"] * len(parts.searched))
+def _design_of_rows(parts: Parts) -> str:
+    return "design(used)" if parts.searched else "fit.model.wexog" if parts.weighted else "fit.model.exog"
+
+
+def _coefficients(parts: Parts) -> str:
+    """Coefficients; those of searched constants are 0, since the fit is linear around what was found."""
+    if not parts.searched:
+        return "fit.params.to_numpy()"
+    zeros = ", ".join(["0.0"] * len(parts.searched))
+    return f"np.append(fit.params, {zeros if len(parts.searched) == 1 else f'[{zeros}]'})"
 
 
 def _deletions(parts: Parts) -> list[str]:
@@ -137,7 +144,7 @@ def _glm(parts: Parts) -> list[str]:
     if parts.kind == "invlink":
         warned = 'warnings.filterwarnings("ignore", "The InversePower link")'
         lines = [f"{warned}  # it warns of means below zero; here all lie above", *lines]
-    lines.append("X, b, mu = fit.model.exog, fit.params.to_numpy(), fit.mu")
+    lines.append(f"X, b, mu = {_design_of_rows(parts)}, {_coefficients(parts)}, fit.mu")
     why = "each row left out by a Newton step: GLM's HC3 is HC0"
     if parts.triangle:
         lines += [
@@ -146,6 +153,8 @@ def _glm(parts: Parts) -> list[str]:
             f"# {why}",
             f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T",
         ]
+        if parts.needs_s2:
+            lines.append(f"s2 = score @ score / {parts.est.df_residual}")
     else:
         lines += noted("without = b - fit.get_influence(observed=False).d_params", why)
     lines.append(

@@ -148,14 +148,15 @@ class Parts:
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
         if self.link:
-            return self.robust
+            return self.robust or bool(self.searched)
         return bool(self.searched) or self.alone or self.uneven or self.weighted
 
     @property
     def triangle(self) -> bool:
         """Whether the script decomposes the design itself, where refits by statsmodels do not serve or take long."""
         if self.link:
-            return self.alone or self.kind == "invlink"  # whose slope is falling, which statsmodels leaves out
+            # statsmodels takes the slope of an inverse link, which falls, as rising
+            return self.alone or self.kind == "invlink" or bool(self.searched)
         rough = bool(self.searched) and (self.power or self.est.n > FEW or self.mixed or not self.level_there)
         rough = rough or self.alone or self.uneven or self.weighted
         return rough or not self.ordered or (self.many and self.uses_without)
@@ -163,7 +164,7 @@ class Parts:
     @property
     def needs_s2(self) -> bool:
         """Whether the error variance on the fitting scale is used."""
-        return not self.link and not self.ordered
+        return (bool(self.searched) and not self.robust) if self.link else not self.ordered
 
     @property
     def steady(self) -> bool:
