@@ -18,6 +18,7 @@ from batten.fit.means import means_at_rows
 KEYS = [
     "y ~ x", "log y ~ log x", "sqrt y ~ x", "boxcox y ~ sqrt x", "y ~ poly3 x", "log y ~ spline4 x", "y ~ bins3 x",
     "y ~ hinge x", "y ~ x^p", "log y ~ fp1 x", "y ~ level-hyp x", "loglink y ~ x", "loglink-gamma y ~ spline4 x",
+    "y ~ smooth x", "log y ~ smooth x",
 ]  # fmt: skip
 
 

@@ -84,6 +84,7 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
     return np.concatenate([
         [shown.rows],
         [] if np.linalg.cond(est.factored.r) > 1e8 else np.column_stack([shown.coef, shown.error]).ravel(),
+        [] if shown.edf is None else [shown.edf],
         [] if shown.smear is None else [shown.smear],
         [v for v in (span.estimate, (span.high - span.low) / 2) if np.isfinite(v)],
         shown.prediction,

@@ -24,14 +24,13 @@ RESPONSES = {
 
 LEFTS = [m.key for m in (*scales(), *links())] + ["boxcox(0.3) y", "yeojohnson(0.5) y"]
 RIGHTS = [m.key for m in shapes()] + ["poly3 x", "bins(20, 40) x", "spline(10, 30, 50) x", "hinge(25) x", "x^0.3"]
-NOT_OFFERED = {"smooth x"}
 
 
 def _pairs() -> list[tuple[str, str]]:
     """Every left side with x, every right side with y, every curve, each in turn through the designs."""
     names = list(DESIGNS)
     keys = [f"{left} ~ x" for left in LEFTS]
-    keys += [f"y ~ {right}" for right in RIGHTS if right not in NOT_OFFERED]
+    keys += [f"y ~ {right}" for right in RIGHTS]
     keys += [f"log y ~ {right}" for right in ("log x", "hinge x", "spline4 x", "bins5 x", "x^p", "fp2 x")]
     one = [(key, names[i % len(names)]) for i, key in enumerate(keys)]
     # curves bring their own level, which only means something beside covariates or alone

@@ -15,6 +15,7 @@ from functools import partial
 import numpy as np
 
 from batten.compare.losses import Split, Trained, losses, losses_together
+from batten.compare.smoothed import smoothed_sets
 from batten.compare.spread import spread_losses
 from batten.engine.folds import Splits
 from batten.engine.irls import Mean
@@ -95,8 +96,10 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
 def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Refusal]:
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
-    precondition = group[0].factored.root
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
+    if group[0].roughness is not None:
+        return _score_smooth(group, sets, states)
+    precondition = group[0].factored.root
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
     width = len(precondition)
@@ -127,6 +130,17 @@ def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Ref
         _score(est, sets, iter(fits) if not est.scale.searched else _with_powers(est, sets, fits, bases, inverses))
         for est, fits in zip(group, trained, strict=True)
     ]
+
+
+def _score_smooth(group: list[Estimate], sets: list[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
+    """All scales of one penalised shape."""
+    trained: list[list[Trained]] = [[] for _ in group]
+    for fit in smoothed_sets(group, states, [split.test for split in sets]):
+        if fit is None:
+            return [_rank(group[0].shape.key)] * len(group)
+        for j, est in enumerate(group):
+            trained[j].append(Trained(fit.eta[:, j], est.c, fit.v[:, j], float(fit.edf[j])))
+    return [_score(est, sets, iter(fits)) for est, fits in zip(group, trained, strict=True)]
 
 
 def _with_powers(

@@ -32,7 +32,7 @@ class Trained:
     eta: Array
     c: Constants
     v: Array
-    columns: int
+    columns: float
 
 
 def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Array | None:

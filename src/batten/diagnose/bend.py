@@ -112,7 +112,7 @@ def _add_on(est: Estimate) -> tuple[float, float, tuple[int, int]]:
     if not (size > 0).all() or len(bending) > est.df_error:  # as many clusters as columns leave no test
         return _NO_TEST
     f = float((b / size) @ np.linalg.solve(v / np.outer(size, size), b / size)) / len(bending)
-    df = (len(bending), est.df_error)
+    df = (len(bending), int(est.df_error))
     return f, float(fisher.sf(f, *df)), df
 
 
@@ -145,7 +145,7 @@ def bend_of(reference: Flexible, est: Estimate, *, level: float = 0.95) -> Bend 
     return Bend(reference.places, gap, error, float(size[at]), float(reference.places[at]), low, high, t, verdict)
 
 
-def _critical(covariance: Array, level: float, df: int) -> float:
+def _critical(covariance: Array, level: float, df: float) -> float:
     """Quantile of the largest standardised deviation along the curve, by seeded draws of the limiting process."""
     if not len(covariance):
         return 0.0
@@ -160,7 +160,7 @@ def _critical(covariance: Array, level: float, df: int) -> float:
 
 
 @lru_cache(maxsize=8)
-def _draws(df: int) -> tuple[Array, Array]:
+def _draws(df: float) -> tuple[Array, Array]:
     """Standard normal draws (DRAWS, PLACES) and the root of chi-square over df (DRAWS,), the same in every call."""
     rng = np.random.default_rng(20)
     return rng.standard_normal((DRAWS, PLACES)), np.sqrt(rng.chisquare(df, DRAWS) / df)

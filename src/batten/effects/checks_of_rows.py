@@ -114,7 +114,7 @@ def _left_out(est: Estimate, span: tuple[float, float]) -> tuple[Array | None, f
     if ends.left_out is not None:
         moved = (ends.left_out[:, 1] - ends.left_out[:, 0]) - difference
     else:  # to first order: a row's influence with its sign turned
-        moved = -(ends.root[:, 1] - ends.root[:, 0])
+        moved = -(ends.by_row[:, 1] - ends.by_row[:, 0])
     return moved if est.clusters is None else moved[est.clusters.code], difference
 
 

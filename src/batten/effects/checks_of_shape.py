@@ -29,10 +29,16 @@ RESAMPLES = 999
 
 
 def checks_of_shape(est: Estimate, work: Working, names: Names, *, errors: str, every: bool) -> Iterator[Check | None]:
-    """The spline's bends come first: the one test fixed beforehand. every: also those that repeat a question."""
-    yield _bend(est, work, names, errors)
+    """The spline's bends come first: the one test fixed beforehand. every: also those that repeat a question.
+
+    A penalised curve holds that spline's bends, only held back: beside it no test of the shape along x says anything.
+    """
+    smooth = est.roughness is not None
+    if not smooth:
+        yield _bend(est, work, names, errors)
     yield _powers_of_fit(est, work, names, errors)
-    yield _repeats(est, work, names)
+    if not smooth:
+        yield _repeats(est, work, names)
     yield _same_shape(est, work, names, errors)
     hinge, alone = isinstance(est.shape, Hinge), est.rows.modifier.shape[1] == 1
     if est.link is None and est.theta and alone and not est.remedy.left.searched:
@@ -45,6 +51,7 @@ def checks_of_shape(est: Estimate, work: Working, names: Names, *, errors: str, 
     if every:
         other, how = ("constant", "even spread") if errors == "robust" else ("robust", "any spread")
         yield _powers_of_fit(est, work, names, other, how=how)
+    if every and not smooth:
         yield _in_turn(est, work, names)
         yield _middle(est, work, names)
 

@@ -16,6 +16,7 @@ from scipy.stats import f as fisher
 from scipy.stats import norm as normal
 
 from batten.effects.profile import Profile, profile_of_power, profile_of_shape
+from batten.effects.smoothing import curve_freedom, freedom_note
 from batten.engine.linear import factor, solve
 from batten.engine.rows import Array
 from batten.families.base import Code, Constants
@@ -62,7 +63,8 @@ class Constant:
 def learned_constants(est: Estimate, *, x: str = "x", y: str = "y", level: float = 0.95) -> tuple[Constant, ...]:
     """Searched constants first, then a curve's own coefficients, then fixed facts; x, y: names for the words."""
     searched = _searched(est, x, y, level)
-    return (*searched, *_of_spread(est, y, level), *_curve_levels(est, x, searched, level), *_facts(est, x, y))
+    found = (*searched, *_of_spread(est, y, level), *_curve_levels(est, x, searched, level), *_freedom(est))
+    return (*found, *_facts(est, x, y))
 
 
 def _searched(est: Estimate, x: str, y: str, level: float) -> tuple[Constant, ...]:
@@ -188,6 +190,12 @@ def _reach(est: Estimate, k: int, side: float, limit: float) -> float:
         options={"xatol": 1e-9, "fatol": 1e-12 * max(abs(float(est.coef[k])), 1e-300), "maxiter": 4000},
     )  # fmt: skip
     return float(-side * found.fun)
+
+
+def _freedom(est: Estimate) -> tuple[Constant, ...]:
+    if est.roughness is None:
+        return ()
+    return (Constant("degrees of freedom of the curve", "fixed", curve_freedom(est)[0], note=freedom_note(est)),)
 
 
 def _facts(est: Estimate, x: str, y: str) -> tuple[Constant, ...]:

@@ -77,7 +77,10 @@ def _ends(est: Estimate, group: Group, span: tuple[float, float], *, of: str, er
 
 def _joined(one: Averaged, two: Averaged) -> Averaged:
     """Two sets of values of one estimate beside each other; rows of their roots belong to the same rows of the data."""
-    left = None
+    left, bias = None, None
     if one.left_out is not None and two.left_out is not None:
         left = np.hstack([one.left_out, two.left_out])
-    return Averaged(np.concatenate([one.value, two.value]), np.hstack([one.root, two.root]), left, one.df)
+    if one.bias is not None and two.bias is not None:
+        bias = np.hstack([one.bias, two.bias])
+    value, by_row = np.concatenate([one.value, two.value]), np.hstack([one.by_row, two.by_row])
+    return Averaged(value, by_row, left, one.df, bias=bias)

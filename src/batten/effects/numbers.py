@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import math
 
-__all__ = ["about", "place", "show", "show_interval"]
+__all__ = ["about", "counted", "place", "show", "show_interval"]
 
 
 def show(value: float, unit: str = "", *, width: float | None = None) -> str:
@@ -31,6 +31,11 @@ def show_interval(low: float, high: float, unit: str = "") -> str:
     """Both ends with the same digits: "10.1 to 14.7 min"."""
     first = show(low, width=high - low)
     return f"{first} to {show(high, unit, width=high - low)}"
+
+
+def counted(value: float) -> str:
+    """Constants or degrees of freedom: "12", or "8.3" where a penalty makes them effective ones."""
+    return f"{value:,.0f}" if value == round(value) else f"{value:,.1f}"
 
 
 def place(value: float, unit: str = "") -> str:

@@ -11,10 +11,13 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.stats import f as fisher
 
+from batten.diagnose.bend import knots_for
 from batten.effects.contrast import SpanEffect, span_effect
 from batten.effects.tell import Names, Sentence, Told
 from batten.engine.rows import Array, Rows
 from batten.errors import Refusal
+from batten.families.remedy import Remedy
+from batten.families.shapes.spline import Spline
 from batten.fit.estimate import Estimate
 from batten.fit.fitting import estimate
 from batten.fit.spread import given_rows
@@ -52,8 +55,17 @@ def own_shapes(
             own, span, of=of, level=level, errors=errors, base=rows.base[some], modifier=rows.modifier[some]
         ) for some in members
     ]  # fmt: skip
-    f, df = _wald(own, np.array([rows.modifier[some].mean(axis=0) for some in members]), errors)
+    f, df = _wald(_tested(own), np.array([rows.modifier[some].mean(axis=0) for some in members]), errors)
     return OwnShapes(tuple(groups), tuple(spans), f, df, float(fisher.sf(f, *df)))
+
+
+def _tested(own: Estimate) -> Estimate:
+    """The fit whose coefficients are tested: for penalised curves splines with the usual knots, which nothing holds
+    back."""
+    if own.roughness is None:
+        return own
+    plain = estimate(own.rows, Remedy(own.remedy.left, Spline(knots_for(own.n))))
+    return own if isinstance(plain, Refusal) else plain
 
 
 def _crossed(rows: Rows, marks: Array) -> Rows:
@@ -82,7 +94,7 @@ def _wald(est: Estimate, modifiers: Array, errors: str) -> tuple[float, tuple[in
     gap = pull @ est.coef[focal]
     covariance = pull @ est.covariance(errors)[focal, focal] @ pull.T
     size = np.sqrt(np.diagonal(covariance))
-    df = (len(gap), est.df_error)
+    df = (len(gap), int(est.df_error))
     if not (size > 0).all() or len(gap) > est.df_error:
         return float("nan"), df
     unit = covariance / np.outer(size, size)

@@ -33,7 +33,7 @@ class PercentOfDummy:
     std_error_approximate: float
 
 
-def percent_of_dummy(b: float, std_error: float, *, df: int, critical: float) -> PercentOfDummy:
+def percent_of_dummy(b: float, std_error: float, *, df: float, critical: float) -> PercentOfDummy:
     """Readings of a coefficient b of a log response with its standard error on df = n - p degrees of freedom.
 
     Plain: Halvorsen and Palmquist 1980; Kennedy 1981; exact with its variance: van Garderen and Shah 2002, with

@@ -20,6 +20,7 @@ from batten.effects.groups import Group, GroupEffect, group_effects
 from batten.effects.readings import Reading, hinge_readings, multiplies, readings
 from batten.effects.rounding import Rounding
 from batten.effects.slopes import SlopeAt, breaks, slopes_along
+from batten.effects.smoothing import smoothing_sentence
 from batten.effects.tell import UNSETTLED, Names, Sentence, Told
 from batten.effects.turn import Turn
 from batten.effects.units import unit_change
@@ -70,6 +71,8 @@ def sentences(
     if len(out) == 1 and not est.shape.steps:
         slopes = slopes_along(est, span, base=base, modifier=modifier, **asked)  # type: ignore[arg-type]
         out += place_sentence(slopes, names, of=of)
+    if est.roughness is not None:
+        out.append(smoothing_sentence(est, names))
     out += constant_sentences(learned, names)
     if turn is not None and turn.estimates:
         out.append(turn_sentence(turn, names, of=of))

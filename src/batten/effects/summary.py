@@ -57,7 +57,10 @@ def _size(est: Estimate) -> Iterator[Entry]:
         yield Entry("clusters", est.clusters.count, note="errors are taken by cluster")
     searched = est.parameters - 1 - len(est.coef)
     found = f", {searched:g} searched" if searched else ""
-    yield Entry("parameters", est.parameters, note=f"{len(est.coef)} coefficients{found}, and the spread")
+    note = f"{len(est.coef)} coefficients{found}, and the spread"
+    if est.roughness is not None:
+        note = f"effective ones: {len(est.coef)} coefficients held back by a penalty, and the spread"
+    yield Entry("parameters", est.parameters, note=note)
     yield Entry("residual degrees of freedom", est.df_residual)
 
 
@@ -134,9 +137,11 @@ def _about_constant(est: Estimate, work: Working) -> Array:
 def _overall(est: Estimate, work: Working, errors: str) -> Iterator[Entry]:
     """All predictors together against the constant alone."""
     searched = bool(est.theta) or bool(est.remedy.left.searched) or est.shape.own_level
-    found = None if searched else _all_predictors(est, work, errors)
+    smooth = est.roughness is not None
+    found = None if searched or smooth else _all_predictors(est, work, errors)
     if found is None:
         why = "a searched constant has no such test" if searched else "no such test can be made on these rows"
+        why = "a curve under a penalty has no such test" if smooth else why
         for name in ("overall F", "overall F, df", "overall F, residual df", "overall F, p"):
             yield Entry(name, math.nan, note=why)
         return

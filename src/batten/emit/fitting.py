@@ -6,6 +6,7 @@ from batten.emit.covariates import read_numbers
 from batten.emit.functions import undo
 from batten.emit.parts import Parts
 from batten.emit.powers import power_moves
+from batten.emit.smoothing import smooth_fit
 from batten.emit.text import WIDTH, literal, noted, wrapped
 from batten.emit.weights import weighted_fit
 
@@ -23,7 +24,13 @@ _LINKS = {
 
 def fitting(parts: Parts) -> list[str]:
     """From the frame to fitted coefficients and what their uncertainty needs."""
-    return [*_rows(parts), *(_glm(parts) if parts.link else _ols(parts))]
+    return [*_rows(parts), *_model_fit(parts)]
+
+
+def _model_fit(parts: Parts) -> list[str]:
+    if parts.link:
+        return _glm(parts)
+    return smooth_fit(parts) if parts.smooth else _ols(parts)
 
 
 def _chosen(parts: Parts) -> str:

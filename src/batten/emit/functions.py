@@ -11,6 +11,8 @@ from batten.emit.weights import root_function, root_of
 
 __all__ = ["functions", "undo"]
 
+#: a penalised curve's further columns, as entries of a dict
+BENDS = '**{f"s{j}": bend(x, j) for j in range(1, len(KNOTS) - 1)}'
 #: lines of a function that needs no blank line above it
 SHORT = 3
 
@@ -65,8 +67,9 @@ def _columns(parts: Parts) -> list[str]:
     else:
         lines += wrapped(f"    x = {c.focus}", 4)
     lines += [line for source in c.lines for line in wrapped(f"    {source}", 4)]
-    shape = [(name, source) for name, source in parts.shape.columns if name != "x"]
-    entries = ", ".join(f'"{name}": {source}' for name, source in [("y", "y"), ("x", "x"), *shape, *c.entries])
+    shape = [f'"{name}": {source}' for name, source in parts.shape.columns if name != "x"]
+    shape = [BENDS] if parts.smooth else shape
+    entries = ", ".join(['"y": y', '"x": x', *shape, *(f'"{name}": {source}' for name, source in c.entries)])
     clean = "replace([np.inf, -np.inf], np.nan).reset_index(drop=True)"
     return [*lines, *_returned(f"pd.DataFrame({{{entries}}})", clean)]
 

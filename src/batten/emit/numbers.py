@@ -21,14 +21,15 @@ __all__ = ["Numbers", "numbers"]
 class Numbers:
     """rows: how many the fit uses. coef, error (k,): the shape's own columns and searched constants, with standard
     errors; empty where the focal predictor stands in interactions only. smear: factor from median to mean on the log
-    scale, else None. span: the standing question's answer. prediction (4,): median, mean, low, high of one further
-    row like the last of those used.
+    scale, else None. edf: effective degrees of freedom of a penalised fit, whose coefficients are left out. span: the
+    standing question's answer. prediction (4,): median, mean, low, high of one further row like the last of those used.
     """
 
     rows: int
     coef: Array
     error: Array
     smear: float | None
+    edf: float | None
     span: SpanEffect
     prediction: Array
 
@@ -43,6 +44,7 @@ def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
         coef=shown.estimate[own],
         error=shown.error[own],
         smear=float(np.exp(est.residual).mean()) if est.link is None and est.scale.closed == "exp" else None,
+        edf=None if est.roughness is None else est.roughness.edf,
         span=span_effect(
             est, question.span, level=question.level, errors=question.errors, base=base, modifier=modifier
         ),
@@ -53,6 +55,8 @@ def numbers(problem: Problem, question: Question, est: Estimate) -> Numbers:
 def _own_columns(problem: Problem, est: Estimate) -> Ints:
     """Positions of the shape's columns that stand alone, then of its searched constants."""
     total = len(est.coef)
+    if est.roughness is not None:
+        return np.arange(0)
     alone = [m for m, name in enumerate(problem.modifier_names) if not name]
     if not alone:
         return np.arange(total, total + est.moving)

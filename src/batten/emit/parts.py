@@ -95,6 +95,11 @@ class Parts:
         return tuple(found)
 
     @property
+    def smooth(self) -> bool:
+        """Whether the curve is penalised."""
+        return self.est.roughness is not None
+
+    @property
     def power(self) -> bool:
         """Whether a power of y was searched."""
         return bool(self.est.remedy.left.searched)
@@ -175,8 +180,8 @@ class Parts:
     @property
     def tested(self) -> bool:
         """Whether the effect is a combination of coefficients for which statsmodels' own covariance serves."""
-        own = self.searched or self.deletes or self.alone or self.uneven or self.weighted or not self.ordered
-        return self.kind == "identity" and self.steady and not own
+        own = self.searched or self.deletes or self.smooth or self.alone or self.uneven or self.weighted
+        return self.kind == "identity" and self.steady and self.ordered and not own
 
     @property
     def uses_without(self) -> bool:

@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import numpy as np
 
+from batten.effects.numbers import counted
 from batten.emit.fitting import fitting
 from batten.emit.functions import functions
+from batten.emit.held import held_at
 from batten.emit.parts import Parts, read_parts
 from batten.emit.renaming import without_names
-from batten.emit.span import held_at, span
+from batten.emit.smoothing import smooth_constants
+from batten.emit.span import span
 from batten.emit.text import PLACE, WIDTH, comment, constant, literal, number, rounded, said, wrapped
 from batten.emit.weights import spread_constants
 from batten.fit.estimate import Estimate
@@ -87,10 +90,11 @@ def _constants(parts: Parts) -> list[str]:
     unit = parts.problem.unit(parts.problem.focus)
     own = *parts.shape.constants, *parts.left.constants, *spread_constants(parts), *parts.covariates.constants
     lines = [line for one in own for line in constant(*one)]
+    lines += smooth_constants(parts) if parts.smooth else []
     if not parts.numbers.span.note:
         meaning = f"the question: rows at {parts.x} {b:.6g}{' ' + said(unit) if unit else ''} against rows at {a:.6g}"
         lines += constant("SPAN", f"({number(a)}, {number(b)})", meaning)
-    meaning = f"t quantile for {parts.percent} on {parts.est.df_error} degrees of freedom"
+    meaning = f"t quantile for {parts.percent} on {counted(parts.est.df_error)} degrees of freedom"
     meaning += "" if parts.question.planned == parts.est.remedy.key else f", {_FIXED}"
     if _uses_t(parts):
         lines += constant(parts.t_name, number(parts.t_quantile), meaning)
@@ -103,20 +107,21 @@ def _uses_t(parts: Parts) -> bool:
 
 def _model(parts: Parts) -> list[str]:
     c = parts.covariates
-    shape = parts.columns[0] if len(parts.columns) == 1 else f"({' + '.join(parts.columns)})"
+    columns = ("x", "{BENDS}") if parts.smooth else parts.columns
+    shape = columns[0] if len(columns) == 1 else f"({' + '.join(columns)})"
     crossed = [m for m in c.modifiers if m]
     if c.modifiers == ["", *crossed] and len(crossed) == 1 and crossed[0] in c.terms:
         terms = [f"{shape} * {crossed[0]}", *(t for t in c.terms if t != crossed[0])]
     else:
-        terms = [f"{shape}:{m}" if m else " + ".join(parts.columns) for m in c.modifiers] + c.terms
+        terms = [f"{shape}:{m}" if m else " + ".join(columns) for m in c.modifiers] + c.terms
     right = " + ".join([*(() if c.intercept else ("0",)), *terms])
-    return _long_string("MODEL", f"{parts.response} ~ {right}")
+    return _long_string("MODEL", f"{parts.response} ~ {right}", "f" * parts.smooth)
 
 
-def _long_string(name: str, text: str) -> list[str]:
-    """A string constant, over several lines where it must."""
-    if len(f"{name} = {literal(text)}") <= WIDTH:
-        return [f"{name} = {literal(text)}"]
+def _long_string(name: str, text: str, mark: str) -> list[str]:
+    """A string constant, over several lines where it must. mark: "f" where it holds fields."""
+    if len(f"{name} = {mark}{literal(text)}") <= WIDTH:
+        return [f"{name} = {mark}{literal(text)}"]
     pieces, line = [], ""
     for word in text.split(" "):
         if len(line) + len(word) > 105:
@@ -124,7 +129,7 @@ def _long_string(name: str, text: str) -> list[str]:
             line = ""
         line += f"{word} "
     pieces.append(line.rstrip())
-    return [f"{name} = (", *(f"    {literal(piece)}" for piece in pieces), ")"]
+    return [f"{name} = (", *(f"    {mark}{literal(piece)}" for piece in pieces), ")"]
 
 
 # --- picture ----------------------------------------------------------------------------------------------------------
@@ -158,6 +163,9 @@ def _checks(parts: Parts) -> list[str]:
         names = [*(parts.columns if len(n.coef) > len(parts.searched) else ()), *parts.searched]
         got.append(f"*np.ravel(table.loc[{literal(names)}])")
         want += [rounded(v) for pair in zip(n.coef, n.error, strict=True) for v in pair]
+    if n.edf is not None:
+        got.append("edf")
+        want.append(rounded(n.edf))
     if n.smear is not None:
         got.append("smear")
         want.append(rounded(n.smear))

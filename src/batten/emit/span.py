@@ -2,17 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from keyword import iskeyword
 from typing import Any
 
 import pandas as pd
 
 from batten.emit.functions import undo
+from batten.emit.held import held_at
 from batten.emit.parts import Parts
-from batten.emit.text import comment, fstring, literal, said, wrapped
+from batten.emit.text import comment, fstring, said, wrapped
 
-__all__ = ["held_at", "span"]
+__all__ = ["span"]
 
 #: slope of a link's mean in the linear predictor, from the mean
 _LINK_SLOPES = {"loglink": "{}", "share": "{0} * (1 - {0})", "invlink": "-({}**2)"}
@@ -34,15 +33,6 @@ def span(parts: Parts) -> list[str]:
         ]
     how = _tested(parts) if parts.tested else _deleted(parts) if parts.deletes else _linearised(parts)
     return [*comment(_introduction(parts)), *_ends(parts), *how, *_told(parts)]
-
-
-def held_at(parts: Parts, value: str, others: Mapping[str, Any] | None = None) -> str:
-    """Arguments of assign() that hold the focal predictor at a value, as the user's frame has it, and others too."""
-    value = f'START + pd.to_timedelta({value}, "D")' if parts.covariates.start else value
-    entries = {parts.problem.focus: value, **{name: literal(given) for name, given in (others or {}).items()}}
-    if all(name.isidentifier() and not iskeyword(name) and name != "self" for name in entries):
-        return ", ".join(f"{name}={source}" for name, source in entries.items())
-    return f"**{{{', '.join(f'{literal(name)}: {source}' for name, source in entries.items())}}}"
 
 
 def _introduction(parts: Parts) -> str:
@@ -98,12 +88,12 @@ def _deleted(parts: Parts) -> list[str]:
         each = f"({each}).mean() for w in without" if parts.fixed else (
             f"np.delete({each}, i).mean() for i, w in enumerate(without)")  # fmt: skip
         return [f"each = [{each}]", *wrapped(f"effect, half = ({gap}).mean(), {half.replace('EACH', 'each')}")]
-    each = "each = [difference(w, i) for i, w in enumerate(without)]"
-    return [
-        *_function(parts),
-        each,
-        f"effect, half = difference({parts.parameters}), {half.replace('EACH', 'each')}",
-    ]
+    lines = ["each = [difference(w, i) for i, w in enumerate(without)]"]
+    if parts.smooth:  # to first order
+        lines.append("bias = [(difference(b + d / 1e3) - difference(b - d / 1e3)) * 500 for d in taken]")
+        half = half.removesuffix(")") + " + np.sum(np.square(bias)))"
+    own = parts.parameters
+    return [*_function(parts), *lines, f"effect, half = difference({own}), {half.replace('EACH', 'each')}"]
 
 
 def _function(parts: Parts) -> list[str]:
@@ -141,11 +131,10 @@ def _linearised(parts: Parts) -> list[str]:
     lines, own = _slopes(parts)
     if parts.robust:
         total = " + ".join([f"len(y) * ({parts.parameters} - without) @ pull", *own])
-        return [
-            *lines,
-            *wrapped(f"influence = {total}"),
-            f"half = {parts.t_name} * np.sqrt((influence**2).sum()) / len(y)",
-        ]
+        half = "np.sqrt((influence**2).sum()) / len(y)"
+        if parts.smooth:
+            half = "np.sqrt((influence**2).sum() / len(y) ** 2 + ((taken @ pull) ** 2).sum())"
+        return [*lines, *wrapped(f"influence = {total}"), f"half = {parts.t_name} * {half}"]
     if parts.power:
         spread = "(((without - p) @ pull) ** 2).sum()"
     else:

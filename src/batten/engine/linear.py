@@ -13,7 +13,7 @@ import numpy as np
 
 from batten.engine.rows import Array, Rows
 
-__all__ = ["Factored", "design", "factor", "solve"]
+__all__ = ["REFINE_UP_TO", "Factored", "design", "factor", "solve"]
 
 #: a column is aliased when less than this share of its length is left after the columns before it
 ALIASED = 1e-11

@@ -90,12 +90,12 @@ class Fit:
         return self.estimate.rows.count
 
     @property
-    def parameters(self) -> int:
-        """Counted parameters: coefficients, searched constants and sigma."""
+    def parameters(self) -> float:
+        """Counted parameters: coefficients, searched constants and sigma; effective ones under a penalty."""
         return self.estimate.parameters
 
     @property
-    def df_residual(self) -> int:
+    def df_residual(self) -> float:
         return self.estimate.df_residual
 
     @property

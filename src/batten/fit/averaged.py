@@ -20,17 +20,24 @@ class Averaged:
     root (N, G): covariance of the values is root' root; its rows belong to the data rows (or to parameters and residual
     spread under constant errors). Many rows and many places make it large, so it is kept as loads (r, G) of few
     features (N, r in all), root = features @ loads; None means that loads are the root. left_out (n, G): the values
-    without row i, or None beyond the jackknife's reach.
+    without row i, or None beyond the jackknife's reach. bias (b, G): further rows of the root, independent of all
+    others, for what smoothing may have taken away; None without smoothing.
     """
 
     value: Array
     loads: Array
     left_out: Array | None
-    df: int
+    df: float
     features: tuple[Array, ...] | None = None
+    bias: Array | None = None
 
     @property
     def root(self) -> Array:
+        return self.by_row if self.bias is None else np.vstack([self.by_row, self.bias])
+
+    @property
+    def by_row(self) -> Array:
+        """The root's rows that belong to the data rows."""
         return self.loads if self.features is None else np.hstack(self.features) @ self.loads
 
     @cached_property
@@ -41,16 +48,18 @@ class Averaged:
     def combine(self, weights: Array) -> Averaged:
         """Linear combinations: weights (G, H)."""
         left = None if self.left_out is None else self.left_out @ weights
-        return Averaged(self.value @ weights, self.loads @ weights, left, self.df, self.features)
+        bias = None if self.bias is None else self.bias @ weights
+        return Averaged(self.value @ weights, self.loads @ weights, left, self.df, self.features, bias)
 
     def log(self) -> Averaged:
         """Logarithms of positive values (NaN elsewhere)."""
         with np.errstate(invalid="ignore", divide="ignore"):
             value = np.log(self.value)
+            bias = None if self.bias is None else self.bias / self.value
             if self.left_out is None:
-                return Averaged(value, self.loads / self.value, None, self.df, self.features)
+                return Averaged(value, self.loads / self.value, None, self.df, self.features, bias)
             left = np.log(self.left_out)
-        return Averaged(value, jackknife_root(left), left, self.df)
+        return Averaged(value, jackknife_root(left), left, self.df, bias=bias)
 
     @property
     def error(self) -> Array:
@@ -59,12 +68,13 @@ class Averaged:
 
     def covariance_of_gap(self, other: Averaged) -> Array:
         """Covariance (G, G) of self minus other, whose roots belong to the same rows."""
+        bias = sum(a.bias.T @ a.bias for a in (self, other) if a.bias is not None)
         if self.features is None or other.features is None:
-            root = self.root - other.root
-            return np.asarray(root.T @ root)
+            root = self.by_row - other.by_row
+            return np.asarray(root.T @ root + bias)
         between = self.loads.T @ _products(self.features, other.features) @ other.loads
         own = (a.loads.T @ a._cross @ a.loads for a in (self, other))
-        return np.asarray(sum(own) - between - between.T)
+        return np.asarray(sum(own) - between - between.T + bias)
 
 
 def _products(one: tuple[Array, ...], two: tuple[Array, ...]) -> Array:

@@ -9,6 +9,7 @@ import numpy as np
 
 from batten.engine.clusters import OWNS, Clusters
 from batten.engine.linear import Factored, design
+from batten.engine.penalised import Roughness
 from batten.engine.rows import Array, Ints, Rows
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
@@ -28,7 +29,9 @@ class Estimate:
     weight; for links y - mu. factored: QR of the effective design (coefficients, then theta), rows times sqrt(w), and
     times the working weights for links. leverage (n,). sigma: residual SD on the fitting scale, of a row of average
     weight. log_likelihood: in units of y, None for a pseudo-likelihood. parameters: counted ones, sigma included.
-    spread: what a `weighted` remedy learned; its weights are then among those of `rows`.
+    spread: what a `weighted` remedy learned; its weights are then among those of `rows`. roughness: of a penalised
+    curve, whose orthonormal basis goes on in the penalty's rows and whose df_residual and parameters count effective
+    degrees of freedom; None for others.
     """
 
     remedy: Remedy
@@ -41,12 +44,13 @@ class Estimate:
     eta: Array
     residual: Array
     factored: Factored
-    df_residual: int
+    df_residual: float
     sigma: float
     log_likelihood: float | None
-    parameters: int
+    parameters: float
     notes: tuple[str, ...] = field(default=())
     spread: Spread | None = None
+    roughness: Roughness | None = None
 
     @property
     def link(self) -> Link | None:
@@ -77,7 +81,7 @@ class Estimate:
         return None if self.rows.cluster is None else Clusters(self.rows.cluster)
 
     @property
-    def df_error(self) -> int:
+    def df_error(self) -> float:
         """Degrees of freedom of standard errors: residual ones, or clusters less one."""
         return self.df_residual if self.clusters is None else self.clusters.count - 1
 
@@ -247,6 +251,17 @@ class Estimate:
         side = np.sign(self.link.mean_slope(self.eta))
         return self.rows.weigh(side * self.residual / np.sqrt(self.link.variance(self.mu)))
 
+    @cached_property
+    def bias_moves(self) -> Array:
+        """What smoothing may have taken away, as moves of (coef, theta, c) of unit variance (r, P); none without it.
+
+        A penalty stands for a curve whose roughness has some variance, as the errors have. With the errors' own moves
+        these make up the covariance whose bands cover on average along the curve (Nychka 1988).
+        """
+        if self.roughness is None:
+            return np.zeros((0, len(self.factored.root) + len(self.remedy.left.searched)))
+        return np.asarray(self.sigma * self.roughness.pull @ self.factored.root.T)
+
     def covariance(self, kind: str = "robust") -> Array:
         """Covariance of (coef, theta, c) (P, P).
 
@@ -254,5 +269,5 @@ class Estimate:
         """
         if kind == "robust" or self.remedy.left.searched:
             d = self.moves() * self.few_clusters
-            return np.asarray(d.T @ d)
+            return np.asarray(d.T @ d + self.bias_moves.T @ self.bias_moves)
         return np.asarray(self.factored.inverse_cross * self.sigma**2)

@@ -9,6 +9,7 @@ import numpy as np
 from batten.engine.irls import Mean, iterate
 from batten.engine.linear import Factored, design, factor, solve
 from batten.engine.mean_search import search_mean
+from batten.engine.penalised import Roughness, joined, smooth
 from batten.engine.power import best_power
 from batten.engine.rows import Array, Rows
 from batten.engine.search import search
@@ -27,6 +28,7 @@ from batten.fit.guard import (
     too_few,
 )  # fmt: skip
 from batten.fit.searched import scale_power, searched_model, weighted_design
+from batten.fit.smoothing import roughness_rows
 from batten.fit.spread import learn
 
 __all__ = ["Designs", "estimate"]
@@ -88,27 +90,35 @@ def _fit_scale(
     if isinstance(constants, Refusal):
         return constants
     t, c = constants
+    penalty = roughness_rows(rows, shape, state)
     if (shape.key, t) not in designs:
         x = weighted_design(rows, shape, state, t)
         if not np.isfinite(x).all():
             return Refusal("The predictor's columns are not all finite.", f"{shape.key} on these rows.", "Rescale x.")
-        designs[shape.key, t] = x, factor(x)
+        designs[shape.key, t] = x, factor(x) if penalty is None else joined(x, penalty)
     x, linear = designs[shape.key, t]
     if linear.aliased:
         return aliased(remedy, linear.aliased, x.shape[1])
     z = rows.weigh(scale.forward(rows.y, c))
-    coef, residual = solve(linear, x, z)
+    roughness: Roughness | None = None
+    used: float = x.shape[1]
+    if penalty is None:
+        coef, residual = solve(linear, x, z)
+    else:
+        found = smooth(x, linear, z, penalty)
+        coef, residual, linear, roughness = found.coef, found.residual, found.factored, found.roughness
+        used = roughness.edf
     eta = (z - residual) / rows.root_weight
     trouble = domain_trouble(scale, c, eta, residual)
     if trouble:
         return trouble
-    df = rows.count - x.shape[1] - (0 if shape.finite else len(t))
+    df = rows.count - used - (0 if shape.finite else len(t))
     rss = float(residual @ residual)
     est = Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
         factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
         log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c) + np.log(rows.root_weight)),
-        parameters=x.shape[1] + 1 + len(t) + (1 if scale.searched else 0),
+        parameters=used + 1 + len(t) + (1 if scale.searched else 0), roughness=roughness,
         notes=("constant set by hand; not ranked",) if by_hand else (),
     )  # fmt: skip
     if not est.moving:

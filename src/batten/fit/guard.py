@@ -6,7 +6,7 @@ import numpy as np
 
 from batten.engine.rows import Array, Rows
 from batten.errors import Refusal
-from batten.families.base import Constants, Scale, Shape
+from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
 
 __all__ = ["aliased", "domain_trouble", "edge", "meets_constant", "not_offered", "not_settled", "too_few"]
@@ -25,10 +25,20 @@ def not_offered(remedy: Remedy) -> Refusal | None:
             f"{remedy.key}: a scale or link of y changes its spread already, and a search would move with the weights.",
             "weighted y ~ x, or weighted y on a spline; or this remedy without weights, whose errors are robust.",
         )  # fmt: skip
-    if remedy.shape.family == "smooth":
+    if remedy.shape.group == "smooth" and remedy.weighted:
         return Refusal(
-            "The penalised spline is not offered in this version.", f"{remedy.key}.",
-            "A restricted cubic spline: spline5 x.",
+            "Weights learned from the spread do not go with a penalised curve.", f"{remedy.key}.",
+            "y ~ smooth x, whose errors are robust, or weighted y ~ spline4 x.",
+        )  # fmt: skip
+    if remedy.shape.group == "smooth" and remedy.left.searched:
+        return Refusal(
+            "A power of y and the roughness of a curve are not searched together.", f"{remedy.key}.",
+            "The same curve with the power given: boxcox(0.5) y ~ smooth x, log y ~ smooth x.",
+        )  # fmt: skip
+    if remedy.shape.group == "smooth" and isinstance(remedy.left, Link):
+        return Refusal(
+            "A smooth curve under a link is not offered.", f"{remedy.key}.",
+            "log y ~ smooth x, or a spline with few knots under the link: spline4 x.",
         )  # fmt: skip
     return None
 

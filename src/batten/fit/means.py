@@ -171,7 +171,8 @@ def with_errors(
         left = values(est.moves(), _kept(est))
         # a mean that is infinite without one row has no error
         left = np.where(np.isfinite(left), left, np.nan)
-        return Averaged(value, jackknife_root(left), left, est.df_error)
+        bias = None if est.roughness is None else _along(values, est.bias_moves)
+        return Averaged(value, jackknife_root(left), left, est.df_error, bias=bias)
     rows = rows if est.clusters is None else None
     some: Ints | slice = slice(None) if rows is None else rows
     moves = est.moves(rows=some) * est.few_clusters
@@ -192,7 +193,13 @@ def with_errors(
         feature, load = part if isinstance(part, tuple) else (part, np.eye(len(value)))
         features.append(feature)
         loads.append(load / est.n)
-    return Averaged(value, np.vstack(loads), None, est.df_error, tuple(features))
+    bias = None if est.roughness is None else est.bias_moves @ gradient
+    return Averaged(value, np.vstack(loads), None, est.df_error, tuple(features), bias)
+
+
+def _along(values: Callable[[Array, Array | None], Array], moves: Array) -> Array:
+    """How far each move (R, P) takes the values to first order, by central differences: (R, G)."""
+    return np.asarray((values(1e-3 * moves, None) - values(-1e-3 * moves, None)) / 2e-3)
 
 
 def _kept(est: Estimate) -> Array:

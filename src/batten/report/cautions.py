@@ -7,7 +7,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 from batten.diagnose.dependence import neighbouring_residuals
-from batten.effects.numbers import place, show
+from batten.effects.numbers import counted, place, show
 from batten.fit.carried import carried, no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.frame.problem import Problem
@@ -111,7 +111,8 @@ def _few(problem: Problem, est: Estimate) -> Iterator[str]:
     if n < FEW:
         yield f"Only {n} rows: single rows can turn the answer, and no test here could see a moderate bend."
     elif n < PER_CONSTANT * k:
-        yield f"{n} rows for {k} constants, under {PER_CONSTANT} for each: expect the curve to move with new rows."
+        few = f"{n} rows for {counted(k)} constants, under {PER_CONSTANT} for each"
+        yield f"{few}: expect the curve to move with new rows."
 
 
 def _thin_ends(exam: Examination) -> Iterator[str]:

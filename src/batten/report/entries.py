@@ -26,7 +26,7 @@ class Entry:
     tied: bool
     within_10: float
     leftover: str
-    parameters: int
+    parameters: float
     difference: float
     low: float
     high: float
@@ -64,7 +64,7 @@ def entries(exam: Examination, keys: Iterable[str] | None = None) -> dict[str, E
 def _entry(key: str, row: dict[str, Any]) -> Entry:
     return Entry(
         key=key, rmse=float(row["rmse"]), gap=float(row["rmse_gap"]), tied=bool(row["tied"]),
-        within_10=float(row["within_10"]), leftover=str(row["leftover"]), parameters=int(row["parameters"]),
+        within_10=float(row["within_10"]), leftover=str(row["leftover"]), parameters=float(row["parameters"]),
         difference=float(row["difference"]), low=float(row["difference_low"]), high=float(row["difference_high"]),
         note=str(row["note"]),
     )  # fmt: skip

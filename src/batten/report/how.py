@@ -6,7 +6,8 @@ import platform
 from importlib.metadata import PackageNotFoundError, version
 from typing import TYPE_CHECKING
 
-from batten.effects.numbers import show
+from batten.effects.numbers import counted, show
+from batten.effects.smoothing import curve_freedom
 from batten.fit.carried import no_mean_interval
 from batten.fit.estimate import Estimate
 from batten.fit.means import jackknifed
@@ -18,14 +19,15 @@ from batten.report.lettering import plain
 if TYPE_CHECKING:
     from batten.exam.examination import Examination
 
-__all__ = ["how_computed", "interval_words", "mean_words", "p_words", "smear_factor", "software"]
+__all__ = ["how_computed", "interval_words", "mean_words", "p_words", "smear_factor", "smoothing_words", "software"]
 
 
 def how_computed(exam: Examination, key: str | None = None) -> tuple[str, ...]:
     """Sentences on rows, scoring, choice, trial, means and intervals, for one remedy (the choice by default)."""
     est = exam.comparison.estimates[key or exam.choice.key]
     told = (
-        rows_words(exam), scoring_words(exam), tie_words(exam), trial_words(exam), mean_words(est),
+        rows_words(exam), scoring_words(exam), tie_words(exam), trial_words(exam), smoothing_words(est),
+        mean_words(est),
         f"Intervals of means and differences: {interval_words(est, exam.question.errors)}.",
         _band_words(est, exam.question.errors), software(),
     )  # fmt: skip
@@ -118,6 +120,19 @@ def mean_words(est: Estimate) -> str:
     return "Means: the average over the residuals, each brought back by itself (smearing, Duan 1983)."
 
 
+def smoothing_words(est: Estimate) -> str:
+    """How a penalised curve was fitted, "" for other remedies."""
+    if est.roughness is None:
+        return ""
+    used, lines = curve_freedom(est)
+    weight = "its weight" if lines == 1 else "one weight for all curves, each counted once,"
+    return (
+        f"Curve: natural cubic spline with {len(est.state)} knots at quantiles, its integrated squared second "
+        f"derivative penalised, {weight} by restricted likelihood (Patterson and Thompson 1971; Wood 2011): "
+        f"{counted(used)} effective degrees of freedom."
+    )
+
+
 def smear_factor(est: Estimate) -> float:
     """The factor from median to mean on the log scale."""
     return float(mean_factor(est.residual[None])[0])
@@ -128,7 +143,7 @@ def interval_words(est: Estimate, errors: str) -> str:
     if no_mean_interval(est):
         return no_mean_interval(est)
     if errors == "constant":
-        return "errors taken to spread evenly, t quantiles"
+        return f"errors taken to spread evenly{_bias_words(est)}, t quantiles"
     row, kind = ("row", "HC3") if est.clusters is None else ("cluster", "CR3")
     if jackknifed(est):
         made = f"every {row} left out in turn (jackknife; Wu 1986)"
@@ -138,8 +153,15 @@ def interval_words(est: Estimate, errors: str) -> str:
         made = "cluster-robust errors (CR3; Bell and McCaffrey 2002)"
     else:
         made = f"the influence of each {row} ({kind}-type)"
+    made += _bias_words(est)
     new = "a new row" if est.clusters is None else "a row of a new cluster"
     return f"{made}, t quantiles; of {new}, jackknife+ with each tail by itself (Barber and others 2021)"
+
+
+def _bias_words(est: Estimate) -> str:
+    if est.roughness is None:
+        return ""
+    return " and what smoothing may have taken away (Nychka 1988), knots and amount of smoothing as given"
 
 
 def _band_words(est: Estimate, errors: str) -> str:

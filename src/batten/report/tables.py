@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 from batten.compare.grid import STRAIGHT
 from batten.compare.shortlist import shortlist
+from batten.effects.numbers import counted
 from batten.frame.problem import Problem
 from batten.report import numerals
 from batten.report.entries import Entry, Refused, entries, lowest, refused
@@ -61,7 +62,9 @@ def full_grid(exam: Examination) -> Grid:
     rows = entries(exam)
     more = Column("held-out rows within 10%", "number"), Column("constants", "number"), Column("note", under=True)
     best = lowest(exam)
-    cells = [(*_cells(exam, e, best), numerals.percent(e.within_10), str(e.parameters), e.note) for e in rows.values()]
+    cells = [
+        (*_cells(exam, e, best), numerals.percent(e.within_10), counted(e.parameters), e.note) for e in rows.values()
+    ]
     return Grid((*_columns(exam), *more), tuple(cells), tuple(_mark(key, exam) for key in rows))
 
 

@@ -9,7 +9,7 @@ import math
 from typing import TYPE_CHECKING
 
 from batten.compare.grid import STRAIGHT
-from batten.effects.numbers import show
+from batten.effects.numbers import counted, show
 from batten.report import how, numerals
 from batten.report.cautions import SUBTITLE, left_out_words
 from batten.report.entries import lowest
@@ -140,8 +140,10 @@ def _errors(exam: Examination, key: str) -> str:
 
 
 def _coefficients(exam: Examination, key: str) -> str:
-    """The focal predictor's own coefficients, on the fitting scale."""
+    """The focal predictor's own coefficients, on the fitting scale; those of a penalised curve mean nothing."""
     fit = exam[key]
+    if fit.estimate.roughness is not None:
+        return how.smoothing_words(fit.estimate)
     table = fit.coefficients.iloc[len(exam.problem.base_names) - (1 if fit.estimate.shape.own_level else 0) :]
     told = []
     for name, row in zip(table.index, table.to_numpy(float), strict=True):
@@ -162,4 +164,5 @@ def _scatter(exam: Examination, key: str) -> str:
     scale = "" if plain_scale else " on the fitting scale"
     sd = f"Residual standard deviation{scale}: {show(fit.sigma, p.unit(p.response) if plain_scale else '')}"
     aicc = f"; AICc in units of {plain(p.response)}: {fit.aicc:.1f}" if math.isfinite(fit.aicc) else ""
-    return f"{sd} on {fit.df_residual:,} degrees of freedom; {fit.parameters} constants counted{aicc}."
+    constants = f"{counted(fit.parameters)} constants counted"
+    return f"{sd} on {counted(fit.df_residual)} degrees of freedom; {constants}{aicc}."

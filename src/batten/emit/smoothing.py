@@ -1,0 +1,72 @@
+"""A penalised curve in a script: least squares on the rows of the data and on rows that stand for its roughness."""
+
+from __future__ import annotations
+
+from batten.effects.numbers import counted
+from batten.emit.held import held_at
+from batten.emit.parts import Parts
+from batten.emit.text import constant, noted, number, wrapped
+
+__all__ = ["smooth_constants", "smooth_fit"]
+
+
+def smooth_constants(parts: Parts) -> list[str]:
+    """The amount of smoothing, and the columns it holds."""
+    est = parts.est
+    assert est.roughness is not None
+    # the shape measures roughness in units of the knots' range
+    weight = est.roughness.amount * (est.state[-1] - est.state[0])
+    edf = f"{counted(est.roughness.edf)} degrees of freedom"
+    return [
+        *constant("WEIGHT", number(weight), f"of the curve's roughness, by restricted likelihood: {edf}"),
+        'BENDS = " + ".join(f"s{j}" for j in range(1, len(KNOTS) - 1))',
+    ]
+
+
+def smooth_fit(parts: Parts) -> list[str]:
+    """Coefficients b, residuals e, and what their uncertainty needs."""
+    response = "" if parts.kind == "identity" else f".assign({parts.response}={parts.left.columns[0][1]})"
+    lines = [
+        *wrapped(f"model = smf.ols(MODEL, rows{response})"),
+        "X, z, w = model.exog, model.endog, np.diff(KNOTS)",
+        *_roughness(parts),
+        "Q, R = np.linalg.qr(np.vstack([X, D]))  # least squares on the data and on zeros with design D",
+        "Q, low = Q[: len(z)], Q[len(z) :]",
+        "b, h = np.linalg.solve(R, Q.T @ z), (Q**2).sum(axis=1)",
+        "e, edf = z - X @ b, h.sum()",
+    ]
+    if parts.kind == "exp":
+        lines.append("smear = np.exp(e).mean()  # exp() of a fitted log is a median; this makes it a mean (Duan 1983)")
+    variance = "e @ e / (len(z) - edf)"
+    if not parts.robust:
+        return [*lines, f"s2 = {variance}"]
+    return [
+        *lines,
+        f"s2, out = {variance}, e / (1 - h)  # out: each row's error around the fit without it",
+        "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out",
+        "taken = np.sqrt(s2) * np.linalg.solve(R, low.T).T  # moves of b by what smoothing may take (Nychka 1988)",
+    ]
+
+
+def _roughness(parts: Parts) -> list[str]:
+    """D: rows whose squares add up to the integrated squared second derivative of every curve, times WEIGHT."""
+    lines, each = [], "used[:1]"
+    modifier = parts.est.rows.modifier
+    if not (modifier == modifier[0]).all():
+        far, near = (f"design(used.assign({held_at(parts, f'KNOTS[{k}]')}))" for k in (-1, 0))
+        lines = [
+            *wrapped(f"ends = {near}, {far}"),
+            "own = np.unique(ends[1] - ends[0], axis=0, return_index=True)[1]  # one row of every curve",
+        ]
+        each = "used.iloc[own]"
+    return [
+        *lines,
+        *wrapped(f"N = design(pd.concat([{each}.assign({held_at(parts, 'k')}) for k in KNOTS]))"),
+        *noted(
+            "turn = np.diff(np.diff(N.reshape(len(KNOTS), -1), axis=0) / w[:, None], axis=0)",
+            "of the slope at inner knots",
+        ),
+        "G = np.diag(w[:-1] + w[1:]) / 3 + np.diag(w[1:-1], 1) / 6 + np.diag(w[1:-1], -1) / 6",
+        "D = np.sqrt(WEIGHT) * np.linalg.solve(np.linalg.cholesky(G), turn).reshape(-1, X.shape[1])",
+        "# D'D is WEIGHT times the integral of the squared second derivative",
+    ]
