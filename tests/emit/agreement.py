@@ -21,6 +21,7 @@ from runner import ENGINES, Ran, run_script
 
 import batten
 from batten.compare.shortlist import shortlist
+from batten.effects.numbers import counted
 from batten.effects.tell import Sentence
 from batten.exam.examination import Examination
 from batten.exam.fit import Fit
@@ -208,7 +209,7 @@ def _page_row(found: Found, where: str, key: str, cells: Mapping[str, str], row:
     found.hold("page", key in cells["remedy"], f"{where}: {cells['remedy']}")
     found.hold("page", _rounds(cells["held-out error"], float(row["rmse"])), f"{where}: {cells['held-out error']}")
     found.hold("page", cells["left-over bend"] == row["leftover"], f"{where}: {cells['left-over bend']}")
-    found.hold("page", cells["constants"] == str(row["parameters"]), f"{where}: constants {cells['constants']}")
+    found.hold("page", cells["constants"] == counted(row["parameters"]), f"{where}: constants {cells['constants']}")
     found.hold("page", _rounds(within, 100 * float(row["within_10"])), f"{where}: {within}")
 
 

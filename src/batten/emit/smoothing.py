@@ -39,13 +39,20 @@ def smooth_fit(parts: Parts) -> list[str]:
         lines.append("smear = np.exp(e).mean()  # exp() of a fitted log is a median; this makes it a mean (Duan 1983)")
     variance = "e @ e / (len(z) - edf)"
     if not parts.robust:
-        return [*lines, f"s2 = {variance}"]
+        return [*lines, f"s2 = {variance}", *_table("s2 * (np.linalg.inv(R) ** 2).sum(axis=1)")]
     return [
         *lines,
         f"s2, out = {variance}, e / (1 - h)  # out: each row's error around the fit without it",
         "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out",
         "taken = np.sqrt(s2) * np.linalg.solve(R, low.T).T  # moves of b by what smoothing may take (Nychka 1988)",
+        *_table("((without - b) ** 2).sum(axis=0) + (taken**2).sum(axis=0)"),
     ]
+
+
+def _table(variance: str) -> list[str]:
+    """The coefficients, of which none means anything by itself, with standard errors."""
+    numbers = f'{{"estimate": b, "std_error": np.sqrt({variance})}}'
+    return wrapped(f"print(table := pd.DataFrame({numbers}, model.exog_names))")
 
 
 def _roughness(parts: Parts) -> list[str]:

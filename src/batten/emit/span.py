@@ -126,7 +126,8 @@ def _difference(parts: Parts, *, deletes: bool) -> list[str]:
 def _linearised(parts: Parts) -> list[str]:
     """effect, its slopes in the coefficients (pull), and each row's own share in the averages."""
     if parts.kind == "identity" and parts.steady and parts.robust:
-        half = f"{parts.t_name} * np.sqrt((((without - b) @ gap) ** 2).sum())"
+        moves = "np.vstack([without - b, taken])" if parts.smooth else "(without - b)"
+        half = f"{parts.t_name} * np.sqrt((({moves} @ gap) ** 2).sum())"
         return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half}"]
     lines, own = _slopes(parts)
     if parts.robust:
