@@ -90,3 +90,18 @@ def test_a_curve_with_its_own_level_leaves_the_constant_out() -> None:
     x = np.array([1.0, 2, 3])
     rows = Rows(x, x, np.column_stack([np.ones(3), x]), np.ones((3, 1)))
     assert design(rows, x[:, None], own_level=True).shape == (3, 2)
+
+
+def test_very_many_rows_have_the_same_triangle_and_nearly_collinear_ones_fall_back() -> None:
+    """Cholesky's triangle twice (Yamamoto and others 2015) against Householder's, up to the signs of its rows."""
+    rng = np.random.default_rng(4)
+    x = np.column_stack([np.ones(25_000), rng.lognormal(size=(25_000, 3)) * [1.0, 1e4, 1e-3]])
+    done = factor(x)
+    q, r = np.linalg.qr(x / done.length)
+    sign = np.sign(np.diagonal(r))
+    np.testing.assert_allclose(done.r, sign[:, None] * r, atol=1e-13)
+    np.testing.assert_allclose(done.q, q * sign, atol=1e-13)
+    np.testing.assert_allclose(done.q.T @ done.q, np.eye(4), atol=1e-13)
+    near = np.column_stack([x, x[:, 1] + 1e-9 * x[:, 2]])
+    np.testing.assert_allclose(factor(near).q.T @ factor(near).q, np.eye(5), atol=1e-13)
+    assert factor(np.column_stack([x, x[:, 1]])).aliased == 1

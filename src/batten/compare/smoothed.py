@@ -13,7 +13,6 @@ from itertools import pairwise
 import numpy as np
 import numpy.typing as npt
 
-from batten.engine.linear import design
 from batten.engine.penalised import joined, penalty_rows, smooth_sets
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.sets import BLOCK
@@ -166,16 +165,19 @@ def _set(ordered: _Sorted, shape: Shape, state: Constants, held: Ints, near: Arr
     ends = np.concatenate([[0], ends, [len(ordered.x)]])
     size = np.diff(ends)
     u = (ordered.x - np.repeat(left, size)) / np.repeat(width, size)
-    powers = np.column_stack([np.ones_like(u), u, u * u, u * u * u])
-    local = ordered.rows.weigh(design(ordered.rows, powers))
     places = (left[:, None] + width[:, None] * _PLACES).ravel()
     cubic = _CUBIC @ shape.columns(places, state).reshape(len(left), 4, -1)
     fixed, m, k = ordered.rows.base.shape[1], ordered.rows.modifier.shape[1], cubic.shape[2]
+    local = np.empty((len(u), fixed + 4 * m + ordered.z.shape[1]))
+    local[:, :fixed], local[:, fixed + 4 * m :] = ordered.rows.weigh(ordered.rows.base), ordered.z
     maps = np.zeros((len(left), fixed + 4 * m, fixed + k * m))
     maps[:, :fixed, :fixed] = np.eye(fixed)
-    for j in range(m):
+    for j, power in enumerate(ordered.rows.weigh(ordered.rows.modifier).T):
+        for place in range(fixed + 4 * j, fixed + 4 * (j + 1)):
+            local[:, place] = power
+            power = power * u
         maps[:, fixed + 4 * j : fixed + 4 * (j + 1), fixed + k * j : fixed + k * (j + 1)] = cubic
-    return _Set(np.hstack([local, ordered.z]), ends, maps @ near, out[ordered.order])
+    return _Set(local, ends, maps @ near, out[ordered.order])
 
 
 def _penalties(ordered: _Sorted, shape: Shape, states: list[Constants], sets: list[_Set]) -> Array:

@@ -28,7 +28,7 @@ def moved_row_interval(
     covariates do not vary this is `new_row_interval`. profile: covariates (base, modifier) of every row instead.
     """
     base, modifier = profile or (est.rows.base, est.rows.modifier)
-    if np.ptp(base, axis=0).max() == 0 and np.ptp(modifier, axis=0).max() == 0:
+    if np.ptp(base, axis=0).max(initial=0.0) == 0 and np.ptp(modifier, axis=0).max() == 0:
         alike = np.tile(base[:1], (len(xs), 1)), np.tile(modifier[:1], (len(xs), 1))
         return new_row_interval(est, xs, *alike, level=level, errors=errors)
     some = np.argsort(est.rows.x, kind="stable")[np.linspace(0, est.n - 1, min(est.n, MOVED)).astype(np.intp)]
