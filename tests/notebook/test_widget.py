@@ -100,9 +100,9 @@ def test_only_what_is_seen_is_drawn_and_only_once(shown: ExamWidget, monkeypatch
     drawn: list[str] = []
     draw = remedy_panels.fit_figure
 
-    def counted(fit: Any, straight: Any = None) -> Any:
+    def counted(fit: Any, straight: Any = None, **more: Any) -> Any:
         drawn.append(fit.key)
-        return draw(fit, straight)
+        return draw(fit, straight, **more)
 
     monkeypatch.setattr(remedy_panels, "fit_figure", counted)
     assert all(placeholder(tab.box) for tab in shown.remedies.values())
@@ -314,7 +314,7 @@ def test_an_opened_remedy_keeps_its_tab_under_another_aim(shown: ExamWidget) -> 
 def test_a_refusal_in_a_panel_is_one_line_and_the_panel_is_tried_again(
     shown: ExamWidget, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    def refuse(*_: Any) -> None:
+    def refuse(*_: Any, **__: Any) -> None:
         raise InputError("This is wrong.", "Seen: <b>.", "Do that.")
 
     with monkeypatch.context() as patch:
@@ -332,7 +332,7 @@ def test_a_refusal_in_a_panel_is_one_line_and_the_panel_is_tried_again(
 def test_a_fault_is_never_swallowed_its_traceback_is_behind_a_click(
     shown: ExamWidget, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    def fail(*_: Any) -> None:
+    def fail(*_: Any, **__: Any) -> None:
         raise ZeroDivisionError("<script>")
 
     monkeypatch.setattr(remedy_panels, "fit_figure", fail)
@@ -446,7 +446,7 @@ def test_method_names_stay_in_how_this_was_computed_and_cautions_are_few(shown: 
             elif panel.name != "code":
                 assert methods.search(words(panel.box)) is None, panel.name
     for tab in shown.remedies.values():
-        assert "".join(all_html(tab.box.children[0])).count("batten-caution") <= 2
+        assert tab.cautions.value.count("batten-caution") <= 2
     assert "".join(all_html(shown.compare.first.reasons)).count("batten-caution") <= 2
 
 

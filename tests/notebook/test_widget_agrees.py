@@ -40,7 +40,7 @@ def shown(exam: Examination) -> Iterator[ExamWidget]:
     """The widget with a tab for every remedy."""
     with pytest.MonkeyPatch.context() as patch:
         # figures have tests of their own
-        patch.setattr(remedy_panels, "fit_figure", lambda *fits: None)
+        patch.setattr(remedy_panels, "fit_figure", lambda *fits, **more: None)
         patch.setattr(desk, "img_html", lambda picture: "")
         box = widget_for(exam, cell_id=None, token="t")
         parts = parts_of(box)

@@ -19,7 +19,7 @@ _VOID = {"meta", "img", "br", "hr"}
 #: everything our pages are made of
 _OURS = {
     "html", "head", "meta", "title", "style", "body", "main", "section", "h1", "h2", "p", "strong", "figure", "img",
-    "div", "table", "thead", "tbody", "tr", "th", "td", "ul", "li", "details", "summary", "pre",
+    "div", "table", "thead", "tbody", "tr", "th", "td", "ul", "li", "details", "summary", "pre", "span",
 }  # fmt: skip
 
 

@@ -25,6 +25,7 @@ _OWN = """
 .batten-widget .batten-short td:last-child { min-width: 6em; }
 /* a table of fifty rows scrolls in its own frame, under its heads */
 .batten-widget .batten-tall .batten-scroll { max-height: 38em; overflow: auto; }
+.batten-widget .batten-tall th, .batten-widget .batten-tall td { padding: .28em .5em; }
 .batten-widget .batten-tall thead th { position: sticky; top: 0; background: var(--jp-layout-color1, #fff); }
 /* titles wrap instead of being cut off */
 .jupyter-widgets.widget-tab.batten-tabs > .lm-TabBar > .lm-TabBar-content { flex-wrap: wrap; }
@@ -38,6 +39,10 @@ _OWN = """
 }
 .batten-widget .widget-text > input { flex: 0 0 auto; width: 8em; }
 .batten-widget .batten-picker > input { width: 28em; max-width: 100%; }
+.batten-widget .batten-field .widget-toggle-buttons > .widget-label {
+  white-space: normal; height: auto; line-height: 1.4; flex: 0 1 auto; max-width: 16em; overflow: visible;
+}
+.batten-widget .widget-dropdown > select { flex: 0 1 auto; width: auto; max-width: 100%; height: 2.2em; }
 .batten-widget .batten-field .widget-toggle-buttons { display: flex; flex-flow: row nowrap; align-items: center; }
 .batten-widget .widget-toggle-buttons .widget-toggle-button { width: auto; min-width: 0; }
 /* panels are chosen by words with a rule below: lighter than the tabs above them */

@@ -134,6 +134,7 @@ class ExamWidget:
 
     def _switched(self, _change: object) -> None:
         with self.desk.lock, told_in(self.message):
+            self.picker.message.say("")  # about a remedy that could not be opened: it has been read by now
             self._draw()
 
     def _draw(self) -> None:

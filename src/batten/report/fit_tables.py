@@ -12,9 +12,10 @@ import pandas as pd
 
 from batten.effects.contrast import SpanEffect
 from batten.effects.numbers import show, show_interval
+from batten.report.days import counted_from
 from batten.report.grid import Column, Grid, as_html
 from batten.report.lettering import plain, shortened
-from batten.report.markup import paragraph
+from batten.report.markup import details, paragraph
 from batten.report.naming import place_in, span_in
 from batten.report.numerals import difference
 
@@ -26,6 +27,8 @@ __all__ = ["checks_table", "coefficients_table", "constants_table", "effect_tabl
 #: letters of a column's name that a table's head keeps
 NAME = 50
 
+#: the check that is always in view, and the p value from which others are not
+BEND, FOUND = "left-over bend", 0.05
 #: the name of a method, in brackets at the end of a question
 _METHOD = re.compile(r" \([^()]*\)(?=\?$)")
 
@@ -37,7 +40,7 @@ def effect_table(fit: Fit, effects: Sequence[SpanEffect]) -> str:
     first = effects[0]
     ends = span_in(problem, first.a, first.b)
     y, x = shortened(problem.response, NAME), shortened(problem.focus, NAME)
-    per = f"{y_unit or y} per {x_unit or f'unit of {x}'}"
+    per = f"{y_unit or y} per {'day' if counted_from(problem) else x_unit or f'unit of {x}'}"
     heads = [Column(f"{x} {ends}"), *(Column(f"{e.of} of {y}") for e in effects)]
     rows = [
         (_with_unit("difference", y_unit), *(difference(*_ends(e.difference)) for e in effects)),
@@ -79,13 +82,19 @@ def lookup_table(fit: Fit, by: str | None = None) -> str:
 
 
 def checks_table(fit: Fit, *, named: bool) -> str:
-    """What was checked, and what was found. named: with the names of the tests."""
+    """What was checked, and what was found. named: with the names of the tests, all of them in one table; else those
+    that found nothing stand behind a click.
+    """
     table = fit.checks(every=False)
-    rows = [
-        (plain(name), plain(asked) if named else _METHOD.sub("", plain(asked)), plain(reading))
-        for name, asked, reading in zip(table.index, table["asked"], table["reading"], strict=True)
-    ]
-    return _html([Column("check"), Column("asked"), Column("found")], rows)
+    shown: list[tuple[str, ...]] = []
+    quiet: list[tuple[str, ...]] = []
+    for name, asked, reading, p in zip(table.index, table["asked"], table["reading"], table["p"], strict=True):
+        nothing = not named and name != BEND and p >= FOUND
+        asks = plain(asked) if named else _METHOD.sub("", plain(asked))
+        (quiet if nothing else shown).append((plain(name), asks, plain(reading)))
+    heads = [Column("check"), Column("asked"), Column("found")]
+    more = f"{len(quiet)} more {'check' if len(quiet) == 1 else 'checks'} found no more than chance would give"
+    return _html(heads, shown) + (details(more, _html(heads, quiet)) if quiet else "")
 
 
 def coefficients_table(fit: Fit) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import unicodedata
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -14,6 +15,8 @@ __all__ = ["Column", "Grid", "as_html", "as_text"]
 
 #: letters that a column of words keeps
 LEAST = 13
+#: a word with hyphens, at which heads would break
+_HYPHENED = re.compile(r"[^\s-]+(?:-[^\s-]+)+")
 
 
 @dataclass(frozen=True)
@@ -41,7 +44,9 @@ def as_html(grid: Grid) -> str:
     """One <table>; the first cell of a row heads it."""
     stacks = _stacks(grid.columns)
     titles = [column.head for column in grid.columns]
-    heads = "".join(f'<th scope="col"{_kind(grid.columns[s[0]])}>{_stacked(s, titles, grid)}</th>' for s in stacks)
+    heads = "".join(
+        f'<th scope="col"{_kind(grid.columns[s[0]])}>{_stacked(s, titles, grid, whole=True)}</th>' for s in stacks
+    )
     lines = []
     for row, mark in zip(grid.rows, grid.marks, strict=True):
         tags = ('th scope="row"', "th"), *[("td", "td")] * (len(stacks) - 1)
@@ -97,10 +102,13 @@ def _stacks(columns: Sequence[Column]) -> list[list[int]]:
     return out
 
 
-def _stacked(stack: Sequence[int], cells: Sequence[str], grid: Grid) -> str:
-    """One cell, and below it in smaller type those that stand under it."""
+def _stacked(stack: Sequence[int], cells: Sequence[str], grid: Grid, *, whole: bool = False) -> str:
+    """One cell, and below it in smaller type those that stand under it. whole: words do not break at hyphens."""
+    first = esc(cells[stack[0]])
+    if whole:
+        first = _HYPHENED.sub(r'<span class="batten-whole">\g<0></span>', first)
     below = (f"<div{_kind(grid.columns[j], 'under')}>{esc(cells[j])}</div>" for j in stack[1:] if cells[j])
-    return f"{esc(cells[stack[0]])}{''.join(below)}"
+    return f"{first}{''.join(below)}"
 
 
 def _kind(column: Column, more: str = "") -> str:

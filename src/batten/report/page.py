@@ -37,7 +37,7 @@ def page(exam: Examination) -> str:
     body = "\n".join([
         *_first_screen(exam, title="h1", part="h2"),
         part(f"The choice: {plain(fit.words)}", _choice(exam)),
-        part("What is left", _figure(left_figure(fit, exam[STRAIGHT])) + checks_table(fit, named=True)),
+        part("What is left", _figure(left_figure(fit, exam[STRAIGHT], choice=True)) + checks_table(fit, named=True)),
         part("All that were tried", _tried(exam, figures=True)),
         part("How this was computed", _list(how_computed(exam))),
         part("Methods and results, as text", _paragraphs(write_up(exam, exam.choice.key))),
@@ -100,7 +100,7 @@ def _choice(exam: Examination) -> str:
     fit = exam.chosen
     said = [plain(sentence) for sentence in fit.sentences()]
     return "\n".join([
-        _figure(fit_figure(fit)),
+        _figure(fit_figure(fit, choice=True)),
         _list(said),
         details("Values to look up", lookup_table(fit, exam.question.by)),
         details("Coefficients, on the fitting scale", coefficients_table(fit) + constants_table(fit)),

@@ -59,15 +59,19 @@ def line_against_choice(exam: Examination) -> Picture:
     return settle(figure, [*_seen(problem), *_told(fit, span, second, is_line), *notes])
 
 
-def fit_figure(fit: Fit, straight: Fit | None = None) -> Picture:
-    """One fit with its mean, its median, the band of the mean and where a new row lies; the straight line if given."""
+def fit_figure(fit: Fit, straight: Fit | None = None, *, choice: bool = False) -> Picture:
+    """One fit with its mean, its median, the band of the mean and where a new row lies; the straight line if given.
+
+    choice: whether it is the choice, which has its colour also where it is the straight line.
+    """
     problem, est, asked = fit.problem, fit.estimate, _Asked.of(fit)
     mean, span = asked.mean(est), asked.ends(est)
     rows = row_band(est, mean.x, level=asked.level, errors=asked.errors, profile=asked.profile)
     median = asked.value(est, mean.x, of="median")
     apart = _apart(mean, median, problem.rows.y)
     is_line = fit.key == STRAIGHT
-    color, tint, tint_word = (style.LINE, style.LINE_BAND, "Amber") if is_line else (style.CHOICE, style.BAND, "Blue")
+    amber = is_line and not choice
+    color, tint, tint_word = (style.LINE, style.LINE_BAND, "Amber") if amber else (style.CHOICE, style.BAND, "Blue")
     figure, ax, at = _prepared(problem, [mean], room=[rows])
     parts.draw_band(ax, rows, color=style.FAINT, alpha=0.8, zorder=0.8, edge=style.RULE)
     parts.draw_band(ax, mean, color=tint)

@@ -27,8 +27,11 @@ __all__ = ["left_figure", "running_median"]
 HEIGHT, BOTTOM, TOP, LEFT, GAP = 3.5, 0.86, 0.64, 0.62, 0.72
 
 
-def left_figure(fit: Fit, straight: Fit | None = None) -> Picture:
-    """Residuals of the fit on its own scale, at the right of the straight line's where that is given."""
+def left_figure(fit: Fit, straight: Fit | None = None, *, choice: bool = False) -> Picture:
+    """Residuals of the fit on its own scale, at the right of the straight line's where that is given.
+
+    choice: whether it is the choice, which has its colour also where it is the straight line.
+    """
     problem = fit.problem
     both = straight is not None and straight.key != fit.key
     figure = sheet(style.WIDTH, HEIGHT)
@@ -41,7 +44,7 @@ def left_figure(fit: Fit, straight: Fit | None = None) -> Picture:
         second = pane(figure, LEFT + wide + GAP, BOTTOM, 0.14, TOP)
     else:
         second = pane(figure, LEFT, BOTTOM, 0.14, TOP)
-    told.append(_residuals(second, fit, style.CHOICE if fit.key != STRAIGHT else style.LINE))
+    told.append(_residuals(second, fit, style.LINE if fit.key == STRAIGHT and not choice else style.CHOICE))
     notes = [
         parts.drawn_of(len(problem.rows.x)),
         "Curve: running median of neighbouring rows. Near zero all along: no bend is left. "

@@ -77,7 +77,7 @@ body[data-jp-theme-light="false"] .batten-report { --batten-choice: #7cbce6; --b
 .batten-report .batten-table tr.batten-choice th { font-weight: 600; }
 .batten-report .batten-table .batten-under { color: var(--batten-quiet); font-size: .88em; font-weight: 400; }
 .batten-report .batten-table .batten-key { font-family: var(--jp-code-font-family, ui-monospace, Menlo, monospace); }
-.batten-report .batten-table tbody .batten-key { white-space: nowrap; }
+.batten-report .batten-table .batten-whole, .batten-report .batten-table tbody .batten-key { white-space: nowrap; }
 .batten-report details { margin: .6em 0; }
 .batten-report summary { cursor: pointer; color: var(--batten-choice); }
 .batten-report pre.batten-code {

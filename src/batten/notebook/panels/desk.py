@@ -15,11 +15,11 @@ from batten.report.figures import Picture, img_html
 from batten.report.lettering import plain
 from batten.report.markup import esc
 
-__all__ = ["NOT_YET", "Changed", "Desk", "Panel", "bullets", "figure", "sheet"]
+__all__ = ["NOT_YET", "READING", "Changed", "Desk", "Panel", "bullets", "figure", "sheet"]
 
 #: what a part says until it is drawn; also what a saved notebook shows of it
 NOT_YET = '<p class="batten-quiet batten-waiting">Being drawn; this needs a live kernel.</p>'
-
+READING = '<p class="batten-quiet batten-waiting">Reading the curve …</p>'
 
 Changed = Callable[[Examination, Examination], None]
 

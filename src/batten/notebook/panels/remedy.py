@@ -31,12 +31,12 @@ class RemedyTab:
 
     def __init__(self, desk: Desk, key: str, span: SpanFields, shut: Callable[[str], None]) -> None:
         self.key, self._desk, self._span, self._shut = key, desk, span, WeakMethod(shut)
-        self.heading = sheet()
+        self.heading, self.cautions = sheet(), sheet("")
         self.shut_button = widgets.Button(description="Close this tab", layout=widgets.Layout(width="auto"))
         self.shut_button.on_click(weakly(self._pressed))
         self._head = widgets.HBox([self.heading, self.shut_button])
         self._head.add_class("batten-head")
-        self.box = widgets.VBox([self._head])
+        self.box = widgets.VBox([self._head, self.cautions])
 
     def may_be_shut(self, may: bool) -> None:
         """Whether the tab has a button that takes it away: those that the picker opened do."""
@@ -53,16 +53,17 @@ class RemedyTab:
         desk, key = self._desk, self.key
         effect, code = EffectOf(key, self._span), CodeOf(key, cell_id=desk.cell_id)
         made = Pages(desk, (FitOf(key), LeftOf(key), effect, TryValue(desk, key), code, HowOf(key)))
-        self.box.children = [self._head, made.box]
+        self.box.children = [self._head, self.cautions, made.box]
         return made
 
     def draw(self, exam: Examination) -> None:
-        self.heading.value = self._words(exam)
+        self.heading.value = self._title(exam)
+        self.cautions.value = "".join(paragraph(words, "caution") for words in cautions(exam, self.key))
         self.pages.draw(exam)
 
-    def _words(self, exam: Examination) -> str:
+    def _title(self, exam: Examination) -> str:
         role = next((role for role, key in shortlist(exam.comparison) if key == self.key), "")
         name = plain(exam[self.key].words)
-        tail = f' <span class="batten-quiet">{esc(role)}</span>' if role not in ("", name) else ""
-        head = f"<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>"
-        return head + "".join(paragraph(words, "caution") for words in cautions(exam, self.key))
+        other = ", ".join(word for word in role.split(", ") if word != name)
+        tail = f' <span class="batten-quiet">{esc(other)}</span>' if other else ""
+        return f"<h3>{esc(name)} <code>{esc(self.key)}</code>{tail}</h3>"

@@ -9,7 +9,7 @@ from batten.exam.examination import Examination
 from batten.exam.fit import Fit
 from batten.notebook.code_panel import CodePanel
 from batten.notebook.open_widgets import close_all
-from batten.notebook.panels.desk import bullets, figure, sheet
+from batten.notebook.panels.desk import READING, bullets, figure, sheet
 from batten.notebook.panels.span import SpanFields
 from batten.report.cautions import CARE, SUBTITLE, choosing_note
 from batten.report.figures import fit_figure, left_figure
@@ -31,7 +31,8 @@ class FitOf:
 
     def draw(self, exam: Examination) -> None:
         fit = exam[self._key]
-        self.box.value = figure(fit_figure(fit, _line(exam))) + span_block(exam, self._key)
+        drawn = fit_figure(fit, _line(exam), choice=self._key == exam.choice.key)
+        self.box.value = figure(drawn) + span_block(exam, self._key)
 
 
 class LeftOf:
@@ -44,7 +45,8 @@ class LeftOf:
 
     def draw(self, exam: Examination) -> None:
         fit = exam[self._key]
-        self.box.value = figure(left_figure(fit, _line(exam))) + checks_table(fit, named=False)
+        drawn = left_figure(fit, _line(exam), choice=self._key == exam.choice.key)
+        self.box.value = figure(drawn) + checks_table(fit, named=False)
 
 
 class EffectOf:
@@ -67,7 +69,7 @@ class EffectOf:
         ])  # fmt: skip
         first, days = paragraph(SUBTITLE, "quiet"), days_words(exam)
         # where the curve turns can take a moment: the numbers need not wait for it
-        self._said.value = f"{first}\n{span_block(exam, self._key)}\n{numbers}"
+        self._said.value = f"{first}\n{span_block(exam, self._key)}\n{READING}\n{numbers}"
         self._said.value = f"{first}\n{bullets([*fit.sentences(), days])}\n{numbers}"
 
 

@@ -40,14 +40,14 @@ class TryValue:
             field.on_change(weakly(self._changed))
         self.wanted.observe(weakly(self._asked_back), "value")
         self.several = widgets.ToggleButton(
-            description=f"Table at round {shortened(problem.focus, 30)}", layout=widgets.Layout(width="auto")
+            description="Table at round values", layout=widgets.Layout(width="auto")
         )  # fmt: skip
         self.several.observe(weakly(self._asked_for_several), "value")
         self.table, self.trouble = sheet(""), Message()
         self.box = widgets.VBox([
             *(field.box for field in self.fields), self.message.box, self.shown,
             _question(problem, self.wanted), self.backwards.box, self.reached,
-            self.several, self.trouble.box, self.table,
+            widgets.HBox([self.several]), self.trouble.box, self.table,
         ])  # fmt: skip
 
     def draw(self, exam: Examination) -> None:
