@@ -141,6 +141,26 @@ def test_a_group_within_a_narrow_range_is_held_by_the_penalty() -> None:
     assert np.linalg.matrix_rank(est.design_at(low, data.base, est.rows.modifier)) < len(est.coef)
 
 
+def test_more_columns_than_rows_are_held_by_the_penalty() -> None:
+    """Eight groups of ten rows, each with its curve: 8 + 8 x 13 columns on 80 rows."""
+    data = rows(80)
+    own = np.eye(8)[np.arange(80) % 8]
+    est = fit(replace(data, base=own, modifier=own, intercept=None))
+    assert len(est.coef) == 112
+    assert 16 < est.parameters < 60
+    x, inverse = dense(est)
+    assert est.leverage.sum() == pytest.approx(np.trace(inverse @ x.T @ x), rel=1e-6)
+    assert np.isfinite(averaged_means(est, PLACES).error).all()
+
+
+def test_a_curve_through_every_row_is_refused() -> None:
+    x = np.arange(8.0)
+    data = Rows(10 * np.cos(x), x, np.ones((8, 1)), np.ones((8, 1)))
+    found = estimate(data, parse("y ~ smooth x"))
+    assert isinstance(found, Refusal)
+    assert "runs through the rows" in found.wrong
+
+
 def test_without_intercept_a_line_is_free_and_the_rest_is_held() -> None:
     data = rows()
     est = fit(replace(data, base=np.empty((80, 0)), intercept=None, constant=False))

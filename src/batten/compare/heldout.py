@@ -29,7 +29,7 @@ from batten.engine.threads import side_by_side
 from batten.errors import Refusal
 from batten.families.base import Constants, Link
 from batten.fit.estimate import Estimate
-from batten.fit.guard import meets_constant
+from batten.fit.guard import meets_constant, no_error_left
 from batten.fit.searched import scale_power, searched_model, weighted_design
 
 __all__ = ["HeldOut", "held_out"]
@@ -134,12 +134,15 @@ def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Ref
 
 def _score_smooth(group: list[Estimate], sets: list[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
     """All scales of one penalised shape."""
-    trained: list[list[Trained]] = [[] for _ in group]
-    for fit in smoothed_sets(group, states, [split.test for split in sets]):
+    trained: list[list[Trained | Refusal]] = [[] for _ in group]
+    found = smoothed_sets(group, states, [split.test for split in sets])
+    for split, fit in zip(sets, found, strict=True):
         if fit is None:
             return [_rank(group[0].shape.key)] * len(group)
         for j, est in enumerate(group):
-            trained[j].append(Trained(fit.eta[:, j], est.c, fit.v[:, j], float(fit.edf[j])))
+            edf, n = float(fit.edf[j]), len(split.train)
+            trouble = no_error_left(est.remedy, n, n - edf)
+            trained[j].append(trouble or Trained(fit.eta[:, j], est.c, fit.v[:, j], edf))
     return [_score(est, sets, iter(fits)) for est, fits in zip(group, trained, strict=True)]
 
 

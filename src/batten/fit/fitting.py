@@ -23,6 +23,7 @@ from batten.fit.guard import (
     domain_trouble,
     edge,
     meets_constant,
+    no_error_left,
     not_offered,
     not_settled,
     too_few,
@@ -108,11 +109,11 @@ def _fit_scale(
         found = smooth(x, linear, z, penalty)
         coef, residual, linear, roughness = found.coef, found.residual, found.factored, found.roughness
         used = roughness.edf
+    df = rows.count - used - (0 if shape.finite else len(t))
     eta = (z - residual) / rows.root_weight
-    trouble = domain_trouble(scale, c, eta, residual)
+    trouble = domain_trouble(scale, c, eta, residual) or no_error_left(remedy, rows.count, df)
     if trouble:
         return trouble
-    df = rows.count - used - (0 if shape.finite else len(t))
     rss = float(residual @ residual)
     est = Estimate(
         remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,

@@ -9,7 +9,19 @@ from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale, Shape
 from batten.families.remedy import Remedy
 
-__all__ = ["aliased", "domain_trouble", "edge", "meets_constant", "not_offered", "not_settled", "too_few"]
+__all__ = [
+    "aliased",
+    "domain_trouble",
+    "edge",
+    "meets_constant",
+    "no_error_left",
+    "not_offered",
+    "not_settled",
+    "too_few",
+]
+
+#: rows that each penalised curve needs
+HELD = 5
 
 
 def meets_constant(rows: Rows, shape: Shape) -> bool:
@@ -44,10 +56,12 @@ def not_offered(remedy: Remedy) -> Refusal | None:
 
 
 def too_few(rows: Rows, remedy: Remedy) -> Refusal | None:
-    """A fit needs rows beyond its columns."""
+    """A fit needs rows beyond its columns; under a penalty, which holds any number, a handful for each curve."""
     state = remedy.shape.learn(rows.x, constant=meets_constant(rows, remedy.shape))
     start = tuple(remedy.shape.candidates(rows.x, state)[0])
     shape_columns = remedy.shape.columns(rows.x[:1], state, start).shape[1]
+    if remedy.shape.penalty(state) is not None:
+        shape_columns = min(shape_columns, HELD)
     base = rows.base.shape[1] - (1 if remedy.shape.own_level and rows.intercept is not None else 0)
     needed = base + shape_columns * rows.modifier.shape[1] + len(remedy.shape.searched) + len(remedy.left.searched)
     if rows.count > needed + 1:
@@ -56,6 +70,17 @@ def too_few(rows: Rows, remedy: Remedy) -> Refusal | None:
         wrong="Too few rows for this remedy.",
         seen=f"{rows.count} rows for {needed} constants and the error.",
         instead="A shape with fewer constants.",
+    )
+
+
+def no_error_left(remedy: Remedy, n: int, df: float) -> Refusal | None:
+    """A penalised curve may come out so free that it runs through every row."""
+    if df >= 1:
+        return None
+    return Refusal(
+        wrong="The curve runs through the rows and leaves nothing over for the error.",
+        seen=f"{remedy.key} takes {n - df:.1f} degrees of freedom of {n} rows.",
+        instead="A spline with few knots: spline3 x.",
     )
 
 
