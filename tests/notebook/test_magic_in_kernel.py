@@ -119,6 +119,23 @@ def test_code_goes_into_the_next_cell_as_a_payload(run: Run) -> None:
     assert payload == [{"source": "set_next_input", "text": code["text/plain"].rstrip("\n"), "replace": False}]
 
 
+def test_what_the_widget_opens_and_asks_is_known_to_the_line_magic_and_changes_no_variable(run: Run) -> None:
+    run(CELL.replace("castings", "castings --keep exam", 1))
+    run("from ipywidgets.widgets.widget import _instances\n"
+        "parts = [w for w in _instances.values() if hasattr(w, 'parts')][-1].parts\n"
+        "parts.picker.field.value, parts.span.low.text.value = 'y ~ poly4 x', '12.5'")  # fmt: skip
+    [said], errors, payload = run("%batten code y ~ poly4 x")
+    assert errors == ""
+    assert said["text/plain"] == "In the next cell: quartic in mass_kg (y ~ poly4 x).\n"
+    assert "SPAN = (12.5, " in payload[0]["text"]
+    [kept], _, _ = run("print(len(exam), exam.question.span[0] == 12.5)")
+    assert kept["text/plain"] == "2 False\n"
+    run(CELL)  # another examination is the last one now
+    run("parts.picker.field.value = 'y ~ poly5 x'")
+    [said], _, _ = run("%batten code y ~ poly5 x")
+    assert said["text/plain"].endswith("it was not among those tried.\n")
+
+
 def test_the_table_an_examination_and_a_fit_are_shown_as_pages_with_text_beside(run: Run) -> None:
     run(CELL.replace("castings", "castings --keep exam", 1))
     for code in ("%batten table", "exam", "exam.chosen"):

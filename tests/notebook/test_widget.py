@@ -10,6 +10,7 @@ from collections.abc import Callable, Iterator
 from typing import Any
 
 import ipywidgets
+import pandas as pd
 import pytest
 from ipywidgets import HTMLMath
 from widget_reading import agreeing, all_html, parts_of, placeholder, printed, tags, walk, words
@@ -248,6 +249,40 @@ def test_the_same_asked_backwards_is_the_fits_own_answer(shown: ExamWidget, pump
     assert panel.wanted.value == "much"
 
 
+def test_the_table_at_round_values_is_the_fits_own_and_goes_again(shown: ExamWidget, pumps: Examination) -> None:
+    panel = show_panel(shown, pumps.choice.key, TRY)
+    assert words(panel.table) == ""
+    panel.several.value = True
+    lines = words(panel.table).split("\n")
+    assert lines[0] == "flow, m3/h mean, kWh/m3 median, kWh/m3 low, kWh/m3 high, kWh/m3"
+    wanted = pumps.lookup()
+    assert [line.split()[0] for line in lines[1 : 1 + len(wanted)]] == [f"{x:g}" for x in wanted.index]
+    assert lines[1].split()[1:] == list(agreeing(*wanted.iloc[0][["mean", "median", "low", "high"]]))
+    assert lines[-1] == "Low and high: where 95% of new rows are expected, covariates as in the rows."
+    panel.several.value = False
+    assert words(panel.table) == ""
+
+
+def test_where_the_predictor_holds_dates_the_span_is_typed_and_told_as_dates(quick: None) -> None:
+    frame = batten.sample("glasshouse")
+    exam = batten.examine("yield_kg ~ harvested", frame, only=["y ~ x", "y ~ poly2 x"], folds=4, repeats=1)
+    start, (a, b) = pd.Timestamp(frame["harvested"].min()), exam.question.span
+    box = widget_for(exam, cell_id=None, token="t")
+    parts = parts_of(box)
+    low, high = parts.span.low, parts.span.high
+    days = [str((start + pd.Timedelta(days=end)).date()) for end in (a, b)]
+    assert [low.text.value, high.text.value] == days
+    assert f"harvested counts days from {start.date()}: {a:g} is {days[0]}, {b:g} is {days[1]}." in words(box)
+    low.text.value = str((start + pd.Timedelta(days=a - 3)).date())
+    assert parts.desk.exam.question.span == (a - 3, b)
+    low.text.value = "soon"
+    assert words(parts.span.message.box).startswith("harvested needs a date.")
+    assert parts.desk.exam.question.span == (a - 3, b)
+    parts.span.back.click()
+    assert low.text.value == days[0]
+    box.close()
+
+
 # --- any other remedy -------------------------------------------------------------------------------------------------
 
 
@@ -306,6 +341,52 @@ def test_an_opened_remedy_keeps_its_tab_under_another_aim(shown: ExamWidget) -> 
     shown.compare.first.aim.value = "prediction"
     assert shown.keys.count("log y ~ x") == 1
     assert shown.tabs.children[shown.tabs.selected_index] is shown.remedies["log y ~ x"].box
+
+
+def test_an_opened_tab_can_be_closed_and_opened_again(shown: ExamWidget, pumps: Examination) -> None:
+    shown.picker.field.value = "y ~ poly4 x"
+    shown.picker.field.value = "log y ~ x"
+    first, last = shown.remedies["y ~ poly4 x"], shown.remedies["log y ~ x"]
+    shown.tabs.selected_index = 1 + shown.keys.index("y ~ poly4 x")
+    before = shown.tabs.titles
+    first.shut_button.click()
+    assert shown.tabs.titles == tuple(title for title in before if title != "y ~ poly4 x")
+    assert shown.tabs.selected_index == len(before) - 3
+    assert any(option.startswith("y ~ poly4 x ") for option in shown.picker.field.options)
+    assert "y ~ poly4 x" in shown.desk.exam  # it stays among those tried
+    last.shut_button.click()
+    assert shown.tabs.titles == before[:-2]
+    shown.picker.field.value = "y ~ poly4 x"
+    assert shown.tabs.titles == before[:-1]
+    assert not placeholder(first.heading)
+
+
+def test_only_tabs_that_were_opened_have_a_button_that_closes_them(shown: ExamWidget, pumps: Examination) -> None:
+    shown.picker.field.value = "log y ~ x"
+    closable = {key for key, tab in shown.remedies.items() if tab.shut_button.layout.display != "none"}
+    assert closable == {"log y ~ x"}
+    shown.shut(pumps.choice.key)
+    assert pumps.choice.key in shown.keys
+
+
+def test_whoever_asked_is_told_of_every_change(pumps: Examination, quick: None) -> None:
+    told: list[tuple[Examination, Examination]] = []
+    box = widget_for(pumps, cell_id=None, token="t", changed=lambda *pair: told.append(pair))
+    parts = parts_of(box)
+    parts.picker.field.value = "y ~ poly6 x"
+    parts.compare.first.aim.value = "prediction"
+    parts.span.low.text.value = "61"
+    assert [before for before, _ in told] == [pumps, *(after for _, after in told[:-1])]
+    assert told[-1][1] is parts.desk.exam
+    assert "y ~ poly6 x" in told[0][1]
+    box.close()
+
+
+def test_what_the_picker_refused_is_forgotten_with_the_next_tab(shown: ExamWidget) -> None:
+    shown.picker.field.value = "anything"
+    assert words(shown.picker.message.box) != ""
+    shown.tabs.selected_index = 1
+    assert words(shown.picker.message.box) == ""
 
 
 # --- errors -----------------------------------------------------------------------------------------------------------
@@ -448,6 +529,33 @@ def test_method_names_stay_in_how_this_was_computed_and_cautions_are_few(shown: 
     for tab in shown.remedies.values():
         assert tab.cautions.value.count("batten-caution") <= 2
     assert "".join(all_html(shown.compare.first.reasons)).count("batten-caution") <= 2
+
+
+def test_every_control_can_be_used_and_none_ends_in_a_fault(shown: ExamWidget, pumps: Examination) -> None:
+    shown.picker.field.value = "y ~ poly4 x"
+    visit_all(shown)
+    used = set()
+    for control in dict.fromkeys(walk(shown.box)):
+        kind = type(control).__name__
+        if kind in ("Text", "Combobox"):
+            control.value = "66"
+        elif kind in ("ToggleButtons", "Dropdown"):
+            for index in range(len(control.options)):
+                control.index = index
+        elif kind == "ToggleButton":
+            control.value = not control.value
+        elif kind == "Button":
+            control.click()
+        else:
+            assert kind in ("VBox", "HBox", "HTML", "Label", "Stack", "Tab", "ExamBox"), kind
+            continue
+        used.add(control.description)
+    assert {
+        "Span: flow from", "to", "Back", "Choose for", "Open another remedy", "Open", "Close this tab", "flow", "pump",
+        "Backwards: at which flow (covariates as in the rows) is the mean of energy (kWh/m3)", "Table at round values",
+        "Put into a new cell",
+    } <= used  # fmt: skip
+    assert "Something went wrong" not in "\n".join(all_html(shown.box))
 
 
 def test_hostile_names_are_text_everywhere() -> None:
