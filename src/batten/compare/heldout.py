@@ -9,12 +9,15 @@ cross-products keep their digits; constants searched with the response are searc
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import partial
 
 import numpy as np
 
 from batten.compare.losses import Split, Trained, losses, losses_together
+from batten.compare.many import Folded, score_alike
+from batten.compare.many_means import score_mean_model
+from batten.compare.result import HeldOut, fewer, inverse_or_none, joined, rank_lost, unsafe, unsettled
 from batten.compare.smoothed import smoothed_sets
 from batten.compare.spread import spread_losses
 from batten.engine.folds import Splits
@@ -25,7 +28,7 @@ from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
 from batten.engine.sets import BLOCK, masks, search_sets, solve_means
-from batten.engine.threads import side_by_side
+from batten.engine.threads import MANY_ROWS, side_by_side
 from batten.errors import Refusal
 from batten.families.base import Constants, Link
 from batten.fit.estimate import Estimate
@@ -40,29 +43,6 @@ FULL_STEPS_ROWS = 20_000
 ONE_STEP_ROWS = 20_000
 
 
-@dataclass(frozen=True, eq=False)
-class HeldOut:
-    """Mean losses of every split (S,): squared and absolute error in units of y, share within 10%, log score.
-
-    squared belongs to the mean, absolute to the median; errors are those of a row of average weight, sqrt(w) times the
-    row's own. log_score is None for a pseudo-likelihood. rows (S,): held-out rows of each split.
-    """
-
-    squared: Array
-    absolute: Array
-    within: Array
-    log_score: Array | None
-    rows: Ints
-
-    def overall(self, losses: Array) -> float:
-        """Average over all held-out rows."""
-        return float(losses @ self.rows / self.rows.sum())
-
-    @property
-    def rmse(self) -> float:
-        return float(np.sqrt(self.overall(self.squared)))
-
-
 def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusal]:
     """Scores of every estimate on the same splits, in the order given."""
     if not estimates:
@@ -70,6 +50,7 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
     rows = estimates[0].rows
     # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
     sets = [Split(train, test, np.sort(rows.x[train])) for train, test in splits.sets]
+    folded = [Folded.of(rows, fold, splits.k) for fold in splits.fold] if rows.count > MANY_ROWS else []
     members: list[list[int]] = []
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
@@ -81,24 +62,36 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
 
     def scored(group: list[Estimate]) -> list[HeldOut | Refusal]:
         if group[0].link is not None:
-            return [_score_link(group[0], sets)]
+            return [_score_link(group[0], sets, folded)]
         if group[0].spread is not None:
             return [_score_spread(group[0], sets)]
         if group[0].shape.searched:
             return [_score(group[0], sets, _searched_fits(group[0], sets))]
-        return _score_group(group, sets)
+        return _score_group(group, sets, folded)
 
     results = side_by_side([partial(scored, [estimates[i] for i in some]) for some in members], rows=rows.count)
     found = {i: one for some, many in zip(members, results, strict=True) for i, one in zip(some, many, strict=True)}
     return [found[i] for i in range(len(estimates))]
 
 
-def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Refusal]:
+def _score_group(group: list[Estimate], sets: list[Split], folded: list[Folded]) -> list[HeldOut | Refusal]:
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
     if group[0].roughness is not None:
         return _score_smooth(group, sets, states)
+    if folded and all(state == group[0].state for state in states):
+        near = [joined(parts) for parts in zip(*(score_alike(group, one) for one in folded), strict=True)]
+        # the few whose training sets lie further away are fitted again
+        return [
+            _fitted_group([est], sets, states)[0] if one is None else one for est, one in zip(group, near, strict=True)
+        ]
+    return _fitted_group(group, sets, states)
+
+
+def _fitted_group(group: list[Estimate], sets: list[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
+    """The same by a fit to the rows of every training set."""
+    rows, shape = group[0].rows, group[0].shape
     precondition = group[0].factored.root
     shared = all(state == group[0].state for state in states)
     whole = group[0].factored.q if shared else None
@@ -112,14 +105,14 @@ def _score_group(group: list[Estimate], sets: list[Split]) -> list[HeldOut | Ref
         if basis is None:
             columns = shape.columns(rows.x, states[s])
             if columns.shape[1] * rows.modifier.shape[1] + rows.base.shape[1] != width:
-                return [_fewer(shape.key)] * len(group)
+                return [fewer(shape.key)] * len(group)
             basis = rows.weigh(design(rows, columns) @ precondition)
         held = basis[test]
         if whole is None or not len(cross):
             cross, right = basis.T @ basis, basis.T @ z_fixed
-        inverse = _inverse(cross - held.T @ held)
+        inverse = inverse_or_none(cross - held.T @ held)
         if inverse is None:
-            return [_rank(shape.key)] * len(group)
+            return [rank_lost(shape.key)] * len(group)
         eta = basis @ (inverse @ (right - held.T @ z_fixed[test]))
         v = np.einsum("ij,jk,ik->i", held, inverse, held)
         for j, est in enumerate(group):
@@ -138,7 +131,7 @@ def _score_smooth(group: list[Estimate], sets: list[Split], states: list[Constan
     found = smoothed_sets(group, states, [split.test for split in sets])
     for split, fit in zip(sets, found, strict=True):
         if fit is None:
-            return [_rank(group[0].shape.key)] * len(group)
+            return [rank_lost(group[0].shape.key)] * len(group)
         for j, est in enumerate(group):
             edf, n = float(fit.edf[j]), len(split.train)
             trouble = no_error_left(est.remedy, n, n - edf)
@@ -189,7 +182,7 @@ def _searched_fits(est: Estimate, sets: list[Split]) -> Iterator[Trained | Refus
         z = est.z if c == est.c else rows.weigh(est.scale.forward(rows.y, c))
         fitted = _least_squares(x, z, root, test)
         if fitted is None:
-            yield _rank(shape.key)
+            yield rank_lost(shape.key)
             return
         yield Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
 
@@ -245,7 +238,7 @@ def _least_squares(x: Array, z: Array, root: Array, test: Ints) -> tuple[Array, 
         return None
     basis = x @ root
     held = basis[test]
-    inverse = _inverse(basis.T @ basis - held.T @ held)
+    inverse = inverse_or_none(basis.T @ basis - held.T @ held)
     if inverse is None:
         return None
     eta = basis @ (inverse @ (basis.T @ z - held.T @ z[test]))
@@ -265,7 +258,7 @@ def _score(est: Estimate, sets: list[Split], fits: Iterator[Trained | Refusal]) 
             same = [(place, fit) for place, fit in some if len(sets[place].test) == size]
             losses = losses_together(est, [sets[place] for place, _ in same], [fit for _, fit in same])
             if losses is None:
-                return _unsafe(est)
+                return unsafe(est)
             out[:, [place for place, _ in same]] = losses
     return HeldOut(out[0], out[1], out[2], out[3], np.array([len(split.test) for split in sets]))
 
@@ -276,13 +269,17 @@ def _alike(sets: list[Split], n: int) -> list[list[int]]:
     return [everything] if n * len(sets) <= BLOCK else [[place] for place in everything]
 
 
-def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
+def _score_link(est: Estimate, sets: list[Split], folded: list[Folded]) -> HeldOut | Refusal:
     """Losses of a mean model; its median is the mean times the median of y / mu."""
     rows, shape, link = est.rows, est.shape, est.link
     assert isinstance(link, Link)
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     if shape.searched:
         return _score_searched_link(est, model, sets)
+    if folded and all(shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) == est.state for split in sets):
+        near = joined(tuple(score_mean_model(est, one) for one in folded))
+        assert near is not None
+        return near
     steps = 1 if rows.count > FULL_STEPS_ROWS else 30
     out = np.empty((3, len(sets)))
     block = max(1, BLOCK // (rows.count * len(est.coef)))
@@ -290,7 +287,7 @@ def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
         some = sets[first : first + block]
         states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in some]
         if any(len(state) != len(est.state) for state in states):
-            return _fewer(shape.key)
+            return fewer(shape.key)
         shared = all(state == est.state for state in states)
         x = np.stack([
             design(rows, shape.columns(rows.x, state, est.theta), own_level=shape.own_level)
@@ -300,12 +297,12 @@ def _score_link(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
         mask = mask if rows.weights is None else mask * rows.weights
         done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, steps=steps)
         if not np.isfinite(done.eta).all():
-            return _rank(shape.key)
+            return rank_lost(shape.key)
         if steps > 1 and not done.settled.all():
-            return _unsettled(est)
+            return unsettled(est)
         mu = link.mean(done.eta)
         if not np.isfinite(mu).all():
-            return _unsafe(est)
+            return unsafe(est)
         for s, split in enumerate(some):
             out[:, first + s] = _losses_of_means(rows, mu[s], split)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
@@ -333,7 +330,7 @@ def _score_searched_link(est: Estimate, model: Mean, sets: list[Split]) -> HeldO
         with np.errstate(all="ignore"):
             mu = model.mean(design(rows, columns, own_level=shape.own_level) @ found.coef)
         if not np.isfinite(mu).all():
-            return _unsafe(est)
+            return unsafe(est)
         out[:, s] = _losses_of_means(rows, mu, split)
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
 
@@ -342,45 +339,5 @@ def _score_spread(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
     """Losses of a remedy whose weights are learned."""
     found = spread_losses(est, sets)
     if isinstance(found, str):
-        return _fewer(est.shape.key) if found == "fewer" else _rank(est.shape.key)
+        return fewer(est.shape.key) if found == "fewer" else rank_lost(est.shape.key)
     return HeldOut(found[0], found[1], found[2], found[3], np.array([len(split.test) for split in sets]))
-
-
-def _inverse(cross: Array) -> Array | None:
-    """Inverse of a near-identity cross-product, or None where the training set lost a direction."""
-    values, vectors = np.linalg.eigh(cross)
-    if values[0] < 1e-10 * max(1.0, values[-1]):
-        return None
-    return np.asarray((vectors / values) @ vectors.T)
-
-
-def _rank(shape: str) -> Refusal:
-    return Refusal(
-        wrong="One training set cannot fit this remedy.",
-        seen=f"With a tenth of the rows held out, columns of {shape} or of the covariates coincide.",
-        instead="Fewer columns, or merge levels that few rows have.",
-    )
-
-
-def _fewer(shape: str) -> Refusal:
-    return Refusal(
-        wrong="One training set has too few different values for this remedy.",
-        seen=f"{shape} loses a knot or a group when a tenth of the rows is held out.",
-        instead="Fewer knots or groups, or edges given by hand: bins(10, 20) x.",
-    )
-
-
-def _unsettled(est: Estimate) -> Refusal:
-    return Refusal(
-        wrong="The fit of this mean model does not settle in every training set.",
-        seen=f"With a tenth of the rows held out a coefficient of {est.remedy.key} runs away.",
-        instead="A scale of y (log y, sqrt y), fewer columns, or merge levels that few rows have.",
-    )
-
-
-def _unsafe(est: Estimate) -> Refusal:
-    return Refusal(
-        wrong="Held-out predictions leave what this scale can undo.",
-        seen=f"In at least one training set {est.remedy.key} gives rows no finite mean.",
-        instead="log y or a log link, whose mean always exists.",
-    )

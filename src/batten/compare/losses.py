@@ -12,7 +12,7 @@ from batten.families.base import Constants, Scale
 from batten.fit.estimate import Estimate
 from batten.fit.smear import mean_of
 
-__all__ = ["Split", "Trained", "log_t", "losses", "losses_together"]
+__all__ = ["Split", "Trained", "log_t", "losses", "losses_together", "sound"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,7 +48,7 @@ def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Ar
     weighted = np.take_along_axis(every, test, axis=1)
     eta = weighted if rows.weights is None else weighted / root[test]
     residual = np.take_along_axis(z, train, axis=1) - np.take_along_axis(every, train, axis=1)
-    if not _sound(scale, c, eta, residual):
+    if not sound(scale, c, eta, residual):
         return None
     middle = eta + np.median(residual, axis=1)[:, None]
     with np.errstate(all="ignore"):
@@ -58,13 +58,14 @@ def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Ar
         return None
     df = train.shape[1] - np.array([fit.columns for fit in fits])
     jacobian = np.stack([scale.log_jacobian(y[rows], k) for rows, k in zip(test, c, strict=True)])
-    score = log_t(np.take_along_axis(z, test, axis=1) - weighted, residual, np.stack([fit.v for fit in fits]), df)
+    rss = (residual**2).sum(axis=1)
+    score = log_t(np.take_along_axis(z, test, axis=1) - weighted, rss, np.stack([fit.v for fit in fits]), df)
     if rows.weights is not None:
         jacobian = jacobian + np.log(root[test])
     return np.vstack([losses(y[test], mean, median, rows.weights, test), (score + jacobian).mean(axis=1)])
 
 
-def _sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
+def sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
     """Whether every eta, and every pair eta + e, can be brought back in every set.
 
     A closed boundary is kept to; an open one, where the inverse is infinite, must not be reached.
@@ -83,7 +84,7 @@ def _sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> boo
     return True
 
 
-def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: Ints) -> Array:
+def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: Ints | slice) -> Array:
     """Mean losses over the last axis of the held-out rows `test`: (..., n) -> (3, ...)."""
     squared, absolute, within = (y - mean) ** 2, np.abs(y - median), np.abs(y - mean) <= 0.1 * np.abs(y)
     if weights is not None:
@@ -91,10 +92,13 @@ def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: In
     return np.array([squared.mean(axis=-1), absolute.mean(axis=-1), within.mean(axis=-1)])
 
 
-def log_t(error: Array, residual: Array, v: Array, df: Array) -> Array:
-    """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance."""
+def log_t(error: Array, rss: Array, v: Array, df: Array) -> Array:
+    """Log density of held-out z (S, n) under the t predictive distribution with estimated coefficients and variance.
+
+    rss, df (S,): residual sum of squares of the training rows and its degrees of freedom.
+    """
     d = df[:, None]
-    variance = ((residual**2).sum(axis=1) / df)[:, None] * (1 + v)
+    variance = (rss / df)[:, None] * (1 + v)
     return np.asarray(
         gammaln((d + 1) / 2) - gammaln(d / 2) - 0.5 * np.log(d * np.pi * variance)
         - (d + 1) / 2 * np.log1p(error**2 / (variance * d))

@@ -16,7 +16,7 @@ from scipy.optimize import minimize_scalar
 
 from batten.engine.rows import Array, Ints
 
-__all__ = ["Power", "best_power", "fold_powers", "profile_likelihood"]
+__all__ = ["Power", "best_power", "fold_powers", "likelihood_width", "peaks", "profile_likelihood"]
 
 SCAN_ROWS = 5_000
 #: places around the optimum through which a training set's profile is interpolated
@@ -105,11 +105,11 @@ def fold_powers(
         if not (rss > 0).all():
             return None
         likelihood[:, s] = -0.5 * n * np.log(rss / n) + jump - jacobian[rows].sum(axis=0)
-    at = _peaks(likelihood, nodes)
+    at = peaks(likelihood, nodes)
     return None if at is None else low + (at + 1) * (high - low) / 2
 
 
-def _peaks(values: Array, nodes: Array) -> Array | None:
+def peaks(values: Array, nodes: Array) -> Array | None:
     """Where the Chebyshev interpolants of values (nodes, S) peak, (S,) in -1..1; None where one has no peak inside."""
     fitted = dct(values - values.max(axis=0), type=2, axis=0) / len(values)
     fitted[0] /= 2
@@ -124,6 +124,13 @@ def _peaks(values: Array, nodes: Array) -> Array | None:
         if np.abs(step).max() < 1e-12:
             break
     return at if (chebyshev.chebval(at, bend, tensor=False) < 0).all() else None
+
+
+def likelihood_width(power: Power, y: Array, q: Array, best: float) -> float:
+    """Standard error of lambda at many rows, from a thinned sample of them; q (n, p): columns of the design."""
+    every = max(1, len(y) // SCAN_ROWS)
+    thin = np.linalg.qr(q[::every])[0]
+    return _width(power, y[::every], thin, best) * float(np.sqrt(len(thin) / len(y)))
 
 
 def _width(power: Power, y: Array, q: Array, best: float) -> float:

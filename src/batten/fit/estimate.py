@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
@@ -180,23 +180,23 @@ class Estimate:
         """Value and slope of the scale at the median of y (the value is 0 where no constant can take it up)."""
         return pivot(self, self.c[0])
 
-    def moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
+    def moves(self, *, leave_out: bool = True) -> Array:
         """Change of (coef, theta, c) when row i, or cluster i, is left out: (n, P) or (G, P).
 
-        Exact for linear remedies, else one step. rows: only these (without clusters).
+        Exact for linear remedies, else one step.
         leave_out=False gives the first-order influence (HC0-type) instead, with the same sign.
         """
         if self.remedy.left.searched:
             each = -self._without_drift(likelihood_moves(self)) * self._stretch(leave_out)[:, None]
-            return each[rows] if self.clusters is None else self.clusters.sums(each)
-        return self.linear_moves(leave_out=leave_out, rows=rows)
+            return each if self.clusters is None else self.clusters.sums(each)
+        return self.linear_moves(leave_out=leave_out)
 
-    def linear_moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
+    def linear_moves(self, *, leave_out: bool = True) -> Array:
         """`moves` of (coef, theta) with the scale's constants held."""
         score = self._score()
         if self.clusters is not None:
             return -self.clusters.scores(self.factored.q, score, leave_out=leave_out) @ self.factored.root.T
-        return -(self.factored.q[rows] @ self.factored.root.T) * (score * self._stretch(leave_out))[rows, None]
+        return -(self.factored.q @ self.factored.root.T) * (score * self._stretch(leave_out))[:, None]
 
     def _stretch(self, leave_out: bool) -> Array:
         """What leaving a row out makes of its residual, 1 / (1 - h) (n,); ones to first order.
@@ -250,6 +250,22 @@ class Estimate:
             return self.residual
         side = np.sign(self.link.mean_slope(self.eta))
         return self.rows.weigh(side * self.residual / np.sqrt(self.link.variance(self.mu)))
+
+    def part(self, rows: Ints) -> Estimate:
+        """The same fit seen on some of its rows only, an even part: what it leaves of them, and how they move it.
+
+        Covariances of the part are n / len(rows) times those of the whole.
+        """
+        stretch = np.sqrt(self.n / len(rows))
+        few = Factored(self.factored.q[rows] * stretch, self.factored.r / stretch, self.factored.length)
+        part = replace(
+            self, rows=self.rows.take(rows), z=self.z[rows], eta=self.eta[rows], residual=self.residual[rows],
+            factored=few,
+        )  # fmt: skip
+        few.__dict__["root"] = self.factored.root * stretch
+        # a row is left out of all rows, not of the part
+        part.__dict__["leverage"] = np.minimum(few.leverage / stretch**2, 1 - 1e-9)
+        return part
 
     @cached_property
     def bias_moves(self) -> Array:

@@ -9,7 +9,7 @@ over. Leaving row i out changes all three (jackknife, up to 3,000 rows); to firs
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -90,7 +90,7 @@ def averaged_means(
 
     base (u, q), modifier (u, m): covariate rows to average over instead of the rows' own, taken as fixed.
     weights (u,): their weights, summing to one; equal when None. root=False leaves the uncertainty out.
-    rows: have the uncertainty from an even part of the rows (see `with_errors`).
+    rows: have the uncertainty from these rows alone, an even part of all (clusters count in full).
     """
     tar = target(est, np.asarray(xs, dtype=float), base=base, modifier=modifier)
     share = tar.count / tar.count.sum() if weights is None else weights
@@ -137,34 +137,44 @@ def _with_errors(
     jackknife: bool = True,
     rows: Ints | None = None,
 ) -> Averaged:
+    if rows is not None and est.clusters is None:
+        return _from_part(est, tar, share, of, errors=errors, rows=rows)
+
     def values(move: Array, keep: Array | None) -> Array:
         return _values(est, tar, share, of, move, keep)
 
-    def own_shares(value: Array, some: Ints | slice) -> list[Share]:
-        return [part for part in _direct_parts(est, tar, share, of, value, some) if part is not None]
+    def own_shares(value: Array) -> list[Share]:
+        return [part for part in _direct_parts(est, tar, share, of, value) if part is not None]
 
     return with_errors(
-        est, values, own_shares, parameters=tar.jacobian.shape[2], of=of, errors=errors, jackknife=jackknife, rows=rows
+        est, values, own_shares, parameters=tar.jacobian.shape[2], of=of, errors=errors, jackknife=jackknife
     )
+
+
+def _from_part(est: Estimate, tar: Target, share: Array, of: str, *, errors: str, rows: Ints) -> Averaged:
+    """Values from all rows, their uncertainty from an even part of them, shrunk to stand for all."""
+    pattern = None if tar.pattern is None else tar.pattern[rows]
+    some = _with_errors(est.part(rows), replace(tar, pattern=pattern), share, of, errors=errors, jackknife=False)
+    value, shrink = _plain(est, tar, share, of).value, np.sqrt(len(rows) / est.n)
+    bias = None if some.bias is None else some.bias * shrink
+    return replace(some, value=value, loads=some.loads * shrink, df=est.df_error, bias=bias)
 
 
 def with_errors(
     est: Estimate,
     values: Callable[[Array, Array | None], Array],
-    own_shares: Callable[[Array, Ints | slice], list[Share]],
+    own_shares: Callable[[Array], list[Share]],
     *,
     parameters: int,
     of: str,
     errors: str,
     jackknife: bool = True,
-    rows: Ints | None = None,
 ) -> Averaged:
     """A functional of the rows with its uncertainty.
 
     values(move (R, P), keep (R, n) or None) -> (R, G): the functional when the parameters have moved and row j counts
-    keep times. own_shares(value (G,), rows) -> arrays (n, G): row i's share in each average it enters, minus the value,
-    or (features (n, r), loads (r, G)) whose product that is. rows: the uncertainty from these rows alone, an even part
-    of all, stretched to stand for all (clusters count in full).
+    keep times. own_shares(value (G,)) -> arrays (n, G): row i's share in each average it enters, minus the value,
+    or (features (n, r), loads (r, G)) whose product that is.
     """
     value = values(np.zeros((1, parameters)), None)[0]
     if errors == "robust" and jackknife and jackknifed(est, of):
@@ -173,16 +183,11 @@ def with_errors(
         left = np.where(np.isfinite(left), left, np.nan)
         bias = None if est.roughness is None else _along(values, est.bias_moves)
         return Averaged(value, jackknife_root(left), left, est.df_error, bias=bias)
-    rows = rows if est.clusters is None else None
-    some: Ints | slice = slice(None) if rows is None else rows
-    moves = est.moves(rows=some) * est.few_clusters
+    moves = est.moves() * est.few_clusters
     gradient = _gradient(values, moves)
-    shares = own_shares(value, some)
+    shares = own_shares(value)
     if est.clusters is not None:
         shares = [_summed(part, est.clusters) for part in shares]
-    if rows is not None:
-        moves, stretch = moves * np.sqrt(est.n / len(rows)), np.sqrt(est.n / len(rows))
-        shares = [(part[0] * stretch, part[1]) if isinstance(part, tuple) else part * stretch for part in shares]
     if errors == "constant":
         root = np.linalg.cholesky(est.covariance("constant")).T @ gradient
         parts = [_whole(part) / est.n for part in shares]
@@ -300,22 +305,19 @@ def by_replicate(undo: Callable[[Array, Constants], Array], own: OwnScale, eta: 
     return np.stack([undo(row, c) for row, c in zip(eta, own.c, strict=True)])
 
 
-def _direct_parts(
-    est: Estimate, tar: Target, share: Array, of: str, value: Array, rows: Ints | slice
-) -> tuple[Share | None, Share | None]:
+def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Array) -> tuple[Share | None, Share | None]:
     """Row i's own share in the average over residuals and in the average over covariates, minus the value."""
     by_residual: Share | None = None
     if of == "median":
-        by_residual = middle(est).influence[rows, None], _lean(est, tar, share)[None]
+        by_residual = middle(est).influence[:, None], _lean(est, tar, share)[None]
     elif est.link is None and est.scale.closed != "identity":
-        by_residual = _residual_part(est, tar, share, value, rows)
+        by_residual = _residual_part(est, tar, share, value)
     by_covariate: Share | None = None
     if tar.pattern is not None and len(share) > 1:
         still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
         back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1) - value
         few = len(share) <= FEW_PATTERNS
-        pattern = tar.pattern[rows]
-        by_covariate = ((pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[pattern]
+        by_covariate = ((tar.pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[tar.pattern]
     return by_residual, by_covariate
 
 
@@ -326,8 +328,8 @@ def _lean(est: Estimate, tar: Target, share: Array) -> Array:
     return np.asarray(share @ est.scale.inverse_slope(tar.eta + middle(est).value, est.c))
 
 
-def _residual_part(est: Estimate, tar: Target, share: Array, value: Array, rows: Ints | slice) -> Share:
-    e = est.residual[rows]
+def _residual_part(est: Estimate, tar: Target, share: Array, value: Array) -> Share:
+    e = est.residual
     if est.scale.closed == "exp":
         each = np.column_stack([np.exp(e), np.ones(len(e))])
         return each, np.vstack([share @ np.exp(tar.eta), -value])

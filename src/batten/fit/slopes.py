@@ -110,8 +110,8 @@ def _averaged(
                 out[start : start + block, g] = np.einsum("ru,ru->r", slope, weights)
         return out
 
-    def own_shares(value: Array, some: Ints | slice) -> list[Share]:
-        parts: list[Array] = []
+    def own_shares(value: Array) -> list[Share]:
+        parts: list[Share] = []
         if pattern is not None and len(share) > 1:
             back = _slope_back(est, of, np.zeros((1, places[0].eta_pull.shape[1])), None)
             still = np.column_stack([back(at.eta[None])[0] * at.steep for at in places])
@@ -120,7 +120,7 @@ def _averaged(
             parts.append(middle(est).influence[:, None] * [_lean(est, at, share) for at in places])
         elif est.link is None and est.scale.closed != "identity":
             parts.append(np.column_stack([_residual_part(est, at, share) for at in places]) - value)
-        return [part[some] for part in parts]
+        return parts
 
     return with_errors(
         est, values, own_shares, parameters=places[0].eta_pull.shape[1], of=of, errors=errors, jackknife=jackknife
