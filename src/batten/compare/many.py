@@ -26,7 +26,7 @@ __all__ = ["Folded", "score_alike"]
 
 #: places beside the best power of y through which responses are interpolated, in standard errors of the power: K
 #: training sets' powers spread by 1 / sqrt(K - 1) of one
-PLACES = np.array([-1.4, -0.6, 0.6, 1.4])
+PLACES = np.array([-2.0, -1.2, -0.5, 0.5, 1.2, 2.0])
 #: places at which a training set's likelihood is taken
 CHEBYSHEV = 12
 
@@ -125,13 +125,17 @@ def _plain_sets(est: Estimate, folded: Folded, basis: _Basis) -> _Sets:
 
 
 def _with_powers(est: Estimate, folded: Folded, basis: _Basis) -> _Sets | None:
-    """The power of y learned again in every training set; responses are interpolated between a few near powers.
+    """The power of y learned again in every training set; None where the likelihood of one peaks far away."""
+    width = likelihood_width(scale_power(est.scale, folded.rows), folded.rows.y, basis.a, est.c[0])
+    # errors that are far from normal move the power further
+    tried = (_near_powers(est, folded, basis, stretch * width) for stretch in (1.0, 3.0))
+    return next((sets for sets in tried if sets is not None), None)
 
-    None where the likelihood of one of them peaks further away.
-    """
+
+def _near_powers(est: Estimate, folded: Folded, basis: _Basis, width: float) -> _Sets | None:
+    """The same by responses interpolated between a few near powers; None where a likelihood peaks beyond them."""
     rows, a = folded.rows, basis.a
     power = scale_power(est.scale, rows)
-    width = likelihood_width(power, rows.y, a, est.c[0])
     e, z = est.residual[folded.order], est.z[folded.order]
     near = np.column_stack([power.forward(rows.y, est.c[0] + width * place) for place in PLACES]) - z[:, None]
     along = a.T @ near
