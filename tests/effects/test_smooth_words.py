@@ -74,6 +74,9 @@ def test_degrees_of_freedom_stand_among_the_constants_without_an_interval() -> N
     assert freedom.estimate == curve_freedom(est)[0]
     assert np.isnan(freedom.low)
     assert "a straight line takes 1" in freedom.note
+    knots = found["number of knots"]
+    assert knots.estimate == len(est.state)
+    assert knots.note.startswith(f"from {est.state[0]:.6g} to {est.state[-1]:.6g}; where the curve in mass may bend")
 
 
 def test_the_top_of_a_smooth_curve_is_found_with_its_set() -> None:

@@ -26,6 +26,9 @@ from batten.fit.searched import weighted_design
 
 __all__ = ["Constant", "learned_constants"]
 
+#: more constants of one kind than this are counted, not listed
+LISTED = 12
+
 Kind = Literal["power of y", "power of x", "place in x", "curve", "listed", "spread", "fixed"]
 
 
@@ -214,6 +217,11 @@ def _of_code(code: Code, searched: Constants) -> list[Constant]:
         if set(values) <= set(searched):
             continue
         word = name.lower().replace("_", " ")
+        if len(values) > LISTED:
+            reach = f"from {values[0]:.6g} to {values[-1]:.6g}"
+            note = f"{reach}; {comment}; fixed beforehand, no interval"
+            out.append(Constant(f"number of {word}", "fixed", float(len(values)), note=note))
+            continue
         single = word.removesuffix("s") if isinstance(value, tuple) else word
         for i, number in enumerate(values, start=1):
             label = f"{single} {i}" if isinstance(value, tuple) else single
