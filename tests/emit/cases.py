@@ -68,10 +68,13 @@ def write(
     env: Mapping[str, Any] | None = None,
     units: Mapping[str, str] | None = None,
     frame_name: str = "castings",
+    beside: Mapping[str, Any] | None = None,
     **asked: Any,
 ) -> Written:
-    """Read, fit and write; the remedy must be usable on these rows."""
-    problem = read(formula, data, focus=focus, rows=rows, at=at, env=env, units=units, frame_name=frame_name)
+    """Read, fit and write; the remedy must be usable on these rows. beside: weights, clusters, exposure."""
+    problem = read(
+        formula, data, focus=focus, rows=rows, at=at, env=env, units=units, frame_name=frame_name, **(beside or {})
+    )
     est = estimate(problem.rows, parse(key))
     assert isinstance(est, Estimate), (key, formula, est)
     question = Question(span=asked.pop("span", round_span(problem.rows.x)), at=dict(at or {}), **asked)

@@ -8,7 +8,7 @@ from batten.emit.parts import Parts
 from batten.emit.powers import power_moves
 from batten.emit.smoothing import smooth_fit
 from batten.emit.text import WIDTH, literal, noted, wrapped
-from batten.emit.weights import weighted_fit
+from batten.emit.weights import beside_lines, clusters_left_out, data_lines, learned_fit
 
 __all__ = ["fitting"]
 
@@ -43,17 +43,18 @@ def _chosen(parts: Parts) -> str:
 
 
 def _rows(parts: Parts) -> list[str]:
-    response, lines, data = parts.problem.response, [], parts.frame
-    if _chosen(parts):
-        data = "data"
-        lines = wrapped(f"data = {parts.frame}.query({literal(_chosen(parts))})")
-    text = any(f"{response} (stored as text)" in said for said in parts.problem.announcements)
-    lines += wrapped(f"rows = columns({data}, {read_numbers(response, data, text=text)}).dropna()")
+    lines = data_lines(parts, _chosen(parts))
+    data = "data" if lines else parts.frame
+    response, exposure = parts.problem.response_column or parts.problem.response, parts.problem.beside.exposure
+    y = read_numbers(response, data, text=parts.as_text(response))
+    if exposure is not None:
+        y += f" / {read_numbers(exposure, data, text=parts.as_text(exposure))}"
+    lines += wrapped(f"rows = columns({data}, {y}).dropna()")
     lines.append(f'used, y = {data}.iloc[rows.index], rows["y"].to_numpy()')
     if parts.left.check is not None:
         condition, words = parts.left.check
         lines += wrapped(f"assert ({condition}).all(), {literal(words)}")
-    return lines
+    return [*lines, *beside_lines(parts)]
 
 
 # --- least squares ----------------------------------------------------------------------------------------------------
@@ -64,7 +65,7 @@ def _ols(parts: Parts) -> list[str]:
     lines += _fit(parts)
     w = "w" if parts.weighted else ""
     values = {
-        "X": _design_of_rows(parts),
+        "X": f"fit.model.{w}exog" if not parts.searched else f"design(used){' * v[:, None]' if w else ''}",
         "z": f"fit.model.{w}endog",
         "e": f"fit.{w}resid.to_numpy()",
         "b": _coefficients(parts),
@@ -84,15 +85,17 @@ def _ols(parts: Parts) -> list[str]:
     if not parts.power:
         return lines
     weight = "np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "out / e"
-    return [*lines, *power_moves(weight)]
+    return [*lines, *power_moves(parts, "1 / (1 - h)" if parts.clustered else weight)]
 
 
 def _fit(parts: Parts) -> list[str]:
     source = "bent(LAMBDA)" if parts.power else parts.left.columns[0][1]
     response = "" if parts.kind == "identity" else f".assign({parts.response}={source})"
     fit = f"fit = smf.ols(MODEL, rows{response})"
+    if parts.weigher:
+        fit = f"fit = smf.wls(MODEL, rows{response}, weights=v**2)"
     if parts.est.spread is not None:
-        return weighted_fit()
+        return learned_fit(parts)
     if parts.uneven:
         return noted(f'{fit}.fit(method="qr")', "columns differ much in size: QR keeps their digits")
     if parts.robust and not parts.own_table:
@@ -100,10 +103,6 @@ def _fit(parts: Parts) -> list[str]:
         why = "  # errors may differ in size"
         return [code + (why if len(code + why) <= WIDTH else "")]
     return wrapped(f"{fit}.fit()")
-
-
-def _design_of_rows(parts: Parts) -> str:
-    return "design(used)" if parts.searched else "fit.model.wexog" if parts.weighted else "fit.model.exog"
 
 
 def _coefficients(parts: Parts) -> str:
@@ -117,6 +116,8 @@ def _coefficients(parts: Parts) -> str:
 def _deletions(parts: Parts) -> list[str]:
     """without: coefficients with each row left out; out: its error around that fit."""
     out, without = "# each row's error around the fit without it", "# coefficients with each row left out"
+    if parts.clustered:
+        return _clusters(parts)
     if parts.power:
         made = ["Q, R = np.linalg.qr(X)", f"out = e / (1 - {parts.leverages})"]
         lines = made if parts.triangle else ["out = fit.get_influence().resid_press"]
@@ -139,6 +140,18 @@ def _deletions(parts: Parts) -> list[str]:
     return [*lines, f"out = {y} - (X * without).sum(axis=1)  {out}"]
 
 
+def _clusters(parts: Parts) -> list[str]:
+    """The same for clusters: coefficients without each, and rows' errors around the fit without their own."""
+    lines = ["Q, R = np.linalg.qr(X)", *wrapped(clusters_left_out("e"))]
+    if parts.power:
+        lines.append(f"h = {parts.leverages}")
+    else:
+        lines.append("without = b - np.linalg.solve(R, lost.T).T  # coefficients with each cluster left out")
+    if parts.ordered:
+        lines.append("out = e + (Q * lost[group]).sum(axis=1)  # each row's error around the fit without its cluster")
+    return lines
+
+
 # --- links ------------------------------------------------------------------------------------------------------------
 
 
@@ -146,29 +159,41 @@ def _glm(parts: Parts) -> list[str]:
     family, weight, score = _LINKS[parts.est.remedy.left.key]
     scale = "" if parts.robust else 'scale="X2", '
     settled = f'fit({scale}tol=0, rtol=1e-10, tol_criterion="params")'
-    code = f"fit = smf.glm(MODEL, rows, family=families.{family}).{settled}"
-    lines = wrapped(code)
+    weights = ", var_weights=v**2" if parts.weigher else ""
+    lines = wrapped(f"fit = smf.glm(MODEL, rows, family=families.{family}{weights}).{settled}")
     if parts.kind == "invlink":
         warned = 'warnings.filterwarnings("ignore", "The InversePower link")'
         lines = [f"{warned}  # it warns of means below zero; here all lie above", *lines]
-    lines.append(f"X, b, mu = {_design_of_rows(parts)}, {_coefficients(parts)}, fit.mu")
-    why = "each row left out by a Newton step: GLM's HC3 is HC0"
+    X = "design(used)" if parts.searched else "fit.model.exog"
+    lines.append(f"X, b, mu = {X}, {_coefficients(parts)}, fit.mu")
     if parts.triangle:
-        lines += [
-            f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})",
-            f"score = {score}",
-            f"# {why}",
-            f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T",
-        ]
-        if parts.needs_s2:
-            lines.append(f"s2 = score @ score / {parts.est.df_residual}")
+        lines += _newton(parts, weight, score)
     else:
+        why = "each row left out by a Newton step: GLM's HC3 is HC0"
         lines += noted("without = b - fit.get_influence(observed=False).d_params", why)
-    lines.append(
-        f"out = y {'-' if parts.kind == 'share' else '/'} {undo(parts, '(X * without).sum(axis=1)')}"
-        "  # each row against the mean without it"
-    )
+    lines += noted(f"out = {_against(parts)}", "each row against the mean without it")
     return [*lines, *_table(parts)]
+
+
+def _newton(parts: Parts, weight: str, score: str) -> list[str]:
+    """without, where statsmodels' own step does not serve."""
+    if parts.weigher:
+        weight, score = f"(v * {weight})" if weight else "v", f"v * ({score})"
+    lines = [f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})", f"score = {score}"]
+    lines += [f"s2 = score @ score / {parts.est.df_residual}"] if parts.needs_s2 else []
+    if parts.clustered:
+        lines += [*wrapped(clusters_left_out("score")), "# each cluster left out, by one Newton step"]
+        return [*lines, "without = b - np.linalg.solve(R, lost.T).T"]
+    lines.append("# each row left out by a Newton step: GLM's HC3 is HC0")
+    return [*lines, f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T"]
+
+
+def _against(parts: Parts) -> str:
+    """Each row against its mean without it, that of a row of average weight: a ratio, for shares a difference."""
+    own = undo(parts, f"(X * without{'[group]' if parts.clustered else ''}).sum(axis=1)")
+    if parts.kind == "share":
+        return f"v * (y - {own})" if parts.weigher else f"y - {own}"
+    return f"np.maximum(1 + v * (y / {own} - 1), 0)" if parts.weigher else f"y / {own}"
 
 
 # --- table ------------------------------------------------------------------------------------------------------------
@@ -180,10 +205,12 @@ def _table(parts: Parts) -> list[str]:
         return ['print(table := pd.DataFrame({"estimate": fit.params, "std_error": fit.bse}))']
     if not parts.robust:
         spread = "s2 * (np.linalg.inv(R) ** 2).sum(axis=1)"
+    elif parts.power and parts.clustered:
+        spread = "(1 - 1 / len(lost)) * (np.linalg.solve(R, lost.T) ** 2).sum(axis=1)"
     elif parts.power:
         spread = "(np.linalg.solve(R, Q.T * out) ** 2).sum(axis=1)"
     else:
-        spread = "((without - b) ** 2).sum(axis=0)"
+        spread = f"{parts.few}((without - b) ** 2).sum(axis=0)"
     estimate, index = "fit.params", ""
     if parts.searched:
         estimate = f"[*fit.params, {', '.join(parts.searched)}]"

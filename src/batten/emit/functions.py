@@ -180,7 +180,8 @@ def _mean_of_pairs(parts: Parts) -> list[str]:
 
 
 def _predict(parts: Parts) -> list[str]:
-    text = f"{parts.y} of one further row: median, mean, {parts.percent} interval{_way(parts)}."
+    row = "row of average weight" if parts.weigher else "row from a new cluster" if parts.clustered else "row"
+    text = f"{parts.y} of one further {row}: median, mean, {parts.percent} interval{_way(parts)}."
     known = "columns(frame).notna().all(axis=1)"
     limits = _limits(parts)
     lines = [f"    N, known = design(frame), {known}"]
@@ -217,7 +218,8 @@ def _limits(parts: Parts) -> str:
 def _targets(parts: Parts) -> str:
     """Median, mean and the ends of the interval."""
     if parts.link:
-        return '"median": mean * np.median(y / mu), "mean": mean, "low": low, "high": high'
+        ratio = "1 + v * (y / mu - 1)" if parts.weigher else "y / mu"
+        return f'"median": mean * np.median({ratio}), "mean": mean, "low": low, "high": high'
     eta = "N @ b"
     mean = {"identity": eta, "exp": f"np.exp({eta}) * smear"}.get(parts.kind, f"mean({eta}, e)")
     return f'"median": {undo(parts, f"{eta} + np.median(e)")}, "mean": {mean}, "low": low, "high": high'
@@ -228,9 +230,11 @@ def _new_row(parts: Parts) -> list[str]:
     first, last = parts.rank, -1 - parts.rank
     lines = []
     if not parts.ordered:
-        own = "1" if parts.est.spread is None else f"{root_of('N')} ** -2"
-        half = f"{parts.t_name} * np.sqrt(s2 * ({own} + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
-        lines = [f"    half = {half}"]
+        own = "1"
+        if parts.est.spread is not None:
+            lines, own = [f"    roots = {root_of('N')}"], "roots**-2"
+        half = f"{parts.row_t_name} * np.sqrt(s2 * ({own} + (np.linalg.solve(R.T, N.T) ** 2).sum(axis=0)))"
+        lines.append(f"    half = {half}")
         ends = "np.array([N @ b - half, N @ b + half])"
     elif parts.many:
         ends = f"np.add.outer(np.sort(out)[[{first}, {last}]], N @ b)"
@@ -238,6 +242,8 @@ def _new_row(parts: Parts) -> list[str]:
             ends = f"N @ b + np.sort(out)[[{first}, {last}]][:, None] / {root_of('N')}"
     else:
         without = "without[:, :-2]" if parts.power else "without"
+        if parts.clustered:
+            without = "without[group, :-2]" if parts.power else "without[group]"
         each = "np.sort(WITHOUT @ row + out)[[FIRST, LAST]] for row in N"
         if parts.est.spread is not None:
             lines = [f"    roots = {root_of('N')}"]
@@ -258,6 +264,7 @@ def _new_row_of_link(parts: Parts) -> list[str]:
         how = "np.add.outer" if share else "np.multiply.outer"
         ends = f"{how}(np.sort(out)[[{first}, {last}]], mean)"
         return [mean, f"    low, high = {f'np.clip({ends}, 0, 1)' if share else ends}"]
-    value = f"{undo(parts, 'without @ row')} {'+' if share else '*'} out"
+    without = "without[group]" if parts.clustered else "without"
+    value = f"{undo(parts, f'{without} @ row')} {'+' if share else '*'} out"
     value = f"np.clip({value}, 0, 1)" if share else value
     return [mean, f"    low, high = np.transpose([np.sort({value})[[{first}, {last}]] for row in N])"]

@@ -47,6 +47,10 @@ class Parts:
         """Stands for the user's frame, at its width, until no name of the script can be taken for it."""
         return PLACE * len(self.problem.frame_name)
 
+    def as_text(self, column: str) -> bool:
+        """Whether a column's numbers are stored as text."""
+        return any(f"{column} (stored as text)" in told for told in self.problem.announcements)
+
     @property
     def link(self) -> bool:
         return self.est.link is not None
@@ -150,26 +154,59 @@ class Parts:
         return self.est.rows.weights is not None
 
     @property
+    def weigher(self) -> str:
+        """The column that weights come from, a weight or an exposure, or ""."""
+        beside = self.problem.beside
+        return beside.exposure or (beside.weights or "") * (beside.weights_kind == "variance")
+
+    @property
+    def clustered(self) -> bool:
+        """Whether clusters are left out in the place of rows, as links and powers always ask."""
+        return self.est.rows.cluster is not None and (self.robust or self.link or self.power)
+
+    @property
+    def grouped(self) -> bool:
+        """Whether the script needs to know which rows belong together."""
+        return self.clustered or (self.est.rows.cluster is not None and not self.tested and not self.deletes)
+
+    @property
+    def few(self) -> str:
+        """Source of the factor of few clusters in a sum of squares, or ""."""
+        return "(1 - 1 / len(without)) * " if self.clustered else ""
+
+    @property
     def own_table(self) -> bool:
         """Whether statsmodels' own standard errors are not the ones in use."""
         if self.link:
-            return self.robust or bool(self.searched)
-        return bool(self.searched) or self.alone or self.uneven or self.weighted
+            return self.robust or bool(self.searched) or self.weighted
+        return bool(self.searched) or self.alone or self.uneven or self.weighted or self.clustered
 
     @property
     def triangle(self) -> bool:
         """Whether the script decomposes the design itself, where refits by statsmodels do not serve or take long."""
         if self.link:
             # statsmodels takes the slope of an inverse link, which falls, as rising
-            return self.alone or self.kind == "invlink" or bool(self.searched)
+            own = self.alone or self.weighted or self.clustered
+            return own or self.kind == "invlink" or bool(self.searched)
         rough = bool(self.searched) and (self.power or self.est.n > FEW or self.mixed or not self.level_there)
-        rough = rough or self.alone or self.uneven or self.weighted
+        rough = rough or self.alone or self.uneven or self.weighted or self.clustered
         return rough or not self.ordered or (self.many and self.uses_without)
+
+    @property
+    def row_t_name(self) -> str:
+        """Name of the t quantile of a further row's interval, which clusters leave alone."""
+        return self.t_name if self.est.df_error == self.est.df_residual else f"{self.t_name}_ROW"
+
+    @property
+    def row_t_quantile(self) -> float:
+        return float(student.ppf(0.5 + self.question.level / 2, self.est.df_residual))
 
     @property
     def needs_s2(self) -> bool:
         """Whether the error variance on the fitting scale is used."""
-        return (bool(self.searched) and not self.robust) if self.link else not self.ordered
+        if self.link:
+            return not self.robust and (bool(self.searched) or self.weighted)
+        return not self.ordered
 
     @property
     def steady(self) -> bool:
@@ -180,7 +217,8 @@ class Parts:
     @property
     def tested(self) -> bool:
         """Whether the effect is a combination of coefficients for which statsmodels' own covariance serves."""
-        own = self.searched or self.deletes or self.smooth or self.alone or self.uneven or self.weighted
+        own = self.searched or self.deletes or self.smooth or self.alone or self.uneven
+        own = own or self.weighted or self.clustered
         return self.kind == "identity" and self.steady and self.ordered and not own
 
     @property

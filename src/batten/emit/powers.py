@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from batten.emit.parts import Parts
-from batten.emit.text import docstring
+from batten.emit.text import docstring, noted
 
 __all__ = ["power_functions", "power_moves"]
 
@@ -77,24 +77,32 @@ def _yeo_johnson(parts: Parts) -> list[list[str]]:
 
 
 def _likelihood(parts: Parts) -> list[str]:
+    v = "v * " if parts.weigher else ""
     drift = "np.log(y / m)" if _positive(parts) else "(size(y) - size(m))"
     return [
         "def likelihood(p):",
         *docstring("Log-likelihood of each row at p: coefficients, power, log of error variance (Box and Cox 1964)."),
-        f"    return p[-2] * {drift} - p[-1] / 2 - (bent(p[-2]) - X @ p[:-2]) ** 2 / np.exp(p[-1]) / 2",
+        f"    return p[-2] * {drift} - p[-1] / 2 - ({v}bent(p[-2]) - X @ p[:-2]) ** 2 / np.exp(p[-1]) / 2",
     ]
 
 
-def power_moves(weight: str) -> list[str]:
+def power_moves(parts: Parts, weight: str) -> list[str]:
     """p and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
 
     weight: source of what leaving a row out makes of its score.
     """
+    slope = f"slope = {'v * ' if parts.weigher else ''}bent(LAMBDA + 1e-20j).imag * 1e20"
+    moves = [f"without = p + (np.linalg.solve(curved, score.T) * {weight}).T"]
+    if parts.clustered:
+        moves = [
+            f"moves = (np.linalg.solve(curved, score.T) * {weight}).T",
+            "without = p + np.array([moves[i].sum(axis=0) for i in members])",
+        ]
     return [
         "# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each row",
         "p = np.array([*b, LAMBDA, np.log(e @ e / len(e))])",
         'step = 1e-5 * np.array([*table["std_error"], 1, 1])',
         "score, curved = approx_fprime_cs(p, likelihood), approx_hess_cs(p, lambda p: likelihood(p).sum(), step)",
-        f"without = p + (np.linalg.solve(curved, score.T) * {weight}).T",
-        "slope = bent(LAMBDA + 1e-20j).imag * 1e20  # of the scale in LAMBDA (Squire and Trapp 1998)",
+        *moves,
+        *noted(slope, "of the scale in LAMBDA (Squire and Trapp 1998)"),
     ]

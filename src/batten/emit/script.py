@@ -45,6 +45,8 @@ def _header(parts: Parts) -> list[str]:
     p, remedy = parts.problem, parts.est.remedy
     words = remedy.words(parts.y, parts.x)
     kind = "robust (HC3)" if parts.robust else "of one size for all rows"
+    kind = f"by clusters of {said(parts.problem.beside.cluster)} (CR3)" if parts.clustered and parts.robust else kind
+    kind += f", rows weighted by {said(parts.weigher)}" if parts.weigher else ""
     kind += "" if parts.question.planned == remedy.key or _uses_t(parts) else f", {_FIXED}"
     lines = [
         f'{said(p.formula, 200)}, remedy "{remedy.key}": {words}.',
@@ -58,14 +60,16 @@ def _header(parts: Parts) -> list[str]:
 
 
 def _rows_words(parts: Parts) -> str:
-    left = parts.problem.left_out["why"].astype(str)
-    total = parts.est.n + len(left)
+    p = parts.problem
+    left = p.left_out["why"].astype(str)
+    total = p.stored + len(left)
+    often = "" if p.times is None else f", each as often as {said(p.beside.weights)} says ({parts.est.n} in all)"
     if not len(left):
-        return f"all {total} rows used."
+        return f"all {total} rows used{often}."
     counts = left.value_counts()
     told = ", ".join(f"{count} {said(why)}" for why, count in counts.head(3).items())
     more = f" and {len(counts) - 3} other reasons" if len(counts) > 3 else ""
-    return f"{parts.est.n} of {total} rows used; left out: {told}{more}."
+    return f"{p.stored} of {total} rows used{often}; left out: {told}{more}."
 
 
 def _imports(parts: Parts) -> list[str]:
@@ -98,6 +102,9 @@ def _constants(parts: Parts) -> list[str]:
     meaning += "" if parts.question.planned == parts.est.remedy.key else f", {_FIXED}"
     if _uses_t(parts):
         lines += constant(parts.t_name, number(parts.t_quantile), meaning)
+    if not parts.ordered and parts.row_t_name != parts.t_name:
+        meaning = f"for further rows, on {counted(parts.est.df_residual)} degrees of freedom"
+        lines += constant(parts.row_t_name, number(parts.row_t_quantile), meaning)
     return [*lines, *_model(parts)]
 
 

@@ -9,7 +9,7 @@ import pandas as pd
 from batten.emit.functions import undo
 from batten.emit.held import held_at
 from batten.emit.parts import Parts
-from batten.emit.text import comment, fstring, said, wrapped
+from batten.emit.text import WIDTH, comment, fstring, literal, said, wrapped
 
 __all__ = ["span"]
 
@@ -40,11 +40,12 @@ def _introduction(parts: Parts) -> str:
     if parts.problem.profile is not None:
         over = ", at " + ", ".join(f"{said(name)} = {said(value)}" for name, value in parts.question.at.items())
     if parts.deletes:
-        way = "by leaving out each row in turn"
+        way = f"by leaving out each {'cluster' if parts.clustered else 'row'} in turn"
     elif parts.kind == "identity" and parts.steady and parts.robust:
         way = "that of the coefficients"
     else:
-        way = "by each row's influence" if parts.robust else "for errors of one size"
+        unit = "cluster" if parts.clustered else "row"
+        way = f"by each {unit}'s influence" if parts.robust else "for errors of one size"
     return f"Change of the mean over SPAN{over}; interval {way}."
 
 
@@ -79,16 +80,17 @@ def _tested(parts: Parts) -> list[str]:
 
 
 def _deleted(parts: Parts) -> list[str]:
-    half = f"{parts.t_name} * np.sqrt((len(y) - 1) * np.var(EACH))"
+    units, loop = ("without", "zip(members, without, strict=True)") if parts.clustered else ("y", "enumerate(without)")
+    half = f"{parts.t_name} * np.sqrt((len({units}) - 1) * np.var(EACH))"
     if parts.kind == "identity" and parts.steady:
         return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half.replace('EACH', 'without @ gap')}"]
     if parts.link:
         gap = f"{undo(parts, 'B @ b')} - {undo(parts, 'A @ b')}"
         each = gap.replace("@ b", "@ w")
         each = f"({each}).mean() for w in without" if parts.fixed else (
-            f"np.delete({each}, i).mean() for i, w in enumerate(without)")  # fmt: skip
+            f"np.delete({each}, i).mean() for i, w in {loop}")  # fmt: skip
         return [f"each = [{each}]", *wrapped(f"effect, half = ({gap}).mean(), {half.replace('EACH', 'each')}")]
-    lines = ["each = [difference(w, i) for i, w in enumerate(without)]"]
+    lines = [f"each = [difference(w, i) for i, w in {loop}]"]
     if parts.smooth:  # to first order
         lines.append("bias = [(difference(b + d / 1e3) - difference(b - d / 1e3)) * 500 for d in taken]")
         half = half.removesuffix(")") + " + np.sum(np.square(bias)))"
@@ -127,24 +129,37 @@ def _linearised(parts: Parts) -> list[str]:
     """effect, its slopes in the coefficients (pull), and each row's own share in the averages."""
     if parts.kind == "identity" and parts.steady and parts.robust:
         moves = "np.vstack([without - b, taken])" if parts.smooth else "(without - b)"
-        half = f"{parts.t_name} * np.sqrt((({moves} @ gap) ** 2).sum())"
+        half = f"{parts.t_name} * np.sqrt({parts.few}(({moves} @ gap) ** 2).sum())"
         return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half}"]
     lines, own = _slopes(parts)
+    if parts.est.rows.cluster is not None and own:
+        lines += _BY_CLUSTER
+        own = [f"by_cluster({share})" for share in own]
     if parts.robust:
-        total = " + ".join([f"len(y) * ({parts.parameters} - without) @ pull", *own])
+        few = "np.sqrt(1 - 1 / len(without)) * " if parts.clustered else ""
+        total = " + ".join([f"{few}len(y) * ({parts.parameters} - without) @ pull", *own])
         half = "np.sqrt((influence**2).sum()) / len(y)"
         if parts.smooth:
             half = "np.sqrt((influence**2).sum() / len(y) ** 2 + ((taken @ pull) ** 2).sum())"
         return [*lines, *wrapped(f"influence = {total}"), f"half = {parts.t_name} * {half}"]
     if parts.power:
-        spread = "(((without - p) @ pull) ** 2).sum()"
+        spread = f"{parts.few}(((without - p) @ pull) ** 2).sum()"
     else:
         spread = "s2 * (np.linalg.solve(R.T, pull) ** 2).sum()" if parts.needs_s2 else "pull @ cov @ pull"
     if own:
-        own = [f"({share})" for share in own]
-        spread += f" + sum((share**2).sum() for share in [{', '.join(own)}]) / len(y) ** 2"
+        lines += wrapped(f"shares = [{', '.join(own)}]")
+        lines.append("rest = sum((share**2).sum() for share in shares) / len(y) ** 2")
+        spread += " + rest"
     known = [] if parts.power or parts.needs_s2 else ["cov = fit.cov_params().to_numpy()"]
     return [*lines, *known, *wrapped(f"half = {parts.t_name} * np.sqrt({spread})")]
+
+
+#: shares of clusters, with the factor of few clusters
+_BY_CLUSTER = [
+    "def by_cluster(share):",
+    "    sums = np.array([share[i].sum() for i in members])",
+    "    return np.sqrt(len(sums) / (len(sums) - 1)) * sums",
+]
 
 
 def _slopes(parts: Parts) -> tuple[list[str], list[str]]:
@@ -191,7 +206,12 @@ def _told(parts: Parts) -> list[str]:
     where = f"{parts.y}, mean at {parts.x} {b}{' ' + said(x_unit) if x_unit else ''} against {a}: "
     unit = f" {said(unit)}" if unit else ""
     if not parts.bounded:
-        return wrapped(f"print({fstring(where, ('effect:+.4g',), unit)})")
+        return _printed(where, ("effect:+.4g",), unit)
     low, high = ("effect - half:.4g",), ("effect + half:.4g",)
-    told = fstring(where, ("effect:+.4g",), f"{unit} ({parts.percent} ", low, " to ", high, ")")
-    return wrapped(f"print({told})")
+    return _printed(where, ("effect:+.4g",), f"{unit} ({parts.percent} ", low, " to ", high, ")")
+
+
+def _printed(where: str, *numbers: str | tuple[str]) -> list[str]:
+    """A print of one text, on two lines where names are long."""
+    line = f"print({fstring(where, *numbers)})"
+    return [line] if len(line) <= WIDTH else [f"print({literal(where)}", f"    {fstring(*numbers)})"]

@@ -1,19 +1,34 @@
-"""Weights in a script: learned from how the errors spread."""
+"""Weights in a script, given or learned from how the errors spread, and clusters."""
 
 from __future__ import annotations
 
 import math
 
+from batten.emit.covariates import read_numbers
 from batten.emit.parts import Parts
-from batten.emit.text import docstring, number
+from batten.emit.text import docstring, literal, number, said, wrapped
 
-__all__ = ["Constant", "root_function", "root_of", "spread_constants", "weighted_fit"]
+__all__ = [
+    "Constant", "beside_lines", "clusters_left_out", "data_lines", "learned_fit", "root_function", "root_of",
+    "spread_constants",
+]  # fmt: skip
 
 Constant = tuple[str, str, str]
 
 
 def spread_constants(parts: Parts) -> list[Constant]:
-    """What was learned of the spread."""
+    """The average weight, and what was learned of the spread."""
+    return [*_average(parts), *_learned(parts)]
+
+
+def _average(parts: Parts) -> list[Constant]:
+    if not parts.weigher:
+        return []
+    meaning = f"average of {said(parts.weigher)}: errors and intervals of further rows are those of such a row"
+    return [("AVERAGE", number(parts.problem.average_weight), meaning)]
+
+
+def _learned(parts: Parts) -> list[Constant]:
     spread = parts.est.spread
     if spread is None:
         return []
@@ -42,14 +57,49 @@ def root_function(parts: Parts) -> list[list[str]]:
     return [["def root(value):", *docstring(text), f"    return {source}"]]
 
 
-def weighted_fit() -> list[str]:
+def learned_fit(parts: Parts) -> list[str]:
     """plain and fit."""
+    given, plain = ("v**2 * ", "smf.wls(MODEL, rows, weights=v**2)") if parts.weigher else ("", "smf.ols(MODEL, rows)")
     return [
-        "plain = smf.ols(MODEL, rows).fit()  # its fitted values say how errors spread",
-        "fit = smf.wls(MODEL, rows, weights=root(plain.fittedvalues) ** 2).fit()",
+        f"plain = {plain}.fit()  # its fitted values say how errors spread",
+        f"fit = smf.wls(MODEL, rows, weights={given}root(plain.fittedvalues) ** 2).fit()",
     ]
 
 
 def root_of(design: str) -> str:
     """Source of the roots of the weights of further rows."""
     return f"root({design} @ plain.params.to_numpy())"
+
+
+# --- columns beside the formula ---------------------------------------------------------------------------------------
+
+
+def data_lines(parts: Parts, chosen: str) -> list[str]:
+    """The frame without rows that a column beside the formula leaves out, each as often as it counts; or nothing."""
+    beside = parts.problem.beside
+    steps = f".query({literal(chosen)})" if chosen else ""
+    if beside.columns:
+        steps += f".dropna(subset={literal(list(beside.columns.values()))})"
+    lines = wrapped(f"data = {parts.frame}{steps}") if steps else []
+    if parts.problem.times is not None:
+        times = f"data[{literal(beside.weights)}].astype(int)"
+        lines += wrapped(f"data = data.iloc[np.repeat(np.arange(len(data)), {times})]")
+    return lines
+
+
+def beside_lines(parts: Parts) -> list[str]:
+    """v, the roots of the rows' weights; group and members, the clusters."""
+    lines = []
+    if parts.weigher:
+        values = read_numbers(parts.weigher, "used", text=parts.as_text(parts.weigher))
+        lines += wrapped(f"v = np.sqrt({values}.to_numpy() / AVERAGE)  # roots of the weights")
+    if parts.grouped:
+        lines += wrapped(f"group = pd.factorize(used[{literal(parts.problem.beside.cluster)}])[0]")
+        lines.append("members = [np.flatnonzero(group == g) for g in range(group.max() + 1)]  # rows of each cluster")
+    return lines
+
+
+def clusters_left_out(score: str) -> str:
+    """What each cluster takes away from the coefficients of Q (Bell and McCaffrey 2002)."""
+    cross = "np.linalg.pinv(np.eye(len(R)) - Q[i].T @ Q[i], rcond=1e-8)"
+    return f"lost = np.array([{cross} @ Q[i].T @ {score}[i] for i in members])"
