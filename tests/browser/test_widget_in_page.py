@@ -112,6 +112,11 @@ def test_two_widgets_answer_each_for_itself_by_keyboard_too(front_end: FrontEnd)
     type_into(front_end, 1, "Open another remedy", "y ~ poly4 x")
     open_tab(front_end, 1, "y ~ poly4 x")
     seen(front_end, 1, re.compile("^Rows with mass_kg of 30 kg against"))
+    front_end.click_button("try a value", cell=1)
+    front_end.click_button("Table at round values", cell=1)
+    seen(front_end, 1, re.compile("^Low and high: where 95% of new rows are expected"))
+    press(front_end.button("Close this tab", cell=1), "Space")
+    expect(front_end.outputs(1).get_by_role("tab", name="y ~ poly4 x")).to_have_count(0)
     assert front_end.sources() == [LOAD, CASTINGS, PUMPS]  # no key has reached the notebook
 
 
