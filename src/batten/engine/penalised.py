@@ -25,6 +25,8 @@ End = Literal["straight", "free", ""]
 ROUNDING = 1e-12
 #: where the search ends, the penalty leaves e^-END of every rough direction, or takes as little of it
 END = 14.0
+#: width of the search's cells: what the penalty takes of one direction rises from a tenth to nine within three of them
+CELL = 1.5
 #: weight of the penalty against the data in the factor that serves every amount: enough to hold columns that the data
 #: do not tell apart, little enough to keep the data's digits
 SLIGHT = 1e-6
@@ -217,7 +219,7 @@ def _amounts(squares: Array, rest: Array, stiffness: Array, free: Array) -> tupl
     if not stiffness.shape[1]:
         return np.zeros(len(rest)), np.zeros(len(rest), dtype=np.intp)
     low, high = -np.log(stiffness[:, 0]) - END, -np.log(stiffness[:, -1]) + END
-    count = int(np.ceil((high - low).max())) + 1
+    count = int(np.ceil((high - low).max() / CELL)) + 1
     grid = low[:, None] + (high - low)[:, None] * np.linspace(0, 1, count)
     rest = np.maximum(rest, 1e-300)
     best = _loss(grid, squares[:, None], rest[:, None], stiffness[:, None], free[:, None]).argmin(axis=1)

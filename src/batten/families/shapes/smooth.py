@@ -112,9 +112,11 @@ def _rounded_hinges(x: Array, knots: Constants) -> Array:
     t = np.asarray(knots)
     low, middle, high = t[:-2], t[1:-1], t[2:]
     a, b = middle - low, high - middle
-    p, v = np.clip(x[:, None] - low, 0, a), np.clip(x[:, None] - middle, 0, b)
-    rounded = p * p * p / (3 * a) + v * (a + v * (1 - v / (3 * b)))
-    return np.asarray(rounded / (a + b) + np.maximum(x[:, None] - high, 0))
+    along = x[:, None]
+    p = np.minimum(np.maximum(along - low, 0), a)
+    v = np.minimum(np.maximum(along - middle, 0), b)
+    rounded = p * p * p * (1 / (3 * a * (a + b))) + v * (a / (a + b) + v * (1 - v / (3 * b)) / (a + b))
+    return np.asarray(rounded + np.maximum(along - high, 0))
 
 
 _HELPER = '''
