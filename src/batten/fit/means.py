@@ -315,7 +315,7 @@ def _direct_parts(est: Estimate, tar: Target, share: Array, of: str, value: Arra
     by_covariate: Share | None = None
     if tar.pattern is not None and len(share) > 1:
         still = _bring_back(est, of, np.zeros((1, tar.jacobian.shape[2])), None)
-        back = np.stack([still(tar.eta[None, :, g])[0] for g in range(tar.eta.shape[1])], axis=1) - value
+        back = still(tar.eta.reshape(1, -1)).reshape(tar.eta.shape) - value
         few = len(share) <= FEW_PATTERNS
         by_covariate = ((tar.pattern[:, None] == np.arange(len(share))) + 0.0, back) if few else back[tar.pattern]
     return by_residual, by_covariate

@@ -26,6 +26,8 @@ Undo = Callable[[Array], Array]
 
 #: pairs (eta, residual) evaluated exactly before interpolation takes over
 EXACT_PAIRS = 60_000
+#: places of an interval at which interpolants are held against exact averages
+_PROBES = np.array([0.013, 0.29, 0.57, 0.93, 0.994])
 #: residuals are pooled into this many narrow classes when there are more of them
 POOLED = 4096
 
@@ -108,7 +110,7 @@ def _general(undo: Undo, eta: Array, residual: Array, weights: Array | None) -> 
     if not high > low:
         return np.full_like(eta, row_means(undo, eta[:1], residual, weights)[0])
     unit = (2 * eta - (low + high)) / (high - low)
-    probe = low + (high - low) * np.array([0.013, 0.29, 0.57, 0.93, 0.994])
+    probe = low + (high - low) * _PROBES
     exact = row_means(undo, probe, residual, weights)
     for degree in (16, 32, 64, 128):
         nodes = np.cos(np.pi * (np.arange(degree + 1) + 0.5) / (degree + 1))
@@ -129,12 +131,13 @@ def shares_of_residuals(undo: Undo, residual: Array, eta: Array, share: Array) -
     """
     low, high = float(residual.min()), float(residual.max())
     span = (high - low) or 1.0
-    probe = low + span * np.array([0.013, 0.29, 0.57, 0.93, 0.994])
+    probe = low + span * _PROBES
+    shifted = _shifted(undo, eta, share, low, high)
 
-    def at(places: Array) -> Array:
+    def exactly(places: Array) -> Array:
         return np.stack([row_means(undo, places, column, share) for column in eta.T], axis=1)
 
-    exact = at(probe)
+    at, exact = shifted or exactly, exactly(probe)
     for degree in (8, 16, 32, 64):
         nodes = np.cos(np.pi * (np.arange(degree + 1) + 0.5) / (degree + 1))
         loads = dct(at(low + (nodes + 1) * span / 2), type=2, axis=0) / (degree + 1)
@@ -143,6 +146,30 @@ def shares_of_residuals(undo: Undo, residual: Array, eta: Array, share: Array) -
         if (error <= 1e-10 * np.abs(exact).max()).all():
             break
     return np.asarray(chebyshev.chebvander((residual - low) * 2 / span - 1, degree), dtype=np.float64), loads
+
+
+def _shifted(undo: Undo, eta: Array, share: Array, low: float, high: float) -> Undo | None:
+    """Averages over covariate rows at (places, G) where every place only shifts the linear predictors of the first.
+
+    Without an interaction they are one function of the shift, which is interpolated once (closely enough for what
+    follows where a boundary makes a corner); None where there is one.
+    """
+    first, shift = eta[:, 0], eta[0] - eta[0, 0]
+    if np.abs(eta - first[:, None] - shift).max() > 1e-12 * np.abs(eta).max():
+        return None
+    start = low + float(shift.min())
+    span = high + float(shift.max()) - start
+    if not span > 0:
+        return None
+    exact = row_means(undo, start + span * _PROBES, first, share)
+    for degree in (32, 64, 128, 256):
+        nodes = np.cos(np.pi * (np.arange(degree + 1) + 0.5) / (degree + 1))
+        fitted = dct(row_means(undo, start + (nodes + 1) * span / 2, first, share), type=2) / (degree + 1)
+        fitted[0] /= 2
+        error = np.abs(chebyshev.chebval(2 * _PROBES - 1, fitted) - exact)
+        if (error <= 1e-11 * np.abs(exact).max()).all():
+            break
+    return lambda places: np.asarray(chebyshev.chebval((places[:, None] + shift - start) * 2 / span - 1, fitted))
 
 
 def row_means(undo: Undo, eta: Array, residual: Array, weights: Array | None = None) -> Array:
