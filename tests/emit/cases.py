@@ -95,15 +95,21 @@ def _want(problem: Problem, question: Question, est: Estimate) -> np.ndarray:
 
 
 def agrees(
-    written: Written, data: pd.DataFrame, *, rtol: float = 0.0, after: str = "", engines: Sequence[str] = ENGINES
+    written: Written,
+    data: pd.DataFrame,
+    *,
+    rtol: float = 0.0,
+    after: str = "",
+    engines: Sequence[str] = ENGINES,
+    draw: bool = True,
 ) -> Ran:
     """Run the script under the formula engines; its numbers are the estimate's, and the frame is left alone.
 
-    The picture is drawn once. rtol: 0 for what the script's own arithmetic allows.
+    rtol: 0 for what the script's own arithmetic allows. draw: once, the picture too.
     """
     rtol = rtol or _digits(written.estimate)
     for i, engine in enumerate(engines):
-        ran = run_script(written.source, {written.problem.frame_name: data}, engine, after=after, draw=i == 0)
+        ran = run_script(written.source, {written.problem.frame_name: data}, engine, after=after, draw=draw and i == 0)
         assert not ran.error, f"{engine}\n{written.source}\n{ran.error}"
         assert not ran.changed, ran.changed
         np.testing.assert_allclose(ran.names["got"], written.want, rtol=rtol, err_msg=written.source)

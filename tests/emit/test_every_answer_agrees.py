@@ -13,7 +13,7 @@ from runner import ENGINES, Ran, run_script
 #: each kind of remedy on some data set; the rest is left to the full walk
 SAMPLED = {
     "castings": ("y ~ hinge x", "log y ~ bins5 x", "boxcox y ~ 1/x"),
-    "glasshouse": ("y ~ s-curve x", "sqrt y ~ log x", "1/y ~ x"),
+    "glasshouse": ("y ~ s-curve x", "sqrt y ~ log x", "1/y ~ x", "log y ~ smooth x"),
     "pumps": ("y ~ poly2 x", "share y ~ spline4 x", "log y ~ x^p"),
     "hprice1": ("log y ~ log x", "weighted y ~ x", "loglink-gamma y ~ x"),
     "gpa2": ("y ~ log x", "log y ~ spline3 x"),

@@ -6,6 +6,7 @@ from batten.effects.numbers import counted
 from batten.emit.held import held_at
 from batten.emit.parts import Parts
 from batten.emit.text import constant, noted, number, wrapped
+from batten.emit.weights import clusters_left_out
 
 __all__ = ["smooth_constants", "smooth_fit"]
 
@@ -26,9 +27,10 @@ def smooth_constants(parts: Parts) -> list[str]:
 def smooth_fit(parts: Parts) -> list[str]:
     """Coefficients b, residuals e, and what their uncertainty needs."""
     response = "" if parts.kind == "identity" else f".assign({parts.response}={parts.left.columns[0][1]})"
+    v = " * v" if parts.weigher else ""
     lines = [
         *wrapped(f"model = smf.ols(MODEL, rows{response})"),
-        "X, z, w = model.exog, model.endog, np.diff(KNOTS)",
+        f"X, z, w = model.exog{' * v[:, None]' if v else ''}, model.endog{v}, np.diff(KNOTS)",
         *_roughness(parts),
         "Q, R = np.linalg.qr(np.vstack([X, D]))  # least squares on the data and on zeros with design D",
         "Q, low = Q[: len(z)], Q[len(z) :]",
@@ -40,12 +42,23 @@ def smooth_fit(parts: Parts) -> list[str]:
     variance = "e @ e / (len(z) - edf)"
     if not parts.robust:
         return [*lines, f"s2 = {variance}", *_table("s2 * (np.linalg.inv(R) ** 2).sum(axis=1)")]
+    taken = "taken = np.sqrt(s2) * np.linalg.solve(R, low.T).T  # moves of b by what smoothing may take (Nychka 1988)"
+    table = _table(f"{parts.few}((without - b) ** 2).sum(axis=0) + (taken**2).sum(axis=0)")
+    if parts.clustered:
+        lines += [f"s2 = {variance}", *wrapped(clusters_left_out("e"))]
+        return [
+            *lines,
+            "without = b - np.linalg.solve(R, lost.T).T  # coefficients with each cluster left out",
+            "out = e + (Q * lost[group]).sum(axis=1)  # each row's error around the fit without its cluster",
+            taken,
+            *table,
+        ]
     return [
         *lines,
         f"s2, out = {variance}, e / (1 - h)  # out: each row's error around the fit without it",
         "without = b - np.linalg.solve(R, Q.T * out).T  # coefficients with each row left out",
-        "taken = np.sqrt(s2) * np.linalg.solve(R, low.T).T  # moves of b by what smoothing may take (Nychka 1988)",
-        *_table("((without - b) ** 2).sum(axis=0) + (taken**2).sum(axis=0)"),
+        taken,
+        *table,
     ]
 
 

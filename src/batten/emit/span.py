@@ -128,9 +128,12 @@ def _difference(parts: Parts, *, deletes: bool) -> list[str]:
 def _linearised(parts: Parts) -> list[str]:
     """effect, its slopes in the coefficients (pull), and each row's own share in the averages."""
     if parts.kind == "identity" and parts.steady and parts.robust:
-        moves = "np.vstack([without - b, taken])" if parts.smooth else "(without - b)"
-        half = f"{parts.t_name} * np.sqrt({parts.few}(({moves} @ gap) ** 2).sum())"
-        return ["gap = (B - A).mean(axis=0)", f"effect, half = gap @ b, {half}"]
+        squares = f"{parts.few}(((without - b) @ gap) ** 2).sum()"
+        squares += " + ((taken @ gap) ** 2).sum()" if parts.smooth else ""
+        half = f"{parts.t_name} * np.sqrt({squares})"
+        together = f"effect, half = gap @ b, {half}"
+        answer = [together] if len(together) <= WIDTH else ["effect = gap @ b", f"half = {half}"]
+        return ["gap = (B - A).mean(axis=0)", *answer]
     lines, own = _slopes(parts)
     if parts.est.rows.cluster is not None and own:
         lines += _BY_CLUSTER
