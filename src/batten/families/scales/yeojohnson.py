@@ -67,12 +67,12 @@ class YeoJohnson(Scale):
 
     def inverse(self, z: Array, c: Constants) -> Array:
         with np.errstate(over="ignore"):
-            return np.where(z < 0, -np.expm1(_unbend(-z, 2 - c[0])), np.expm1(_unbend(z, c[0])))
+            return np.copysign(np.expm1(_size(z, c[0])), z)
 
     def inverse_slope(self, z: Array, c: Constants) -> Array:
         """(1 + |y|)^(1 - L) above zero, (1 + |y|)^(L - 1) below."""
         with np.errstate(over="ignore", invalid="ignore"):
-            size = np.where(z < 0, _unbend(-z, 2 - c[0]), _unbend(z, c[0]))
+            size = _size(z, c[0])
             slope = np.exp(np.where(z < 0, c[0] - 1, 1 - c[0]) * size)
         return np.where(np.isinf(size), np.nan, slope)
 
@@ -97,12 +97,19 @@ def _bend(size: Array, lam: float) -> Array:
     return size if lam == 0 else np.expm1(lam * size) / lam
 
 
-def _unbend(z: Array, lam: float) -> Array:
-    """log(1 + |y|) from z >= 0; +inf where no response is that large (L < 0). Values for z < 0 are not used."""
-    if lam == 0:
+def _size(z: Array, lam: float) -> Array:
+    """log(1 + |y|); +inf where no response is that large (L < 0 above zero, L > 2 below)."""
+    if lam in (0.0, 2.0):
+        return np.where(z < 0, _unbend(-z, 2 - lam), _unbend(z, lam))
+    return _unbend(np.abs(z), lam if not (z < 0).any() else np.where(z < 0, 2 - lam, lam))
+
+
+def _unbend(z: Array, lam: float | Array) -> Array:
+    """The same from z >= 0; values for z < 0 are not used."""
+    if np.ndim(lam) == 0 and lam == 0:
         return z
     with np.errstate(divide="ignore"):
-        return np.log1p(np.maximum(lam * z, -1.0)) / lam
+        return np.asarray(np.log1p(np.maximum(lam * z, -1.0)) / lam)
 
 
 _HELPER = '''
