@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
+from importlib import import_module
 from typing import Any
 
 from batten.notebook.completion import add_completion, remove_completion
-from batten.notebook.display import add_formatters, remove_formatters
+from batten.notebook.display import add_formatters, in_kernel, remove_formatters
 from batten.notebook.magic import BattenMagics
 
 __all__ = ["load", "unload"]
@@ -19,6 +21,9 @@ def load(shell: Any) -> None:
     shell.register_magics(magics)
     add_completion(shell, magics)
     add_formatters(shell)
+    if in_kernel(shell):
+        with suppress(ModuleNotFoundError):  # without ipywidgets the static report is shown
+            import_module("batten.notebook.widget")  # now, so that the first cell need not wait for it
 
 
 def unload(shell: Any) -> None:
