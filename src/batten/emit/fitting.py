@@ -84,8 +84,10 @@ def _ols(parts: Parts) -> list[str]:
     lines += _table(parts)
     if not parts.power:
         return lines
-    weight = "np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "out / e"
-    return [*lines, *power_moves(parts, "1 / (1 - h)" if parts.clustered else weight)]
+    if parts.clustered:
+        return [*lines, *power_moves(parts, "/ (1 - h)")]
+    weight = "* np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "* out / e"
+    return [*lines, *power_moves(parts, weight)]
 
 
 def _fit(parts: Parts) -> list[str]:
@@ -142,7 +144,7 @@ def _deletions(parts: Parts) -> list[str]:
 
 def _clusters(parts: Parts) -> list[str]:
     """The same for clusters: coefficients without each, and rows' errors around the fit without their own."""
-    lines = ["Q, R = np.linalg.qr(X)", *wrapped(clusters_left_out("e"))]
+    lines = ["Q, R = np.linalg.qr(X)", *clusters_left_out("e")]
     if parts.power:
         lines.append(f"h = {parts.leverages}")
     else:
@@ -182,7 +184,7 @@ def _newton(parts: Parts, weight: str, score: str) -> list[str]:
     lines = [f"Q, R = np.linalg.qr(X{f' * {weight}[:, None]' if weight else ''})", f"score = {score}"]
     lines += [f"s2 = score @ score / {parts.est.df_residual}"] if parts.needs_s2 else []
     if parts.clustered:
-        lines += [*wrapped(clusters_left_out("score")), "# each cluster left out, by one Newton step"]
+        lines += [*clusters_left_out("score"), "# each cluster left out, by one Newton step"]
         return [*lines, "without = b - np.linalg.solve(R, lost.T).T"]
     lines.append("# each row left out by a Newton step: GLM's HC3 is HC0")
     return [*lines, f"without = b - np.linalg.solve(R, Q.T * (score / (1 - {parts.leverages}))).T"]

@@ -90,35 +90,38 @@ def _design(parts: Parts) -> list[str]:
     """design(), where constants of the shape were searched with a column for each of them."""
     if not parts.searched:
         return ["def design(frame):", *noted(f"    return {_exog(parts, '')}", "gaps keep their place")]
-    names, corners = parts.searched, parts.est.shape.corners
-    moves = [[step if i == j else "0" for i in range(len(names))] for j, step in enumerate(parts.steps)]
-    ways = [move if sign else ["-" + m if m != "0" else m for m in move] for move in moves for sign in (1, 0)]
-    if corners:
-        ways = moves
-    if len(names) == 1:
-        at, places = f", {names[0]}={names[0]} + d", ", ".join(["0", *(way[0] for way in ways)])
-        given = "d"
-    else:
-        given = ", ".join("cd"[: len(names)])
-        at = "".join(f", {name}={name} + {letter}" for name, letter in zip(names, "cd", strict=True))
-        places = ", ".join(f"({', '.join(way)})" for way in [["0"] * len(names), *ways])
-    columns = [
-        f"(moved[{j}] - X) @ fit.params / {step}" if corners
-        else f"(moved[{2 * j}] - moved[{2 * j + 1}]) @ fit.params / 2{step[1:]}"
-        for j, step in enumerate(parts.steps)
-    ]  # fmt: skip
+    names, columns = parts.searched, _moves(parts)
+    given, places = _places(parts)
+    at = "".join(f", {name}={name} + {letter}" for name, letter in zip(names, given, strict=True))
     design = [
-        *wrapped(f"    X, *moved = ({_exog(parts, at)} for {given} in ({places}))", 4),
+        *wrapped(f"    X, *moved = ({_exog(parts, at)} for {', '.join(given)} in ({places}))", 4),
         *wrapped(f"    return np.column_stack([X, {', '.join(columns)}])", 4),
     ]
     why = f"  # last: how the fit moves with {' and '.join(names)}"
     if len(design[-1] + why) <= WIDTH:
         return ["def design(frame):", *design[:-1], design[-1] + why]
-    return [
-        "def design(frame):",
-        *docstring(f"The model's design, then how the fit moves with {' and '.join(names)}, estimated with the rest."),
-        *design,
+    text = f"The model's design, then how the fit moves with {' and '.join(names)}, estimated with the rest."
+    return ["def design(frame):", *docstring(text), *design]
+
+
+def _places(parts: Parts) -> tuple[str, str]:
+    """Letters for steps in the searched constants, and the steps: none, then each to both sides, at corners to one."""
+    count, signs = len(parts.searched), ("",) if parts.est.shape.corners else ("", "-")
+    if count == 1:
+        return "d", ", ".join(["0", *(sign + parts.steps[0] for sign in signs)])
+    ways = [["0"] * count]
+    ways += [
+        [sign + step if i == j else "0" for i in range(count)] for j, step in enumerate(parts.steps) for sign in signs
     ]
+    return "cd", ", ".join(f"({', '.join(way)})" for way in ways)
+
+
+def _moves(parts: Parts) -> list[str]:
+    """Sources of the fit's slopes in the searched constants."""
+    if parts.est.shape.corners:
+        return [f"(moved[{j}] - X) @ fit.params / {step}" for j, step in enumerate(parts.steps)]
+    pairs = enumerate(parts.steps)
+    return [f"(moved[{2 * j}] - moved[{2 * j + 1}]) @ fit.params / 2{step[1:]}" for j, step in pairs]
 
 
 def _exog(parts: Parts, given: str) -> str:
@@ -201,7 +204,9 @@ def _predict(parts: Parts) -> list[str]:
 
 def _way(parts: Parts) -> str:
     """How the interval is made."""
-    return " by jackknife+ (errors as seen, not as if normal)" if parts.ordered else " for normal errors"
+    if not parts.ordered:
+        return " for normal errors"
+    return " by jackknife+" + ("" if parts.weigher or parts.clustered else " (errors as seen, not as if normal)")
 
 
 def _limits(parts: Parts) -> str:

@@ -89,13 +89,13 @@ def _likelihood(parts: Parts) -> list[str]:
 def power_moves(parts: Parts, weight: str) -> list[str]:
     """p and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
 
-    weight: source of what leaving a row out makes of its score.
+    weight: source of what leaving a row out makes of its score, with the sign before it.
     """
     slope = f"slope = {'v * ' if parts.weigher else ''}bent(LAMBDA + 1e-20j).imag * 1e20"
-    moves = [f"without = p + (np.linalg.solve(curved, score.T) * {weight}).T"]
+    moves = [f"without = p + (np.linalg.solve(curved, score.T) {weight}).T"]
     if parts.clustered:
         moves = [
-            f"moves = (np.linalg.solve(curved, score.T) * {weight}).T",
+            f"moves = (np.linalg.solve(curved, score.T) {weight}).T",
             "without = p + np.array([moves[i].sum(axis=0) for i in members])",
         ]
     return [

@@ -45,7 +45,7 @@ def smooth_fit(parts: Parts) -> list[str]:
     taken = "taken = np.sqrt(s2) * np.linalg.solve(R, low.T).T  # moves of b by what smoothing may take (Nychka 1988)"
     table = _table(f"{parts.few}((without - b) ** 2).sum(axis=0) + (taken**2).sum(axis=0)")
     if parts.clustered:
-        lines += [f"s2 = {variance}", *wrapped(clusters_left_out("e"))]
+        lines += [f"s2 = {variance}", *clusters_left_out("e")]
         return [
             *lines,
             "without = b - np.linalg.solve(R, lost.T).T  # coefficients with each cluster left out",

@@ -94,12 +94,15 @@ def beside_lines(parts: Parts) -> list[str]:
         values = read_numbers(parts.weigher, "used", text=parts.as_text(parts.weigher))
         lines += wrapped(f"v = np.sqrt({values}.to_numpy() / AVERAGE)  # roots of the weights")
     if parts.grouped:
-        lines += wrapped(f"group = pd.factorize(used[{literal(parts.problem.beside.cluster)}])[0]")
+        lines += wrapped(
+            f"group = pd.factorize(used[{literal(parts.problem.beside.cluster)}])[0]  # each row's cluster"
+        )
         lines.append("members = [np.flatnonzero(group == g) for g in range(group.max() + 1)]  # rows of each cluster")
     return lines
 
 
-def clusters_left_out(score: str) -> str:
-    """What each cluster takes away from the coefficients of Q (Bell and McCaffrey 2002)."""
+def clusters_left_out(score: str) -> list[str]:
+    """lost: what each cluster takes away from the coefficients of Q."""
     cross = "np.linalg.pinv(np.eye(len(R)) - Q[i].T @ Q[i], rcond=1e-8)"
-    return f"lost = np.array([{cross} @ Q[i].T @ {score}[i] for i in members])"
+    lost = f"lost = np.array([{cross} @ Q[i].T @ {score}[i] for i in members])"
+    return ["# what each cluster adds to the coefficients on Q (Bell and McCaffrey 2002)", *wrapped(lost)]
