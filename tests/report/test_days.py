@@ -11,6 +11,7 @@ import pytest
 import batten
 from batten.report import figures
 from batten.report.days import counted_from, day_of, day_ticks
+from batten.report.fit_tables import lookup_table
 
 START = datetime(2025, 3, 10)
 
@@ -55,4 +56,7 @@ def test_an_axis_of_dates_is_labelled_with_dates() -> None:
     for made in (figures.line_against_choice(exam), figures.fit_figure(exam.chosen), figures.left_figure(exam.chosen)):
         words = [text.get_text() for text in made.axes[0].texts]
         assert {"Mar 2025", "Sep 2025"} <= set(words)
+    table = lookup_table(exam.chosen)
+    assert "<th scope=\"col\" class=\"batten-number\">read on</th>" in table
+    assert f">{day_of(frame['read on'].min(), exam.lookup().index[1])}</th>" in table
     assert counted_from(batten.examine("mm ~ x", frame.assign(x=np.arange(60.0)), only="y ~ x").problem) is None

@@ -82,7 +82,7 @@ def as_text(grid: Grid, *, width: int = 100) -> str:
 def _needed(column: Column, cells: Sequence[str]) -> int:
     """Letters of a column's widest cell; its head may break at spaces."""
     longest = max(_wide(word) for word in column.head.split(" "))
-    return max([longest, min(_wide(column.head), 14), *(_wide(cell) for cell in cells)])
+    return max([longest, min(_wide(column.head), 12), *(_wide(cell) for cell in cells)])
 
 
 def _block(cells: Sequence[Sequence[str]], widths: Sequence[int], columns: Sequence[Column]) -> list[str]:
