@@ -44,7 +44,7 @@ def test_script_gives_the_numbers_of_the_fit(key: str, design: str) -> None:
     data = foundry()
     written = write(key, DESIGNS[design].format(y=response), data)
     assert max(map(len, written.lines)) <= 120
-    agrees(written, data)
+    agrees(written, data, draw=False)  # the picture does not depend on the member
 
 
 @pytest.mark.parametrize("errors", ["robust", "constant"])

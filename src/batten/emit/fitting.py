@@ -71,7 +71,8 @@ def _ols(parts: Parts) -> list[str]:
         "b": _coefficients(parts),
     }
     names = ["X", "z", "e", "b"]
-    if parts.kind == "identity":
+    direct = parts.bounded and not parts.deletes and (parts.triangle or not parts.uses_without)
+    if parts.kind == "identity" or (parts.kind == "exp" and direct):
         names.remove("z")
     code = f"{', '.join(names)} = {', '.join(values[name] for name in names)}"
     zero = "0: linear around what was searched"
@@ -126,6 +127,8 @@ def _deletions(parts: Parts) -> list[str]:
         return [*lines[:-1], f"{lines[-1]}  {out}"]
     if parts.triangle:
         lines = ["Q, R = np.linalg.qr(X)"]
+        if not parts.robust and parts.kind in ("identity", "exp"):
+            return ['R = np.linalg.qr(X, mode="r")']
         if parts.ordered or parts.uses_without:
             lines.append(f"out = e / (1 - {parts.leverages})  {out}")
         if parts.uses_without:
@@ -144,7 +147,9 @@ def _deletions(parts: Parts) -> list[str]:
 
 def _clusters(parts: Parts) -> list[str]:
     """The same for clusters: coefficients without each, and rows' errors around the fit without their own."""
-    lines = ["Q, R = np.linalg.qr(X)", *clusters_left_out("e")]
+    lines = ["Q, R = np.linalg.qr(X)"]
+    if parts.robust:
+        lines += clusters_left_out("e")
     if parts.power:
         lines.append(f"h = {parts.leverages}")
     else:

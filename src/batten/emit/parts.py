@@ -167,7 +167,8 @@ class Parts:
     @property
     def grouped(self) -> bool:
         """Whether the script needs to know which rows belong together."""
-        return self.clustered or (self.est.rows.cluster is not None and not self.tested and not self.deletes)
+        shares = not (self.kind == "identity" and self.steady) and self.bounded and not self.deletes
+        return self.clustered or (self.est.rows.cluster is not None and shares)
 
     @property
     def few(self) -> str:
