@@ -57,6 +57,6 @@ def test_an_axis_of_dates_is_labelled_with_dates() -> None:
         words = [text.get_text() for text in made.axes[0].texts]
         assert {"Mar 2025", "Sep 2025"} <= set(words)
     table = lookup_table(exam.chosen)
-    assert "<th scope=\"col\" class=\"batten-number\">read on</th>" in table
+    assert '<th scope="col" class="batten-number">read on</th>' in table
     assert f">{day_of(frame['read on'].min(), exam.lookup().index[1])}</th>" in table
     assert counted_from(batten.examine("mm ~ x", frame.assign(x=np.arange(60.0)), only="y ~ x").problem) is None

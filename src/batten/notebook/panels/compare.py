@@ -6,7 +6,7 @@ import ipywidgets as widgets
 
 from batten.exam.examination import Examination
 from batten.notebook.callbacks import told_in, weakly
-from batten.notebook.panels.desk import Desk, bullets, figure, sheet
+from batten.notebook.panels.desk import Desk, bullets, figure, sheet, waiting
 from batten.notebook.panels.fields import labelled
 from batten.notebook.panels.pages import Pages
 from batten.notebook.panels.remedy_panels import HowOf, span_block
@@ -88,6 +88,7 @@ class Spans:
         self.box = sheet()
 
     def draw(self, exam: Examination) -> None:
+        self.box.value = waiting(f"Asking {len(exam)} remedies …")
         self.box.value = paragraph(SUBTITLE, "quiet") + figure(spans_figure(exam))
 
 
@@ -100,6 +101,7 @@ class Tried:
         self.box = sheet()
 
     def draw(self, exam: Examination) -> None:
+        self.box.value = waiting(f"Asking {len(exam)} remedies …")
         head = f"All {len(exam)} tried, lowest held-out error first. The lowest of so many flatters."
         self.box.value = f'{paragraph(head)}<div class="batten-tall">{full_table(exam)}</div>'
 

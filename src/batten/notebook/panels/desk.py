@@ -15,11 +15,10 @@ from batten.report.figures import Picture, img_html
 from batten.report.lettering import plain
 from batten.report.markup import esc
 
-__all__ = ["NOT_YET", "READING", "Changed", "Desk", "Panel", "bullets", "figure", "sheet"]
+__all__ = ["NOT_YET", "Changed", "Desk", "Panel", "bullets", "figure", "sheet", "waiting"]
 
 #: what a part says until it is drawn; also what a saved notebook shows of it
 NOT_YET = '<p class="batten-quiet batten-waiting">Being drawn; this needs a live kernel.</p>'
-READING = '<p class="batten-quiet batten-waiting">Reading the curve …</p>'
 
 Changed = Callable[[Examination, Examination], None]
 
@@ -82,3 +81,8 @@ def bullets(items: Iterable[object]) -> str:
 def figure(picture: Picture) -> str:
     """A figure as HTML, with its own words for those who cannot see it."""
     return f'<figure class="batten-figure">{img_html(picture)}</figure>'
+
+
+def waiting(words: str) -> str:
+    """What stands in the place of something that is being computed, as HTML."""
+    return f'<p class="batten-quiet batten-waiting">{esc(words)}</p>'

@@ -9,7 +9,7 @@ from batten.exam.examination import Examination
 from batten.exam.fit import Fit
 from batten.notebook.code_panel import CodePanel
 from batten.notebook.open_widgets import close_all
-from batten.notebook.panels.desk import READING, bullets, figure, sheet
+from batten.notebook.panels.desk import bullets, figure, sheet, waiting
 from batten.notebook.panels.span import SpanFields
 from batten.report.cautions import CARE, SUBTITLE, choosing_note
 from batten.report.figures import fit_figure, left_figure
@@ -67,9 +67,9 @@ class EffectOf:
             *(paragraph(f"{note[:1].upper()}{note[1:]}.") for note in notes),
             paragraph(f"In brackets: {exam.question.level:.0%} intervals. {choosing_note(exam)}", "quiet"),
         ])  # fmt: skip
-        first, days = paragraph(SUBTITLE, "quiet"), days_words(exam)
+        first, days, more = paragraph(SUBTITLE, "quiet"), days_words(exam), waiting("Reading the curve …")
         # where the curve turns can take a moment: the numbers need not wait for it
-        self._said.value = f"{first}\n{span_block(exam, self._key)}\n{READING}\n{numbers}"
+        self._said.value = f"{first}\n{span_block(exam, self._key)}\n{more}\n{numbers}"
         self._said.value = f"{first}\n{bullets([*fit.sentences(), days])}\n{numbers}"
 
 
