@@ -48,7 +48,7 @@ def _rows(parts: Parts) -> list[str]:
     response, exposure = parts.problem.response_column or parts.problem.response, parts.problem.beside.exposure
     y = read_numbers(response, data, text=parts.as_text(response))
     if exposure is not None:
-        y += f" / {read_numbers(exposure, data, text=parts.as_text(exposure))}"
+        y += f" / pd.to_numeric({data}[{literal(exposure)}])"
     lines += wrapped(f"rows = columns({data}, {y}).dropna()")
     lines.append(f'used, y = {data}.iloc[rows.index], rows["y"].to_numpy()')
     if parts.left.check is not None:
@@ -86,9 +86,13 @@ def _ols(parts: Parts) -> list[str]:
     if not parts.power:
         return lines
     if parts.clustered:
-        return [*lines, *power_moves(parts, "/ (1 - h)")]
+        return [*lines, *power_moves(parts, _BY_LEVERAGE[parts.alone])]
     weight = "* np.where(np.abs(out) < 1e8 * np.abs(e), out / e, 0)" if parts.alone else "* out / e"
     return [*lines, *power_moves(parts, weight)]
+
+
+#: what leaving out a row makes of its score; nothing where it owns a coefficient
+_BY_LEVERAGE = {False: "/ (1 - h)", True: "* np.where(h < 1 - 1e-8, 1 / (1 - h), 0)"}
 
 
 def _fit(parts: Parts) -> list[str]:
@@ -155,7 +159,7 @@ def _clusters(parts: Parts) -> list[str]:
     else:
         lines.append("without = b - np.linalg.solve(R, lost.T).T  # coefficients with each cluster left out")
     if parts.ordered:
-        lines.append("out = e + (Q * lost[group]).sum(axis=1)  # each row's error around the fit without its cluster")
+        lines.append("out = e + (Q * lost[cluster]).sum(axis=1)  # each row's error around the fit without its cluster")
     return lines
 
 
@@ -197,7 +201,7 @@ def _newton(parts: Parts, weight: str, score: str) -> list[str]:
 
 def _against(parts: Parts) -> str:
     """Each row against its mean without it, that of a row of average weight: a ratio, for shares a difference."""
-    own = undo(parts, f"(X * without{'[group]' if parts.clustered else ''}).sum(axis=1)")
+    own = undo(parts, f"(X * without{'[cluster]' if parts.clustered else ''}).sum(axis=1)")
     if parts.kind == "share":
         return f"v * (y - {own})" if parts.weigher else f"y - {own}"
     return f"np.maximum(1 + v * (y / {own} - 1), 0)" if parts.weigher else f"y / {own}"

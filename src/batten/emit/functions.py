@@ -248,7 +248,7 @@ def _new_row(parts: Parts) -> list[str]:
     else:
         without = "without[:, :-2]" if parts.power else "without"
         if parts.clustered:
-            without = "without[group, :-2]" if parts.power else "without[group]"
+            without = "without[cluster, :-2]" if parts.power else "without[cluster]"
         each = "np.sort(WITHOUT @ row + out)[[FIRST, LAST]] for row in N"
         if parts.est.spread is not None:
             lines = [f"    roots = {root_of('N')}"]
@@ -269,7 +269,7 @@ def _new_row_of_link(parts: Parts) -> list[str]:
         how = "np.add.outer" if share else "np.multiply.outer"
         ends = f"{how}(np.sort(out)[[{first}, {last}]], mean)"
         return [mean, f"    low, high = {f'np.clip({ends}, 0, 1)' if share else ends}"]
-    without = "without[group]" if parts.clustered else "without"
+    without = "without[cluster]" if parts.clustered else "without"
     value = f"{undo(parts, f'{without} @ row')} {'+' if share else '*'} out"
     value = f"np.clip({value}, 0, 1)" if share else value
     return [mean, f"    low, high = np.transpose([np.sort({value})[[{first}, {last}]] for row in N])"]

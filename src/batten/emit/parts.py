@@ -171,6 +171,11 @@ class Parts:
         return self.clustered or (self.est.rows.cluster is not None and shares)
 
     @property
+    def unit(self) -> str:
+        """What is left out in turn."""
+        return "cluster" if self.clustered else "row"
+
+    @property
     def few(self) -> str:
         """Source of the factor of few clusters in a sum of squares, or ""."""
         return "(1 - 1 / len(without)) * " if self.clustered else ""

@@ -86,6 +86,16 @@ def _likelihood(parts: Parts) -> list[str]:
     ]
 
 
+def _at_a_corner(parts: Parts) -> list[str]:
+    """Where a break lies on a row the squares are not level, and the step is taken in the power's own units."""
+    stretch = "np.log(m)" if _positive(parts) else "size(m)"
+    return [
+        "corner = X.T @ e / np.exp(p[-1])  # of the squares, where a break lies on a row: not of the step",
+        f"curved[:-2, -2:] += np.outer(corner, [{stretch}, 1])",
+        "curved[-2:, :-2] = curved[:-2, -2:].T",
+    ]
+
+
 def power_moves(parts: Parts, weight: str) -> list[str]:
     """p and without, power and log variance last: a Newton step of the whole likelihood leaves out each row.
 
@@ -98,8 +108,10 @@ def power_moves(parts: Parts, weight: str) -> list[str]:
             f"moves = (np.linalg.solve(curved, score.T) {weight}).T",
             "without = p + np.array([moves[i].sum(axis=0) for i in members])",
         ]
+    if parts.searched and not parts.level_there:
+        moves = [*_at_a_corner(parts), *moves]
     return [
-        "# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each row",
+        f"# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each {parts.unit}",
         "p = np.array([*b, LAMBDA, np.log(e @ e / len(e))])",
         'step = 1e-5 * np.array([*table["std_error"], 1, 1])',
         "score, curved = approx_fprime_cs(p, likelihood), approx_hess_cs(p, lambda p: likelihood(p).sum(), step)",

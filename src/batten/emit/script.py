@@ -13,7 +13,7 @@ from batten.emit.renaming import without_names
 from batten.emit.smoothing import smooth_constants
 from batten.emit.span import span
 from batten.emit.text import PLACE, WIDTH, comment, constant, literal, number, rounded, said, wrapped
-from batten.emit.weights import spread_constants
+from batten.emit.weights import settled, spread_constants
 from batten.fit.estimate import Estimate
 from batten.fit.question import Question
 from batten.frame.problem import Problem
@@ -190,6 +190,7 @@ def _checks(parts: Parts) -> list[str]:
         *wrapped(f"got = [{', '.join(got)}]"),
         *wrapped(f"want = [{', '.join(want)}]"),
         *wrapped(f"np.testing.assert_allclose(got, want, rtol=1e-6{_floor(parts)}, err_msg={message})"),
+        *settled(parts),
     ]
 
 

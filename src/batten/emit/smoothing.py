@@ -49,7 +49,7 @@ def smooth_fit(parts: Parts) -> list[str]:
         return [
             *lines,
             "without = b - np.linalg.solve(R, lost.T).T  # coefficients with each cluster left out",
-            "out = e + (Q * lost[group]).sum(axis=1)  # each row's error around the fit without its cluster",
+            "out = e + (Q * lost[cluster]).sum(axis=1)  # each row's error around the fit without its cluster",
             taken,
             *table,
         ]

@@ -6,10 +6,10 @@ import math
 
 from batten.emit.covariates import read_numbers
 from batten.emit.parts import Parts
-from batten.emit.text import docstring, literal, number, said, wrapped
+from batten.emit.text import docstring, literal, noted, number, said, wrapped
 
 __all__ = [
-    "Constant", "beside_lines", "clusters_left_out", "data_lines", "learned_fit", "root_function", "root_of",
+    "Constant", "beside_lines", "clusters_left_out", "data_lines", "learned_fit", "root_function", "root_of", "settled",
     "spread_constants",
 ]  # fmt: skip
 
@@ -60,10 +60,19 @@ def root_function(parts: Parts) -> list[list[str]]:
 def learned_fit(parts: Parts) -> list[str]:
     """plain and fit."""
     given, plain = ("v**2 * ", "smf.wls(MODEL, rows, weights=v**2)") if parts.weigher else ("", "smf.ols(MODEL, rows)")
+    fit = 'fit(method="qr")' if parts.uneven else "fit()"
     return [
-        f"plain = {plain}.fit()  # its fitted values say how errors spread",
-        f"fit = smf.wls(MODEL, rows, weights={given}root(plain.fittedvalues) ** 2).fit()",
+        f"plain = {plain}.{fit}  # its fitted values say how errors spread",
+        f"fit = smf.wls(MODEL, rows, weights={given}root(plain.fittedvalues) ** 2).{fit}",
     ]
+
+
+def settled(parts: Parts) -> list[str]:
+    """A check that SPREAD has the largest likelihood, whose slope is then zero (Harvey 1976)."""
+    if parts.est.spread is None:
+        return []
+    slope = "(e**2 / np.mean(e**2) - 1) @ np.log(root(plain.fittedvalues))"
+    return wrapped(f'assert abs({slope}) < 1e-6 * len(y), "another SPREAD is likelier"')
 
 
 def root_of(design: str) -> str:
@@ -81,23 +90,35 @@ def data_lines(parts: Parts, chosen: str) -> list[str]:
     if beside.columns:
         steps += f".dropna(subset={literal(list(beside.columns.values()))})"
     lines = wrapped(f"data = {parts.frame}{steps}") if steps else []
+    for option, name in beside.columns.items():
+        lines += _known(parts, option, name)
     if parts.problem.times is not None:
-        times = f"data[{literal(beside.weights)}].astype(int)"
+        times = f"pd.to_numeric(data[{literal(beside.weights)}]).astype(int)"
         lines += wrapped(f"data = data.iloc[np.repeat(np.arange(len(data)), {times})]")
     return lines
 
 
+def _known(parts: Parts, option: str, name: str) -> list[str]:
+    """Leaves out blank text and infinite numbers too, which dropna() keeps, where the analysis left out some rows."""
+    why, column = parts.problem.left_out["why"].astype(str), f"data[{literal(name)}]"
+    if not any(why.str.contains(f"{word} {name}", regex=False).any() for word in ("missing", "infinite")):
+        return []
+    if option == "cluster":
+        return wrapped(f'data = data[{column}.astype(str).str.strip() != ""]')
+    return wrapped(f"data = data[np.isfinite({read_numbers(name, 'data', text=True)})]")
+
+
 def beside_lines(parts: Parts) -> list[str]:
-    """v, the roots of the rows' weights; group and members, the clusters."""
+    """v, the roots of the rows' weights; cluster and members, which rows belong together."""
     lines = []
     if parts.weigher:
-        values = read_numbers(parts.weigher, "used", text=parts.as_text(parts.weigher))
-        lines += wrapped(f"v = np.sqrt({values}.to_numpy() / AVERAGE)  # roots of the weights")
+        values = f"pd.to_numeric(used[{literal(parts.weigher)}]).to_numpy(float)"
+        lines += wrapped(f"v = np.sqrt({values} / AVERAGE)  # roots of the weights")
     if parts.grouped:
-        lines += wrapped(
-            f"group = pd.factorize(used[{literal(parts.problem.beside.cluster)}])[0]  # each row's cluster"
-        )
-        lines.append("members = [np.flatnonzero(group == g) for g in range(group.max() + 1)]  # rows of each cluster")
+        codes = f"cluster = pd.factorize(used[{literal(parts.problem.beside.cluster)}])[0]"
+        lines += noted(codes, "each row's cluster")
+        members = "members = [np.flatnonzero(cluster == g) for g in range(cluster.max() + 1)]"
+        lines += noted(members, "rows of each cluster")
     return lines
 
 
