@@ -31,7 +31,7 @@ _OWN = """
 .jupyter-widgets.widget-tab.batten-tabs > .lm-TabBar > .lm-TabBar-content { flex-wrap: wrap; }
 .jupyter-widgets.widget-tab.batten-tabs > .lm-TabBar .lm-TabBar-tab { flex: 0 0 auto; min-width: 0; max-width: none; }
 .batten-widget .batten-row, .batten-widget .batten-field { flex-wrap: wrap; align-items: center; gap: .2em .5em; }
-.batten-widget .batten-row { gap: .2em 2em; }
+.batten-widget .batten-row { gap: .2em 2em; align-items: flex-start; }
 .batten-widget .widget-label { width: auto; min-width: 0; max-width: none; margin-right: .5em; }
 .batten-widget .widget-text, .batten-widget .widget-dropdown { height: auto; flex-wrap: wrap; align-items: center; }
 .batten-widget .batten-field .widget-inline-hbox > .widget-label {
