@@ -49,7 +49,7 @@ def refitted(data: Rows, key: str, splits: Splits) -> np.ndarray:
 
 
 CLOSED = ["y ~ x", "y ~ poly3 x", "log y ~ x", "log y ~ x^2", "sqrt y ~ x", "y ~ spline4 x", "log y ~ bins5 x"]
-LINKS = ["loglink y ~ log x", "loglink-gamma y ~ x", "loglink-gaussian y ~ log x"]
+LINKS = ["loglink y ~ log x", "loglink y ~ x", "loglink-gamma y ~ x", "loglink-gaussian y ~ x", "loglink y ~ spline4 x"]
 
 
 @pytest.mark.parametrize("key", CLOSED + LINKS)

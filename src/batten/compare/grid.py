@@ -10,11 +10,11 @@ from types import MappingProxyType
 import numpy as np
 
 from batten.compare.choose import ROUNDING, Candidate, Choice, choose
-from batten.compare.heldout import HeldOut, held_out
+from batten.compare.heldout import HeldOut, Prepared, held_out
 from batten.diagnose.bend import Bend, Flexible, bend_of, flexible
 from batten.engine.folds import Splits, deal, default_repeats
 from batten.engine.rows import Rows
-from batten.engine.threads import one_thread, side_by_side
+from batten.engine.threads import MANY_ROWS, one_thread, side_by_side
 from batten.errors import Refusal
 from batten.errors.compare import nothing_fits
 from batten.families.remedy import Remedy, parse
@@ -110,51 +110,72 @@ def _run(
     unit: str,
     progress: Progress | None = None,
 ) -> Comparison:
-    steps = len(remedies) + 2
-    estimates: dict[str, Estimate] = {}
-    refused: dict[str, Refusal] = {}
-    designs: Designs = {}
+    ready = Prepared.of(rows, splits)
+    # remedies of one shape share its columns; with many rows nothing as long as they is kept beyond its group
+    groups: dict[str, list[Remedy]] = {}
+    for remedy in remedies:
+        groups.setdefault(remedy.shape.key, []).append(remedy)
+    begun = np.cumsum([0, *(len(group) for group in groups.values())])
 
     def tell(place: int) -> None:
         if progress:
-            progress(place, steps, remedies[place].key)
+            progress(int(begun[place]), len(remedies), list(groups.values())[place][0].key)
 
-    tasks: list[Callable[[], Estimate | Refusal]] = [
-        partial(estimate, rows, remedy, designs=designs) for remedy in remedies
+    tasks: list[Callable[[], list[_Tried]]] = [
+        partial(_try, rows, group, ready, reference, question) for group in groups.values()
     ]
-    results = side_by_side(tasks, rows=rows.count, before=tell)
-    for remedy, result in zip(remedies, results, strict=True):
-        if isinstance(result, Refusal):
-            refused[remedy.key] = result
-        else:
-            estimates[remedy.key] = result
+    tried = {one.remedy.key: one for some in side_by_side(tasks, rows=rows.count, before=tell) for one in some}
+    done = [tried[remedy.key] for remedy in remedies]
+    # refused before it was fitted, before it was scored, before its bend was measured
+    refused = {
+        one.remedy.key: one.refusal for stage in range(3) for one in done if one.refusal and one.stage == stage
+    }  # fmt: skip
+    fine = [one for one in done if one.est is not None and one.score is not None]
+    found = _assemble(
+        rows, question, splits, reference, {one.remedy.key: one.est for one in fine if one.est},
+        {one.remedy.key: one.score for one in fine if one.score}, {one.remedy.key: one.bend for one in fine},
+        {one.remedy.key: one.turns for one in fine}, refused, unit=unit,
+    )  # fmt: skip
     if progress:
-        progress(len(remedies), steps, "held-out errors")
-    scores: dict[str, HeldOut] = {}
-    for key, score in zip(list(estimates), held_out(list(estimates.values()), splits), strict=True):
-        if isinstance(score, Refusal):
-            refused[key] = score
-            del estimates[key]
-        else:
-            scores[key] = score
-    if progress:
-        progress(steps - 1, steps, "left-over bend")
-    bends: dict[str, Bend | None] = {}
-    keys = list(estimates)
-    found_bends = side_by_side(
-        [partial(bend_of, reference, estimates[key], level=question.level) for key in keys], rows=rows.count
-    )
-    for key, bend in zip(keys, found_bends, strict=True):
-        if isinstance(bend, Refusal):
-            refused[key] = bend
-            del estimates[key], scores[key]
-        else:
-            bends[key] = _against_the_better(bend, scores[key], reference, rounding=ROUNDING * float(np.std(rows.y)))
-    turns = {key: _turns(est, question.expect) for key, est in estimates.items()}
-    found = _assemble(rows, question, splits, reference, estimates, scores, bends, turns, refused, unit=unit)
-    if progress:
-        progress(steps, steps, "done")
+        progress(len(remedies), len(remedies), "done")
     return found
+
+
+@dataclass(frozen=True, eq=False)
+class _Tried:
+    """One remedy's fit, score, bend and turning, or the reason why it has none and the stage (0 to 2) that said so."""
+
+    remedy: Remedy
+    est: Estimate | None = None
+    score: HeldOut | None = None
+    bend: Bend | None = None
+    turns: str = ""
+    refusal: Refusal | None = None
+    stage: int = 0
+
+
+def _try(rows: Rows, group: list[Remedy], ready: Prepared, reference: Flexible, question: Question) -> list[_Tried]:
+    """Remedies of one shape, fitted and scored together."""
+    designs: Designs = {}
+    fits = [estimate(rows, remedy, designs=designs) for remedy in group]
+    scores = iter(held_out([fit for fit in fits if isinstance(fit, Estimate)], ready))
+    return [
+        _Tried(remedy, refusal=fit) if isinstance(fit, Refusal) else _judged(fit, next(scores), reference, question)
+        for remedy, fit in zip(group, fits, strict=True)
+    ]
+
+
+def _judged(est: Estimate, score: HeldOut | Refusal, reference: Flexible, question: Question) -> _Tried:
+    """An estimate with its bend and turning beside its score."""
+    if isinstance(score, Refusal):
+        return _Tried(est.remedy, refusal=score, stage=1)
+    bend = bend_of(reference, est, level=question.level)
+    if isinstance(bend, Refusal):
+        return _Tried(est.remedy, refusal=bend, stage=2)
+    rounding = ROUNDING * float(np.std(est.rows.y))
+    bend = _against_the_better(bend, score, reference, rounding=rounding)
+    kept = est.lean if est.n > MANY_ROWS else est
+    return _Tried(est.remedy, kept, score, bend, _turns(est, question.expect))
 
 
 def _against_the_better(bend: Bend | None, score: HeldOut, reference: Flexible, *, rounding: float) -> Bend | None:
@@ -210,7 +231,7 @@ def _turns(est: Estimate, expect: str | None) -> str:
         return ""
     x = est.rows.x
     places = np.linspace(x.min(), x.max(), TURN_PLACES)
-    curve = averaged_means(est, places, jackknife=False).value
+    curve = averaged_means(est, places, root=False).value
     steps = np.diff(curve) * (1 if expect == "rising" else -1)
     against = np.flatnonzero(steps < -1e-9 * np.ptp(curve))
     if not len(against):

@@ -8,13 +8,12 @@ cross-products keep their digits; constants searched with the response are searc
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from dataclasses import replace
-from functools import partial
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from batten.compare.losses import Split, Trained, losses, losses_together
+from batten.compare.losses import LazySplits, Split, Trained, losses, losses_together
 from batten.compare.many import Folded, score_alike
 from batten.compare.many_means import score_mean_model
 from batten.compare.result import HeldOut, fewer, inverse_or_none, joined, rank_lost, unsafe, unsettled
@@ -28,29 +27,38 @@ from batten.engine.power import best_power, fold_powers
 from batten.engine.rows import Array, Ints, Rows
 from batten.engine.search import search
 from batten.engine.sets import BLOCK, masks, search_sets, solve_means
-from batten.engine.threads import MANY_ROWS, side_by_side
+from batten.engine.threads import MANY_ROWS
 from batten.errors import Refusal
 from batten.families.base import Constants, Link
 from batten.fit.estimate import Estimate
 from batten.fit.guard import meets_constant, no_error_left
 from batten.fit.searched import scale_power, searched_model, weighted_design
 
-__all__ = ["HeldOut", "held_out"]
+__all__ = ["HeldOut", "Prepared", "held_out"]
 
-#: above this many rows a log link takes one Newton step per training set from the all-rows fit
-FULL_STEPS_ROWS = 20_000
 #: above this many rows searched constants take one step in each training set from the all-rows optimum
 ONE_STEP_ROWS = 20_000
 
 
-def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusal]:
+@dataclass(frozen=True, eq=False)
+class Prepared:
+    """What the scores of all remedies share: the splits' rows, and with many rows these sorted by fold."""
+
+    sets: Sequence[Split]
+    folded: list[Folded]
+
+    @classmethod
+    def of(cls, rows: Rows, splits: Splits) -> Prepared:
+        many = rows.count > MANY_ROWS
+        sets: Sequence[Split] = LazySplits(rows, splits)
+        return cls(sets if many else list(sets), [Folded.of(rows, f, splits.k) for f in splits.fold] if many else [])
+
+
+def held_out(estimates: list[Estimate], splits: Splits | Prepared) -> list[HeldOut | Refusal]:
     """Scores of every estimate on the same splits, in the order given."""
     if not estimates:
         return []
-    rows = estimates[0].rows
-    # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
-    sets = [Split(train, test, np.sort(rows.x[train])) for train, test in splits.sets]
-    folded = [Folded.of(rows, fold, splits.k) for fold in splits.fold] if rows.count > MANY_ROWS else []
+    ready = splits if isinstance(splits, Prepared) else Prepared.of(estimates[0].rows, splits)
     members: list[list[int]] = []
     shapes: dict[str, list[int]] = {}
     for i, est in enumerate(estimates):
@@ -59,22 +67,26 @@ def held_out(estimates: list[Estimate], splits: Splits) -> list[HeldOut | Refusa
         else:
             members.append([i])
     members += shapes.values()
-
-    def scored(group: list[Estimate]) -> list[HeldOut | Refusal]:
-        if group[0].link is not None:
-            return [_score_link(group[0], sets, folded)]
-        if group[0].spread is not None:
-            return [_score_spread(group[0], sets)]
-        if group[0].shape.searched:
-            return [_score(group[0], sets, _searched_fits(group[0], sets))]
-        return _score_group(group, sets, folded)
-
-    results = side_by_side([partial(scored, [estimates[i] for i in some]) for some in members], rows=rows.count)
-    found = {i: one for some, many in zip(members, results, strict=True) for i, one in zip(some, many, strict=True)}
+    found = {
+        i: one
+        for some in members
+        for i, one in zip(some, _scored([estimates[i] for i in some], ready), strict=True)
+    }  # fmt: skip
     return [found[i] for i in range(len(estimates))]
 
 
-def _score_group(group: list[Estimate], sets: list[Split], folded: list[Folded]) -> list[HeldOut | Refusal]:
+def _scored(group: list[Estimate], ready: Prepared) -> list[HeldOut | Refusal]:
+    sets, folded = ready.sets, ready.folded
+    if group[0].link is not None:
+        return [_score_link(group[0], sets, folded)]
+    if group[0].spread is not None:
+        return [_score_spread(group[0], sets)]
+    if group[0].shape.searched:
+        return [_score(group[0], sets, _searched_fits(group[0], sets))]
+    return _score_group(group, sets, folded)
+
+
+def _score_group(group: list[Estimate], sets: Sequence[Split], folded: list[Folded]) -> list[HeldOut | Refusal]:
     """All scales of one shape whose columns do not depend on the response."""
     rows, shape = group[0].rows, group[0].shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
@@ -89,7 +101,7 @@ def _score_group(group: list[Estimate], sets: list[Split], folded: list[Folded])
     return _fitted_group(group, sets, states)
 
 
-def _fitted_group(group: list[Estimate], sets: list[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
+def _fitted_group(group: list[Estimate], sets: Sequence[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
     """The same by a fit to the rows of every training set."""
     rows, shape = group[0].rows, group[0].shape
     precondition = group[0].factored.root
@@ -125,7 +137,7 @@ def _fitted_group(group: list[Estimate], sets: list[Split], states: list[Constan
     ]
 
 
-def _score_smooth(group: list[Estimate], sets: list[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
+def _score_smooth(group: list[Estimate], sets: Sequence[Split], states: list[Constants]) -> list[HeldOut | Refusal]:
     """All scales of one penalised shape."""
     trained: list[list[Trained | Refusal]] = [[] for _ in group]
     found = smoothed_sets(group, states, [split.test for split in sets])
@@ -140,7 +152,7 @@ def _score_smooth(group: list[Estimate], sets: list[Split], states: list[Constan
 
 
 def _with_powers(
-    est: Estimate, sets: list[Split], fits: list[Trained], bases: list[Array], inverses: list[Array]
+    est: Estimate, sets: Sequence[Split], fits: list[Trained], bases: list[Array], inverses: list[Array]
 ) -> Iterator[Trained | Refusal]:
     """The power of y learned again in every training set, and the fit at it."""
     rows, shared = est.rows, bases[0] is bases[-1]
@@ -165,7 +177,7 @@ def _with_powers(
         yield Trained(eta, (c,), fit.v, fit.columns)
 
 
-def _searched_fits(est: Estimate, sets: list[Split]) -> Iterator[Trained | Refusal]:
+def _searched_fits(est: Estimate, sets: Sequence[Split]) -> Iterator[Trained | Refusal]:
     """Shapes with constants of their own, searched again in each training set."""
     rows, shape = est.rows, est.shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
@@ -187,7 +199,7 @@ def _searched_fits(est: Estimate, sets: list[Split]) -> Iterator[Trained | Refus
         yield Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
 
 
-def _shared_search(est: Estimate, sets: list[Split]) -> Array:
+def _shared_search(est: Estimate, sets: Sequence[Split]) -> Array:
     """Best constants of every training set (S, q), all sets at once as far as memory allows."""
     held = [split.test for split in sets]
     if est.n > ONE_STEP_ROWS and est.moving:
@@ -245,7 +257,7 @@ def _least_squares(x: Array, z: Array, root: Array, test: Ints) -> tuple[Array, 
     return eta, np.einsum("ij,jk,ik->i", held, inverse, held)
 
 
-def _score(est: Estimate, sets: list[Split], fits: Iterator[Trained | Refusal]) -> HeldOut | Refusal:
+def _score(est: Estimate, sets: Sequence[Split], fits: Iterator[Trained | Refusal]) -> HeldOut | Refusal:
     """Losses of one remedy on a transformed (or plain) response; sets of equal size are scored together."""
     out = np.empty((4, len(sets)))
     for members in _alike(sets, est.n):
@@ -263,24 +275,25 @@ def _score(est: Estimate, sets: list[Split], fits: Iterator[Trained | Refusal]) 
     return HeldOut(out[0], out[1], out[2], out[3], np.array([len(split.test) for split in sets]))
 
 
-def _alike(sets: list[Split], n: int) -> list[list[int]]:
+def _alike(sets: Sequence[Split], n: int) -> list[list[int]]:
     """Which sets are held in memory together: all of them at small n, else one by one."""
     everything = list(range(len(sets)))
     return [everything] if n * len(sets) <= BLOCK else [[place] for place in everything]
 
 
-def _score_link(est: Estimate, sets: list[Split], folded: list[Folded]) -> HeldOut | Refusal:
+def _score_link(est: Estimate, sets: Sequence[Split], folded: list[Folded]) -> HeldOut | Refusal:
     """Losses of a mean model; its median is the mean times the median of y / mu."""
     rows, shape, link = est.rows, est.shape, est.link
     assert isinstance(link, Link)
     model = Mean(link.mean, link.mean_slope, link.variance, link.deviance)
     if shape.searched:
         return _score_searched_link(est, model, sets)
-    if folded and all(shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) == est.state for split in sets):
-        near = joined(tuple(score_mean_model(est, one) for one in folded))
-        assert near is not None
-        return near
-    steps = 1 if rows.count > FULL_STEPS_ROWS else 30
+    if folded:
+        states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
+        k = len(folded[0].held)
+        near = joined(tuple(score_mean_model(est, one, states[r * k : (r + 1) * k]) for r, one in enumerate(folded)))
+        if near is not None:
+            return near
     out = np.empty((3, len(sets)))
     block = max(1, BLOCK // (rows.count * len(est.coef)))
     for first in range(0, len(sets), block):
@@ -295,10 +308,10 @@ def _score_link(est: Estimate, sets: list[Split], folded: list[Folded]) -> HeldO
         ])  # fmt: skip
         mask = masks(rows.count, [split.test for split in some])
         mask = mask if rows.weights is None else mask * rows.weights
-        done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef, steps=steps)
+        done = solve_means(model, x[0] if shared else x, rows.y, mask, est.coef)
         if not np.isfinite(done.eta).all():
             return rank_lost(shape.key)
-        if steps > 1 and not done.settled.all():
+        if not done.settled.all():
             return unsettled(est)
         mu = link.mean(done.eta)
         if not np.isfinite(mu).all():
@@ -315,7 +328,7 @@ def _losses_of_means(rows: Rows, mu: Array, split: Split) -> Array:
     return losses(rows.y[test], mu[test], mu[test] * median, rows.weights, test)
 
 
-def _score_searched_link(est: Estimate, model: Mean, sets: list[Split]) -> HeldOut | Refusal:
+def _score_searched_link(est: Estimate, model: Mean, sets: Sequence[Split]) -> HeldOut | Refusal:
     """The same where the shape's constants are searched again in each training set, from the all-rows place."""
     rows, shape = est.rows, est.shape
     out = np.empty((3, len(sets)))
@@ -335,7 +348,7 @@ def _score_searched_link(est: Estimate, model: Mean, sets: list[Split]) -> HeldO
     return HeldOut(out[0], out[1], out[2], None, np.array([len(split.test) for split in sets]))
 
 
-def _score_spread(est: Estimate, sets: list[Split]) -> HeldOut | Refusal:
+def _score_spread(est: Estimate, sets: Sequence[Split]) -> HeldOut | Refusal:
     """Losses of a remedy whose weights are learned."""
     found = spread_losses(est, sets)
     if isinstance(found, str):

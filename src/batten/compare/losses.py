@@ -2,17 +2,20 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import overload
 
 import numpy as np
 from scipy.special import gammaln
 
-from batten.engine.rows import Array, Ints
+from batten.engine.folds import Splits
+from batten.engine.rows import Array, Ints, Rows
 from batten.families.base import Constants, Scale
 from batten.fit.estimate import Estimate
 from batten.fit.smear import mean_of
 
-__all__ = ["Split", "Trained", "log_t", "losses", "losses_together", "sound"]
+__all__ = ["LazySplits", "Split", "Trained", "log_t", "losses", "losses_together", "sound"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -22,6 +25,31 @@ class Split:
     train: Ints
     test: Ints
     sorted_x: Array
+
+
+class LazySplits(Sequence[Split]):
+    """The splits of some rows, made when asked for: all of them at once would take many times the rows' memory."""
+
+    def __init__(self, rows: Rows, splits: Splits) -> None:
+        self._rows, self._splits = rows, splits
+        # what a shape learns from x does not depend on the order of the rows, and is had faster from sorted ones
+        self._order = np.argsort(rows.x, kind="stable")
+
+    def __len__(self) -> int:
+        return self._splits.count
+
+    @overload
+    def __getitem__(self, place: int) -> Split: ...
+    @overload
+    def __getitem__(self, place: slice) -> list[Split]: ...
+    def __getitem__(self, place: int | slice) -> Split | list[Split]:
+        if isinstance(place, slice):
+            return [self[i] for i in range(*place.indices(len(self)))]
+        if not 0 <= place < len(self):
+            raise IndexError(place)
+        held = self._splits.fold[place // self._splits.k] == place % self._splits.k
+        sorted_x = self._rows.x[self._order[~held[self._order]]]
+        return Split(np.flatnonzero(~held), np.flatnonzero(held), sorted_x)
 
 
 @dataclass(frozen=True, eq=False)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
 from batten.compare.losses import Split, log_t, losses
@@ -17,7 +19,7 @@ from batten.fit.spread import driver, given_rows, unit_of
 __all__ = ["spread_losses"]
 
 
-def spread_losses(est: Estimate, sets: list[Split]) -> Array | str:
+def spread_losses(est: Estimate, sets: Sequence[Split]) -> Array | str:
     """Squared and absolute error, share within 10% and log score (4, S); or what failed: "fewer" or "rank"."""
     rows, shape = given_rows(est), est.shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
@@ -40,7 +42,7 @@ def spread_losses(est: Estimate, sets: list[Split]) -> Array | str:
     return out
 
 
-def _block(est: Estimate, q: Array, sets: list[Split]) -> Array | None:
+def _block(est: Estimate, q: Array, sets: Sequence[Split]) -> Array | None:
     """The same for some sets that share the basis q (n, p) of their columns, rows times sqrt(given weights)."""
     assert est.spread is not None
     rows, positive = given_rows(est), est.spread.positive

@@ -278,7 +278,7 @@ def _thinned(est: Estimate) -> Estimate:
     every = est.n // SCAN_ROWS
     if every < 2:
         return est
-    return replace(est, rows=est.rows.take(np.arange(0, est.n, every)), z=est.z[::every])
+    return replace(est, rows=est.rows.take(np.arange(0, est.n, every)), kept=None)
 
 
 def _listed(est: Estimate, which: int, allowed: float, candidates: Array, loss: Array) -> Profile:

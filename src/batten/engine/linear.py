@@ -6,6 +6,7 @@ solutions), so that badly scaled polynomials keep the digits the data hold; else
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -40,11 +41,18 @@ def design(rows: Rows, shape_columns: Array, *, own_level: bool = False) -> Arra
 
 @dataclass(frozen=True, eq=False)
 class Factored:
-    """Thin QR of a design with unit-length columns: X / length = q @ r. q (n, p), r (p, p), length (p,)."""
+    """Thin QR of a design with unit-length columns: X / length = q @ r. q (n, p), r (p, p), length (p,).
 
-    q: Array
+    basis: q, or what makes it again where it is not kept.
+    """
+
+    basis: Array | Callable[[], Array]
     r: Array
     length: Array
+
+    @property
+    def q(self) -> Array:
+        return self.basis if isinstance(self.basis, np.ndarray) else self.basis()
 
     @property
     def leverage(self) -> Array:
@@ -61,6 +69,12 @@ class Factored:
     def root(self) -> Array:
         """R^-1 in raw units (p, p): X @ root is orthonormal, root root' = (X'X)^-1."""
         return np.asarray(np.linalg.inv(self.r) / self.length[:, None])
+
+    def on(self, basis: Array | Callable[[], Array]) -> Factored:
+        """The same triangle with another basis, or another way to it."""
+        other = Factored(basis, self.r, self.length)
+        other.__dict__["root"] = self.root  # a penalised fit has its own
+        return other
 
     @property
     def inverse_cross(self) -> Array:

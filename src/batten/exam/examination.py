@@ -54,7 +54,7 @@ class Examination(Mapping[str, Fit]):
             raise errors.unknown_key(key, list(self), parts)
         with self._lock:
             if name not in self._fits:
-                self._fits[name] = Fit(self._problem, self._question, self._comparison.estimates[name])
+                self._fits[name] = Fit(self._problem, self._question, self._comparison.estimates[name].full)
             return self._fits[name]
 
     def __iter__(self) -> Iterator[str]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
-from functools import cached_property
+from functools import cached_property, partial
 
 import numpy as np
 
@@ -16,7 +16,16 @@ from batten.families.remedy import Remedy
 from batten.fit.powers import in_lambda, likelihood_moves, own_units, pivot
 from batten.fit.spread import Spread
 
-__all__ = ["Estimate"]
+__all__ = ["Estimate", "Kept"]
+
+
+@dataclass(frozen=True, eq=False)
+class Kept:
+    """Response on the fitting scale, linear predictor and residuals (n,), as `Estimate` has them."""
+
+    z: Array
+    eta: Array
+    residual: Array
 
 
 @dataclass(frozen=True, eq=False)
@@ -24,7 +33,8 @@ class Estimate:
     """Frozen result of one fit; everything shown, predicted or emitted reads it.
 
     state, theta: the shape's constants (fixed by x; searched). c: the scale's constants.
-    coef (p,): raw-unit coefficients of the design [base | focal columns]. z (n,): response on the fitting scale times
+    coef (p,): raw-unit coefficients of the design [base | focal columns]. kept: z, eta and residual, or None where they
+    are made again when asked for. z (n,): response on the fitting scale times
     sqrt(w) (y for links). eta (n,): linear predictor. residual (n,): z - sqrt(w) eta, so that of a row of average
     weight; for links y - mu. factored: QR of the effective design (coefficients, then theta), rows times sqrt(w), and
     times the working weights for links. leverage (n,). sigma: residual SD on the fitting scale, of a row of average
@@ -40,9 +50,7 @@ class Estimate:
     theta: Constants
     c: Constants
     coef: Array
-    z: Array
-    eta: Array
-    residual: Array
+    kept: Kept | None
     factored: Factored
     df_residual: float
     sigma: float
@@ -68,7 +76,42 @@ class Estimate:
 
     @property
     def n(self) -> int:
-        return len(self.z)
+        return self.rows.count
+
+    @property
+    def z(self) -> Array:
+        if self.kept is not None:
+            return self.kept.z
+        return self.rows.y if self.link is not None else self.rows.weigh(self.scale.forward(self.rows.y, self.c))
+
+    @property
+    def eta(self) -> Array:
+        if self.kept is not None:
+            return self.kept.eta
+        return np.asarray(self.design_at(self.rows.x, self.rows.base, self.rows.modifier) @ self.coef)
+
+    @property
+    def residual(self) -> Array:
+        if self.kept is not None:
+            return self.kept.residual
+        if self.link is not None:
+            return self.rows.y - self.link.mean(self.eta)
+        return np.asarray(self.z - self.rows.weigh(self.eta))
+
+    @property
+    def lean(self) -> Estimate:
+        """The same without arrays as long as the rows, which are then made again whenever they are asked for."""
+        bare = replace(self, kept=None, factored=self.factored.on(np.empty((0, len(self.factored.root)))))
+        return replace(bare, factored=self.factored.on(partial(_basis, bare)))
+
+    @property
+    def full(self) -> Estimate:
+        """The same with all arrays at hand."""
+        if self.kept is not None:
+            return self
+        return replace(
+            self, kept=Kept(self.z, self.eta, self.residual), factored=self.factored.on(self.factored.q)
+        )  # fmt: skip
 
     @property
     def moving(self) -> int:
@@ -259,8 +302,8 @@ class Estimate:
         stretch = np.sqrt(self.n / len(rows))
         few = Factored(self.factored.q[rows] * stretch, self.factored.r / stretch, self.factored.length)
         part = replace(
-            self, rows=self.rows.take(rows), z=self.z[rows], eta=self.eta[rows], residual=self.residual[rows],
-            factored=few,
+            self, rows=self.rows.take(rows), factored=few,
+            kept=Kept(self.z[rows], self.eta[rows], self.residual[rows]),
         )  # fmt: skip
         few.__dict__["root"] = self.factored.root * stretch
         # a row is left out of all rows, not of the part
@@ -287,3 +330,14 @@ class Estimate:
             d = self.moves() * self.few_clusters
             return np.asarray(d.T @ d + self.bias_moves.T @ self.bias_moves)
         return np.asarray(self.factored.inverse_cross * self.sigma**2)
+
+
+def _basis(est: Estimate) -> Array:
+    """The orthonormal basis (n, P) of an estimate's effective design, from its triangle."""
+    rows = est.rows
+    design = est.jacobian_at(rows.x, rows.base, rows.modifier)[:, : len(est.factored.root)]
+    if est.link is None:
+        return rows.weigh(design) @ est.factored.root
+    eta = design[:, : len(est.coef)] @ est.coef
+    weight = est.link.mean_slope(eta) ** 2 / est.link.variance(est.link.mean(eta))
+    return rows.weigh(design * np.sqrt(weight)[:, None]) @ est.factored.root

@@ -17,7 +17,7 @@ from batten.engine.threads import MANY_ROWS
 from batten.errors import Refusal
 from batten.families.base import Constants, Link, Scale
 from batten.families.remedy import Remedy
-from batten.fit.estimate import Estimate
+from batten.fit.estimate import Estimate, Kept
 from batten.fit.guard import (
     aliased,
     domain_trouble,
@@ -116,7 +116,7 @@ def _fit_scale(
         return trouble
     rss = float(residual @ residual)
     est = Estimate(
-        remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, z=z, eta=eta, residual=residual,
+        remedy=remedy, rows=rows, state=state, theta=t, c=c, coef=coef, kept=Kept(z, eta, residual),
         factored=linear, df_residual=df, sigma=float(np.sqrt(rss / df)),
         log_likelihood=_likelihood(rss, rows.count, scale.log_jacobian(rows.y, c) + np.log(rows.root_weight)),
         parameters=used + 1 + len(t) + (1 if scale.searched else 0), roughness=roughness,
@@ -196,8 +196,8 @@ def _fit_link(rows: Rows, remedy: Remedy, state: Constants, theta: Constants | N
     likelihood = link.log_likelihood(rows.y, done.mu) if rows.weights is None else None
     pearson = float((rows.weigh(residual) ** 2 / link.variance(done.mu)).sum())
     est = Estimate(
-        remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef, z=rows.y, eta=done.eta,
-        residual=residual, factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
+        remedy=remedy, rows=rows, state=state, theta=t, c=(), coef=done.coef,
+        kept=Kept(rows.y, done.eta, residual), factored=factor(x * np.sqrt(done.weight)[:, None]), df_residual=df,
         sigma=float(np.sqrt(pearson / df)), log_likelihood=likelihood,
         parameters=x.shape[1] + 1 + len(t),
         notes=("constant set by hand; not ranked",) if theta and shape.searched else (),
