@@ -50,9 +50,10 @@ def refitted(data: Rows, key: str, splits: Splits) -> np.ndarray:
 
 CLOSED = ["y ~ x", "y ~ poly3 x", "log y ~ x", "log y ~ x^2", "sqrt y ~ x", "y ~ spline4 x", "log y ~ bins5 x"]
 LINKS = ["loglink y ~ log x", "loglink y ~ x", "loglink-gamma y ~ x", "loglink-gaussian y ~ x", "loglink y ~ spline4 x"]
+SEARCHED = ["y ~ x^p", "log y ~ x^p", "log y ~ fp1 x", "y ~ exponential x", "y ~ level-hyp x", "y ~ s-curve x"]
 
 
-@pytest.mark.parametrize("key", CLOSED + LINKS)
+@pytest.mark.parametrize("key", CLOSED + LINKS + SEARCHED)
 def test_scores_equal_refits_of_every_training_set(key: str) -> None:
     data = rows()
     splits = deal(data, folds=4, repeats=1, seed=1)

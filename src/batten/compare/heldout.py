@@ -16,6 +16,7 @@ import numpy as np
 from batten.compare.losses import LazySplits, Split, Trained, losses, losses_together
 from batten.compare.many import Folded, score_alike
 from batten.compare.many_means import score_mean_model
+from batten.compare.many_searched import constants_near
 from batten.compare.result import HeldOut, fewer, inverse_or_none, joined, rank_lost, unsafe, unsettled
 from batten.compare.smoothed import smoothed_sets
 from batten.compare.spread import spread_losses
@@ -36,9 +37,6 @@ from batten.fit.searched import scale_power, searched_model, weighted_design
 
 __all__ = ["HeldOut", "Prepared", "held_out"]
 
-#: above this many rows searched constants take one step in each training set from the all-rows optimum
-ONE_STEP_ROWS = 20_000
-
 
 @dataclass(frozen=True, eq=False)
 class Prepared:
@@ -46,12 +44,15 @@ class Prepared:
 
     sets: Sequence[Split]
     folded: list[Folded]
+    folds: int
 
     @classmethod
     def of(cls, rows: Rows, splits: Splits) -> Prepared:
         many = rows.count > MANY_ROWS
         sets: Sequence[Split] = LazySplits(rows, splits)
-        return cls(sets if many else list(sets), [Folded.of(rows, f, splits.k) for f in splits.fold] if many else [])
+        return cls(
+            sets if many else list(sets), [Folded.of(rows, f, splits.k) for f in splits.fold] if many else [], splits.k
+        )
 
 
 def held_out(estimates: list[Estimate], splits: Splits | Prepared) -> list[HeldOut | Refusal]:
@@ -82,7 +83,7 @@ def _scored(group: list[Estimate], ready: Prepared) -> list[HeldOut | Refusal]:
     if group[0].spread is not None:
         return [_score_spread(group[0], sets)]
     if group[0].shape.searched:
-        return [_score(group[0], sets, _searched_fits(group[0], sets))]
+        return [_score(group[0], sets, _searched_fits(group[0], sets, ready.folds))]
     return _score_group(group, sets, folded)
 
 
@@ -177,12 +178,12 @@ def _with_powers(
         yield Trained(eta, (c,), fit.v, fit.columns)
 
 
-def _searched_fits(est: Estimate, sets: Sequence[Split]) -> Iterator[Trained | Refusal]:
+def _searched_fits(est: Estimate, sets: Sequence[Split], folds: int) -> Iterator[Trained | Refusal]:
     """Shapes with constants of their own, searched again in each training set."""
     rows, shape = est.rows, est.shape
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
     if all(state == est.state for state in states) and not est.scale.searched:
-        thetas = _shared_search(est, sets)
+        thetas = _shared_search(est, sets, folds)
     else:
         thetas = None
     p = len(est.coef)
@@ -199,11 +200,13 @@ def _searched_fits(est: Estimate, sets: Sequence[Split]) -> Iterator[Trained | R
         yield Trained(fitted[0], c, fitted[1], x.shape[1] + len(theta))
 
 
-def _shared_search(est: Estimate, sets: Sequence[Split]) -> Array:
+def _shared_search(est: Estimate, sets: Sequence[Split], folds: int) -> Array:
     """Best constants of every training set (S, q), all sets at once as far as memory allows."""
     held = [split.test for split in sets]
-    if est.n > ONE_STEP_ROWS and est.moving:
-        return _one_step(est, held)
+    if est.n > MANY_ROWS and est.moving:
+        found = constants_near(est, held, folds)
+        if found is not None:
+            return found
     model = searched_model(est.rows, est.shape, est.state)
     block = max(1, BLOCK // (est.n * (1 + len(est.theta))))
     out = [
@@ -211,20 +214,6 @@ def _shared_search(est: Estimate, sets: Sequence[Split]) -> Array:
         for s in range(0, len(held), block)
     ]
     return np.vstack(out)
-
-
-def _one_step(est: Estimate, held: list[Ints]) -> Array:
-    """Constants of every training set by one Gauss-Newton step from the all-rows optimum.
-
-    At n rows the step is of order 1/sqrt(n) and its error of order 1/n; the held-out loss is flat there, so it moves by
-    less than its seventh digit beyond ONE_STEP_ROWS (checked against full searches in the tests).
-    """
-    q, out = est.factored.q, np.empty((len(held), est.moving))
-    for s, rows in enumerate(held):
-        part = q[rows]
-        step = -np.linalg.solve(np.eye(q.shape[1]) - part.T @ part, part.T @ est.residual[rows])
-        out[s] = np.array(est.theta) + (est.factored.root @ step)[-est.moving :]
-    return out
 
 
 def _own_search(est: Estimate, part: Rows, state: Constants) -> tuple[Array, Constants]:

@@ -18,6 +18,8 @@ __all__ = ["score_mean_model"]
 
 #: steps of a training set at most, and the share of its whole move that a last one may be
 STEPS, SETTLED = 12, 1e-5
+#: after this many steps the slope is taken anew
+RENEWED = 3
 #: half the step of slopes along the linear predictor
 SLOPE = 1e-4
 
@@ -26,8 +28,8 @@ def score_mean_model(est: Estimate, folded: Folded, states: list[Constants]) -> 
     """Losses of a mean model with these constants of its shape in every training set; None where one does not settle.
 
     A training set's steps are (A'WA)^-1 A's over its rows, s each row's part of the score along the linear predictor
-    and W the observed slope of s at the fit to all rows, the same in every step: with the expected slope a mean that is
-    not quite right would converge slowly.
+    and W the observed slope of s at the fit to all rows, the same in the first steps: with the expected slope a mean
+    that is not quite right would converge slowly.
     """
     rows, link, p = folded.rows, est.link, len(est.coef)
     assert isinstance(link, Link)
@@ -88,8 +90,13 @@ def _moved(link: Link, rows: Rows, a: Array, eta: Array, score: Array, inverse: 
     """How far one training set's coefficients of a (n, p) move from the linear predictor eta (n,); None where the steps
     do not become small."""
     move = inverse @ (score @ a - score[held] @ a[held])
-    for _ in range(STEPS):
-        left = _score(link, rows, eta + a @ move)
+    for turn in range(1, STEPS):
+        at = eta + a @ move
+        if turn % RENEWED == 0:  # far from the fit to all rows its slope is no good guide
+            steep = a * _slope(link, rows, at)[:, None]
+            renewed = inverse_or_none(a.T @ steep - a[held].T @ steep[held])
+            inverse = inverse if renewed is None else renewed
+        left = _score(link, rows, at)
         step = inverse @ (left @ a - left[held] @ a[held])
         move = move + step
         if np.abs(step).max() <= SETTLED * np.abs(move).max():
