@@ -1,7 +1,7 @@
 """The whole default grid beside what an analyst writes by hand, in one process: times, ratios, peak memory.
 
     python tests/benchmarks/against_by_hand.py [ROWS ...]         # 1,000, 10,000 and 100,000 unless given
-    python tests/benchmarks/against_by_hand.py --million          # and a million rows, where one formula fit is the peer
+    python tests/benchmarks/against_by_hand.py --million          # and a million rows, beside one formula fit
     python tests/benchmarks/against_by_hand.py --growth           # rows from 10,000 on, covariates from 1 to 20
     python tests/benchmarks/against_by_hand.py --phases 100000    # where the time of one examination goes
 

@@ -56,13 +56,17 @@ def _lowest(est: Estimate, held: list[Ints], axes: Array) -> Array | None:
     for s in range(len(held)):
         begin = grid[int(np.argmin(loss[:, s]))]
         done = minimize(
-            lambda u, b=coef[:, s]: float((_terms(u[None]) @ b)[0]), begin, method="L-BFGS-B", bounds=[(-1, 1)] * q,
+            _interpolated, begin, args=(coef[:, s],), method="L-BFGS-B", bounds=[(-1.0, 1.0)] * q,
             options={"ftol": 1e-15, "gtol": 1e-8},
         )  # fmt: skip
         if np.abs(done.x).max() > 0.99:
             return None
         out[s] = est.theta + axes @ done.x
     return out
+
+
+def _interpolated(u: Array, coef: Array) -> float:
+    return float((_terms(u[None]) @ coef)[0])
 
 
 def _terms(u: Array) -> Array:
