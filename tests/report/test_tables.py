@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+
 import numpy as np
 import pandas as pd
 import pytest
@@ -12,6 +14,7 @@ import batten
 from batten.compare.shortlist import shortlist
 from batten.report import numerals
 from batten.report.entries import entries
+from batten.report.fit_tables import lookup_table
 from batten.report.grid import Column, Grid, as_html, as_text
 from batten.report.tables import full_grid, full_table, refused_grid, refused_table, shortlist_grid, shortlist_text
 
@@ -141,3 +144,18 @@ def test_rows_asked_for_by_themselves_are_those_of_the_whole_table() -> None:
     pd.testing.assert_frame_equal(some, whole.table().loc[some.index])
     with pytest.raises(batten.BattenError):
         fresh.table(["y ~ log10 x"])
+
+
+def test_values_to_look_up_are_the_fits_own_by_group_too() -> None:
+    exam = fan(60).examine(only=["y ~ x", "log y ~ log x"], by="alloy", folds=4, repeats=1)
+    fit = exam["log y ~ log x"]
+    html = lookup_table(fit, exam.question.by)
+    rows = [re.findall(r"<t[hd][^>]*>([^<]*)</t[hd]>", row) for row in html.split("<tr>")[2:]]
+    wanted = fit.lookup(by="alloy")
+    # the last digit printed is at most a twentieth of a tenth of the middle value
+    half = float(wanted[["mean", "median", "low", "high"]].stack().median()) / 400
+    assert [(group, float(x)) for group, x, *_ in rows] == list(wanted.index)
+    for (_, _, *cells), (_, want) in zip(rows, wanted.iterrows(), strict=True):
+        for text, value in zip(cells, want[["mean", "median", "low", "high"]], strict=True):
+            assert float(text.replace(",", "")) == pytest.approx(value, abs=half)
+    assert "where 95% of new rows are expected" in html
