@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 import pytest
 from cases import agrees, foundry, write
+from matrix import combinations
 from runner import ENGINES, run_script
 
 import batten
@@ -156,12 +157,14 @@ RESPONSES = {"y ~ hinge x": "kinked", "1/y ~ x": "rate", "share y ~ x": "scrap"}
 def test_scripts_pass_a_linter(tmp_path: Path) -> None:
     """Lines, unused and undefined names; the frame is the one name a script takes as given."""
     data = foundry(90).rename(columns={"depth": "depth in mm"})
-    keys = [*COMMON, "boxcox y ~ x", "yeojohnson y ~ hinge x", "y ~ s-curve x", "loglink-gamma y ~ spline3 x"]
+    keys = [*COMMON, "boxcox y ~ x", "yeojohnson y ~ hinge x", "y ~ s-curve x", "invlink-gamma y ~ spline3 x"]
     for i, key in enumerate(keys):
         response = RESPONSES.get(key, "kinked" if "hinge" in key else "grown" if "s-curve" in key else "minutes")
         formula = f"{response} ~ mass_kg + C(alloy) + bs(Q('depth in mm'), df=4)"
         source = write(key, formula, data, errors="constant" if i % 3 == 0 else "robust").source
         (tmp_path / f"script_{i}.py").write_text("castings = object()\n" + source)
+    for i, one in enumerate(list(combinations())[::16]):
+        (tmp_path / f"beside_{i}.py").write_text("works = object()\n" + one.write().source)
     select = "E,F,W,I,UP,B,SIM,C4,PIE,NPY"
     # E402: the frame stands before the imports here
     ruff = [

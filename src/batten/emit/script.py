@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import sys
+
 import numpy as np
 
 from batten.effects.numbers import counted
@@ -86,7 +88,9 @@ def _imports(parts: Parts) -> list[str]:
             _, module, _, names = line.split(maxsplit=3)
             merged.setdefault(module, []).append(names)
     named = [f"from {module} import {', '.join(sorted(names))}" for module, names in sorted(merged.items())]
-    return [*sorted(plain, key=lambda line: line.split()[1]), *named]
+    plain.sort(key=lambda line: line.split()[1])
+    python = [line for line in plain if line.split()[1] in sys.stdlib_module_names]
+    return [*python, *[""] * bool(python), *(line for line in plain if line not in python), *named]
 
 
 def _constants(parts: Parts) -> list[str]:
