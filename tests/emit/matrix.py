@@ -41,11 +41,10 @@ KEYS = {
     "sqrt y ~ x": "grown", "1/y ~ x": "falling", "boxcox y ~ x": "grown", "yeojohnson y ~ poly2 x": "grown",
     "boxcox y ~ hinge x": "kinked", "weighted y ~ x": "kinked", "weighted y ~ spline3 x": "kinked",
     "loglink y ~ x": "grown", "loglink-gamma y ~ spline3 x": "grown", "loglink-gaussian y ~ log x": "grown",
-    "y ~ smooth x": "grown", "log y ~ smooth x": "grown",
     "share y ~ x": "share", "invlink-gamma y ~ x": "falling", "loglink y ~ hinge x": "turned",
     "loglink y ~ hinge2 x": "turned", "loglink-gamma y ~ x^p": "turned", "loglink-gaussian y ~ fp2 x": "turned",
     "loglink y ~ cut x": "turned", "loglink-gamma y ~ fp1 x": "turned", "share y ~ hinge x": "share",
-    "invlink-gamma y ~ hinge x": "inverse",
+    "invlink-gamma y ~ hinge x": "inverse", "y ~ smooth x": "grown", "log y ~ smooth x": "grown",
 }  # fmt: skip
 
 
