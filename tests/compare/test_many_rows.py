@@ -95,6 +95,21 @@ def test_scales_without_a_closed_mean_score_as_fits_to_every_training_set(
     np.testing.assert_allclose(got.log_score, want.log_score, rtol=1e-7)
 
 
+def test_powers_chosen_from_a_list_score_as_fits_to_every_training_set(monkeypatch: pytest.MonkeyPatch) -> None:
+    data = rows()
+    splits = deal(data, folds=4, repeats=1, seed=1)
+    est = fitted(data, "log y ~ fp1 x")
+    (got,) = held_out([est], splits)
+    monkeypatch.setattr("batten.compare.heldout.MANY_ROWS", N)
+    (want,) = held_out([est], splits)
+    assert isinstance(got, HeldOut)
+    assert isinstance(want, HeldOut)
+    assert got.log_score is not None
+    assert want.log_score is not None
+    np.testing.assert_allclose(got.squared, want.squared, rtol=1e-7)
+    np.testing.assert_allclose(got.log_score, want.log_score, rtol=1e-9)
+
+
 def test_repeats_are_scored_one_after_another() -> None:
     data = rows()
     splits = deal(data, folds=4, repeats=2, seed=1)

@@ -83,7 +83,7 @@ def _scored(group: list[Estimate], ready: Prepared) -> list[HeldOut | Refusal]:
     if group[0].spread is not None:
         return [_score_spread(group[0], sets)]
     if group[0].shape.searched:
-        return [_score(group[0], sets, _searched_fits(group[0], sets, ready.folds))]
+        return [_score_searched(group[0], ready)]
     return _score_group(group, sets, folded)
 
 
@@ -178,14 +178,25 @@ def _with_powers(
         yield Trained(eta, (c,), fit.v, fit.columns)
 
 
-def _searched_fits(est: Estimate, sets: Sequence[Split], folds: int) -> Iterator[Trained | Refusal]:
-    """Shapes with constants of their own, searched again in each training set."""
-    rows, shape = est.rows, est.shape
+def _score_searched(est: Estimate, ready: Prepared) -> HeldOut | Refusal:
+    """A shape with constants of its own, searched again in each training set."""
+    rows, shape, sets = est.rows, est.shape, ready.sets
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
+    thetas: Array | None = None
     if all(state == est.state for state in states) and not est.scale.searched:
-        thetas = _shared_search(est, sets, folds)
-    else:
-        thetas = None
+        thetas = _shared_search(est, sets, ready.folds)
+        if ready.folded and (thetas == np.array(est.theta)).all():  # then the columns are the same everywhere
+            near = joined(tuple(score_alike([est], one)[0] for one in ready.folded))
+            if near is not None:
+                return near
+    return _score(est, sets, _searched_fits(est, sets, states, thetas))
+
+
+def _searched_fits(
+    est: Estimate, sets: Sequence[Split], states: list[Constants], thetas: Array | None
+) -> Iterator[Trained | Refusal]:
+    """Fits of the training sets at their constants thetas (S, q), or at those searched here."""
+    rows, shape = est.rows, est.shape
     p = len(est.coef)
     root = est.factored.root[:p, :p]  # the coefficients come first, so this is the triangle of the columns alone
     for s, split in enumerate(sets):

@@ -209,7 +209,7 @@ def _losses(est: Estimate, rows: Rows, sets: _Sets, v: Array, k: int, held: slic
         mean, median = _means(est, sets, k, eta), scale.inverse(middle, c)
     if not np.isfinite(mean).all():
         return None
-    df = np.array([left.count[k] - len(est.coef)])
+    df = np.array([left.count[k] - len(est.coef) - len(est.theta)])
     score = log_t(sets.error[None, held], sets.rss[k : k + 1], v[None, held], df)[0] + scale.log_jacobian(y, c)
     if rows.weights is not None:
         score = score + np.log(root)
