@@ -11,6 +11,7 @@ from batten.engine.linear import factor
 from batten.engine.rows import Array
 from batten.engine.sets import BLOCK, masks
 from batten.engine.spread import learn_spread
+from batten.engine.threads import MANY_ROWS
 from batten.fit.estimate import Estimate
 from batten.fit.guard import meets_constant
 from batten.fit.searched import weighted_design
@@ -25,7 +26,8 @@ def spread_losses(est: Estimate, sets: Sequence[Split]) -> Array | str:
     states = [shape.learn(split.sorted_x, constant=meets_constant(rows, shape)) for split in sets]
     shared = all(state == est.state for state in states)
     out = np.empty((4, len(sets)))
-    block = max(1, BLOCK // (4 * rows.count)) if shared else 1
+    # with many rows one set at a time stays near the processor
+    block = max(1, BLOCK // (4 * rows.count)) if shared and rows.count <= MANY_ROWS else 1
     whole = factor(weighted_design(rows, shape, est.state, ())).q if shared else None
     for first in range(0, len(sets), block):
         some = sets[first : first + block]
