@@ -12,7 +12,7 @@ from scipy import stats
 from batten.effects.contrast import span_effect
 from batten.effects.covariances import covariance
 from batten.effects.slopes import average, slopes_along
-from batten.engine.rows import Array, Ints
+from batten.engine.rows import Array
 from batten.fit.estimate import Estimate
 from batten.fit.means import averaged_means
 from batten.fit.slopes import average_slope
@@ -24,8 +24,8 @@ C = rows_of(np.arange(1.0, 11), np.array([0.0, 0, 1, 0, 3, 2, 5, 9, 8, 14]))
 class FirstOrder(Estimate):
     """The same fit, its rows' influence to first order: errors of the HC0 kind (White 1980), not HC3."""
 
-    def moves(self, *, leave_out: bool = True, rows: Ints | slice = slice(None)) -> Array:
-        return super().moves(leave_out=False, rows=rows)
+    def moves(self, *, leave_out: bool = True) -> Array:
+        return super().moves(leave_out=False)
 
 
 def first_order(est: Estimate) -> Estimate:

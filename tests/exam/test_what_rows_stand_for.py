@@ -233,3 +233,8 @@ def test_every_remedy_answers_or_is_refused_in_words(formula: str, options: dict
         new = fit.predict(DATA.head(2), interval="new row")
         assert (new["low"] <= new["high"]).all(), key
     assert replace(exam.comparison).choice == exam.choice
+
+
+def test_groups_that_share_a_slope_are_not_told_apart_by_rounding() -> None:
+    told = examine("y ~ x + C(g)", groups_data(), by="g", only=("y ~ x",))["y ~ x"].sentences()
+    assert [s.text for s in told if s.kind == "groups"] == []

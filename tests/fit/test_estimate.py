@@ -11,6 +11,8 @@ from batten.errors import Refusal
 from batten.families import parse
 from batten.fit.estimate import Estimate
 from batten.fit.fitting import estimate
+from batten.frame.read import read
+from batten.frame.samples import sample
 
 
 def fit(y: np.ndarray, x: np.ndarray, key: str, *covariates: np.ndarray) -> Estimate:
@@ -150,3 +152,21 @@ def test_aliased_columns_are_refused_in_words() -> None:
     done = estimate(rows_of(AY, AX, AX**2), parse("y ~ poly2 x"))
     assert isinstance(done, Refusal)
     assert "combinations of the rest" in done.seen
+
+
+@pytest.mark.parametrize("key", ["y ~ level-exp x", "y ~ x^p", "log y ~ x^p", "y ~ power x", "y ~ exponential x"])
+def test_searched_constants_settle_where_the_model_is_strongly_curved(key: str) -> None:
+    # a bowl, which none of these follows: large residuals make Gauss-Newton steps swing or creep
+    rows = read("energy ~ flow", sample("pumps")).rows
+    est = estimate(rows, parse(key))
+    assert isinstance(est, Estimate)
+    step = est.factored.q.T @ est.residual / est.sigma
+    # what is left of the step, in standard errors
+    np.testing.assert_allclose(step, 0.0, atol=1e-6)
+
+
+@pytest.mark.parametrize("key", ["y ~ s-curve x", "y ~ gompertz x"])
+def test_a_curve_that_runs_away_is_refused(key: str) -> None:
+    refusal = estimate(read("energy ~ flow", sample("pumps")).rows, parse(key))
+    assert isinstance(refusal, Refusal)
+    assert refusal.wrong.startswith("These rows do not settle the constant")

@@ -115,7 +115,9 @@ def group_sentences(effects: tuple[GroupEffect, ...], names: Names, *, ratios: b
     out = [span_sentence(e.span, names, group=f"{e.label}: ") for e in effects]
     first = effects[0].label
     for e in effects[1:]:
-        if not e.difference.defined:
+        # without an interaction nothing is left to tell between groups but rounding
+        apart = e.difference.high - e.difference.low > 1e-9 * max(abs(effects[0].span.difference.estimate), 1e-300)
+        if not e.difference.defined or not apart:
             continue
         told = Told(names)
         amount = told.amount("difference", e.difference, names.y_unit)

@@ -18,6 +18,10 @@ __all__ = ["Found", "Searched", "apart", "profile_interval", "refine", "scan", "
 
 #: rows used to choose the starting cell; the refinement always uses all rows
 SCAN_ROWS = 3_000
+#: final steps that may be no smaller than the smallest so far
+STALE = 4
+#: a search has settled when a further step would move the constants less than this many standard errors
+SETTLED = 0.01
 #: beyond this many rows a training set's constant starts so near its place that one final step settles it
 FEW_ROWS = 5_000
 
@@ -155,7 +159,15 @@ def refine(model: Searched, theta: Array, z: Array, *, steps: int = 60, precisio
     if model.corners is not None and len(theta) == 1:
         theta, place = _walk(model, theta, place, e)
     edge = ((theta <= model.lower) | (theta >= model.upper)).any()
-    return Found(theta, place.rss, settled=not edge)
+    return Found(theta, place.rss, settled=bool(not edge and (place.rss <= floor or _still(model, theta, place))))
+
+
+def _still(model: Searched, theta: Array, place: _Place) -> bool:
+    """Whether a further step would be short beside the constants' standard errors; at a corner steps say nothing."""
+    if model.corners is not None:
+        return True
+    step, promised = _gauss_newton(model, theta, place)
+    return bool(np.isfinite(step).all() and promised <= SETTLED**2 * place.rss / len(place.residual))
 
 
 def _walk(model: Searched, theta: Array, place: _Place, e: Array) -> tuple[Array, _Place]:
@@ -180,21 +192,43 @@ def _walk(model: Searched, theta: Array, place: _Place, e: Array) -> tuple[Array
 def _settle(
     model: Searched, theta: Array, place: _Place, e: Array, precision: float, *, steps: int
 ) -> tuple[Array, _Place]:
-    """Final steps, where the RSS no longer shows a step's gain: as long as each is smaller than the one before."""
-    size = np.inf
+    """Final steps, where the RSS no longer shows a step's gain.
+
+    Where the model is strongly curved Gauss-Newton steps shrink slowly or swing to and fro, so each is bent by how the
+    last one changed (Anderson 1965): with one constant this is the secant method for the place where the step is zero.
+    Returns the place with the smallest step seen.
+    """
+    best, smallest, stale = (theta, place), np.inf, 0
+    before: tuple[Array, Array] | None = None
     for _ in range(steps):
         step, _ = _gauss_newton(model, theta, place)
-        trial = theta + step
-        new_size = float(np.abs(step / np.where(theta == 0, 1, theta)).max())
-        if not new_size < size or ((trial <= model.lower) | (trial >= model.upper)).any():
+        unit = np.where(theta == 0, 1.0, np.abs(theta))
+        size = float(np.abs(step / unit).max())
+        if size < smallest:
+            best, smallest, stale = (theta, place), size, 0
+        else:
+            stale += 1
+        if size <= precision or stale > STALE or not np.isfinite(step).all():
             break
-        new = _solve_at(model, trial, e)
-        if new is None or new.rss > place.rss * (1 + 1e-9):
+        tried = [theta + step]
+        if before is not None:
+            turn = (step - before[1]) / unit
+            length = float(turn @ turn)
+            if length > 0:
+                share = float((step / unit) @ turn) / length
+                tried.insert(0, theta + step - share * (theta - before[0] + step - before[1]))
+        before = theta, step
+        for trial in tried:
+            inside = ((trial > model.lower) & (trial < model.upper)).all()
+            new = _solve_at(model, trial, e) if inside else None
+            if new is not None and new.rss <= place.rss * (1 + 1e-9):
+                theta, place = trial, new
+                break
+        else:
             break
-        theta, place, size = trial, new, new_size
-        if size <= precision:
-            break
-    return theta, place
+    if steps == 1 and theta is not best[0]:
+        return theta, place
+    return best
 
 
 def _gauss_newton(model: Searched, theta: Array, place: _Place) -> tuple[Array, float]:
