@@ -119,3 +119,12 @@ def test_a_constant_without_an_end_is_refused_in_words() -> None:
     rows = Rows(np.exp(0.1 * x) * rng.gamma(300, 1 / 300, 60), x, np.ones((60, 1)), np.ones((60, 1)))
     done = estimate(rows, parse("loglink y ~ hinge2 x"))
     assert isinstance(done, Estimate) or done.wrong == "These rows do not settle the constant of hinge2 x."
+
+
+def test_two_breaks_are_found_where_the_mean_has_them() -> None:
+    rng = np.random.default_rng(6)
+    x = rng.uniform(0, 60, 300)
+    mean = np.exp(1 + 0.08 * np.minimum(x, 25) - 0.05 * np.clip(x - 25, 0, 17) + 0.06 * np.maximum(x - 42, 0))
+    rows = Rows(rng.gamma(40, mean / 40), x, np.ones((300, 1)), np.ones((300, 1)))
+    est = fitted(rows, "loglink y ~ hinge2 x")
+    np.testing.assert_allclose(est.theta, [25, 42], atol=1.5)

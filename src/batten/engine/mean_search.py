@@ -90,8 +90,10 @@ class _Fits:
         done = self._scored(found)
         if not done.settled and len(done.theta) == 1 and np.isfinite(done.deviance):
             done = self._along(done)
-        if self.shape.corners is not None and len(done.theta) == 1:
-            done = self._walked(done)
+        if self.shape.corners is not None:
+            # a minimum at a corner is one, although no step settles there
+            done = self._walked(done) if len(done.theta) == 1 else done
+            done = replace(done, settled=bool(np.isfinite(done.deviance)))
         lower, upper = self.shape.lower, self.shape.upper
         near = 1e-9 * (upper - lower)
         inside = ((done.theta > lower + near) & (done.theta < upper - near)).all()
@@ -142,8 +144,7 @@ class _Fits:
                 break
             again = self._scored(self.at(best.theta))
             found = min((again, found), key=lambda one: one.deviance)
-        # a minimum at a corner is one, although no step settles there
-        return replace(found, settled=bool(np.isfinite(found.deviance)))
+        return found
 
     def _around(self, theta: float, *, cells: int = 1) -> tuple[float, float]:
         """The places of the grid around theta, some cells away."""
