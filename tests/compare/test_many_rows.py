@@ -112,7 +112,7 @@ def test_powers_chosen_from_a_list_score_as_fits_to_every_training_set(monkeypat
 
 def test_a_break_between_the_corners_of_its_profile_moves_held_out_errors_by_little() -> None:
     """The profile of a break has a corner at every row, and several minima beside each other; smoothed over, a break
-    moves by a part of its standard error, and the error of a fold with it by far less than the gaps that are compared."""
+    moves by a part of its standard error, and a fold's error by far less than the gaps that are compared."""
     rng = np.random.default_rng(2)
     x = rng.uniform(0, 10, N)
     data = Rows(20 + x - 1.5 * np.maximum(x - 6, 0) + rng.normal(0, 1, N), x, np.ones((N, 1)), np.ones((N, 1)))
