@@ -93,6 +93,8 @@ def test_held_out_errors_learn_the_spread_again(key: str) -> None:
         design = est.design_at(some.x, some.base, some.modifier)
         gap, weights = some.y - design @ est.coef, np.asarray(some.weights)
         assert got.squared[s] == pytest.approx((weights * gap**2).mean(), rel=1e-7)
+        median = predict(est, some.x, some.base, some.modifier, of="median").estimate
+        assert got.absolute[s] == pytest.approx((np.sqrt(weights) * np.abs(some.y - median)).mean(), rel=1e-7)
         root = est.spread.root(design) * np.sqrt(weights)
         v = np.einsum("ij,jk,ik->i", design, est.factored.inverse_cross, design)
         scale = est.sigma * np.sqrt(1 / root**2 + v)

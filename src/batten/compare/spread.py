@@ -64,6 +64,8 @@ def _block(est: Estimate, q: Array, sets: Sequence[Split]) -> Array | None:
         v = np.einsum("ij,jk,ik->i", held, found.inverse[s], held)
         error = (root * (z - found.eta[s]))[test]
         score = log_t(error[None], (residual[None] ** 2).sum(axis=1), v[None], np.array([len(train) - q.shape[1]]))[0]
-        out[:3, s] = losses(y[test], mean[test], mean[test] + np.median(residual), rows.weights, test)
+        # the median is that of a row of average weight, as in a fit
+        shift = np.median(residual) / np.sqrt(np.mean((root * given)[train] ** 2))
+        out[:3, s] = losses(y[test], mean[test], mean[test] + shift, rows.weights, test)
         out[3, s] = (score + np.log(root[test] * given[test])).mean()
     return out
