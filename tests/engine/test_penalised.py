@@ -59,6 +59,20 @@ def test_a_given_amount_meets_independent_values() -> None:
     assert 16 * rss / (16 - edf) ** 2 == pytest.approx(0.172399, abs=1e-6)
 
 
+def test_generalised_cross_validation_would_take_less_and_meets_independent_values() -> None:
+    """Craven and Wahba 1979: its optimum lies at amount 0.289721 with edf 5.490850, GCV 0.152201 (independent
+    computation). The product takes the restricted likelihood, which is steadier (Reiss and Ogden 2009)."""
+
+    def gcv(log_amount: float) -> tuple[float, float]:
+        found = fit(Y, segments(X), D, log_amount)
+        edf = found.roughness.edf
+        return 16 * float(found.residual @ found.residual) / (16 - edf) ** 2, edf
+
+    best = minimize_scalar(lambda v: gcv(v)[0], bounds=(-4, 1), method="bounded", options={"xatol": 1e-9})
+    assert np.exp(best.x) == pytest.approx(0.289721, abs=2e-6)
+    assert gcv(best.x) == (pytest.approx(0.152201, abs=1e-6), pytest.approx(5.490850, abs=2e-5))
+
+
 def test_the_amount_of_highest_restricted_likelihood_meets_independent_values() -> None:
     """Patterson and Thompson 1971: amount 0.136426, edf 6.009858, -log REML 13.708222; at x = 5 the curve 4.964196,
     its Bayesian error 0.171556 (Nychka 1988), its frequentist one 0.161728. Independent computation, six decimals."""
