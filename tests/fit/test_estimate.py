@@ -170,3 +170,11 @@ def test_a_curve_that_runs_away_is_refused(key: str) -> None:
     refusal = estimate(read("energy ~ flow", sample("pumps")).rows, parse(key))
     assert isinstance(refusal, Refusal)
     assert refusal.wrong.startswith("These rows do not settle the constant")
+
+
+def test_the_reciprocal_plot_is_a_remedy_of_its_own() -> None:
+    """1/y on 1/x gives Vm 10.841757 and K 3.173362 for the curve Vm x / (K + x): other weights of the rows, so other
+    numbers than the curve's own least squares (Lineweaver and Burk 1934; independent computation)."""
+    y = np.array([2.6, 4.1, 5.4, 6.2, 6.5, 7.2, 7.9, 8.3, 8.6, 8.7, 9.1, 9.2])
+    est = fit(y, AX, "1/y ~ 1/x")
+    np.testing.assert_allclose([1 / est.coef[0], est.coef[1] / est.coef[0]], [10.841757, 3.173362], rtol=1e-6)
