@@ -278,3 +278,9 @@ def test_the_step_of_x_is_one_unit_or_a_power_of_ten_of_the_span(a, b, step):
 )  # fmt: skip
 def test_numbers_keep_the_digits_their_interval_supports(value, unit, width, text):
     assert show(value, unit, width=width) == text
+
+
+def test_one_further_day_is_told_in_the_singular() -> None:
+    assert Names(x="when", x_unit="days").one == "day"
+    assert Names(x="mass_kg", x_unit="kg").one == "kg"
+    assert Names(x="mass_kg").one == "unit of mass_kg"

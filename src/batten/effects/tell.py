@@ -50,8 +50,8 @@ class Names:
 
     @property
     def one(self) -> str:
-        """One unit of x: "kg", or "unit of mass_kg"."""
-        return self.x_unit or f"unit of {self.x}"
+        """One unit of x: "kg", "day", or "unit of mass_kg"."""
+        return "day" if self.x_unit == "days" else self.x_unit or f"unit of {self.x}"
 
     @property
     def alike(self) -> str:
