@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -232,7 +231,7 @@ def test_every_remedy_answers_or_is_refused_in_words(formula: str, options: dict
         assert np.isfinite(fit.contrast().loc["difference", ["estimate", "low", "high"]].astype(float)).all(), key
         new = fit.predict(DATA.head(2), interval="new row")
         assert (new["low"] <= new["high"]).all(), key
-    assert replace(exam.comparison).choice == exam.choice
+    assert exam.choice.key in exam
 
 
 def test_groups_that_share_a_slope_are_not_told_apart_by_rounding() -> None:

@@ -13,6 +13,7 @@ from batten.engine.folds import Splits
 from batten.engine.rows import Array, Ints, Rows
 from batten.families.base import Constants, Scale
 from batten.fit.estimate import Estimate
+from batten.fit.guard import reaches
 from batten.fit.smear import mean_of
 
 __all__ = ["LazySplits", "Split", "Trained", "log_t", "losses", "losses_together", "sound"]
@@ -94,22 +95,9 @@ def losses_together(est: Estimate, sets: list[Split], fits: list[Trained]) -> Ar
 
 
 def sound(scale: Scale, c: list[Constants], eta: Array, residual: Array) -> bool:
-    """Whether every eta, and every pair eta + e, can be brought back in every set.
-
-    A closed boundary is kept to; an open one, where the inverse is infinite, must not be reached.
-    """
-    for k, low_eta, high_eta, low_e, high_e in zip(
-        c, eta.min(axis=1), eta.max(axis=1), residual.min(axis=1), residual.max(axis=1), strict=True
-    ):
-        low, high = scale.limits(k)
-        if not low_eta > low or not high_eta < high:
-            return False
-        edges = [low] if low_eta + low_e <= low else []
-        edges += [high] if high_eta + high_e >= high else []
-        with np.errstate(all="ignore"):
-            if not all(np.isfinite(scale.inverse(np.array([edge]), k)[0]) for edge in edges):
-                return False
-    return True
+    """Whether every eta, and every pair eta + e, can be brought back in every set."""
+    ends = zip(c, eta.min(axis=1), eta.max(axis=1), residual.min(axis=1), residual.max(axis=1), strict=True)
+    return not any(reaches(scale, k, (low, high), (least, most)) for k, low, high, least, most in ends)
 
 
 def losses(y: Array, mean: Array, median: Array, weights: Array | None, test: Ints | slice) -> Array:

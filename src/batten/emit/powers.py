@@ -113,7 +113,7 @@ def power_moves(parts: Parts, weight: str) -> list[str]:
     return [
         f"# LAMBDA was estimated too: a Newton step of the whole likelihood leaves out each {parts.unit}",
         "p = np.array([*b, LAMBDA, np.log(e @ e / len(e))])",
-        'step = 1e-5 * np.array([*table["std_error"], 1, 1])',
+        'step = np.array([*1e-3 * table["std_error"], 3e-5, 3e-5])',
         "score, curved = approx_fprime_cs(p, likelihood), approx_hess_cs(p, lambda p: likelihood(p).sum(), step)",
         *moves,
         *noted(slope, "of the scale in LAMBDA (Squire and Trapp 1998)"),

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Literal
+
 import numpy as np
 
 from batten.engine.rows import Array, Rows
@@ -17,6 +19,7 @@ __all__ = [
     "no_error_left",
     "not_offered",
     "not_settled",
+    "reaches",
     "too_few",
 ]
 
@@ -84,26 +87,42 @@ def no_error_left(remedy: Remedy, n: int, df: float) -> Refusal | None:
     )
 
 
+def reaches(
+    scale: Scale, c: Constants, eta: tuple[float, float], residual: tuple[float, float]
+) -> Literal["", "fits", "errors"]:
+    """What leaves the scale's limits: fitted values, or fitted values plus errors beyond an open end; "" for neither.
+
+    eta, residual: lowest and highest. A closed end is kept to; an open one, where the inverse is infinite, must not be
+    reached.
+    """
+    low, high = scale.limits(c)
+    if not eta[0] > low or not eta[1] < high:
+        return "fits"
+    passed = [low] if eta[0] + residual[0] <= low else []
+    passed += [high] if eta[1] + residual[1] >= high else []
+    with np.errstate(all="ignore"):
+        kept = all(np.isfinite(scale.inverse(np.array([edge]), c)[0]) for edge in passed)
+    return "" if kept else "errors"
+
+
 def domain_trouble(scale: Scale, c: Constants, eta: Array, residual: Array) -> Refusal | None:
     """Whether fitted values, or fitted values plus a residual, leave what the scale can undo.
 
     A closed lower boundary (sqrt, Box-Cox with a positive power) takes residuals beyond it, at the boundary; an open
     one (1/y, a negative power) does not: the mean would not exist (Poirier 1978 on Box-Cox).
     """
+    how = reaches(scale, c, (float(eta.min()), float(eta.max())), (float(residual.min()), float(residual.max())))
+    if not how:
+        return None
     low, high = scale.limits(c)
     outside = int(((eta <= low) | (eta >= high)).sum())
-    if outside:
+    if how == "fits":
         worst = eta.min() if np.isfinite(low) else eta.max()
         return Refusal(
             wrong=f"Fitted values leave what {scale.key} can undo.",
             seen=f"{outside} of {len(eta)} fitted values have no y to go back to ({worst:.4g} on the fitted scale).",
             instead="log y or a log link, whose fitted values can always be brought back.",
         )
-    passed = [low] if eta.min() + residual.min() <= low else []
-    passed += [high] if eta.max() + residual.max() >= high else []
-    with np.errstate(all="ignore"):
-        if all(np.isfinite(scale.inverse(np.array([edge]), c)[0]) for edge in passed):
-            return None
     return Refusal(
         wrong=f"The mean cannot be brought back from {scale.key}.",
         seen="A fitted value plus a residual seen in these rows has no finite value of y: only a median would exist.",
